@@ -1,0 +1,1 @@
+"""Factorisations, undamped and quadratic eigenproblems, inertia counts."""
