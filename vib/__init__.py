@@ -1,0 +1,44 @@
+"""Natural frequencies, ring-down and resonance screening of machine frames.
+
+The public names are loaded when they are first used, so that importing the package costs nothing.
+Results support, and do not replace, review by a licensed engineer under the local code.
+"""
+
+from __future__ import annotations
+
+from importlib import import_module
+from typing import TYPE_CHECKING, Any
+
+if TYPE_CHECKING:
+    from vib.errors import VibError
+    from vib.modes import Modes
+    from vib.response.ring import Ring
+    from vib.screening import Screening, screen
+    from vib.statespace import StateSpace
+    from vib.study import Study, read
+    from vib.system import System
+
+__version__ = "0.1.0"
+__all__ = ["Modes", "Ring", "Screening", "StateSpace", "Study", "System", "VibError", "read", "screen"]
+
+_HOME = {
+    "Modes": "vib.modes",
+    "Ring": "vib.response.ring",
+    "Screening": "vib.screening",
+    "StateSpace": "vib.statespace",
+    "Study": "vib.study",
+    "System": "vib.system",
+    "VibError": "vib.errors",
+    "read": "vib.study",
+    "screen": "vib.screening",
+}
+
+
+def __getattr__(name: str) -> Any:
+    if name in _HOME:
+        return getattr(import_module(_HOME[name]), name)
+    raise AttributeError(f"module 'vib' has no attribute {name!r}")
+
+
+def __dir__() -> list[str]:
+    return sorted([*__all__, "__version__"])

@@ -1,0 +1,200 @@
+"""The second-order system: mass, damping, gyroscopic and stiffness matrices with named freedoms.
+
+    mass q'' + (damping + gyroscopic) q' + stiffness q = f(t)
+
+Everything is in SI units. What a structure knows beyond its matrices (where its points are, how they
+follow the freedoms, which part owns which stiffness) travels along as `Anatomy`; bare matrices have none.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, field
+from typing import TYPE_CHECKING, Any, NamedTuple, Protocol
+
+import numpy as np
+import scipy.sparse as sparse
+from numpy.typing import ArrayLike, NDArray
+
+from vib.errors import MatrixError, ModelError, ShapeError
+
+if TYPE_CHECKING:
+    from vib.modes import Modes
+    from vib.response.ring import Ring
+    from vib.statespace import StateSpace
+
+Array = NDArray[np.float64]
+Matrix = Any  # a dense float64 array or a scipy.sparse csr_array; scipy has no type for "either"
+COMPONENTS = ("x", "y", "z", "rx", "ry", "rz")
+
+
+class Freedom(NamedTuple):
+    """One freedom: the point that moves and the component it moves along (``""`` for a bare matrix row)."""
+
+    point: str
+    component: str
+
+    def __str__(self) -> str:
+        return f"{self.point} {self.component}".rstrip()
+
+
+@dataclass(frozen=True, eq=False)
+class Place:
+    """A named point or body: where it is and how its six components follow the freedoms.
+
+    ``motion`` is a sparse (6, n) array: x, y, z (m) and rx, ry, rz (rad) of the place per unit freedom.
+    A component that is held has an empty row.
+    """
+
+    name: str
+    position_m: tuple[float, float, float]
+    motion: Matrix
+
+
+@dataclass(frozen=True, eq=False)
+class Part:
+    """A group of members, a spring set or a body: its share of the matrices, for energy shares.
+
+    ``stiffness`` and ``mass`` are sparse (n, n) or None where the part has none; ``damping_ratio`` is
+    the material's own (None: not given).
+    """
+
+    name: str
+    kind: str  # "members", "springs" or "body"
+    stiffness: Matrix | None
+    mass: Matrix | None
+    damping_ratio: float | None = None
+
+
+@dataclass(frozen=True, eq=False)
+class Wireframe:
+    """What there is to draw: nodes, their translations per unit freedom, and lines of each part.
+
+    ``nodes_m`` (k, 3); ``motion`` sparse (3 k, n), rows x, y, z of node 0, then of node 1, ...;
+    ``lines`` pairs a part's name with the node numbers along one member or one body's arm.
+    """
+
+    nodes_m: Array
+    motion: Matrix
+    lines: tuple[tuple[str, tuple[int, ...]], ...]
+
+
+class Division(Protocol):
+    """How finely the members of a structure are cut into pieces, and how to cut them otherwise."""
+
+    accuracy: float
+
+    def coarser(self) -> System | None:
+        """The same structure with half the pieces (a subspace of this one), or None if it can't be halved."""
+        ...
+
+    def finer(self) -> System:
+        """The same structure with every piece halved."""
+        ...
+
+    def for_frequency(self, frequency_hz: float) -> System:
+        """The same structure cut so that modes up to this frequency should meet ``accuracy``."""
+        ...
+
+
+@dataclass(frozen=True, eq=False)
+class Anatomy:
+    """What a structure knows beyond its matrices.
+
+    ``carried`` (n, 6): T' M R, the inertia force on the freedoms per unit rigid acceleration of the
+    ground along x, y, z and about the axes through the origin; ``rigid_mass`` (6, 6): R' M R of the
+    whole structure, held parts included. ``remarks`` are the assumptions made, in words.
+    """
+
+    places: Mapping[str, Place]
+    parts: tuple[Part, ...]
+    wireframe: Wireframe
+    carried: Array
+    rigid_mass: Array
+    remarks: tuple[str, ...] = ()
+    division: Division | None = None
+
+
+@dataclass(frozen=True)
+class DampingLaw:
+    """Damping that is stated mode by mode rather than as a matrix.
+
+    ``ratio`` holds for every mode; ``bands`` are (from Hz, to Hz, ratio) and are added where the mode's
+    undamped natural frequency lies in them; ``material`` adds the ratios of the parts weighted by the
+    strain energy each holds (Johnson & Kienholz, AIAA J. 20 (1982) 1284-1290).
+    """
+
+    ratio: float = 0.0
+    bands: tuple[tuple[float, float, float], ...] = ()
+    material: bool = False
+
+
+@dataclass(frozen=True, kw_only=True, eq=False)
+class System:
+    """Mass, stiffness, damping and gyroscopic matrices with named freedoms, SI units.
+
+    Parameters
+    ----------
+    mass, stiffness
+        (n, n) arrays or scipy.sparse; kg and N/m for translations. The mass may be singular.
+    damping, gyroscopic
+        (n, n), N s/m; optional. ``gyroscopic`` must be skew-symmetric.
+    freedoms
+        One name per row; numbered from 1 if not given.
+    unsymmetric
+        Declares that the stiffness (and damping) may be unsymmetric (circulatory forces).
+    damping_law, anatomy
+        Damping stated per mode, and what a structure knows beyond matrices; see the classes.
+
+    Raises
+    ------
+    ShapeError
+        A matrix is not square or not of the size of ``mass``.
+    MatrixError
+        Entries that are not finite, not symmetric where they must be, or a freedom with neither mass
+        nor stiffness; the message names row and column.
+
+    Examples
+    --------
+    >>> import vib
+    >>> vib.System(mass=[[2.0]], stiffness=[[8.0]]).size
+    1
+    """
+
+    mass: Matrix
+    stiffness: Matrix
+    damping: Matrix | None = None
+    gyroscopic: Matrix | None = None
+    freedoms: tuple[Freedom, ...] = ()
+    unsymmetric: bool = False
+    damping_law: DampingLaw = field(default_factory=DampingLaw)
+    anatomy: Anatomy | None = None
+
+    @property
+    def size(self) -> int:
+        """How many freedoms."""
+        return int(self.mass.shape[0])
+
+    def direction(self, at: str, along: str | Sequence[float] | None = None) -> Array:
+        """The vector b (n,) with displacement b @ q of a place along a component; also a unit force there.
+
+        Parameters
+        ----------
+        at
+            A point, a body, or a freedom of a bare system (its name or its number from 1).
+        along
+            ``"x"``, ``"-x"``, ... ``"rz"``, or three numbers, a direction that is normalised;
+            None only where the freedom has no component (bare matrices).
+
+        Raises
+        ------
+        ModelError
+            No such place or component, or it is held and can't move.
+        """
+        raise NotImplementedError
+
+    def modes(self, *, count: int | None = None, up_to: str | float | None = None) -> Modes:
+        """See `vib.modes.find_modes`."""
+        from vib.modes import find_modes
+
+        return find_modes(self, count=count, up_to=up_to)
