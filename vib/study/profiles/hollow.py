@@ -1,0 +1,118 @@
+"""Hollow sections: circular, square, rectangular."""
+
+from __future__ import annotations
+
+import itertools
+import math
+from dataclasses import replace
+
+from vib.study.profiles.outlines import Corner, Point, circle, rounded
+from vib.study.profiles.profile import Profile, assemble, not_negative, positive, sizes, thinner
+from vib.study.profiles.torsion import hollow_torsion
+from vib.study.profiles.walls import Wall, shear_area
+
+
+def circular_hollow(diameter: float, thickness: float) -> Profile:
+    """A circular hollow section (tube); ``diameter`` is the outer one.
+
+    The shear area is the energy value without the effect of Poisson's ratio, 6 (1 + m^2)^2 A /
+    (7 (1 + m^2)^2 + 20 m^2), m inner over outer diameter: G. R. Cowper, J. Appl. Mech. 33 (1966) 335-340
+    (from memory), hollow circle with nu = 0; A/2 for a thin wall.
+
+    Raises
+    ------
+    ModelError
+        A dimension that is not above zero, or a thickness of half the diameter or more.
+    """
+    positive(diameter=diameter, thickness=thickness)
+    thinner(thickness, "thickness", diameter, "diameter", 2)
+    outer, inner = diameter / 2, diameter / 2 - thickness
+    area = math.pi * (outer**2 - inner**2)
+    m = (inner / outer) ** 2
+    share = 6 * (1 + m) ** 2 / (7 * (1 + m) ** 2 + 20 * m)
+    return assemble(
+        f"circular hollow {sizes(diameter, thickness)}",
+        (circle((0.0, 0.0), outer), circle((0.0, 0.0), inner, hole=True)),
+        torsion=math.pi * (outer**4 - inner**4) / 2,
+        shear=(share * area, share * area),
+    )
+
+
+def square_hollow(
+    width: float, thickness: float, outer_radius: float | None = None, inner_radius: float | None = None
+) -> Profile:
+    """A square hollow section; see ``rectangular_hollow``.
+
+    Raises
+    ------
+    ModelError
+        As ``rectangular_hollow``.
+    """
+    return rectangular_hollow(width, width, thickness, outer_radius, inner_radius)
+
+
+def rectangular_hollow(
+    width: float,
+    height: float,
+    thickness: float,
+    outer_radius: float | None = None,
+    inner_radius: float | None = None,
+) -> Profile:
+    """A rectangular hollow section.
+
+    Corner radii: without ``outer_radius`` the corners are sharp; without ``inner_radius`` it is
+    ``outer_radius - thickness``, not less than zero.
+
+    Raises
+    ------
+    ModelError
+        A dimension not above zero, a thickness of half a side or more, or a radius that does not fit.
+    """
+    positive(width=width, height=height, thickness=thickness)
+    thinner(thickness, "thickness", width, "width", 2)
+    thinner(thickness, "thickness", height, "height", 2)
+    remarks = (
+        () if outer_radius is not None else ("the corners are taken as sharp: no outer_radius was given",)
+    )
+    outer = 0.0 if outer_radius is None else outer_radius
+    inner = max(outer - thickness, 0.0) if inner_radius is None else inner_radius
+    not_negative(outer_radius=outer, inner_radius=inner)
+    inside_y, inside_z = width - 2 * thickness, height - 2 * thickness
+    profile = assemble(
+        f"rectangular hollow {sizes(width, height, thickness)}",
+        (
+            rounded(_box(width, height, outer, "outer_radius")),
+            rounded(_box(inside_y, inside_z, inner, "inner_radius")[::-1]),
+        ),
+        torsion=hollow_torsion(width, height, thickness, (outer + inner) / 2),
+        shear=_hollow_shear(width, height, thickness, (outer + inner) / 2),
+    )
+    return replace(profile, remarks=remarks)
+
+
+def _box(width: float, height: float, radius: float, label: str) -> list[Corner]:
+    y, z = width / 2, height / 2
+    return [Corner(a, b, radius, label) for a, b in ((-y, -z), (y, -z), (y, z), (-y, z))]
+
+
+def _hollow_shear(width: float, height: float, thickness: float, radius: float) -> tuple[float, float]:
+    """Half of the section, cut where symmetry leaves no flow; both halves carry alike."""
+    y, z = (width - thickness) / 2, (height - thickness) / 2
+    r = min(radius, y, z)
+    pieces = 4
+    turns = [math.pi / 2 * k / pieces for k in range(pieces + 1)]
+    quarter = [(y - r + r * math.sin(a), z - r + r * math.cos(a)) for a in turns]
+    half = [(0.0, z), *quarter, *[(a, -b) for a, b in reversed(quarter)], (0.0, -z)]
+    across = 2 * shear_area(_chain(half, thickness), math.pi / 2)
+    turned = [(b, a) for a, b in quarter]
+    half = [(0.0, y), *turned[::-1], *[(a, -b) for a, b in turned], (0.0, -y)]
+    along = 2 * shear_area(_chain(half, thickness), math.pi / 2)
+    return along, across
+
+
+def _chain(points: list[Point], thickness: float) -> list[Wall]:
+    walls: list[Wall] = []
+    for start, end in itertools.pairwise(points):
+        if math.dist(start, end) > 0.0:
+            walls.append(Wall(start, end, thickness, (len(walls) - 1,) if walls else ()))
+    return walls

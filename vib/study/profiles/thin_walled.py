@@ -1,0 +1,198 @@
+"""Open thin-walled sections: I and H, T, channels, angles."""
+
+from __future__ import annotations
+
+import math
+
+from vib.errors import ModelError
+from vib.study.profiles.outlines import Corner, rounded
+from vib.study.profiles.profile import Profile, assemble, not_negative, positive, sizes, thinner
+from vib.study.profiles.torsion import corner_junction, free_end_loss, strip_torsion, tee_junction
+from vib.study.profiles.walls import Wall, shear_area
+
+
+def i_section(
+    height: float, width: float, web_thickness: float, flange_thickness: float, root_radius: float = 0.0
+) -> Profile:
+    """A doubly symmetric I or H section with parallel flanges, web upright.
+
+    Raises
+    ------
+    ModelError
+        A dimension not above zero (the radius may be zero), or walls and radii that do not fit.
+    """
+    positive(height=height, width=width, web_thickness=web_thickness, flange_thickness=flange_thickness)
+    not_negative(root_radius=root_radius)
+    thinner(flange_thickness, "flange_thickness", height, "height", 2)
+    thinner(web_thickness, "web_thickness", width, "width", 1)
+    w, b, z, f, r = web_thickness / 2, width / 2, height / 2, flange_thickness, root_radius
+    right = [
+        Corner(b, -z), Corner(b, -z + f), Corner(w, -z + f, r, "root_radius"),
+        Corner(w, z - f, r, "root_radius"), Corner(b, z - f), Corner(b, z),
+    ]  # fmt: skip
+    corners = right + [Corner(-c.y, -c.z, c.radius, c.label) for c in right]
+    m = z - f / 2
+    walls = [
+        Wall((-b, m), (0, m), f), Wall((b, m), (0, m), f),
+        Wall((0, m), (0, -m), web_thickness, (0, 1)),
+        Wall((-b, -m), (0, -m), f), Wall((b, -m), (0, -m), f),
+    ]  # fmt: skip
+    torsion = (
+        2 * strip_torsion(width, f)
+        + strip_torsion(height - 2 * f, web_thickness)
+        + 2 * tee_junction(f, web_thickness, r)
+        - 4 * free_end_loss(f)
+    )
+    return assemble(
+        f"I {sizes(height, width, web_thickness, f)}",
+        (rounded(corners),),
+        torsion=torsion,
+        shear=(shear_area(walls, 0.0), shear_area(walls, math.pi / 2)),
+    )
+
+
+def t_section(
+    height: float, width: float, web_thickness: float, flange_thickness: float, root_radius: float = 0.0
+) -> Profile:
+    """A T section, flange on top; ``height`` is over all.
+
+    Raises
+    ------
+    ModelError
+        A dimension not above zero (the radius may be zero), or walls and radii that do not fit.
+    """
+    positive(height=height, width=width, web_thickness=web_thickness, flange_thickness=flange_thickness)
+    not_negative(root_radius=root_radius)
+    thinner(flange_thickness, "flange_thickness", height, "height", 1)
+    thinner(web_thickness, "web_thickness", width, "width", 1)
+    w, b, f, r = web_thickness / 2, width / 2, flange_thickness, root_radius
+    corners = [
+        Corner(-w, 0), Corner(w, 0), Corner(w, height - f, r, "root_radius"), Corner(b, height - f),
+        Corner(b, height), Corner(-b, height), Corner(-b, height - f),
+        Corner(-w, height - f, r, "root_radius"),
+    ]  # fmt: skip
+    m = height - f / 2
+    walls = [Wall((-b, m), (0, m), f), Wall((b, m), (0, m), f), Wall((0, m), (0, 0), web_thickness, (0, 1))]
+    torsion = (
+        strip_torsion(width, f)
+        + strip_torsion(height - f, web_thickness)
+        + tee_junction(f, web_thickness, r)
+        - 2 * free_end_loss(f)
+        - free_end_loss(web_thickness)
+    )
+    return assemble(
+        f"T {sizes(height, width, web_thickness, f)}",
+        (rounded(corners),),
+        torsion=torsion,
+        shear=(shear_area(walls, 0.0), shear_area(walls, math.pi / 2)),
+        shear_centre=(0.0, m),
+    )
+
+
+def channel(
+    height: float, width: float, web_thickness: float, flange_thickness: float, root_radius: float = 0.0
+) -> Profile:
+    """A channel with parallel flanges that point to +y, web upright at the left.
+
+    Raises
+    ------
+    ModelError
+        A dimension not above zero (the radius may be zero), or walls and radii that do not fit.
+    """
+    return tapered_channel(height, width, web_thickness, flange_thickness, 0.0, root_radius, 0.0)
+
+
+def tapered_channel(
+    height: float,
+    width: float,
+    web_thickness: float,
+    flange_thickness: float,
+    flange_slope: float,
+    root_radius: float = 0.0,
+    toe_radius: float = 0.0,
+    thickness_at: float | None = None,
+) -> Profile:
+    """A channel whose flanges taper by ``flange_slope`` (0.08 for 8 %) on their inner faces.
+
+    ``flange_thickness`` is measured at ``thickness_at`` from the free edge; at half the width if not given.
+
+    Raises
+    ------
+    ModelError
+        A dimension not above zero (slope and radii may be zero), or walls and radii that do not fit.
+    """
+    positive(height=height, width=width, web_thickness=web_thickness, flange_thickness=flange_thickness)
+    not_negative(flange_slope=flange_slope, root_radius=root_radius, toe_radius=toe_radius)
+    thinner(web_thickness, "web_thickness", width, "width", 1)
+    at = width / 2 if thickness_at is None else thickness_at
+    tip = flange_thickness - flange_slope * at
+    root = flange_thickness + flange_slope * (width - web_thickness - at)
+    if tip <= 0.0:
+        raise ModelError(
+            f"flange_slope: {flange_slope:g} leaves no thickness at the free edge; give a smaller slope"
+        )
+    thinner(root, "flange_thickness", height, "height", 2)
+    z, t, r = height / 2, web_thickness, root_radius
+    corners = [
+        Corner(0, -z), Corner(width, -z), Corner(width, -z + tip, toe_radius, "toe_radius"),
+        Corner(t, -z + root, r, "root_radius"), Corner(t, z - root, r, "root_radius"),
+        Corner(width, z - tip, toe_radius, "toe_radius"), Corner(width, z), Corner(0, z),
+    ]  # fmt: skip
+    mean = (tip + root) / 2
+    line, m = width - t / 2, z - mean / 2
+    walls = [
+        Wall((width, m), (t / 2, m), mean),
+        Wall((t / 2, m), (t / 2, -m), t, (0,)),
+        Wall((t / 2, -m), (width, -m), mean, (1,)),
+    ]
+    torsion = (
+        2 * (width * (tip + root) * (tip**2 + root**2) / 12)
+        + strip_torsion(height - 2 * root, t)
+        + 2 * corner_junction(root, t, r)
+        - 2 * free_end_loss(tip)
+    )
+    offset = t / 2 - 3 * mean * line**2 / (6 * line * mean + 2 * m * t)
+    return assemble(
+        f"channel {sizes(height, width, t, flange_thickness)}",
+        (rounded(corners),),
+        torsion=torsion,
+        shear=(shear_area(walls, 0.0), shear_area(walls, math.pi / 2)),
+        shear_centre=(offset, 0.0),
+    )
+
+
+def angle(
+    leg_a: float, leg_b: float, thickness: float, root_radius: float = 0.0, toe_radius: float = 0.0
+) -> Profile:
+    """An angle: ``leg_a`` upright at the left, ``leg_b`` along the bottom to +y.
+
+    Its principal axes are turned: by +45 degrees for equal legs, y then being the strong axis.
+
+    Raises
+    ------
+    ModelError
+        A dimension not above zero (the radii may be zero), or walls and radii that do not fit.
+    """
+    positive(leg_a=leg_a, leg_b=leg_b, thickness=thickness)
+    not_negative(root_radius=root_radius, toe_radius=toe_radius)
+    thinner(thickness, "thickness", leg_a, "leg_a", 1)
+    thinner(thickness, "thickness", leg_b, "leg_b", 1)
+    a, b, t = leg_a, leg_b, thickness
+    corners = [
+        Corner(0, 0), Corner(b, 0), Corner(b, t, toe_radius, "toe_radius"),
+        Corner(t, t, root_radius, "root_radius"), Corner(t, a, toe_radius, "toe_radius"), Corner(0, a),
+    ]  # fmt: skip
+    torsion = (
+        strip_torsion(a, t)
+        + strip_torsion(b - t, t)
+        + corner_junction(t, t, root_radius)
+        - 2 * free_end_loss(t)
+    )
+    walls = [Wall((t / 2, a), (t / 2, t / 2), t), Wall((t / 2, t / 2), (b, t / 2), t, (0,))]
+    return assemble(
+        f"angle {sizes(a, b, t)}",
+        (rounded(corners),),
+        torsion=torsion,
+        shear=walls,
+        shear_centre=(t / 2, t / 2),
+    )
