@@ -10,13 +10,14 @@ from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
+from difflib import get_close_matches
 from typing import TYPE_CHECKING, Any, NamedTuple, Protocol
 
 import numpy as np
-import scipy.sparse as sparse
-from numpy.typing import ArrayLike, NDArray
+from numpy.typing import NDArray
 
-from vib.errors import MatrixError, ModelError, ShapeError
+from vib.checks import as_matrix, check_carried, check_finite, check_mass, check_symmetric
+from vib.errors import ModelError, ShapeError
 
 if TYPE_CHECKING:
     from vib.modes import Modes
@@ -170,6 +171,34 @@ class System:
     damping_law: DampingLaw = field(default_factory=DampingLaw)
     anatomy: Anatomy | None = None
 
+    def __post_init__(self) -> None:
+        mass = as_matrix("mass", self.mass, None)
+        size = mass.shape[0]
+        given = {"mass": mass, "stiffness": as_matrix("stiffness", self.stiffness, size)}
+        for name in ("damping", "gyroscopic"):
+            value = getattr(self, name)
+            if value is not None:
+                given[name] = as_matrix(name, value, size)
+        freedoms = tuple(Freedom(*named) for named in self.freedoms)
+        if not freedoms:
+            freedoms = tuple(Freedom(str(number), "") for number in range(1, size + 1))
+        if len(freedoms) != size:
+            raise ShapeError("freedoms", expected=(size,), got=(len(freedoms),), hint="One name per freedom.")
+        names = [str(named) for named in freedoms]
+        if len(set(names)) != size:
+            twice = next(name for name in names if names.count(name) > 1)
+            raise ModelError(f"freedoms: {twice!r} is there more than once; give each freedom its own name.")
+        for name, matrix in given.items():
+            check_finite(name, matrix, names)
+        for name, matrix in given.items():
+            if name in ("mass", "gyroscopic") or not self.unsymmetric:
+                check_symmetric(name, matrix, names, skew=name == "gyroscopic")
+        check_carried(tuple(given.values()), names)
+        check_mass(mass, names)
+        for name, matrix in given.items():
+            object.__setattr__(self, name, matrix)
+        object.__setattr__(self, "freedoms", freedoms)
+
     @property
     def size(self) -> int:
         """How many freedoms."""
@@ -191,10 +220,87 @@ class System:
         ModelError
             No such place or component, or it is held and can't move.
         """
-        raise NotImplementedError
+        weights = _component_weights(at, along)
+        place = self.anatomy.places.get(at) if self.anatomy else None
+        if place is not None:
+            if weights is None:
+                raise ModelError(f"{at}: say along which component, one of {', '.join(COMPONENTS)}.")
+            moved = np.asarray(weights @ place.motion, dtype=np.float64).ravel()
+            if not moved.any():
+                raise ModelError(f"{at}: it is held along {_in_words(along)} and can't move there.")
+            return moved
+        vector = self._freedom_direction(at, along, weights)
+        if vector is None:
+            known = list(self.anatomy.places) if self.anatomy else [str(named) for named in self.freedoms]
+            near = get_close_matches(at, known, 1)
+            hint = f"did you mean {near[0]!r}?" if near else f"known are {', '.join(known[:12])}."
+            asked = at if along is None else f"{at} along {_in_words(along)}"
+            raise ModelError(f"{asked}: there is no such place or freedom; {hint}")
+        return vector
+
+    def _freedom_direction(
+        self, at: str, along: str | Sequence[float] | None, weights: Array | None
+    ) -> Array | None:
+        vector = np.zeros(self.size)
+        if weights is None:
+            names = [str(named) for named in self.freedoms]
+            if at in names:
+                vector[names.index(at)] = 1.0
+            elif at.isdigit() and 1 <= int(at) <= self.size and not self.anatomy:
+                vector[int(at) - 1] = 1.0
+        else:
+            for component, weight in zip(COMPONENTS, weights, strict=True):
+                if weight:
+                    try:
+                        vector[self.freedoms.index(Freedom(at, component))] = weight
+                    except ValueError:
+                        return None
+        return vector if vector.any() else None
 
     def modes(self, *, count: int | None = None, up_to: str | float | None = None) -> Modes:
         """See `vib.modes.find_modes`."""
         from vib.modes import find_modes
 
         return find_modes(self, count=count, up_to=up_to)
+
+    def ring(self, **arguments: Any) -> Ring:
+        """The free response; see `vib.response.ring.ring` for the arguments."""
+        from vib.response.ring import ring
+
+        return ring(self, **arguments)
+
+    def state_space(self, **arguments: Any) -> StateSpace:
+        """The first-order model A, B, C, D; see `vib.statespace.state_space` for the arguments."""
+        from vib.statespace import state_space
+
+        return state_space(self, **arguments)
+
+
+def _component_weights(at: str, along: str | Sequence[float] | None) -> Array | None:
+    """Six weights of a direction, or None where no component was given."""
+    if along is None:
+        return None
+    weights = np.zeros(6)
+    if isinstance(along, str):
+        name = along.strip().removeprefix("+")
+        sign, name = (-1.0, name[1:]) if name.startswith("-") else (1.0, name)
+        if name not in COMPONENTS:
+            raise ModelError(
+                f"{at} along {along!r}: the component is one of {', '.join(COMPONENTS)} "
+                "(or minus one of them), or three numbers."
+            )
+        weights[COMPONENTS.index(name)] = sign
+        return weights
+    try:
+        vector = np.array(along, dtype=np.float64)
+    except (TypeError, ValueError):
+        vector = np.zeros(0)
+    if vector.shape != (3,) or not np.isfinite(vector).all() or not vector.any():
+        raise ModelError(f"{at}: a direction is three finite numbers, not all zero, got {along!r}.")
+    vector = vector / np.abs(vector).max()  # first by the largest, so that no square overflows
+    weights[:3] = vector / np.linalg.norm(vector)
+    return weights
+
+
+def _in_words(along: str | Sequence[float] | None) -> str:
+    return along if isinstance(along, str) else str(along)
