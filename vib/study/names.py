@@ -1,0 +1,125 @@
+"""Cross-references of a study file: every name that is used must be one that is defined.
+
+These checks run on the file as written, before the typed reading, so that one pass reports a wrong
+reference together with a wrong unit.
+"""
+
+from __future__ import annotations
+
+from collections import Counter
+from collections.abc import Iterable, Iterator, Mapping
+from difflib import get_close_matches
+from typing import Any
+
+from vib.study.lines import Path
+
+Finding = tuple[Path, str]
+
+
+def check_names(raw: Mapping[str, Any]) -> Iterator[Finding]:
+    """Every dangling or doubly used name, as (path in the file, message)."""
+    points = _keys(raw.get("points"))
+    bodies = [body.get("name") for _, body in _rows(raw, "bodies")]
+    places = [*points, *(name for name in bodies if isinstance(name, str))]
+    yield from _double_names(raw, points)
+    if "ground" in points:
+        yield ("points", "ground"), '"ground" is the fixed ground; give the point another name'
+    yield from _check_members(raw, points)
+    for i, body in _rows(raw, "bodies"):
+        yield from _unknown("point", points, _listed(body.get("carried_by"), ("bodies", i, "carried_by")))
+    for i, support in _rows(raw, "supports"):
+        yield from _unknown("point", points, _listed(support.get("at"), ("supports", i, "at")))
+    for i, spring in _rows(raw, "springs"):
+        yield from _check_spring(spring, ("springs", i, "between"), points)
+    if "matrices" in raw:
+        # a freedom may also be named by its number, and the number of rows is not known here
+        return
+    for i, excitation in _rows(raw, "excitations"):
+        yield from _unknown("point or body", places, _listed(excitation.get("at"), ("excitations", i, "at")))
+    impact = raw.get("impact")
+    if isinstance(impact, Mapping):
+        for key in ("at", "watch"):
+            yield from _unknown("point or body", places, _listed(impact.get(key), ("impact", key)))
+
+
+def did_you_mean(name: str, known: Iterable[str]) -> str:
+    """A suggestion in words, or nothing where no known name is near."""
+    near = get_close_matches(name.lower(), {k.lower(): k for k in known}, n=1, cutoff=0.6)
+    spelled = {k.lower(): k for k in known}
+    return f' (did you mean "{spelled[near[0]]}"?)' if near else ""
+
+
+def _double_names(raw: Mapping[str, Any], points: list[str]) -> Iterator[Finding]:
+    for table in ("members", "bodies", "springs", "excitations"):
+        seen: dict[str, int] = {}
+        for i, row in _rows(raw, table):
+            name = row.get("name")
+            if not isinstance(name, str):
+                continue
+            if name in seen:
+                yield (table, i, "name"), f'"{name}" is already the name of {table}[{seen[name]}]'
+            seen.setdefault(name, i)
+            if table == "bodies" and name in points:
+                yield (table, i, "name"), f'"{name}" is already the name of a point'
+
+
+def _check_members(raw: Mapping[str, Any], points: list[str]) -> Iterator[Finding]:
+    from vib.study.materials import MATERIALS
+
+    sections = _keys(raw.get("sections"))
+    materials = [*_keys(raw.get("materials")), *(material.name for material in MATERIALS)]
+    for i, member in _rows(raw, "members"):
+        yield from _unknown("section", sections, _listed(member.get("section"), ("members", i, "section")))
+        yield from _unknown(
+            "material", materials, _listed(member.get("material"), ("members", i, "material"))
+        )
+        runs = member.get("runs")
+        for j, run in enumerate(runs if isinstance(runs, list) else []):
+            path: Path = ("members", i, "runs", j)
+            yield from _unknown("point", points, _listed(run, path) if isinstance(run, list) else [])
+            if isinstance(run, list) and any(a == b for a, b in zip(run, run[1:], strict=False)):
+                yield path, "a run joins a point to itself"
+
+
+def _check_spring(spring: Mapping[str, Any], path: Path, points: list[str]) -> Iterator[Finding]:
+    between = spring.get("between")
+    if not isinstance(between, list):
+        return
+    single = all(isinstance(name, str) for name in between)
+    for j, pair in enumerate([between] if single else between):
+        if not isinstance(pair, list):
+            continue
+        here = path if single else (*path, j)
+        yield from _unknown("point", [*points, "ground"], _listed(pair, here))
+        if len(pair) == 2 and pair[0] == pair[1]:
+            yield here, f'both ends are "{pair[0]}"'
+
+
+def _unknown(what: str, known: list[str], used: Iterable[tuple[Path, str]]) -> Iterator[Finding]:
+    used = list(used)
+    for path, name in used:
+        if name not in known:
+            yield path, f'no {what} is named "{name}"{did_you_mean(name, known)}'
+    for name, times in Counter(name for _, name in used).items():
+        if times > 1 and name != "ground" and used[0][0][0] in ("bodies", "supports"):
+            yield used[0][0][:-1], f'"{name}" stands there {times} times'
+
+
+def _listed(value: object, path: Path) -> list[tuple[Path, str]]:
+    """The names in an entry that is a name or a list of names; anything else is the schema's business."""
+    if isinstance(value, str):
+        return [(path, value)]
+    if isinstance(value, list):
+        return [((*path, i), name) for i, name in enumerate(value) if isinstance(name, str)]
+    return []
+
+
+def _rows(raw: Mapping[str, Any], table: str) -> list[tuple[int, Mapping[str, Any]]]:
+    rows = raw.get(table)
+    return [
+        (i, row) for i, row in enumerate(rows if isinstance(rows, list) else []) if isinstance(row, Mapping)
+    ]
+
+
+def _keys(table: object) -> list[str]:
+    return list(table) if isinstance(table, Mapping) else []

@@ -1,0 +1,139 @@
+"""The study: what the user wrote, typed, SI inside, immutable."""
+
+from __future__ import annotations
+
+from pathlib import Path
+from typing import TYPE_CHECKING, Annotated, Any, Literal
+
+from pydantic import Field, PrivateAttr, create_model, field_validator, model_validator
+
+from vib.study.geometry import Material, Members, Section, Support, Table
+from vib.study.machine import Body, Damping, Excitation, Impact, Matrices, Spring
+from vib.study.quantities import Name, Quantity, Vector
+from vib.units import KINDS, UnitSystem, factor
+
+if TYPE_CHECKING:
+    from vib.study.matrices import LoadedMatrices
+    from vib.system import System
+
+
+class _OutputUnits(Table):
+    output: Literal["si", "us"] = Field("si", description="the units that results are shown in")
+
+    @field_validator("*")
+    @classmethod
+    def _known(cls, unit: str | None, info: Any) -> str | None:
+        if unit is not None and info.field_name != "output":
+            factor(unit, info.field_name)
+        return unit
+
+    def declared(self) -> dict[str, str]:
+        """Unit of a bare number, per kind. Areas and second moments follow from the length."""
+        units = {kind: unit for kind, unit in self if unit is not None and kind != "output"}
+        if "length" in units:
+            length = units["length"]
+            units.setdefault("area", f"({length})^2")
+            units.setdefault("second_moment", f"({length})^4")
+        return units
+
+
+# one optional entry per kind of quantity, so that no list of kinds has to be kept twice
+Units = create_model(
+    "Units",
+    __base__=_OutputUnits,
+    __doc__="What a bare number means, by kind of quantity; text with a unit always wins.",
+    **{  # type: ignore[call-overload]
+        kind: (Name | None, Field(None, description=f"unit of a bare {kind.replace('_', ' ')}"))
+        for kind in KINDS
+        if kind != "ratio"
+    },
+)
+
+
+class Study(Table):
+    """One study file: a structure or matrices, its damping, what shakes it and what strikes it.
+
+    Read one with `vib.read`. All figures are SI floats; frequencies and speeds are cycles per second.
+    """
+
+    title: Name = Field("Untitled study", description="shown on every output")
+    units: Units = Units()  # type: ignore[valid-type]
+    up: Literal["x", "y", "z"] = Field(
+        "z", description="the axis that points up: gravity, and the members' default up"
+    )
+    accuracy: Annotated[float, Quantity("ratio", 1e-5)] = Field(
+        0.005, description="numerical accuracy asked of every natural frequency"
+    )
+    materials: dict[Name, Material] = {}
+    sections: dict[Name, Section] = {}
+    points: dict[Name, Vector] = {}
+    members: tuple[Members, ...] = ()
+    bodies: tuple[Body, ...] = ()
+    supports: tuple[Support, ...] = ()
+    springs: tuple[Spring, ...] = ()
+    damping: Damping = Damping()
+    excitations: tuple[Excitation, ...] = ()
+    impact: Impact | None = None
+    matrices: Matrices | None = None
+
+    _file: Path | None = PrivateAttr(None)
+    _loaded: Any = PrivateAttr(None)
+
+    @field_validator("accuracy")
+    @classmethod
+    def _useful(cls, accuracy: float) -> float:
+        if accuracy > 0.2:
+            raise ValueError("must be at most 20 %: a coarser answer is of no use")
+        return accuracy
+
+    @model_validator(mode="after")
+    def _one_way(self) -> Study:
+        if self.matrices is not None:
+            built = [
+                name for name in ("points", "members", "bodies", "supports", "springs") if getattr(self, name)
+            ]
+            if built:
+                raise ValueError(
+                    f"a study has [matrices] or a structure, not both: remove {', '.join(built)}"
+                )
+        elif not (self.members or self.bodies):
+            raise ValueError("nothing to study: give [[members]], [[bodies]] or [matrices]")
+        return self
+
+    @property
+    def output_units(self) -> UnitSystem:
+        """The unit system that results are shown in."""
+        system: UnitSystem = self.units.output
+        return system
+
+    @property
+    def file(self) -> Path | None:
+        """The file that the study was read from."""
+        return self._file
+
+    @property
+    def loaded(self) -> LoadedMatrices | None:
+        """The matrices of [matrices] in SI units; None for a structure."""
+        loaded: LoadedMatrices | None = self._loaded
+        return loaded
+
+    def system(self, *, up_to: str | float | None = None) -> System:
+        """The second-order system of this study, SI units inside.
+
+        Parameters
+        ----------
+        up_to
+            Cut the members finely enough for modes up to this frequency: text with a unit, or Hz.
+            Without it they are cut moderately, and `System.modes` cuts them again where it must.
+
+        Raises
+        ------
+        ModelError
+            The structure cannot be built as described.
+        """
+        from vib.structure import build_system
+        from vib.units import parse
+
+        return build_system(
+            self, frequency_hz=None if up_to is None else parse(up_to, "frequency", unit="Hz")
+        )
