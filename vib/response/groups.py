@@ -30,7 +30,7 @@ class Part:
     """An invariant part of x' = A x: x_part(t) = factor Re(right exp(block t) left x(0)).
 
     ``eigenvalues`` (s,); ``block`` (s, s); ``right`` (n, s); ``left`` (s, n). ``factor`` is 2 where the
-    part stands for its conjugate too, else 1.
+    part stands for its conjugate too, else 1. ``rounding`` (1/s) is how far rounding moves the eigenvalue.
     """
 
     eigenvalues: Complex
@@ -38,6 +38,7 @@ class Part:
     right: Numbers
     left: Numbers
     factor: float
+    rounding: float = 0.0
 
     @property
     def single(self) -> bool:
@@ -98,12 +99,13 @@ def take_apart(matrix: Array, limit: float = CONDITION_LIMIT) -> Parts:
         )
         parts, stretch = _split(balanced, limit)
         largest, smallest = max(largest, stretch[0]), min(smallest, stretch[1])
+        rounding = 16 * EPS * float(np.linalg.norm(balanced, 1))
         for part in parts:
             right = np.zeros((n, part.right.shape[1]), part.right.dtype)
             left = np.zeros((part.left.shape[0], n), part.left.dtype)
             right[own] = scale[:, None] * part.right
             left[:, own] = part.left / scale
-            found.append(Part(part.eigenvalues, part.block, right, left, part.factor))
+            found.append(Part(part.eigenvalues, part.block, right, left, part.factor, rounding))
     found.sort(key=lambda part: (abs(part.eigenvalues).min(), part.eigenvalues[0].imag))
     return Parts(tuple(found), largest / smallest)
 
@@ -140,7 +142,7 @@ def _linked(values: Numbers, gap: float) -> NDArray[np.int64]:
 
 
 def _parts(matrix: Array, values: Numbers, vectors: Numbers, labels: NDArray[np.int64]) -> list[Part] | None:
-    """Parts with right bases of unit, in a cluster orthonormal, columns; None if a cluster can't be isolated."""
+    """Parts with unit right vectors, orthonormal in a cluster; None if a cluster can't be isolated."""
     empty = np.zeros((0, len(values)))
     parts = []
     for label in np.unique(labels):
@@ -184,6 +186,7 @@ def _with_left(parts: list[Part], basis: Numbers) -> list[Part]:
     for part in parts:
         size = part.right.shape[1]
         left = inverse[row : row + size]
+        left = left.real if part.factor == 1 else left
         row += size * int(part.factor)
         finished.append(Part(part.eigenvalues, part.block, part.right, left, part.factor))
     return finished

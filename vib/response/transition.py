@@ -119,7 +119,9 @@ class Propagator:
         self._check_reach(at)
         with np.errstate(over="ignore", invalid="ignore", under="ignore"):
             if self.method == "eigenvalues":
-                found = (np.exp(np.outer(at, self.eigenvalues)) * (self._left @ vector)) @ self._right.T
+                found: Numbers = (
+                    np.exp(np.outer(at, self.eigenvalues)) * (self._left @ vector)
+                ) @ self._right.T
                 found = self._real(found)
             else:
                 found = self._apply_exponentials(vector / self._scale, at) * self._scale
@@ -128,7 +130,8 @@ class Propagator:
 
     def _real(self, found: Numbers) -> Numbers:
         # the imaginary parts of conjugate pairs cancel to rounding
-        return found if np.iscomplexobj(self.matrix) else found.real
+        kept: Numbers = found if np.iscomplexobj(self.matrix) else found.real
+        return kept
 
     def _by_eigenvalues(self, times: Array) -> Numbers:
         phi = np.empty((times.size, self.size, self.size), self.matrix.dtype)
