@@ -61,29 +61,21 @@ _CYCLIC = ("frequency", "speed")
 _NUMBER = re.compile(r"\s*([+-]?(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d+)?)\s*(.*?)\s*", re.DOTALL)
 _UNIT_TEXT = re.compile(r"[A-Za-zµμΩ°%_/*^·().\s\-²³⁴0-9]{1,60}")
 _LONG_DIGITS = re.compile(r"\d{3,}")
+# offered where a unit was misspelt only by its spaces or its capitals
 _USUAL_UNITS = (
-    "m mm cm in ft kg g t lb slug N kN MN lbf kip Pa kPa MPa GPa psi ksi N/m N/mm kN/m kN/mm lbf/in kip/in "
-    "kg/m^3 lb/in^3 lb/ft^3 Hz rpm rad/s s ms deg rad mm/s m/s in/s m/s^2 mm^2 cm^2 in^2 mm^4 cm^4 in^4"
-).split() + [
-    "N s",
-    "N s/m",
-    "N s/mm",
-    "lbf s/in",
-    "lbf s",
-    "N m",
-    "kN m",
-    "N m s",
-    "N m/rad",
-    "lbf in",
-    "lbf ft",
-]
+    "m", "mm", "cm", "in", "ft", "kg", "g", "t", "lb", "slug", "N", "kN", "MN", "lbf", "kip", "Pa", "kPa",
+    "MPa", "GPa", "psi", "ksi", "N/m", "N/mm", "kN/m", "kN/mm", "lbf/in", "kip/in", "N s", "N s/m",
+    "N s/mm", "lbf s/in", "lbf s", "N m", "kN m", "N m s", "N m/rad", "lbf in", "lbf ft", "kg/m^3",
+    "lb/in^3", "lb/ft^3", "Hz", "rpm", "rad/s", "s", "ms", "deg", "rad", "mm/s", "m/s", "in/s", "m/s^2",
+    "mm^2", "cm^2", "in^2", "mm^4", "cm^4", "in^4",
+)  # fmt: skip
 
 
 @cache
-def _registry() -> pint.UnitRegistry:
+def _registry() -> pint.UnitRegistry[float]:
     import pint
 
-    registry = pint.UnitRegistry(autoconvert_offset_to_baseunit=False)
+    registry: pint.UnitRegistry[float] = pint.UnitRegistry(autoconvert_offset_to_baseunit=False)
     registry.define("@alias revolution = rev")
     return registry
 
@@ -155,17 +147,17 @@ def factor(unit: str, kind: str) -> float:
     wanted = KINDS[kind]
     try:
         if kind in _CYCLIC:
-            root_factor, root = registry.get_root_units(parsed)
+            _, root = registry.get_root_units(parsed)
             if root == registry.Unit("radian/second"):
-                return float(root_factor) / (2 * math.pi)
-            return float(registry.Quantity(1.0, parsed).to("1/s").magnitude)
-        return float(registry.Quantity(1.0, parsed).to(_si(kind)).magnitude)
+                return float(registry.convert(1.0, parsed, root)) / (2 * math.pi)
+            return float(registry.convert(1.0, parsed, "1/s"))
+        return float(registry.convert(1.0, parsed, _si(kind)))
     except pint.OffsetUnitCalculusError:
         raise UnitError(f"'{unit}' is an offset temperature unit, where {wanted.words} is wanted") from None
     except pint.DimensionalityError:
         raise UnitError(
-            f"'{unit}' is not a unit of {wanted.words.split(' ', 1)[1]}{_suggestion(unit)}: it has the dimension "
-            f"{parsed.dimensionality}, wanted is {wanted.words} such as {_example(kind)}"
+            f"'{unit}' is not a unit of {wanted.words.split(' ', 1)[1]}{_suggestion(unit)}: "
+            f"it has the dimension {parsed.dimensionality}, wanted is {wanted.words} such as {_example(kind)}"
             f"{_force_or_mass_note(parsed, kind)}"
         ) from None
 

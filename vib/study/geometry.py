@@ -21,7 +21,7 @@ class Table(BaseModel):
 
 
 class Material(Table):
-    """An elastic material. ``like`` starts from a material of the built-in table; other entries override it."""
+    """An elastic material; ``like`` starts from one of the built-in table, and other entries override it."""
 
     like: Name | None = Field(None, description="name of a built-in material to start from")
     youngs_modulus: Annotated[float, positive("stress")] | None = None
@@ -73,7 +73,7 @@ class Material(Table):
         return self.shear_modulus or self.data.youngs_modulus / (2 * (1 + self.data.poissons_ratio))
 
 
-# the function of `profiles` that each shape is drawn by, and its dimensions; "?" marks those that may be left out
+# the function of `profiles` that draws each shape, and its dimensions; "?" marks those that may be left out
 SHAPES: dict[str, tuple[str, str]] = {
     "rectangle": ("rectangle", "width height"),
     "flat": ("flat", "width thickness"),
@@ -203,7 +203,7 @@ class Releases(Table):
 class Members(Table):
     """A group of straight members of one section and material. Local x runs from start to end."""
 
-    name: Name
+    name: Name = Field("", description='default: numbered, such as "members 1"')
     section: Name
     material: Name = Field(description="a name of [materials] or of the built-in table")
     runs: tuple[
@@ -211,7 +211,7 @@ class Members(Table):
     ] = Field(min_length=1, description="each run joins two or more points in a row")
     up: Axis | None = Field(
         None,
-        description="direction towards which the section's z axis (its height) is turned; default: the study's up, "
+        description="direction the section's z axis (its height) is turned to; default: the study's up, "
         "and for members along it the next axis (x for up = z)",
     )
     turn: Annotated[float, Quantity("angle")] = Field(

@@ -1,7 +1,8 @@
-"""The tables of a study that describe the machine: bodies, springs, damping, excitations, impact, matrices."""
+"""The tables of a study about the machine: bodies, springs, damping, excitations, impact, matrices."""
 
 from __future__ import annotations
 
+from itertools import pairwise
 from typing import Annotated, Any
 
 from pydantic import BeforeValidator, Field, ValidationInfo, field_validator, model_validator
@@ -15,7 +16,7 @@ _Inertia = Annotated[float, Quantity("inertia")]
 class Body(Table):
     """A rigid machine part, carried by points that move with it."""
 
-    name: Name
+    name: Name = Field("", description='default: numbered, such as "body 1"')
     mass: Annotated[float, positive("mass")]
     centre: Vector | None = Field(
         None, description="centre of mass; default: the point, where one alone carries it"
@@ -84,7 +85,7 @@ class Spring(Table):
     turn of the whole as one body strains nothing.
     """
 
-    name: Name
+    name: Name = Field("", description='default: numbered, such as "spring 1"')
     between: Annotated[
         tuple[tuple[Name, Name], ...],
         BeforeValidator(_pairs, json_schema_input_type=list[str] | list[list[str]]),
@@ -152,7 +153,7 @@ class Damping(Table):
             if low >= high:
                 raise ValueError(f"a range must go upwards, not from {low:g} Hz to {high:g} Hz")
             cls._below_critical(ratio)
-        for (_, end, _), (start, _, _) in zip(ordered, ordered[1:], strict=False):
+        for (_, end, _), (start, _, _) in pairwise(ordered):
             if start < end:
                 raise ValueError(f"ranges overlap between {start:g} Hz and {end:g} Hz")
         return tuple(ordered)
@@ -167,7 +168,7 @@ class Damping(Table):
             alpha, beta = rayleigh_constants(rows)
             if alpha < 0 or beta < 0:
                 raise ValueError(
-                    "no such curve: it would feed energy into some modes (a negative constant); bring the two ratios closer"
+                    "no such curve: it would feed energy into some modes; bring the two ratios closer"
                 )
         return rows
 
@@ -203,7 +204,7 @@ def _speed(value: object, info: ValidationInfo) -> object:
 class Excitation(Table):
     """What shakes the machine: orders of a running speed, fixed frequencies, or both."""
 
-    name: Name
+    name: Name = Field("", description='default: numbered, such as "excitation 1"')
     speed: (
         Annotated[tuple[float, float], BeforeValidator(_speed, json_schema_input_type=str | list[str])] | None
     ) = Field(None, description="running speed, or a range [from, to]")
@@ -299,7 +300,8 @@ class Impact(Table):
         given = [name for name in (*_STARTS, "pulse") if getattr(self, name) is not None]
         if len(given) != 1:
             raise ValueError(
-                f"needs exactly one of impulse, pulse, pull, displacement, velocity; has {', '.join(given) or 'none'}"
+                f"needs exactly one of impulse, pulse, pull, displacement, velocity; "
+                f"has {', '.join(given) or 'none'}"
             )
         return self
 
@@ -319,7 +321,7 @@ def _matrix(value: object) -> object:
 
 
 class MatrixEntry(Table):
-    """One matrix: a file (.mtx Matrix Market, .npz) beside the study, or rows; with the unit of its numbers."""
+    """One matrix: a file (.mtx Matrix Market, .npz) beside the study, or rows, and their unit."""
 
     file: Name | None = None
     rows: tuple[tuple[Number, ...], ...] | None = None

@@ -9,6 +9,7 @@ from __future__ import annotations
 from collections import Counter
 from collections.abc import Iterable, Iterator, Mapping
 from difflib import get_close_matches
+from itertools import pairwise
 from typing import Any
 
 from vib.study.lines import Path
@@ -77,7 +78,7 @@ def _check_members(raw: Mapping[str, Any], points: list[str]) -> Iterator[Findin
         for j, run in enumerate(runs if isinstance(runs, list) else []):
             path: Path = ("members", i, "runs", j)
             yield from _unknown("point", points, _listed(run, path) if isinstance(run, list) else [])
-            if isinstance(run, list) and any(a == b for a, b in zip(run, run[1:], strict=False)):
+            if isinstance(run, list) and any(a == b for a, b in pairwise(run)):
                 yield path, "a run joins a point to itself"
 
 

@@ -159,7 +159,7 @@ def _model_in(annotation: Any) -> type[BaseModel] | None:
 
 def _faults(findings: Iterable[Finding], lines: Any) -> list[Fault]:
     """Faults in the order of the file, each once."""
-    faults = {}
+    faults: dict[tuple[str, str], Fault] = {}
     for path, message in findings:
         entry = "".join(f"[{step}]" if isinstance(step, int) else f".{step}" for step in path).lstrip(".")
         faults.setdefault((entry, message), Fault(entry, message, find_line(path, lines)))

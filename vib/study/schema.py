@@ -37,17 +37,19 @@ class _OutputUnits(Table):
         return units
 
 
-# one optional entry per kind of quantity, so that no list of kinds has to be kept twice
-Units = create_model(
-    "Units",
-    __base__=_OutputUnits,
-    __doc__="What a bare number means, by kind of quantity; text with a unit always wins.",
-    **{  # type: ignore[call-overload]
-        kind: (Name | None, Field(None, description=f"unit of a bare {kind.replace('_', ' ')}"))
-        for kind in KINDS
-        if kind != "ratio"
-    },
-)
+if TYPE_CHECKING:
+    Units = _OutputUnits
+else:  # one optional entry per kind of quantity, so that no list of kinds has to be kept twice
+    Units = create_model(
+        "Units",
+        __base__=_OutputUnits,
+        __doc__="What a bare number means, by kind of quantity; text with a unit always wins.",
+        **{
+            kind: (Name | None, Field(None, description=f"unit of a bare {kind.replace('_', ' ')}"))
+            for kind in KINDS
+            if kind != "ratio"
+        },
+    )
 
 
 class Study(Table):
@@ -57,7 +59,7 @@ class Study(Table):
     """
 
     title: Name = Field("Untitled study", description="shown on every output")
-    units: Units = Units()  # type: ignore[valid-type]
+    units: Units = Units()
     up: Literal["x", "y", "z"] = Field(
         "z", description="the axis that points up: gravity, and the members' default up"
     )
@@ -103,8 +105,7 @@ class Study(Table):
     @property
     def output_units(self) -> UnitSystem:
         """The unit system that results are shown in."""
-        system: UnitSystem = self.units.output
-        return system
+        return self.units.output
 
     @property
     def file(self) -> Path | None:
