@@ -114,5 +114,5 @@ def _chain(points: list[Point], thickness: float) -> list[Wall]:
     walls: list[Wall] = []
     for start, end in itertools.pairwise(points):
         if math.dist(start, end) > 0.0:
-            walls.append(Wall(start, end, thickness, (len(walls) - 1,) if walls else ()))
+            walls.append(Wall(start, end, thickness, thickness, (len(walls) - 1,) if walls else ()))
     return walls

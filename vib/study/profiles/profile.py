@@ -55,7 +55,7 @@ def assemble(
     shear: tuple[float, float] | list[Wall],
     shear_centre: Point | None = None,
 ) -> Profile:
-    """Integrate the outline and turn to principal axes; ``shear`` as walls is taken about the turned axes.
+    """Integrate the outline and turn to principal axes; ``shear`` may be walls.
 
     ``shear_centre`` is in the axes of the outline; None means at the centroid.
     """
