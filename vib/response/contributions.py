@@ -6,12 +6,14 @@ from dataclasses import dataclass
 from functools import cached_property
 
 import numpy as np
-from numpy.typing import ArrayLike
+from numpy.typing import ArrayLike, NDArray
 
 from vib.errors import ShapeError
 from vib.response.groups import CONDITION_LIMIT, Complex, Part, take_apart
 from vib.response.motion import Motion
-from vib.response.transition import Array
+from vib.response.transition import Array, Numbers
+
+Flags = NDArray[np.bool_]
 
 
 @dataclass(frozen=True, eq=False)
@@ -43,7 +45,7 @@ class Contributions:
 
     eigenvalues: Complex
     weights: Complex
-    clustered: Array
+    clustered: Flags
     decay_per_s: Array
     constant: Array
     origin_s: float
@@ -51,7 +53,7 @@ class Contributions:
     parts: tuple[Part, ...]
 
     def history(self, times: ArrayLike) -> Array:
-        """Each eigenvalue's own motion (k, p, g) at times >= origin (k,), s; the sum and the constant are x."""
+        """Each eigenvalue's own motion (k, p, g) at times (k,) from the origin on; with the constant, x."""
         return self._moving(np.atleast_1d(np.asarray(times, dtype=np.float64))).real
 
     def total(self, times: ArrayLike) -> Array:
@@ -61,23 +63,28 @@ class Contributions:
 
     def envelope(self, times: ArrayLike) -> Array:
         """Sum of abs(weight_i) exp(Re(lambda_i) t), (k, p): abs(x - constant) never exceeds it."""
+        return np.stack([self.envelope_of(output, times) for output in range(len(self.constant))], axis=1)
+
+    def envelope_of(self, output: int, times: ArrayLike) -> Array:
+        """The envelope of one output, (k,)."""
         at = np.atleast_1d(np.asarray(times, dtype=np.float64)) - self.origin_s
-        found = np.zeros((at.size, len(self.constant)))
-        plain = ~self.clustered.astype(bool)
+        plain = ~self.clustered
         with np.errstate(under="ignore", over="ignore"):
-            found += np.exp(-np.outer(at, self.decay_per_s[plain])) @ np.abs(self.weights[:, plain]).T
+            found: Array = np.exp(-np.outer(at, self.decay_per_s[plain])) @ np.abs(
+                self.weights[output, plain]
+            )
             for index in np.flatnonzero(~plain):
-                found += np.abs(self._cluster(int(index), at))
+                found = found + np.abs(self._cluster(int(index), at)[:, output])
         return found
 
     @cached_property
-    def drifts(self) -> Array:
+    def drifts(self) -> Flags:
         """(p,) True where a part neither decays nor stays: rigid-body drift or a growing motion."""
-        grows = (self.decay_per_s < 0) | (self.clustered.astype(bool) & (self.decay_per_s <= 0))
+        grows = (self.decay_per_s < 0) | (self.clustered & (self.decay_per_s <= 0))
         late = self.origin_s + 1.0 / max(1e-300, float(np.abs(self.eigenvalues).max(initial=1.0)))
         moved = np.abs(self._moving(np.array([self.origin_s, late]))).max(axis=0)
         floor = 1e-9 * moved.max(initial=0.0)
-        found: Array = (moved[:, grows] > floor).any(axis=1)
+        found: Flags = (moved[:, grows] > floor).any(axis=1)
         return found
 
     def _moving(self, times: Array) -> Complex:
@@ -91,10 +98,10 @@ class Contributions:
                     found[:, :, index] = np.outer(np.exp(value * at), self.weights[:, index])
         return found
 
-    def _cluster(self, index: int, at: Array) -> Complex:
+    def _cluster(self, index: int, at: Array) -> Numbers:
         part = self.parts[index]
         start = dict(zip(map(id, self.motion.clusters), self.motion.released[1], strict=True))[id(part)]
-        found: Complex = part.factor * (part.free(start, at) @ (self.motion.rows @ part.right).T)
+        found: Numbers = part.factor * (part.free(start, at) @ (self.motion.rows @ part.right).T)
         return found
 
 
@@ -110,7 +117,7 @@ def contributions_of(motion: Motion) -> Contributions:
             weight = part.factor * (motion.rows @ part.right[:, 0]) * starts[single_index]
             single_index += 1
             if part.factor == 1 and abs(part.eigenvalues[0]) <= part.rounding:
-                constant += weight.real
+                constant = constant + weight.real
                 continue
             weights.append(weight.astype(np.complex128))
         else:

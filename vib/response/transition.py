@@ -40,7 +40,9 @@ class Propagator:
         A, (n, n), real or complex, 1/s.
     accuracy
         Relative error wanted, in norm. The eigenvalues are used where the condition number of the matrix of
-        unit eigenvectors of the balanced A is at most ``limit = accuracy / (10 eps)``.
+        unit eigenvectors of the balanced A is at most ``limit = accuracy / (10 eps)``. Single times at which
+        the terms of the sum cancel further than that (very short ones: Phi is then the identity and a little)
+        are left to the matrix exponential.
 
     Attributes
     ----------
@@ -118,13 +120,15 @@ class Propagator:
         at = _times(times).ravel()
         self._check_reach(at)
         with np.errstate(over="ignore", invalid="ignore", under="ignore"):
+            found = np.empty((at.size, self.size), self.matrix.dtype)
+            doubtful = np.ones(at.size, bool)
             if self.method == "eigenvalues":
-                found: Numbers = (
-                    np.exp(np.outer(at, self.eigenvalues)) * (self._left @ vector)
-                ) @ self._right.T
-                found = self._real(found)
-            else:
-                found = self._apply_exponentials(vector / self._scale, at) * self._scale
+                terms = np.exp(np.outer(at, self.eigenvalues)) * (self._left @ vector)
+                found = self._real(terms @ self._right.T)
+                size = np.abs(terms) @ np.abs(self._right).T
+                doubtful = _largest(size) > self.limit * _largest(found)
+            if doubtful.any():
+                found[doubtful] = self._apply_exponentials(vector / self._scale, at[doubtful]) * self._scale
         self._check_finite(found, at)
         return found
 
@@ -136,10 +140,16 @@ class Propagator:
     def _by_eigenvalues(self, times: Array) -> Numbers:
         phi = np.empty((times.size, self.size, self.size), self.matrix.dtype)
         step = max(1, _CHUNK // max(1, self.size**2))
+        doubtful = np.zeros(times.size, bool)
+        right_size, left_size = np.abs(self._right), np.abs(self._left)
         for first in range(0, times.size, step):
             piece = slice(first, first + step)
             growth = np.exp(np.multiply.outer(times[piece], self.eigenvalues))
             phi[piece] = self._real((self._right * growth[:, None, :]) @ self._left)
+            terms = (right_size * np.abs(growth)[:, None, :]) @ left_size
+            doubtful[piece] = _largest(terms) > self.limit * _largest(phi[piece])
+        if doubtful.any():
+            phi[doubtful] = self._by_exponentials(times[doubtful])
         return phi
 
     def _by_exponentials(self, times: Array) -> Numbers:
@@ -329,6 +339,12 @@ def _condition(vectors: Numbers) -> float:
         return 1.0
     lengths = np.linalg.svd(vectors, compute_uv=False)
     return float(lengths[0] / lengths[-1]) if lengths[-1] > 0 else math.inf
+
+
+def _largest(stack: Numbers) -> Array:
+    """The largest size of an entry in each of k arrays, (k,)."""
+    found: Array = np.abs(stack).reshape(len(stack), -1).max(axis=1, initial=0.0)
+    return found
 
 
 def _uniform_step(times: Array) -> float | None:
