@@ -1,0 +1,143 @@
+"""From matrices of pieces, springs and bodies to sparse matrices on the freedoms."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+import scipy.sparse as sparse
+from numpy.typing import NDArray
+
+from vib.structure.freedoms import Nodes, number_nodes
+from vib.structure.layout import Layout
+from vib.structure.members import material_of
+from vib.structure.rigid import arms
+from vib.structure.springs import GROUND
+from vib.system import Array, Matrix, Part
+
+Indices = NDArray[np.intp]
+
+
+@dataclass(frozen=True, eq=False)
+class Raw:
+    """One part on the components of the nodes (6 k, 6 k), before anything is eliminated; None: has none."""
+
+    name: str
+    kind: str
+    stiffness: Matrix | None
+    mass: Matrix | None
+    dashpot: Matrix | None = None
+    damping_ratio: float | None = None
+
+
+@dataclass(frozen=True, eq=False)
+class Assembly:
+    """A layout cut into pieces: its nodes, and its parts on the components of the nodes."""
+
+    layout: Layout
+    counts: Indices
+    nodes: Nodes
+    raw: tuple[Raw, ...]
+
+    @property
+    def size(self) -> int:
+        """How many freedoms."""
+        return len(self.nodes.freedoms)
+
+    def reduce(self, raw: Matrix | None) -> Matrix | None:
+        """T' X T on the freedoms, symmetric to the last bit."""
+        if raw is None:
+            return None
+        transform = self.nodes.transform
+        found = transform.T @ (raw @ transform)
+        found = 0.5 * (found + found.T)
+        found.eliminate_zeros()
+        return sparse.csr_array(found)
+
+    def parts(self) -> tuple[Part, ...]:
+        """Every part on the freedoms."""
+        return tuple(
+            Part(
+                part.name, part.kind, self.reduce(part.stiffness), self.reduce(part.mass), part.damping_ratio
+            )
+            for part in self.raw
+        )
+
+    def raw_sum(self, what: str) -> Matrix:
+        """Stiffness, mass or dashpot of everything on the components of the nodes."""
+        size = self.nodes.transform.shape[0]
+        found = [getattr(part, what) for part in self.raw if getattr(part, what) is not None]
+        return sum(found[1:], found[0]) if found else sparse.csr_array((size, size))
+
+    def rigid_motion(self) -> Array:
+        """(6 k, 6) components of every node when everything moves as one body, about the origin."""
+        return arms(self.nodes.places_m).reshape(-1, 6)
+
+
+def assemble(layout: Layout, counts: Indices) -> Assembly:
+    """Assemble a layout whose stretches are cut into ``counts`` (s,) pieces.
+
+    Raises
+    ------
+    ModelError
+        There would be too many freedoms.
+    """
+    nodes = number_nodes(layout, counts)
+    names = _part_names(layout)
+    size = nodes.transform.shape[0]
+    raw = [*_member_parts(layout, counts, nodes, names), *_spring_parts(layout, size, names)]
+    for i, mass in enumerate(layout.bodies.mass):
+        place = np.full((1, 1), len(layout.point_names) + i)
+        raw.append(Raw(names["bodies", i], "body", None, scatter(mass[None], place, size)))
+    return Assembly(layout, counts, nodes, tuple(raw))
+
+
+def scatter(blocks: Array, nodes: Indices, size: int) -> Matrix:
+    """Sum (e, 6 m, 6 m) blocks of elements with nodes (e, m) into a sparse (size, size) array."""
+    index = (6 * nodes[:, :, None] + np.arange(6)).reshape(len(nodes), -1)
+    rows = np.broadcast_to(index[:, :, None], blocks.shape).reshape(-1)
+    columns = np.broadcast_to(index[:, None, :], blocks.shape).reshape(-1)
+    values = blocks.reshape(-1)
+    some = values != 0
+    return sparse.coo_array((values[some], (rows[some], columns[some])), shape=(size, size)).tocsr()
+
+
+def _part_names(layout: Layout) -> dict[tuple[str, int], str]:
+    """The names of the tables; where two kinds share a name, the kind is added."""
+    study = layout.study
+    words = {"members": "members", "springs": "springs", "bodies": "body"}
+    named = {(kind, i): row.name for kind in words for i, row in enumerate(getattr(study, kind))}
+    often = [name for name in named.values() if list(named.values()).count(name) > 1]
+    return {key: f"{name} ({words[key[0]]})" if name in often else name for key, name in named.items()}
+
+
+def _member_parts(
+    layout: Layout, counts: Indices, nodes: Nodes, names: dict[tuple[str, int], str]
+) -> list[Raw]:
+    stiffness, mass = layout.piece_matrices(counts)
+    size = nodes.transform.shape[0]
+    group = layout.stretches.group[nodes.stretch]
+    found = []
+    for i in range(len(layout.study.members)):
+        mine = group == i
+        which, chain = nodes.stretch[mine], nodes.chain[mine]
+        _, _, ratio = material_of(layout.study, i)
+        parts = (scatter(blocks[which], chain, size) for blocks in (stiffness, mass))
+        found.append(Raw(names["members", i], "members", *parts, damping_ratio=ratio))
+    return found
+
+
+def _spring_parts(layout: Layout, size: int, names: dict[tuple[str, int], str]) -> list[Raw]:
+    springs = layout.springs
+    grounded = springs.ends[:, 1] == GROUND
+    # a grounded spring has no second node: its blocks there are zero and fall away
+    ends = np.where(grounded[:, None], springs.ends[:, :1], springs.ends)
+    found = []
+    for i in range(len(layout.study.springs)):
+        mine = springs.owner == i
+        both = [
+            scatter(springs.matrices(constants)[mine], ends[mine], size) if constants[mine].any() else None
+            for constants in (springs.stiffness, springs.dashpot)
+        ]
+        found.append(Raw(names["springs", i], "springs", both[0], None, both[1]))
+    return found

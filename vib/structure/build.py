@@ -1,0 +1,150 @@
+"""From a study to a system: the way through the other rooms."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+
+import numpy as np
+import scipy.sparse as sparse
+from numpy.typing import NDArray
+
+from vib.errors import MatrixError, ModelError
+from vib.structure.assembly import Assembly, assemble
+from vib.structure.division import counts_for, first_counts
+from vib.structure.layout import Layout, read_layout
+from vib.structure.picture import draw, find_places
+from vib.structure.remarks import assumptions
+from vib.study import Study
+from vib.study.machine import rayleigh_constants
+from vib.system import Anatomy, DampingLaw, Freedom, Matrix, Part, System
+
+
+def build_system(study: Study, frequency_hz: float | None = None) -> System:
+    """The second-order system of a study.
+
+    Parameters
+    ----------
+    study
+        A structure, or matrices.
+    frequency_hz
+        Cut the members finely enough for modes up to here; None cuts them moderately.
+
+    Returns
+    -------
+    System
+        With `Anatomy` for a structure, without for matrices.
+
+    Raises
+    ------
+    ModelError
+        The structure cannot be built as described, or is too large.
+    MatrixError
+        The matrices of [matrices] do not describe a vibrating system.
+    """
+    if frequency_hz is not None and not (math.isfinite(frequency_hz) and frequency_hz > 0):
+        raise ModelError(f"frequency limit: wanted a frequency above zero, got {frequency_hz:g} Hz")
+    if study.matrices is not None:
+        return _from_matrices(study)
+    layout = read_layout(study)
+    counts = first_counts(layout) if frequency_hz is None else counts_for(layout, frequency_hz)
+    return to_system(assemble(layout, counts))
+
+
+@dataclass(frozen=True, eq=False)
+class PieceDivision:
+    """The pieces that a structure was cut into, and the same structure cut otherwise (see `Division`)."""
+
+    layout: Layout
+    counts: NDArray[np.intp]
+
+    @property
+    def accuracy(self) -> float:
+        """Relative accuracy that the study asks of every frequency."""
+        return self.layout.study.accuracy
+
+    def coarser(self) -> System | None:
+        """Half the pieces; None where a stretch cannot be halved, or there is none."""
+        if not len(self.counts) or (self.counts % 2).any():
+            return None
+        return to_system(assemble(self.layout, self.counts // 2))
+
+    def finer(self) -> System:
+        """Twice the pieces."""
+        return to_system(assemble(self.layout, self.counts * 2))
+
+    def for_frequency(self, frequency_hz: float) -> System:
+        """Pieces short enough for modes up to this frequency."""
+        return to_system(assemble(self.layout, counts_for(self.layout, frequency_hz)))
+
+
+def to_system(assembly: Assembly) -> System:
+    """The system of an assembled structure."""
+    study, layout = assembly.layout.study, assembly.layout
+    parts = assembly.parts()
+    mass = _total(assembly, [part.mass for part in parts])
+    stiffness = _total(assembly, [part.stiffness for part in parts])
+    dashpots = [assembly.reduce(part.dashpot) for part in assembly.raw if part.dashpot is not None]
+    rigid = assembly.rigid_motion()
+    pushed = assembly.raw_sum("mass") @ rigid
+    anatomy = Anatomy(
+        places=find_places(assembly),
+        parts=parts,
+        wireframe=draw(assembly),
+        carried=assembly.nodes.transform.T @ pushed,
+        rigid_mass=rigid.T @ pushed,
+        remarks=assumptions(layout),
+        division=PieceDivision(layout, assembly.counts),
+    )
+    return System(
+        mass=mass,
+        stiffness=stiffness,
+        damping=_damping(study, mass, stiffness, dashpots),
+        freedoms=assembly.nodes.freedoms,
+        damping_law=_law(study, parts),
+        anatomy=anatomy,
+    )
+
+
+def _total(assembly: Assembly, matrices: list[Matrix | None]) -> Matrix:
+    found = [matrix for matrix in matrices if matrix is not None]
+    if not found:
+        return sparse.csr_array((assembly.size, assembly.size))
+    return sparse.csr_array(sum(found[1:], found[0]))
+
+
+def _damping(study: Study, mass: Matrix, stiffness: Matrix, dashpots: list[Matrix]) -> Matrix | None:
+    terms = list(dashpots)
+    if study.damping.rayleigh is not None:
+        alpha, beta = rayleigh_constants(study.damping.rayleigh)
+        terms += [alpha * mass, beta * stiffness]
+    return sum(terms[1:], terms[0]) if terms else None
+
+
+def _law(study: Study, parts: tuple[Part, ...]) -> DampingLaw:
+    return DampingLaw(
+        ratio=study.damping.ratio,
+        bands=study.damping.ranges,
+        material=any(part.damping_ratio is not None for part in parts),
+    )
+
+
+def _from_matrices(study: Study) -> System:
+    table, loaded = study.matrices, study.loaded
+    if table is None or loaded is None:
+        raise ModelError(
+            "[matrices]: read the study from its file with vib.read, so that the matrices are loaded"
+        )
+    terms = [] if loaded.damping is None else [loaded.damping]
+    try:
+        return System(
+            mass=loaded.mass,
+            stiffness=loaded.stiffness,
+            damping=_damping(study, loaded.mass, loaded.stiffness, terms),
+            gyroscopic=loaded.gyroscopic,
+            freedoms=tuple(Freedom(name, "") for name in table.freedoms),
+            unsymmetric=table.unsymmetric,
+            damping_law=_law(study, ()),
+        )
+    except MatrixError as error:
+        raise MatrixError(f"matrices.{error}") from None
