@@ -122,8 +122,8 @@ def _member_parts(
         mine = group == i
         which, chain = nodes.stretch[mine], nodes.chain[mine]
         _, _, ratio = material_of(layout.study, i)
-        parts = (scatter(blocks[which], chain, size) for blocks in (stiffness, mass))
-        found.append(Raw(names["members", i], "members", *parts, damping_ratio=ratio))
+        own = [scatter(blocks[which], chain, size) for blocks in (stiffness, mass)]
+        found.append(Raw(names["members", i], "members", own[0], own[1], damping_ratio=ratio))
     return found
 
 

@@ -14,7 +14,8 @@ _PARALLEL = 1e-6
 
 def unit_axis(name: str) -> Array:
     """The unit vector of "x", "y" or "z"."""
-    return np.eye(3)["xyz".index(name)]
+    axis: Array = np.eye(3)["xyz".index(name)]
+    return axis
 
 
 def standing(along: Array, up: str) -> NDArray[np.bool_]:

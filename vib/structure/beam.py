@@ -3,7 +3,7 @@
 Bending uses the shape functions that are exact for static end loads, shear deformation included; the mass
 is the consistent one of the same functions, rotary inertia included.
 
-Source: J. S. Przemieniecki, Theory of Matrix Structural Analysis (1968), sections 5.6 (stiffness) and 11.?
+Source: J. S. Przemieniecki, Theory of Matrix Structural Analysis (1968), chapters 5 (stiffness) and 11
 (mass); the matrices are checked in the tests against integration of the shape functions.
 """
 
@@ -53,7 +53,7 @@ def _shear_ratio(bending: Array, shear: Array, length: Array) -> Array:
     return 12.0 * bending / (shear * length**2)
 
 
-# where the two bending planes sit among the twelve components; a turn about y tilts z downwards, hence the signs
+# where the two bending planes sit among the twelve components; a turn about y tilts z down, hence the signs
 _PLANE_XY = np.array([1, 5, 7, 11])
 _PLANE_XZ = np.array([2, 4, 8, 10])
 _SIGNS_XZ = np.array([1.0, -1.0, 1.0, -1.0])

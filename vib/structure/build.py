@@ -51,17 +51,13 @@ def build_system(study: Study, frequency_hz: float | None = None) -> System:
     return to_system(assemble(layout, counts))
 
 
-@dataclass(frozen=True, eq=False)
+@dataclass(eq=False)
 class PieceDivision:
     """The pieces that a structure was cut into, and the same structure cut otherwise (see `Division`)."""
 
     layout: Layout
     counts: NDArray[np.intp]
-
-    @property
-    def accuracy(self) -> float:
-        """Relative accuracy that the study asks of every frequency."""
-        return self.layout.study.accuracy
+    accuracy: float
 
     def coarser(self) -> System | None:
         """Half the pieces; None where a stretch cannot be halved, or there is none."""
@@ -94,7 +90,7 @@ def to_system(assembly: Assembly) -> System:
         carried=assembly.nodes.transform.T @ pushed,
         rigid_mass=rigid.T @ pushed,
         remarks=assumptions(layout),
-        division=PieceDivision(layout, assembly.counts),
+        division=PieceDivision(layout, assembly.counts, study.accuracy),
     )
     return System(
         mass=mass,

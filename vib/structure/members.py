@@ -1,4 +1,4 @@
-"""From the member tables to arrays with one entry per stretch: the straight bit of a run between two points."""
+"""From the member tables to arrays with one entry per stretch: the straight bit between two points."""
 
 from __future__ import annotations
 
@@ -45,7 +45,8 @@ class Stretches:
     @property
     def separate(self) -> Flags:
         """(s, 2): ends that are not simply the point itself, because of an offset or a release."""
-        return self.released.any(axis=2) | (self.reach_m != 0).any(axis=2)
+        found: Flags = self.released.any(axis=2) | (self.reach_m != 0).any(axis=2)
+        return found
 
     def attachment(self) -> NDArray[np.float64]:
         """(s, 2, 6, 6): how the components of each end follow those of its point.
@@ -92,7 +93,7 @@ def read_stretches(study: Study, points: dict[str, int], faults: list[str]) -> S
     extent = max(float(np.ptp(tips, axis=(0, 1)).max()), float(np.abs(reach).max())) if count else 0.0
     entries = tuple(f'{entry} ("{study.members[i].name}")' for i, entry, _, _ in rows)
     labels = tuple(f"{study.members[i].name} {run[k]}-{run[k + 1]}" for i, _, run, k in rows)
-    for s in np.flatnonzero(length <= 1e-9 * extent):
+    for s in np.flatnonzero(length <= 1e-9 * extent).tolist():
         name_a, name_b = (rows[s][2][rows[s][3] + k] for k in (0, 1))
         faults.append(
             f"{entries[s]}: no length between {name_a} and {name_b}; their ends are at the same place"

@@ -22,7 +22,8 @@ class Springs:
 
     ``ends`` (q, 2) point numbers, `GROUND` second; ``follow`` (q, 6, 12): stretch along the spring's axes
     from the twelve components of its ends; ``stiffness`` and ``dashpot`` (q, 6); ``owner`` (q,) number of
-    the spring table; ``labels`` name each.
+    the spring table; ``labels`` name each;
+    ``arms_m`` (q,) length of the rigid arms, zero where both ends are at one place.
     """
 
     ends: NDArray[np.intp]
@@ -31,6 +32,7 @@ class Springs:
     dashpot: Array
     owner: NDArray[np.intp]
     labels: tuple[str, ...]
+    arms_m: Array
 
     def matrices(self, constants: Array) -> Array:
         """(q, 12, 12) for constants (q, 6) along the springs' axes: follow' diag(constants) follow."""
@@ -61,6 +63,7 @@ def read_springs(study: Study, points: dict[str, int], faults: list[str]) -> Spr
     ends = np.array(pairs, dtype=np.intp).reshape(-1, 2)
     turn = turned(np.array(turns, dtype=float).reshape(-1, 3, 3))
     follow = np.zeros((count, 6, 12))
+    half = np.zeros((count, 3))
     if count:
         first = coordinates[ends[:, 0]]
         grounded = ends[:, 1] == GROUND
@@ -76,6 +79,7 @@ def read_springs(study: Study, points: dict[str, int], faults: list[str]) -> Spr
         np.array(dashpot, dtype=float).reshape(-1, 6),
         np.array(owner, dtype=np.intp),
         tuple(labels),
+        np.linalg.norm(half, axis=1),
     )
 
 
@@ -94,8 +98,8 @@ def _axes(spring: Spring, i: int, faults: list[str]) -> Array:
             table.y != table.z or table.ry != table.rz for table in (spring.stiffness, spring.dashpot)
         ):
             faults.append(
-                f'springs[{i}].y_axis ("{spring.name}") is missing: the constants along y and z differ, and the '
-                "x axis alone does not say where y and z lie"
+                f'springs[{i}].y_axis ("{spring.name}") is missing: the constants along y and z differ, and '
+                "the x axis alone does not say where y and z lie"
             )
     z = np.cross(x, near)
     z /= np.linalg.norm(z)

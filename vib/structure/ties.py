@@ -157,6 +157,7 @@ def _loose(name: str, moves: list[str]) -> str:
     listed = " and ".join(moves)
     hold = ", ".join(f'"{move}"' for move in moves)
     return (
-        f"points.{name}: nothing resists a movement along {listed} and there is no mass; hold it ([[supports]] "
-        f'at = "{name}", hold = [{hold}]), or give it a mass ([[bodies]]), a spring or a member that resists'
+        f"points.{name}: nothing resists a movement along {listed} and there is no mass; hold it "
+        f'([[supports]] at = "{name}", hold = [{hold}]), or give it a mass '
+        "([[bodies]]), a spring or a member that resists"
     )

@@ -1,0 +1,207 @@
+"""The static displacement of a structure under its own weight, and the forces that hold it up."""
+
+from __future__ import annotations
+
+import warnings
+from collections.abc import Callable, Mapping
+from dataclasses import dataclass
+
+import numpy as np
+import scipy.sparse as sparse
+from numpy.typing import NDArray
+
+from vib.structure.assembly import Assembly
+from vib.structure.springs import GROUND
+from vib.system import Array, Matrix
+
+STANDARD_GRAVITY = (
+    9.80665  # m/s^2, exact by definition (3rd General Conference on Weights and Measures, 1901)
+)
+# smallest eigenvalue of the stiffness scaled to a diagonal of ones; real structures lie far above
+_SINGULAR = 1e-13
+_RESIDUAL = 1e-6
+
+Triple = tuple[float, float, float]
+Solve = Callable[[Array], Array]
+
+
+@dataclass(frozen=True)
+class Reaction:
+    """Force (N) and moment (N m) at the point that a support or a grounded spring puts on the structure."""
+
+    name: str
+    point: str
+    force_n: Triple
+    moment_nm: Triple
+
+
+@dataclass(frozen=True, eq=False)
+class Sag:
+    """Static displacement under gravity.
+
+    ``displacement_m`` of every point and body by name; ``greatest_m`` the greatest anywhere along the
+    structure, ``greatest_at`` where that is, in words, ``greatest_place_m`` and as coordinates;
+    ``motion_m`` (k, 3) of the wireframe's nodes; ``reactions`` together carry the weight.
+    """
+
+    displacement_m: Mapping[str, Triple]
+    greatest_m: float
+    greatest_at: str
+    greatest_place_m: Triple
+    motion_m: Array
+    reactions: tuple[Reaction, ...]
+
+
+def find_sag(assembly: Assembly, up: Array) -> tuple[Sag | None, tuple[str, ...]]:
+    """The sag and remarks; None where the structure is free or a mechanism.
+
+    Parameters
+    ----------
+    assembly
+        The structure, cut into pieces.
+    up
+        (3,) unit vector; gravity pulls the other way.
+    """
+    raw_stiffness = assembly.raw_sum("stiffness")
+    load = assembly.raw_sum("mass") @ (assembly.rigid_motion()[:, :3] @ (-STANDARD_GRAVITY * up))
+    transform = assembly.nodes.transform
+    stiffness = assembly.reduce(raw_stiffness)
+    pull = transform.T @ load
+    moved = _solve(stiffness, pull)
+    if moved is None:
+        return None, (
+            "no sag: the structure is free to move somewhere, as a whole or as a mechanism, so that gravity "
+            "has no static answer; vib modes names the free movements",
+        )
+    motion = transform @ moved
+    residual = raw_stiffness @ motion - load
+    return _describe(assembly, motion, _reactions(assembly, motion, residual)), ()
+
+
+def _solve(stiffness: Matrix, pull: Array) -> Array | None:
+    """The displacements, or None where the stiffness is singular to round-off."""
+    diagonal = stiffness.diagonal()
+    if (diagonal <= 0).any():
+        return None
+    if not len(diagonal):
+        return pull
+    scale = 1 / np.sqrt(diagonal)
+    scaled = sparse.csc_array(sparse.diags_array(scale) @ stiffness @ sparse.diags_array(scale))
+    solve = _factor(scaled)
+    if solve is None or _smallest_eigenvalue(solve, len(diagonal)) < _SINGULAR:
+        return None
+    right = scale * pull
+    found = solve(right)
+    found += solve(right - scaled @ found)
+    size = np.linalg.norm(right)
+    if not np.isfinite(found).all() or np.linalg.norm(right - scaled @ found) > _RESIDUAL * size:
+        return None
+    moved: Array = scale * found
+    return moved
+
+
+def _factor(matrix: Matrix) -> Solve | None:
+    from scipy.sparse.linalg import splu
+
+    try:
+        with warnings.catch_warnings():
+            warnings.simplefilter("ignore")
+            solve: Solve = splu(matrix, permc_spec="MMD_AT_PLUS_A", options={"SymmetricMode": True}).solve
+    except RuntimeError:  # exactly singular
+        return None
+    return solve
+
+
+def _smallest_eigenvalue(solve: Solve, size: int) -> float:
+    """By inverse iteration from a vector that is no accident of symmetry; never below the true one."""
+    vector = np.random.default_rng(7).standard_normal(size)
+    smallest = np.inf
+    for _ in range(4):
+        vector /= np.linalg.norm(vector)
+        vector = solve(vector)
+        length = float(np.linalg.norm(vector))
+        if not np.isfinite(length):
+            return 0.0
+        smallest = min(smallest, 1 / length)
+    return smallest
+
+
+def _reactions(assembly: Assembly, motion: Array, residual: Array) -> tuple[Reaction, ...]:
+    """Forces of supports from what is left unbalanced at their points, and of springs to the ground."""
+    layout = assembly.layout
+    ties, held, count = layout.ties, layout.held, len(layout.point_names)
+    at_places = _gather(assembly, residual)
+    forces = np.where(held, at_places[:count], 0.0)
+    carried = (layout.bodies.lead_of_point >= 0) & held.any(axis=1)
+    for place in np.unique(ties.hub[:count][carried]).tolist():
+        # the points of one body share its unbalanced force; where they are too many, the least forces
+        points = np.flatnonzero(carried & (ties.hub[:count] == place))
+        rows = [(point, component) for point in points for component in np.flatnonzero(held[point])]
+        arms = np.array([ties.rigid[point, component] for point, component in rows])
+        everything = np.flatnonzero(ties.hub == place)
+        unbalanced = np.einsum("hij,hi->j", ties.rigid[everything], at_places[everything])
+        shares = np.linalg.lstsq(arms.T, unbalanced, rcond=None)[0]
+        for (point, component), share in zip(rows, shares, strict=True):
+            forces[point, component] = share
+    found = [
+        Reaction(f"support of {name}", name, *_force_and_moment(forces[i]))
+        for i, name in enumerate(layout.point_names)
+        if held[i].any() and not ties.unused[i]
+    ]
+    springs = layout.springs
+    grounded = np.flatnonzero(springs.ends[:, 1] == GROUND)
+    pulls = springs.matrices(springs.stiffness)[:, :6, :6]
+    for q in grounded.tolist():
+        point = int(springs.ends[q, 0])
+        push = -pulls[q] @ motion[6 * point : 6 * point + 6]
+        found.append(Reaction(springs.labels[q], layout.point_names[point], *_force_and_moment(push)))
+    return tuple(found)
+
+
+def _gather(assembly: Assembly, forces: Array) -> NDArray[np.float64]:
+    """(h, 6) forces on nodes, those on separate ends of members moved to their points."""
+    stretches = assembly.layout.stretches
+    at_nodes = forces.reshape(-1, 6)
+    found = at_nodes[: len(assembly.layout.ties.hub)].copy()
+    separate = stretches.separate
+    moved = np.einsum("xij,xi->xj", stretches.attachment()[separate], at_nodes[assembly.nodes.ends[separate]])
+    np.add.at(found, stretches.ends[separate], moved)
+    return found
+
+
+def _describe(assembly: Assembly, motion: Array, reactions: tuple[Reaction, ...]) -> Sag:
+    layout = assembly.layout
+    shifts = motion.reshape(-1, 6)[:, :3]
+    names = (*layout.point_names, *layout.bodies.names)
+    size = np.linalg.norm(shifts, axis=1)
+    # a place with a name wins over an end of a member that moves as much
+    greatest = int(np.argmax(size > size.max(initial=0.0) * (1 - 1e-9))) if size.any() else 0
+    words = list(names)
+    separate = np.nonzero(layout.stretches.separate)
+    words += [
+        f"{layout.stretches.labels[s]} at its {('start', 'end')[e]}" for s, e in zip(*separate, strict=True)
+    ]
+    words += [
+        f"{label} at {k}/{count} of its length"
+        for label, count in zip(layout.stretches.labels, assembly.counts.tolist(), strict=True)
+        for k in range(1, count)
+    ]
+    return Sag(
+        displacement_m={
+            name: _triple(shift) for name, shift in zip(names, shifts[: len(names)], strict=True)
+        },
+        greatest_m=float(size[greatest]),
+        greatest_at=words[greatest],
+        greatest_place_m=_triple(assembly.nodes.places_m[greatest]),
+        motion_m=shifts,
+        reactions=reactions,
+    )
+
+
+def _force_and_moment(six: Array) -> tuple[Triple, Triple]:
+    return _triple(six[:3]), _triple(six[3:])
+
+
+def _triple(vector: Array) -> Triple:
+    x, y, z = vector.tolist()
+    return x, y, z
