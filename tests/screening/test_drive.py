@@ -13,10 +13,10 @@ COMPONENTS = ("x", "y", "z", "rx", "ry", "rz")
 
 @pytest.fixture
 def two_points(modes_at):
-    return lambda shapes: _two_points(modes_at, shapes)
+    return lambda shapes, whole=0.0: _two_points(modes_at, shapes, whole)
 
 
-def _two_points(modes_at, shapes):
+def _two_points(modes_at, shapes, whole):
     """Modes of two points A (0, 0, 0) and B (2, 0, 0) with all six freedoms each."""
     freedoms = tuple(Freedom(point, component) for point in "AB" for component in COMPONENTS)
     places = {
@@ -27,7 +27,7 @@ def _two_points(modes_at, shapes):
     wireframe = Wireframe(
         np.array([[0.0, 0, 0], [2.0, 0, 0]]), sparse.csr_array(np.eye(12)[[0, 1, 2, 6, 7, 8]]), ()
     )
-    anatomy = Anatomy({**places, "held": held}, (), wireframe, np.zeros((12, 6)), np.zeros((6, 6)))
+    anatomy = Anatomy({**places, "held": held}, (), wireframe, np.zeros((12, 6)), whole * np.eye(6))
     shapes = np.asarray(shapes).T
     modes = modes_at(np.arange(1.0, shapes.shape[1] + 1))
     system = System(mass=np.eye(12), stiffness=np.eye(12), freedoms=freedoms, anatomy=anatomy)
@@ -54,6 +54,12 @@ def test_without_a_direction_the_greatest_counts(two_points, excitation):
     modes = two_points([shape(A_x=3.0, A_y=4.0, B_x=10.0), shape(A_x=1.0, A_y=1.0j, B_z=2.0)])
     # the second shape runs A round a circle of radius 1
     assert drive(modes, excitation(speed="1 Hz", at="A")) == pytest.approx([0.5, 0.5])
+
+
+def test_a_mode_of_pure_twisting_is_hardly_driven(two_points, excitation):
+    """With a mass of 4 kg moving as one, a mode of unit modal mass moves 1 / sqrt(4) somewhere."""
+    modes = two_points([shape(A_rx=1.0, A_y=0.01)], whole=4.0)
+    assert drive(modes, excitation(speed="1 Hz", at="A")) == pytest.approx([0.01 / 0.5], rel=1e-3)
 
 
 def test_a_moment_is_compared_with_rotations(two_points, excitation):

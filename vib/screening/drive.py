@@ -28,7 +28,9 @@ def drive(modes: Modes, excitation: Excitation) -> Array | None:
     hardly moves there can hardly be driven from there.
 
     * Force: translation at the place along the direction, over the greatest translation of any drawn node
-      or named place. Without a direction: the greatest translation at the place in any direction.
+      or named place. Without a direction: the greatest translation at the place in any direction. The
+      greatest translation is taken as no less than sqrt(modal mass / mass of the whole), which it can't be
+      unless part of the modal mass turns: so a mode of pure twisting, which moves nowhere, is hardly driven.
     * Moment (``along`` = rx, ry, rz): rotation at the place about that axis, over the greatest rotation of
       any named place, or over the greatest translation divided by the greatest extent of the structure
       where that is more (a mode that only translates is not driven by a moment).
@@ -111,7 +113,9 @@ def _greatest_translation(modes: Modes, shapes: NDArray[Any]) -> Array:
     drawn = _amplitude(nodes.reshape(-1, 3, shapes.shape[1]))
     named = [_amplitude(_motion(place, shapes)[:3])[np.newaxis] for place in anatomy.places.values()]
     greatest: Array = np.concatenate([drawn, *named]).max(axis=0)
-    return greatest
+    modal_mass = (shapes.conj() * (modes.system.mass @ shapes)).sum(axis=0).real
+    whole = float(anatomy.rigid_mass[0, 0])
+    return np.maximum(greatest, np.sqrt(modal_mass / whole)) if whole > 0 else greatest
 
 
 def _greatest_rotation(modes: Modes, shapes: NDArray[Any]) -> Array:
