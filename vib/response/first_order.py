@@ -15,6 +15,7 @@ import numpy as np
 from vib.errors import MatrixError, ModelError
 from vib.massless import dense, first_order, root_scale, split_mass
 from vib.response.transition import EPS, Array
+from vib.solve.damping import ModalDamping, modal_damping
 from vib.solve.dense import dense_undamped
 from vib.solve.undamped import Undamped
 from vib.system import DampingLaw, System
@@ -90,9 +91,10 @@ def full_model(system: System) -> RingModel:
 
 def modal_model(system: System, undamped: Undamped, direct: Array | None = None) -> RingModel:
     """The model in the coordinates of undamped shapes (n, m) of unit modal mass."""
-    squares, shapes = undamped.values, undamped.shapes
+    seen = modal_damping(system, undamped)
+    squares, shapes = seen.undamped.values, seen.undamped.shapes
     m = len(squares)
-    damping = _modal_damping(system, shapes, np.sqrt(np.maximum(squares, 0.0)))
+    damping = _modal_damping(system, seen)
     zero = np.zeros((m, m))
     dual = np.asarray((system.mass @ shapes).T)
     nothing = np.zeros_like(dual)
@@ -109,26 +111,12 @@ def modal_model(system: System, undamped: Undamped, direct: Array | None = None)
     )
 
 
-def law_ratios(system: System, shapes: Array, angular: Array) -> Array:
-    """Damping ratio (m,) that the system's damping law gives each undamped mode; 0 for rigid-body modes."""
-    law = system.damping_law
-    ratios = np.full(len(angular), law.ratio)
-    hertz = angular / (2 * np.pi)
-    for low, high, ratio in law.bands:
-        ratios[(hertz >= low) & (hertz <= high)] += ratio
-    if law.material and system.anatomy is not None:
-        energy = np.maximum(np.einsum("ij,ij->j", shapes, system.stiffness @ shapes), np.finfo(float).tiny)
-        for part in system.anatomy.parts:
-            if part.damping_ratio and part.stiffness is not None:
-                own = np.einsum("ij,ij->j", shapes, part.stiffness @ shapes)
-                ratios = ratios + part.damping_ratio * own / energy
-    return np.where(angular > 0, ratios, 0.0)
-
-
-def _modal_damping(system: System, shapes: Array, angular: Array) -> Array:
-    """Phi' (C + G) Phi plus the law, with what is only rounding set to zero."""
-    m = len(angular)
-    total = np.diag(2 * law_ratios(system, shapes, angular) * angular)
+def _modal_damping(system: System, damping: ModalDamping) -> Array:
+    """Phi' (C + G) Phi plus the law (m, m), with what is only rounding set to zero."""
+    if damping.proportional and system.gyroscopic is None:
+        return np.diag(damping.total)
+    shapes = damping.undamped.shapes
+    total = np.diag(2 * damping.law * damping.undamped.angular)
     for matrix in (system.damping, system.gyroscopic):
         if matrix is None:
             continue
@@ -136,7 +124,7 @@ def _modal_damping(system: System, shapes: Array, angular: Array) -> Array:
         # each entry is a sum of terms of this size, so it can't be known better; the shapes carry the
         # error of their own computation too, hence the factor
         size = np.abs(shapes).T @ (abs(matrix) @ np.abs(shapes))
-        total = total + np.where(np.abs(modal) > 64 * EPS * max(16, m) * size, modal, 0.0)
+        total = total + np.where(np.abs(modal) > 64 * EPS * max(16, len(total)) * size, modal, 0.0)
     return total
 
 

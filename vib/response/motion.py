@@ -82,7 +82,10 @@ class Motion:
         pulse = self.pulse
         if pulse is not None:
             pulse = HalfSine(pulse.duration_s, pulse.load, pulse.direct[output : output + 1])
-        return Motion(self.parts, self.rows[output : output + 1], self.start, pulse)
+        chosen = Motion(self.parts, self.rows[output : output + 1], self.start, pulse)
+        for shared in ("singles", "clusters", "released"):  # the same for all outputs
+            chosen.__dict__[shared] = getattr(self, shared)
+        return chosen
 
     @cached_property
     def singles(self) -> Part | None:
@@ -106,6 +109,27 @@ class Motion:
         singles = np.zeros(0) if self.singles is None else self._forced_singles(self.singles, end)[0]
         clusters = tuple(self._forced_cluster(part, end)[0] for part in self.clusters)
         return singles, clusters
+
+    def by_part(self, time: float) -> Array:
+        """What each part of the model adds to each output at one time, (p, parts)."""
+        at = np.array([time])
+        if time < self.origin_s:
+            moved = np.zeros(0) if self.singles is None else self._forced_singles(self.singles, at)[0]
+            clusters = [self._forced_cluster(part, at)[0] for part in self.clusters]
+        else:
+            late = at - self.origin_s
+            moved, starts = self.released
+            if self.singles is not None:
+                moved = moved * np.exp(self.singles.eigenvalues * late)
+            clusters = [part.free(start, late)[0] for part, start in zip(self.clusters, starts, strict=True)]
+        found = np.zeros((len(self.rows), len(self.parts.parts)))
+        single, cluster = iter(moved), iter(clusters)
+        for index, part in enumerate(self.parts.parts):
+            if part.single:
+                found[:, index] = (part.factor * (self.rows @ part.right[:, 0]) * next(single)).real
+            else:
+                found[:, index] = part.factor * (self.rows @ part.right @ next(cluster)).real
+        return found
 
     def _piece(self, times: Array, order: int) -> Array:
         found = np.zeros((times.size, len(self.rows)))

@@ -1,0 +1,126 @@
+"""From a system and a start to the motion of the outputs: which model, and what its cutting short costs."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, field
+
+import numpy as np
+
+from vib.response.first_order import RingModel, full_model
+from vib.response.groups import take_apart
+from vib.response.motion import HalfSine, Motion
+from vib.response.outputs import Output
+from vib.response.reduced import corrections, lowest, reduced_model
+from vib.response.starts import Start
+from vib.solve.damping import modal_damping
+from vib.solve.dense import dense_undamped
+from vib.system import System
+
+FULL_SIZE = 100  # freedoms up to which the whole first-order model is used, whatever the damping
+UNCOUPLED_SIZE = 600  # and up to which it is used where the damping leaves the modes uncoupled
+COUNTS = (30, 60, 120, 240)  # modes of a reduced model; more where the truncation is still too large
+TRUNCATION = 1e-3  # of the displacement peak; where more modes are not tried any further
+QUANTITIES = ("displacement", "velocity", "acceleration")
+_SAMPLES = 1500
+
+
+@dataclass(frozen=True, eq=False)
+class Assembled:
+    """The motion, and how it was got; ``truncation`` is relative to the peak, per quantity, 0 if complete."""
+
+    motion: Motion
+    model_words: str
+    remarks: tuple[str, ...]
+    truncation: Mapping[str, float] = field(default_factory=lambda: dict.fromkeys(QUANTITIES, 0.0))
+
+
+def assemble(system: System, start: Start, outputs: Sequence[Output]) -> Assembled:
+    """The motion of the outputs after the start.
+
+    Raises
+    ------
+    VibError
+        An impossible start, or matrices that don't determine the motion.
+    """
+    if system.unsymmetric or system.size <= FULL_SIZE or _uncoupled(system):
+        model = full_model(system)
+        motion, remarks = _motion(model, start, outputs)
+        return Assembled(motion, f"complete first-order model, {len(model.matrix)} states", remarks)
+    return _reduced(system, start, outputs)
+
+
+def _uncoupled(system: System) -> bool:
+    if system.size > UNCOUPLED_SIZE or system.gyroscopic is not None:
+        return False
+    return modal_damping(system, dense_undamped(system.mass, system.stiffness)).proportional
+
+
+def _motion(model: RingModel, start: Start, outputs: Sequence[Output]) -> tuple[Motion, tuple[str, ...]]:
+    directions = np.stack([output.direction for output in outputs])
+    state, remarks = start.state(model)
+    pulse = None
+    if start.kind == "pulse" and start.direction is not None:
+        force = start.value * start.direction
+        direct = np.zeros(len(directions)) if model.direct is None else directions @ model.direct @ force
+        pulse = HalfSine(start.duration_s, model.load @ force, direct)
+    return Motion(take_apart(model.matrix), directions @ model.shape, state, pulse), remarks
+
+
+def _reduced(system: System, start: Start, outputs: Sequence[Output]) -> Assembled:
+    forces = [output.direction for output in outputs]
+    given = [vector for vector in (start.displacement, start.velocity) if vector is not None]
+    if start.direction is not None:
+        forces.append(start.direction)
+        if start.kind == "velocity":
+            given.append(start.direction)
+    extra = np.hstack([corrections(system, np.array(forces).T), np.array(given).reshape(-1, system.size).T])
+    earlier: Motion | None = None
+    for count in COUNTS:
+        count = min(count, system.size // 2)
+        model = reduced_model(system, lowest(system, count), count, extra)
+        motion, remarks = _motion(model, start, outputs)
+        if earlier is None:
+            earlier = motion
+            continue
+        truncation = _difference(motion, earlier, model, outputs)
+        earlier = motion
+        if truncation["displacement"] <= TRUNCATION or count == system.size // 2:
+            break
+    words = f"reduced first-order model, {len(model.matrix)} states: {count} modes and static corrections"
+    return Assembled(motion, words, (*remarks, *_truncation_remarks(truncation)), truncation)
+
+
+def _difference(
+    motion: Motion, earlier: Motion, model: RingModel, outputs: Sequence[Output]
+) -> dict[str, float]:
+    """Largest difference of two motions relative to the largest peak of their kind, per quantity."""
+    elastic = np.sqrt(np.abs(model.squares[model.rigid :]))
+    slowest = 2 * np.pi / float(elastic.min()) if elastic.size else 1.0
+    times = np.linspace(0.0, motion.origin_s + 2 * slowest, _SAMPLES)
+    turning = np.array([output.rotational for output in outputs])
+    found = {}
+    for order, quantity in enumerate(QUANTITIES):
+        now, before = motion(times, order), earlier(times, order)
+        worst = 0.0
+        for kind in (turning, ~turning):
+            peak = float(np.abs(now[:, kind]).max(initial=0.0))
+            if peak > 0:
+                worst = max(worst, float(np.abs(now - before)[:, kind].max()) / peak)
+        found[quantity] = worst
+    return found
+
+
+def _truncation_remarks(truncation: Mapping[str, float]) -> tuple[str, ...]:
+    large = [f"{name} {value:.2g}" for name, value in truncation.items() if value > 0.01]
+    remarks = [
+        "The model is cut to its lower modes; the peaks change by at most "
+        + ", ".join(f"{value:.1e} ({name})" for name, value in truncation.items())
+        + " of the largest when half as many modes are used."
+    ]
+    if large:
+        remarks.append(
+            f"Not settled: {', '.join(large)} of the peak still depends on the modes left out. A sharp blow "
+            "excites all modes; give its real duration with pulse."
+        )
+    return tuple(remarks)

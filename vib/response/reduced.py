@@ -1,0 +1,101 @@
+"""A ring model of few states for a large system, and how much its cutting short matters.
+
+The lowest undamped modes span the slow motion; static corrections for the loads, the outputs, the dashpots
+and a given initial state stand for all modes above (the mode acceleration idea; R. R. Craig,
+"Structural Dynamics", mode-displacement and mode-acceleration methods, chapter from memory). What is left out
+is estimated by the difference to a basis of half as many modes.
+"""
+
+from __future__ import annotations
+
+from dataclasses import replace
+
+import numpy as np
+import scipy.linalg
+import scipy.sparse as sparse
+
+from vib.response.first_order import RingModel, modal_model
+from vib.response.transition import Array
+from vib.solve.dense import dense_undamped
+from vib.solve.lanczos import shifted, sparse_undamped
+from vib.solve.undamped import Undamped, elastic_ratio, stores_nothing
+from vib.system import Matrix, System
+
+MOST_DASHPOT_COLUMNS = 60  # beyond these the damping is taken as spread out, where modes alone serve well
+_DEPENDENT = 1e-10  # directions left with less than this share of their mass add nothing
+
+
+def lowest(system: System, count: int) -> Undamped:
+    """The lowest ``count`` undamped modes."""
+    if sparse.issparse(system.mass) and sparse.issparse(system.stiffness) and count < system.size // 2:
+        return sparse_undamped(system.mass, system.stiffness, count, certify=False)
+    return dense_undamped(system.mass, system.stiffness).first(count)
+
+
+def corrections(system: System, vectors: Array) -> Array:
+    """Static answers (n, c) to forces ``vectors`` (n, c), and to the forces of localised dashpots.
+
+    For a free system the answer to the force and a small inertia: with the rigid-body modes beside it, that
+    spans the same.
+    """
+    forces = [vectors]
+    for matrix in (system.damping, system.gyroscopic):
+        if matrix is not None:
+            forces.append(_acting(matrix))
+    forces_together = np.hstack(forces)
+    if not forces_together.shape[1]:
+        return forces_together
+    return np.asarray(shifted(system.mass, system.stiffness).factor.solve(forces_together))
+
+
+def reduced_model(system: System, modes: Undamped, count: int, extra: Array) -> RingModel:
+    """The model of the first ``count`` of ``modes`` and the directions ``extra`` (n, c)."""
+    kept = modes.first(count)
+    shapes = kept.shapes
+    rest = extra
+    for _ in range(2):  # twice is enough to make it orthogonal to rounding
+        rest = rest - shapes @ (shapes.T @ (system.mass @ rest))
+    rest = _orthonormal(system.mass, rest, system.mass @ extra, extra)
+    # the modes are eigenvectors, so nothing couples them to what is orthogonal to them
+    values, turn = scipy.linalg.eigh(_symmetric(rest.T @ (system.stiffness @ rest)))
+    added = rest @ turn
+    still = stores_nothing(*elastic_ratio(system.stiffness, added)) if added.shape[1] else np.zeros(0, bool)
+    squares = np.concatenate([kept.values, np.where(still, 0.0, values)])
+    order = np.lexsort((squares, squares != 0))
+    whole = replace(
+        kept,
+        values=squares[order],
+        shapes=np.hstack([shapes, added])[:, order],
+        errors=np.concatenate([kept.errors, np.zeros(len(values))])[order],
+        rigid=int((squares == 0).sum()),
+        complete=True,  # of the reduced problem, which is what its damping is judged by
+    )
+    return modal_model(system, whole)
+
+
+def _acting(matrix: Matrix) -> Array:
+    """The different columns of a localised damping matrix, (n, c); none where it is spread out."""
+    columns = np.flatnonzero(np.asarray(abs(matrix).sum(axis=0)).ravel())
+    if len(columns) > MOST_DASHPOT_COLUMNS:
+        return np.zeros((matrix.shape[0], 0))
+    chosen = matrix[:, columns]
+    return np.asarray(chosen.toarray() if sparse.issparse(chosen) else chosen, dtype=np.float64)
+
+
+def _orthonormal(mass: Matrix, rest: Array, mass_extra: Array, extra: Array) -> Array:
+    """Columns (n, r) of unit mass, orthogonal in it, spanning ``rest``, without what is only rounding."""
+    size = np.einsum("ij,ij->j", extra, mass_extra)
+    scale = np.where(size > 0, 1 / np.sqrt(np.where(size > 0, size, 1.0)), 0.0)
+    scaled = rest * scale
+    gram = _symmetric(scaled.T @ (mass @ scaled))
+    values, vectors = scipy.linalg.eigh(gram)
+    kept = values > _DEPENDENT * max(1.0, float(values.max(initial=0.0)))
+    basis = scaled @ (vectors[:, kept] / np.sqrt(values[kept]))
+    again = _symmetric(basis.T @ (mass @ basis))
+    lower = np.linalg.cholesky(again) if again.size else again
+    found: Array = scipy.linalg.solve_triangular(lower, basis.T, lower=True).T if again.size else basis
+    return found
+
+
+def _symmetric(matrix: Array) -> Array:
+    return (matrix + matrix.T) / 2
