@@ -34,7 +34,7 @@ class MaterialData:
 
 _STEEL = MaterialData(
     "structural steel", 210e9, 0.30, 7850.0,
-    "E and nu: EN 1993-1-1, 3.2.6; density: EN 1991-1-1 table A.4 gives 77 to 78.5 kN/m^3 (from memory)",
+    "E and nu: EN 1993-1-1, 3.2.6; density: as EN 10210-2 and EN 10219-2 use for masses (from memory)",
 )  # fmt: skip
 
 MATERIALS: tuple[MaterialData, ...] = (

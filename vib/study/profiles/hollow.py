@@ -4,9 +4,9 @@ from __future__ import annotations
 
 import itertools
 import math
-from dataclasses import replace
 
-from vib.study.profiles.outlines import Corner, Point, circle, rounded
+from vib.errors import ModelError
+from vib.study.profiles.outlines import Corner, Point, circle, millimetres, rounded
 from vib.study.profiles.profile import Profile, assemble, not_negative, positive, sizes, thinner
 from vib.study.profiles.torsion import hollow_torsion
 from vib.study.profiles.walls import Wall, shear_area
@@ -77,8 +77,14 @@ def rectangular_hollow(
     outer = 0.0 if outer_radius is None else outer_radius
     inner = max(outer - thickness, 0.0) if inner_radius is None else inner_radius
     not_negative(outer_radius=outer, inner_radius=inner)
+    # Along the diagonal of a corner the wall is sqrt(2) t - (sqrt(2) - 1) (outer - inner) thick.
+    if (math.sqrt(2) - 1) * (outer - inner) >= math.sqrt(2) * thickness:
+        raise ModelError(
+            f"outer_radius: {millimetres(outer)} leaves no wall at the corners; give an inner_radius near "
+            "outer_radius - thickness"
+        )
     inside_y, inside_z = width - 2 * thickness, height - 2 * thickness
-    profile = assemble(
+    return assemble(
         f"rectangular hollow {sizes(width, height, thickness)}",
         (
             rounded(_box(width, height, outer, "outer_radius")),
@@ -86,8 +92,8 @@ def rectangular_hollow(
         ),
         torsion=hollow_torsion(width, height, thickness, (outer + inner) / 2),
         shear=_hollow_shear(width, height, thickness, (outer + inner) / 2),
+        remarks=remarks,
     )
-    return replace(profile, remarks=remarks)
 
 
 def _box(width: float, height: float, radius: float, label: str) -> list[Corner]:

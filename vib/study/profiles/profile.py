@@ -54,6 +54,7 @@ def assemble(
     torsion: float,
     shear: tuple[float, float] | list[Wall],
     shear_centre: Point | None = None,
+    remarks: tuple[str, ...] = (),
 ) -> Profile:
     """Integrate the outline and turn to principal axes; ``shear`` may be walls.
 
@@ -81,7 +82,7 @@ def assemble(
         centroid=(-low_y, -low_z),
         shear_centre=offset,
         outline=outline,
-        remarks=() if shear_centre is None else (OFF_SHEAR_CENTRE,),
+        remarks=remarks if shear_centre is None else (OFF_SHEAR_CENTRE, *remarks),
     )
 
 

@@ -7,7 +7,12 @@ import math
 from vib.errors import ModelError
 from vib.study.profiles.outlines import Corner, rounded
 from vib.study.profiles.profile import Profile, assemble, not_negative, positive, sizes, thinner
-from vib.study.profiles.torsion import corner_junction, free_end_loss, strip_torsion, tee_junction
+from vib.study.profiles.torsion import (
+    angle_torsion,
+    channel_torsion,
+    crossed_torsion,
+    crossed_torsion_remarks,
+)
 from vib.study.profiles.walls import Leg, Wall, add_leg, core_flow
 
 
@@ -31,17 +36,12 @@ def i_section(
         Corner(w, z - f, r, "root_radius"), Corner(b, z - f), Corner(b, z),
     ]  # fmt: skip
     corners = right + [Corner(-c.y, -c.z, c.radius, c.label) for c in right]
-    torsion = (
-        2 * strip_torsion(width, f)
-        + strip_torsion(height - 2 * f, web_thickness)
-        + 2 * tee_junction(f, web_thickness, r)
-        - 4 * free_end_loss(f)
-    )
     return assemble(
         f"I {sizes(height, width, web_thickness, f)}",
         (rounded(corners),),
-        torsion=torsion,
+        torsion=crossed_torsion(2, height, width, web_thickness, f, r),
         shear=_i_walls(height, width, web_thickness, f, r),
+        remarks=crossed_torsion_remarks(web_thickness, f, r),
     )
 
 
@@ -65,18 +65,12 @@ def t_section(
         Corner(b, height), Corner(-b, height), Corner(-b, height - f),
         Corner(-w, height - f, r, "root_radius"),
     ]  # fmt: skip
-    torsion = (
-        strip_torsion(width, f)
-        + strip_torsion(height - f, web_thickness)
-        + tee_junction(f, web_thickness, r)
-        - 2 * free_end_loss(f)
-        - free_end_loss(web_thickness)
-    )
     return assemble(
         f"T {sizes(height, width, web_thickness, f)}",
         (rounded(corners),),
-        torsion=torsion,
+        torsion=crossed_torsion(1, height, width, web_thickness, f, r),
         shear=_t_walls(height, width, web_thickness, f, r),
+        remarks=crossed_torsion_remarks(web_thickness, f, r),
         shear_centre=(0.0, height - f / 2),
     )
 
@@ -134,18 +128,11 @@ def tapered_channel(
     ]  # fmt: skip
     mean = (tip + root) / 2
     line, m = width - t / 2, z - mean / 2
-    torsion = (
-        2 * (width * (tip + root) * (tip**2 + root**2) / 12)
-        + strip_torsion(height - 2 * root, t)
-        + 2 * corner_junction(root, t, r)
-        - 2 * free_end_loss(tip)
-        - 2 * free_end_loss(root)
-    )
     offset = t / 2 - 3 * mean * line**2 / (6 * line * mean + 2 * m * t)
     return assemble(
         f"channel {sizes(height, width, t, flange_thickness)}",
         (rounded(corners),),
-        torsion=torsion,
+        torsion=channel_torsion(height, width, t, tip, root, r),
         shear=_channel_walls(height, width, t, tip, root, r),
         shear_centre=(offset, 0.0),
     )
@@ -172,16 +159,10 @@ def angle(
         Corner(0, 0), Corner(b, 0), Corner(b, t, toe_radius, "toe_radius"),
         Corner(t, t, root_radius, "root_radius"), Corner(t, a, toe_radius, "toe_radius"), Corner(0, a),
     ]  # fmt: skip
-    torsion = (
-        strip_torsion(a, t)
-        + strip_torsion(b - t, t)
-        + corner_junction(t, t, root_radius)
-        - 3 * free_end_loss(t)
-    )
     return assemble(
         f"angle {sizes(a, b, t)}",
         (rounded(corners),),
-        torsion=torsion,
+        torsion=angle_torsion(a, b, t, root_radius),
         shear=_angle_walls(a, b, t, root_radius),
         shear_centre=(t / 2, t / 2),
     )
