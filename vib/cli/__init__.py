@@ -1,0 +1,37 @@
+"""The command line: parse, call, print. It holds no engineering.
+
+Rooms: ``app`` (the commands and their options), ``jobs`` (what each command does), ``delivery`` (streams,
+files, exit status), ``starts`` (the impact options of ``ring``). Nothing heavy is imported until a command
+runs, so that help and completion answer at once.
+
+Exit status: 0 done; 1 done, and a mode lies inside a band or the system is unstable; 2 the input is wrong or
+the work could not be done; 130 interrupted.
+"""
+
+from __future__ import annotations
+
+import sys
+from collections.abc import Sequence
+
+from vib.cli.delivery import explain, go_quiet_on_broken_pipe
+
+__all__ = ["run"]
+
+
+def run(arguments: Sequence[str] | None = None) -> int:
+    """Run one command; the exit status. ``arguments`` default to those of the process."""
+    try:
+        from typer.main import get_command
+
+        from vib.cli.app import app
+
+        given = list(sys.argv[1:] if arguments is None else arguments) or ["--help"]
+        status = get_command(app).main(given, prog_name="vib", standalone_mode=False)
+        return status if isinstance(status, int) else 0
+    except KeyboardInterrupt:
+        return explain("interrupted", 130)
+    except BrokenPipeError:
+        go_quiet_on_broken_pipe()
+        return 0
+    except Exception as error:
+        return explain(error)

@@ -1,0 +1,262 @@
+"""The commands and their options. What they do is in ``vib.cli.jobs``, which is loaded when one runs."""
+
+from __future__ import annotations
+
+from pathlib import Path
+from typing import Annotated, Literal
+
+import typer
+
+from vib.cli.delivery import Wish
+
+_HELP = """Natural frequencies, ring-down and resonance screening of machine frames.
+
+A study is one TOML file with units. In the order of work: new, check, modes, ring, screen, report.
+
+\b
+Example:
+  vib new portal --out portal.toml
+  vib report portal.toml
+
+Results support, and do not replace, review by a licensed engineer under the local code.
+"""
+
+app = typer.Typer(
+    name="vib",
+    help=_HELP,
+    rich_markup_mode=None,
+    pretty_exceptions_enable=False,
+    context_settings={"help_option_names": ["-h", "--help"]},
+)
+
+StudyFile = Annotated[Path, typer.Argument(metavar="STUDY.toml", help="The study file.", show_default=False)]
+AsJson = Annotated[bool, typer.Option("--json", help="Print one JSON document instead of tables.")]
+Out = Annotated[
+    Path | None,
+    typer.Option("--out", metavar="FOLDER", help="Write data files and pictures into this folder."),
+]
+Quiet = Annotated[bool, typer.Option("--quiet", help="No remarks and no progress, errors only.")]
+Units = Annotated[
+    Literal["si", "us"] | None,
+    typer.Option("--units", help="Units of what is shown; default: [units] output of the study, else si."),
+]
+Pictures = Annotated[Literal["svg", "png"], typer.Option("--pictures", help="Kind of pictures for --out.")]
+Count = Annotated[
+    int | None,
+    typer.Option(
+        "--count",
+        metavar="NUMBER",
+        min=1,
+        help="How many modes, slowest first (12 if nothing is asked).",
+        show_default=False,
+    ),
+]
+UpTo = Annotated[
+    str | None,
+    typer.Option("--up-to", metavar="FREQUENCY", help='Modes up to this frequency, such as "200 Hz".'),
+]
+Band = Annotated[
+    str | None,
+    typer.Option(
+        "--band",
+        metavar="RATIO",
+        help='Half width of the bands, such as "25 %", for excitations without their own.',
+        show_default="20 %",
+    ),
+]
+
+
+def _show_version(wanted: bool) -> None:
+    if wanted:
+        from vib import __version__
+        from vib.cli.delivery import put
+
+        put(f"vib {__version__}\n")
+        raise typer.Exit
+
+
+@app.callback()
+def main(
+    version: Annotated[
+        bool, typer.Option("--version", callback=_show_version, is_eager=True, help="Print the version.")
+    ] = False,
+) -> None:
+    """The options that come before the command; the help of the whole is given to the app."""
+
+
+@app.command(short_help="Write a starter study.")
+def new(
+    kind: Annotated[
+        str | None, typer.Argument(metavar="[KIND]", help="Which starter; without it they are listed.")
+    ] = None,
+    out: Annotated[
+        Path | None, typer.Option("--out", metavar="FILE", help="The file to write; default: KIND.toml.")
+    ] = None,
+    quiet: Quiet = False,
+) -> int:
+    """Write a starter study to begin from.
+
+    A file that is there already is never overwritten.
+
+    \b
+    Example:
+      vib new cantilever --out beam.toml
+    """
+    from vib.cli.jobs import new_study
+
+    return new_study(kind, out, Wish(quiet=quiet))
+
+
+@app.command(short_help="Read a study back: mass, supports, sag.")
+def check(
+    study: StudyFile,
+    json: AsJson = False,
+    out: Out = None,
+    quiet: Quiet = False,
+    units: Units = None,
+    pictures: Pictures = "svg",
+) -> int:
+    """Read a study back: mass, centre of mass, supports, sag, orientation.
+
+    With --out it also draws the model.
+
+    \b
+    Example:
+      vib check frame.toml --out drawing
+    """
+    from vib.cli.jobs import check_study
+
+    return check_study(study, units, pictures, Wish(json, out, quiet))
+
+
+@app.command(short_help="Natural frequencies, damping, shapes.")
+def modes(
+    study: StudyFile,
+    count: Count = None,
+    up_to: UpTo = None,
+    json: AsJson = False,
+    out: Out = None,
+    quiet: Quiet = False,
+    units: Units = None,
+    pictures: Pictures = "svg",
+) -> int:
+    """Natural frequencies, damping ratios and mode shapes.
+
+    Exit status 1 if the system is unstable.
+
+    \b
+    Example:
+      vib modes frame.toml --up-to "200 Hz"
+    """
+    from vib.cli.jobs import show_modes
+
+    return show_modes(study, count, up_to, units, pictures, Wish(json, out, quiet))
+
+
+@app.command(short_help="Free response after an impact.")
+def ring(
+    study: StudyFile,
+    impulse: Annotated[str | None, typer.Option(metavar="SIZE", help='A blow, such as "12 N s".')] = None,
+    pulse: Annotated[
+        tuple[str, str] | None,
+        typer.Option(metavar="PEAK DURATION", help='A half-sine pulse, such as "2 kN" "5 ms".'),
+    ] = None,
+    pull: Annotated[
+        str | None, typer.Option(metavar="FORCE", help='A steady pull, let go, such as "500 N".')
+    ] = None,
+    displacement: Annotated[
+        str | None, typer.Option(metavar="LENGTH", help='Pulled so far, then let go, such as "2 mm".')
+    ] = None,
+    velocity: Annotated[
+        str | None, typer.Option(metavar="SPEED", help='The place starts so fast, such as "50 mm/s".')
+    ] = None,
+    at: Annotated[str | None, typer.Option(metavar="PLACE", help="Point, body or freedom.")] = None,
+    along: Annotated[
+        str | None, typer.Option(metavar="DIRECTION", help='x, y, z, rx, ry, rz, -x, ... or "1, 1, 0".')
+    ] = None,
+    duration: Annotated[str | None, typer.Option(metavar="TIME", help='How long, such as "2 s".')] = None,
+    watch: Annotated[
+        list[str] | None,
+        typer.Option(metavar="PLACE", help='Place to show, such as "motor" or "motor x"; may be repeated.'),
+    ] = None,
+    json: AsJson = False,
+    out: Out = None,
+    quiet: Quiet = False,
+    units: Units = None,
+    pictures: Pictures = "svg",
+) -> int:
+    """Free response after an impact: how it rings and dies away.
+
+    What strikes and where is [impact] of the study; the options stand in for its entries.
+
+    \b
+    Example:
+      vib ring frame.toml --impulse "12 N s" --at motor --along x
+    """
+    from vib.cli.jobs import show_ring
+    from vib.cli.starts import StartOptions
+
+    options = StartOptions(impulse, pulse, pull, displacement, velocity, at, along, duration, watch or [])
+    return show_ring(study, options, units, pictures, Wish(json, out, quiet))
+
+
+@app.command(short_help="Resonance screening at running speed.")
+def screen(
+    study: StudyFile,
+    band: Band = None,
+    json: AsJson = False,
+    out: Out = None,
+    quiet: Quiet = False,
+    pictures: Pictures = "svg",
+) -> int:
+    """Resonance screening: does a mode lie near a running speed or one of its orders?
+
+    Exit status 1 if a mode that can be driven lies inside a band, or the system is unstable.
+
+    \b
+    Example:
+      vib screen frame.toml --band "25 %"
+    """
+    from vib.cli.jobs import show_screening
+
+    return show_screening(study, band, pictures, Wish(json, out, quiet))
+
+
+@app.command(short_help="All of it as one printable page.")
+def report(
+    study: StudyFile,
+    count: Count = None,
+    up_to: UpTo = None,
+    band: Band = None,
+    out: Annotated[
+        Path | None,
+        typer.Option("--out", metavar="FOLDER", help="Folder of the page; default: the current one."),
+    ] = None,
+    json: AsJson = False,
+    quiet: Quiet = False,
+    units: Units = None,
+) -> int:
+    """All of it as one printable page, STUDY.html.
+
+    Exit status 0 once the page is written; its first line is the verdict.
+
+    \b
+    Example:
+      vib report frame.toml --out results
+    """
+    from vib.cli.jobs import write_report
+
+    return write_report(study, count, up_to, band, units, out, Wish(json, None, quiet))
+
+
+@app.command(short_help="JSON Schema of the study file.")
+def schema() -> int:
+    """Print the JSON Schema of the study file, for editors that complete it.
+
+    \b
+    Example:
+      vib schema > study.schema.json
+    """
+    from vib.cli.jobs import print_schema
+
+    return print_schema()

@@ -1,0 +1,172 @@
+"""What each command does: read, compute, make the answer, deliver it."""
+
+from __future__ import annotations
+
+import json
+from pathlib import Path
+from typing import TYPE_CHECKING, Literal
+
+from vib.cli.delivery import DONE, OBJECTION, Answer, Wish, deliver, put, warnings_as_remarks
+
+if TYPE_CHECKING:
+    from vib.cli.starts import StartOptions
+    from vib.modes import Modes
+    from vib.study import Study
+    from vib.units import UnitSystem
+
+Chosen = Literal["si", "us"] | None
+_USUAL_COUNT = 12
+
+
+def new_study(kind: str | None, out: Path | None, wish: Wish) -> int:
+    """Write a starter, or list them."""
+    from vib.show.blocks import Facts, Sentence
+    from vib.show.files import write_new
+    from vib.study.starters import STARTERS, starter_text
+
+    if kind is None:
+        listed = Facts(tuple(STARTERS.items()))
+        return deliver(Answer([Sentence("Starters, for vib new KIND:"), listed], dict(STARTERS)), wish)
+    starter = starter_text(kind)
+    target = out if out is not None else Path(f"{kind}.toml")
+    write_new(target, starter.encode("utf-8"))
+    put(f"{target}\n")
+    wish.tell(f"next: vib check {target}")
+    return DONE
+
+
+def check_study(path: Path, units: Chosen, pictures: str, wish: Wish) -> int:
+    """Read the study back."""
+    from vib.show.tables.check import check_blocks, check_document
+    from vib.structure.survey import survey as survey_of
+
+    with warnings_as_remarks(wish):
+        study = _read(path)
+        survey = survey_of(study)
+        document = check_document(study, survey)
+
+        def files() -> dict[str, bytes]:
+            from vib.show.bundles import check_files
+
+            return check_files(study, survey, document, pictures)
+
+        return deliver(Answer(check_blocks(study, survey, _units(study, units)), document, files=files), wish)
+
+
+def show_modes(
+    path: Path, count: int | None, up_to: str | None, units: Chosen, pictures: str, wish: Wish
+) -> int:
+    """Natural frequencies and shapes."""
+    from vib.show.documents import modes_document
+    from vib.show.tables.modes import modes_blocks
+
+    with warnings_as_remarks(wish):
+        study = _read(path)
+        modes = _modes(study, count, up_to)
+
+        def files() -> dict[str, bytes]:
+            from vib.show.bundles import modes_files
+
+            return modes_files(modes, study.title, pictures, study.up)
+
+        answer = Answer(
+            modes_blocks(modes, study.title),
+            modes_document(modes, study.title),
+            modes.remarks,
+            files,
+            DONE if modes.stable else OBJECTION,
+        )
+        return deliver(answer, wish)
+
+
+def _read(path: Path) -> Study:
+    from vib.study import read
+
+    return read(path)
+
+
+def _units(study: Study, chosen: Chosen) -> UnitSystem:
+    return chosen or study.output_units
+
+
+def _modes(study: Study, count: int | None, up_to: str | None) -> Modes:
+    """The modes asked for; without a wish the slowest ones, or all of a small set of matrices."""
+    if up_to is not None:
+        from vib.units import parse
+
+        limit = parse(up_to, "frequency", unit=study.units.declared().get("frequency"))
+        return study.system(up_to=limit).modes(count=count, up_to=limit)
+    system = study.system()
+    if count is None and study.matrices is not None and system.size <= _USUAL_COUNT:
+        return system.modes()
+    return system.modes(count=count or _USUAL_COUNT)
+
+
+def show_ring(path: Path, options: StartOptions, units: Chosen, pictures: str, wish: Wish) -> int:
+    """The free response."""
+    from vib.cli.starts import start_arguments
+    from vib.show.tables.ring import ring_blocks, ring_document
+
+    with warnings_as_remarks(wish):
+        study = _read(path)
+        arguments = start_arguments(study, options)
+        ring = study.system().ring(**arguments)
+        shown = _units(study, units)
+        document = ring_document(ring, study.title)
+
+        def files() -> dict[str, bytes]:
+            from vib.show.bundles import ring_files
+
+            return ring_files(ring, document, shown, pictures)
+
+        answer = Answer(
+            ring_blocks(ring, study.title, shown),
+            document,
+            ring.remarks,
+            files,
+            DONE if ring.stable else OBJECTION,
+        )
+        return deliver(answer, wish)
+
+
+def show_screening(path: Path, band: str | None, pictures: str, wish: Wish) -> int:
+    """Modes against what shakes the machine."""
+    from vib.screening import screen
+    from vib.show.tables.screen import screening_blocks, screening_document
+
+    with warnings_as_remarks(wish):
+        study = _read(path)
+        modes = screening_modes(study, band)
+        screening = screen(modes, study.excitations, band=band)
+        document = screening_document(screening, study.title, modes)
+
+        def files() -> dict[str, bytes]:
+            from vib.show.bundles import screening_files
+
+            return screening_files(screening, modes, document, pictures)
+
+        answer = Answer(
+            screening_blocks(screening, study.title),
+            document,
+            [*screening.remarks, *modes.remarks],
+            files,
+            OBJECTION if screening.objections or not screening.stable else DONE,
+        )
+        return deliver(answer, wish)
+
+
+def screening_modes(study: Study, band: str | None) -> Modes:
+    """The modes up to the top of the highest band."""
+    from vib.screening.lines import highest_needed_hz
+
+    limit = highest_needed_hz(study.excitations, band=band, accuracy=study.accuracy)
+    return study.system(up_to=limit).modes(up_to=limit)
+
+
+def print_schema() -> int:
+    """The JSON Schema of the study file."""
+    from vib.study import Study
+
+    found = {"$schema": "https://json-schema.org/draft/2020-12/schema", **Study.model_json_schema()}
+    put(json.dumps(found, indent=2) + "\n")
+    return DONE

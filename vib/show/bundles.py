@@ -1,0 +1,97 @@
+"""The files of ``--out``: which tables, arrays and pictures each answer is written as."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable
+from typing import TYPE_CHECKING, Any
+
+from vib.show.documents import modes_document, to_json
+from vib.show.files import csv_bytes, npz_bytes
+
+if TYPE_CHECKING:
+    from vib.modes import Modes
+    from vib.response.ring import Ring
+    from vib.screening import Screening
+    from vib.show.figures.canvas import Picture
+    from vib.structure.survey import Survey
+    from vib.study import Study
+    from vib.units import UnitSystem
+
+
+def check_files(study: Study, survey: Survey, document: dict[str, Any], pictures: str) -> dict[str, bytes]:
+    """check.json, the tables of members and parts, and a drawing of a structure."""
+    import numpy as np
+
+    from vib.show.figures.structure import structure_picture
+
+    found = {"check.json": to_json(document).encode()}
+    if study.matrices is not None:
+        return found
+    for name in ("parts", "members"):
+        if document[name]:
+            found[f"{name}.csv"] = csv_bytes(document[name])
+    frames = [(np.array(run.origin_m), np.array([run.x, run.y, run.z])) for run in survey.runs]
+    return found | _drawn([structure_picture(study, study.system(), frames)], pictures)
+
+
+def modes_files(modes: Modes, title: str, pictures: str, up: str) -> dict[str, bytes]:
+    """modes.json, modes.csv, shapes.npz and one picture per mode."""
+    from vib.show.figures.shapes import shape_picture
+
+    document = modes_document(modes, title)
+    found = {
+        "modes.json": to_json(document).encode(),
+        "modes.csv": csv_bytes(document["modes"]),
+        "shapes.npz": npz_bytes(
+            {
+                "frequencies_hz": modes.frequencies_hz,
+                "damping_ratios": modes.damping_ratios,
+                "eigenvalues_per_s": modes.eigenvalues,
+                "shapes": modes.shapes,
+                "freedoms": [str(freedom) for freedom in modes.system.freedoms],
+            }
+        ),
+    }
+    drawn = (shape_picture(modes, index, up) for index in range(modes.count))
+    return found | _drawn(drawn, pictures)
+
+
+def ring_files(ring: Ring, document: dict[str, Any], units: UnitSystem, pictures: str) -> dict[str, bytes]:
+    """ring.json, the history as CSV and npz, and pictures of history and contributions."""
+    from vib.show.figures.ringing import ring_pictures
+    from vib.show.tables.ring import history_columns
+
+    columns = history_columns(ring)
+    rows = [dict(zip(columns, row, strict=True)) for row in zip(*columns.values(), strict=True)]
+    found = {
+        "ring.json": to_json(document).encode(),
+        "ring.csv": csv_bytes(rows),
+        "ring.npz": npz_bytes(
+            {
+                "time_s": ring.time_s,
+                "displacement_m": ring.displacement_m,
+                "velocity_m_s": ring.velocity_m_s,
+                "acceleration_m_s2": ring.acceleration_m_s2,
+                "outputs": list(ring.freedoms),
+                "rotational": list(ring.rotational),
+            }
+        ),
+    }
+    return found | _drawn(ring_pictures(ring, units), pictures)
+
+
+def screening_files(
+    screening: Screening, modes: Modes, document: dict[str, Any], pictures: str
+) -> dict[str, bytes]:
+    """screening.json, screening.csv and one speed-frequency diagram per excitation."""
+    from vib.show.figures.speeds import speed_pictures
+
+    found = {
+        "screening.json": to_json(document).encode(),
+        "screening.csv": csv_bytes(document["rows"]),
+    }
+    return found | _drawn(speed_pictures(screening, modes), pictures)
+
+
+def _drawn(pictures: Iterable[Picture], kind: str) -> dict[str, bytes]:
+    return dict(picture.content(kind) for picture in pictures)

@@ -1,0 +1,1 @@
+"""The nouns as blocks: one file per answer."""
