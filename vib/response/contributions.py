@@ -9,9 +9,9 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from vib.errors import ShapeError
+from vib.response.exponential import Array, Numbers
 from vib.response.groups import CONDITION_LIMIT, Complex, Part, take_apart
 from vib.response.motion import Motion
-from vib.response.transition import Array, Numbers
 
 Flags = NDArray[np.bool_]
 

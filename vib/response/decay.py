@@ -9,8 +9,8 @@ from dataclasses import dataclass
 import numpy as np
 
 from vib.response.contributions import Contributions
+from vib.response.exponential import Array
 from vib.response.motion import Motion
-from vib.response.transition import Array
 
 FALLS = (0.1, 0.01)  # the shares of the peak that times to fall are given for
 _SCAN = 400

@@ -14,7 +14,7 @@ import numpy as np
 
 from vib.errors import MatrixError, ModelError
 from vib.massless import dense, first_order, root_scale, split_mass
-from vib.response.transition import EPS, Array
+from vib.response.exponential import EPS, Array
 from vib.solve.damping import ModalDamping, modal_damping
 from vib.solve.dense import dense_undamped
 from vib.solve.undamped import Undamped

@@ -16,7 +16,8 @@ from numpy.typing import NDArray
 from scipy.sparse import csr_array
 from scipy.sparse.csgraph import connected_components
 
-from vib.response.transition import EPS, Array, Numbers, Propagator
+from vib.response.exponential import EPS, Array, Numbers, balance
+from vib.response.transition import Propagator
 
 # Accuracy 1e-10 over 10 eps: as in `transition`, but a little looser, because splitting into parts is worth
 # more to the reader than the last two digits.
@@ -94,9 +95,7 @@ def take_apart(matrix: Array, limit: float = CONDITION_LIMIT) -> Parts:
     largest, smallest = 1.0, 1.0
     for label in np.unique(labels):
         own = np.flatnonzero(labels == label)
-        balanced, (scale, _) = scipy.linalg.matrix_balance(
-            matrix[np.ix_(own, own)], permute=False, separate=True
-        )
+        balanced, scale = balance(matrix[np.ix_(own, own)])
         parts, stretch = _split(balanced, limit)
         largest, smallest = max(largest, stretch[0]), min(smallest, stretch[1])
         rounding = 16 * EPS * float(np.linalg.norm(balanced, 1))
@@ -126,10 +125,16 @@ def _split(matrix: Array, limit: float) -> tuple[list[Part], tuple[float, float]
             [part.right if part.factor == 1 else np.hstack([part.right, part.right.conj()]) for part in parts]
         )
         lengths = np.linalg.svd(basis, compute_uv=False)
-        if lengths[-1] > 0 and lengths[0] / lengths[-1] <= limit:
+        if lengths[-1] > 0 and lengths[0] / lengths[-1] * max(1.0, _residual(matrix, parts)) <= limit:
             return _with_left(parts, basis), (float(lengths[0]), float(lengths[-1]))
     whole = Part(values.astype(np.complex128), matrix, np.eye(n), np.eye(n), 1.0)
     return [whole], (1.0, 1.0)
+
+
+def _residual(matrix: Array, parts: list[Part]) -> float:
+    """How badly the bases are invariant, in units of ten roundings of the matrix."""
+    rest = [np.abs(matrix @ part.right - part.right @ part.block).max(initial=0.0) for part in parts]
+    return float(max(rest) / (10 * len(matrix) * EPS * max(np.linalg.norm(matrix, 1), np.finfo(float).tiny)))
 
 
 def _linked(values: Numbers, gap: float) -> NDArray[np.int64]:

@@ -13,8 +13,9 @@ from functools import cached_property
 import numpy as np
 
 from vib.errors import AccuracyError
+from vib.response.exponential import Array, Numbers
 from vib.response.groups import Complex, Part, Parts
-from vib.response.transition import Array, Numbers, Propagator
+from vib.response.transition import Propagator
 
 _CHUNK = 4_000_000  # complex numbers at a time, to bound the working memory
 

@@ -8,8 +8,8 @@ from dataclasses import dataclass
 import numpy as np
 
 from vib.errors import ModelError
+from vib.response.exponential import Array
 from vib.response.starts import Along, Start
-from vib.response.transition import Array
 from vib.system import System
 
 MOST_BY_DEFAULT = 24  # outputs chosen unasked
@@ -66,8 +66,8 @@ def choose_outputs(
     remarks: tuple[str, ...] = ()
     if left_out:
         remarks = (
-            f"{MOST_BY_DEFAULT} outputs are recorded and {len(left_out)} more are not, {left_out[0].name} and "
-            "those after it: name the ones you want with watch.",
+            f"{MOST_BY_DEFAULT} outputs are recorded; {left_out[0].name} and {len(left_out) - 1} after it "
+            "are not: name the ones you want with watch.",
         )
     return tuple(found[:MOST_BY_DEFAULT]), remarks
 

@@ -14,8 +14,8 @@ import numpy as np
 import scipy.linalg
 import scipy.sparse as sparse
 
+from vib.response.exponential import Array
 from vib.response.first_order import RingModel, modal_model
-from vib.response.transition import Array
 from vib.solve.dense import dense_undamped
 from vib.solve.lanczos import shifted, sparse_undamped
 from vib.solve.undamped import Undamped, elastic_ratio, stores_nothing

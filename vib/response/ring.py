@@ -18,12 +18,12 @@ from vib.errors import ModelError
 from vib.response.assemble import QUANTITIES, assemble
 from vib.response.contributions import Contributions, contributions_of
 from vib.response.decay import FALLS, Fall, Peak, envelope_fall, peak_of, record_fall
+from vib.response.exponential import Array
 from vib.response.motion import Motion
 from vib.response.outputs import choose_outputs
 from vib.response.sampling import Sampling, sample, significant
 from vib.response.shares import RingMode, ring_modes
 from vib.response.starts import Along, Quantity, Request, quantity, read_start
-from vib.response.transition import Array
 from vib.system import System
 
 if TYPE_CHECKING:

@@ -7,8 +7,8 @@ from dataclasses import dataclass
 import numpy as np
 
 from vib.response.contributions import Contributions, Flags
+from vib.response.exponential import Array
 from vib.response.motion import Motion
-from vib.response.transition import Array
 
 SAMPLES_PER_PERIOD = 20
 MOST_AUTOMATIC = 20_000

@@ -9,7 +9,7 @@ import numpy as np
 
 from vib.response.contributions import Contributions
 from vib.response.decay import FALLS, logarithmic_decrement
-from vib.response.transition import Array
+from vib.response.exponential import Array
 
 LEAST_SHARE = 1e-3
 MOST_ROWS = 40

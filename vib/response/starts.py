@@ -10,8 +10,8 @@ import numpy as np
 from numpy.typing import ArrayLike
 
 from vib.errors import ModelError, ShapeError, UnitError
+from vib.response.exponential import Array
 from vib.response.first_order import RingModel
-from vib.response.transition import Array
 from vib.system import COMPONENTS, System
 from vib.units import KINDS, parse, text
 

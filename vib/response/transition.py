@@ -9,25 +9,20 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
-from typing import Any
+from functools import cached_property
 
 import numpy as np
-import scipy.linalg
-from numpy.typing import ArrayLike, NDArray
+from numpy.typing import ArrayLike
 
 from vib.errors import AccuracyError, MatrixError, ShapeError
+from vib.response.exponential import EPS, Array, Exponential, Numbers, balance
 
-Array = NDArray[np.float64]
-Numbers = NDArray[Any]  # float64 for a real matrix, complex128 for a complex one
-
-EPS = float(np.finfo(np.float64).eps)
 ACCURACY = 1e-12
 # The error of V exp(diag t) V^-1 is about cond(V) eps times a modest factor: the rounding of the
 # eigenvectors, of the inverse and of the two products. Random tests stay below 10.
 _ROUNDING = 10.0
 # Rounding A in its last digit alone moves exp(A t) by about eps |A| t; past this share nothing is left.
 _PHASE_LIMIT = 1e-3
-_TAYLOR_TERMS = 18  # 1/19! = 8e-18 is below eps, which is what is left out where |A h| <= 1
 _CHUNK = 2_000_000  # numbers per piece of a stack, to bound the working memory
 
 
@@ -40,7 +35,8 @@ class Propagator:
         A, (n, n), real or complex, 1/s.
     accuracy
         Relative error wanted, in norm. The eigenvalues are used where the condition number of the matrix of
-        unit eigenvectors of the balanced A is at most ``limit = accuracy / (10 eps)``. Single times at which
+        unit eigenvectors of the balanced A is at most ``limit = accuracy / (10 eps)`` (and the eigenvectors
+        found satisfy their equation, which is checked). Single times at which
         the terms of the sum cancel further than that (very short ones: Phi is then the identity and a little)
         are left to the matrix exponential.
 
@@ -72,14 +68,17 @@ class Propagator:
     def __init__(self, matrix: ArrayLike, *, accuracy: float = ACCURACY) -> None:
         self.matrix = _square(matrix)
         self.limit = accuracy / (_ROUNDING * EPS)
-        # powers of two, so that the scaling itself rounds nothing: A = diag(scale) balanced diag(1 / scale)
-        balanced, (scale, _) = scipy.linalg.matrix_balance(self.matrix, permute=False, separate=True)
-        self._balanced, self._scale = balanced, scale
+        balanced, scale = balance(self.matrix)
         values, vectors = np.linalg.eig(balanced)
         self.eigenvalues = values.astype(np.complex128)
+        self._scale = scale
+        self._balanced = Exponential(balanced, self.eigenvalues)
         self.condition = _condition(vectors)
-        self.method = "eigenvalues" if self.condition <= self.limit else "matrix exponential"
-        self._norm = float(np.linalg.norm(balanced, 1)) if self.size else 0.0
+        self._norm = self._balanced.norm
+        # LAPACK scales once more inside, which on some matrices spoils the vectors: so they are checked
+        rest = np.abs(balanced @ vectors - vectors * values).max(initial=0.0)
+        usable = self.condition <= self.limit and self.condition * rest <= accuracy * self._norm
+        self.method = "eigenvalues" if usable else "matrix exponential"
         if self.method == "eigenvalues":
             self._right = scale[:, None] * vectors
             self._left = np.linalg.inv(vectors) / scale
@@ -120,17 +119,37 @@ class Propagator:
         at = _times(times).ravel()
         self._check_reach(at)
         with np.errstate(over="ignore", invalid="ignore", under="ignore"):
-            found = np.empty((at.size, self.size), self.matrix.dtype)
-            doubtful = np.ones(at.size, bool)
             if self.method == "eigenvalues":
                 terms = np.exp(np.outer(at, self.eigenvalues)) * (self._left @ vector)
                 found = self._real(terms @ self._right.T)
                 size = np.abs(terms) @ np.abs(self._right).T
-                doubtful = _largest(size) > self.limit * _largest(found)
+            else:
+                found = self._balanced.apply(vector / self._scale, at)
+                size = np.broadcast_to(_largest(found)[:, None] * self._scale.max(initial=1.0), found.shape)
+                found = found * self._scale
+            # only before anything has moved can a small answer be trusted to mean cancellation
+            doubtful = (_largest(size) > self.limit * _largest(found)) & (np.abs(at) * self._norm < 1)
             if doubtful.any():
-                found[doubtful] = self._apply_exponentials(vector / self._scale, at[doubtful]) * self._scale
+                found[doubtful] = self._unscaled.apply(vector, at[doubtful])
         self._check_finite(found, at)
         return found
+
+    def _by_exponentials(self, times: Array) -> Numbers:
+        balanced = self._balanced(times)
+        phi: Numbers = (self._scale[:, None] / self._scale) * balanced
+        ratio = self._scale.max(initial=1.0) / self._scale.min(initial=1.0)
+        doubtful = ratio * _largest(balanced) > self.limit * _largest(phi)
+        if doubtful.any():
+            phi[doubtful] = self._unscaled(times[doubtful])
+        return phi
+
+    @cached_property
+    def _unscaled(self) -> Exponential:
+        # where the eigenvector sum cancels, it is the scaling that hides it, so this one goes without
+        return Exponential(self.matrix, self.eigenvalues)
+
+    def _growth(self, time: float) -> float:
+        return self._balanced.growth(time)
 
     def _real(self, found: Numbers) -> Numbers:
         # the imaginary parts of conjugate pairs cancel to rounding
@@ -149,68 +168,8 @@ class Propagator:
             terms = (right_size * np.abs(growth)[:, None, :]) @ left_size
             doubtful[piece] = _largest(terms) > self.limit * _largest(phi[piece])
         if doubtful.any():
-            phi[doubtful] = self._by_exponentials(times[doubtful])
+            phi[doubtful] = self._unscaled(times[doubtful])
         return phi
-
-    def _by_exponentials(self, times: Array) -> Numbers:
-        """One exponential per different time; on a uniform grid only about 2 sqrt(k) of them."""
-        different, places = np.unique(times, return_inverse=True)
-        step = _uniform_step(different)
-        if step is not None and (different[0] >= 0 or different[-1] <= 0):
-            block = math.isqrt(different.size - 1) + 1
-            short = np.stack([self._exponential(i * step) for i in range(block)])
-            # semigroup law: Phi(t0 + (i block + j) step) = Phi(t0 + i block step) Phi(j step)
-            starts = different[0] + step * np.arange(0, different.size, block)
-            if different[-1] <= 0:  # backwards: both factors must run the same way or they would cancel
-                short = np.stack([self._exponential(-i * step) for i in range(block)])
-                starts = different[-1] - step * np.arange(0, different.size, block)
-            parts = [self._exponential(start) @ short for start in starts]
-            phi = np.concatenate(parts)[: different.size]
-            phi = phi[::-1] if different[-1] <= 0 else phi
-        else:
-            phi = np.stack([self._exponential(one) for one in different])
-        found: Numbers = ((self._scale[:, None] / self._scale) * phi)[places]
-        return found
-
-    def _exponential(self, time: float) -> Numbers:
-        """exp of the balanced matrix; its fastest growth is taken out as a factor.
-
-        exp(B t) = exp(a t) exp((B - a I) t): with a the largest real part nothing overflows on the way,
-        and a single multiple eigenvalue leaves a nilpotent matrix, the best case for the exponential.
-        """
-        shift = self._growth(time)
-        lowered = (self._balanced - shift * np.eye(self.size)) * time
-        if not np.all(np.isfinite(lowered)):
-            return np.full_like(self._balanced, np.nan)
-        found: Numbers = np.exp(shift * time) * scipy.linalg.expm(lowered)
-        return found
-
-    def _growth(self, time: float) -> float:
-        rates = self.eigenvalues.real
-        return float(rates.max() if time >= 0 else rates.min()) if rates.size else 0.0
-
-    def _apply_exponentials(self, start: Numbers, times: Array) -> Numbers:
-        """exp(B t) start for k times by the binary digits of t / h, with |B h| <= 1, and a Taylor rest."""
-        found = np.empty((times.size, self.size), np.result_type(start, self._balanced, np.float64))
-        for forwards in (True, False):  # never mixed, so that no step undoes another
-            chosen = (times >= 0) if forwards else (times < 0)
-            if chosen.any():
-                found[chosen] = self._one_way(start, times[chosen])
-        return found
-
-    def _one_way(self, start: Numbers, times: Array) -> Numbers:
-        longest = float(times[np.argmax(np.abs(times))])
-        halvings = max(0, math.ceil(math.log2(max(self._norm * abs(longest), 1.0))))
-        unit = math.ldexp(longest, -halvings)
-        counts = times / unit if unit else np.zeros_like(times)
-        whole = np.minimum(np.floor(counts), 2.0**halvings)
-        states = _taylor(self._balanced * unit, start, counts - whole)
-        whole_numbers = whole.astype(np.int64)
-        for digit in range(halvings + 1):
-            chosen = (whole_numbers >> digit) & 1 == 1
-            if chosen.any():
-                states[chosen] = states[chosen] @ self._exponential(math.ldexp(unit, digit)).T
-        return states
 
     def _check_reach(self, times: Array) -> None:
         """Refuse times at which the last digit of A decides the answer."""
@@ -345,24 +304,3 @@ def _largest(stack: Numbers) -> Array:
     """The largest size of an entry in each of k arrays, (k,)."""
     found: Array = np.abs(stack).reshape(len(stack), -1).max(axis=1, initial=0.0)
     return found
-
-
-def _uniform_step(times: Array) -> float | None:
-    """The step of ascending, evenly spaced times (to rounding), or None."""
-    if times.size < 4:
-        return None
-    step = float((times[-1] - times[0]) / (times.size - 1))
-    even = times[0] + step * np.arange(times.size)
-    return step if np.all(np.abs(times - even) <= 4 * EPS * np.abs(times).max()) else None
-
-
-def _taylor(matrix: Numbers, start: Numbers, fractions: Array) -> Numbers:
-    """exp(matrix r) start for fractions r in [0, 1) and |matrix| <= 1: (k, n)."""
-    states = np.zeros((fractions.size, start.size), np.result_type(start, matrix, np.float64))
-    term = start.astype(states.dtype)
-    weight = np.ones_like(fractions)
-    for order in range(1, _TAYLOR_TERMS + 2):
-        states += weight[:, None] * term
-        term = matrix @ term / order
-        weight = weight * fractions
-    return states
