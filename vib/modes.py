@@ -4,13 +4,16 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass
-from typing import TYPE_CHECKING, Any
+from typing import Any
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-if TYPE_CHECKING:
-    from vib.system import System
+from vib.convergence import Converged, converged_modes
+from vib.descriptions import damping_note, describe, name_rigid
+from vib.errors import ModelError, ShapeError
+from vib.shares import kinetic_shares, participation, strain_shares
+from vib.system import System
 
 Array = NDArray[np.float64]
 Numbers = NDArray[Any]  # float64 where the damping is proportional, complex128 where it is not
@@ -96,16 +99,196 @@ class Modes:
         Parameters
         ----------
         vector
-            (n,) displacement of every freedom per unit motion, or (6,) a rigid motion of the ground
-            where the system has anatomy.
+            Where the system has anatomy: (6,) the rigid motion of the ground, about the origin. Otherwise
+            (n,): the displacement of every freedom per unit of that motion.
+
+        Raises
+        ------
+        ShapeError
+            Not of that length.
         """
-        raise NotImplementedError
+        motion = np.asarray(vector, dtype=np.float64)
+        anatomy = self.system.anatomy
+        length = 6 if anatomy is not None else self.system.size
+        if motion.shape != (length,):
+            raise ShapeError("vector", expected=(length,), got=motion.shape)
+        carried = anatomy.carried @ motion if anatomy is not None else self.system.mass @ motion
+        return participation(self.shapes, carried[:, None])[:, 0] ** 2
 
     def assurance(self, other: Modes | ArrayLike) -> Array:
-        """Modal assurance criterion (m, m2) between the shapes of two sets, 0 to 1."""
-        raise NotImplementedError
+        """Modal assurance criterion (m, m2) between the shapes of two sets, 0 to 1.
+
+        Parameters
+        ----------
+        other
+            Modes with the same freedoms, or shapes (n, m2).
+
+        Raises
+        ------
+        ShapeError
+            The other shapes have another number of freedoms.
+
+        References
+        ----------
+        R. J. Allemang, D. L. Brown, Proc. 1st International Modal Analysis Conference (1982) 110-116.
+        """
+        shapes = other.shapes if isinstance(other, Modes) else np.asarray(other)
+        return assurance(self.shapes, shapes)
+
+
+def assurance(shapes: ArrayLike, others: ArrayLike) -> Array:
+    """Modal assurance criterion |a*b|^2 / (a*a b*b), (m, m2), of shapes (n, m) and (n, m2); 0 to 1.
+
+    Raises
+    ------
+    ShapeError
+        The shapes have different numbers of freedoms.
+
+    References
+    ----------
+    R. J. Allemang, D. L. Brown, Proc. 1st International Modal Analysis Conference (1982) 110-116.
+    """
+    first, second = (_unit_columns(np.atleast_2d(np.asarray(given).T).T) for given in (shapes, others))
+    if first.shape[0] != second.shape[0]:
+        raise ShapeError("shapes", expected=(first.shape[0], second.shape[1]), got=second.shape)
+    return np.asarray(np.abs(first.conj().T @ second) ** 2)
+
+
+def _unit_columns(shapes: Numbers) -> Numbers:
+    length = np.linalg.norm(shapes, axis=0)
+    return np.asarray(shapes / np.where(length > 0, length, 1.0))
 
 
 def find_modes(system: System, *, count: int | None = None, up_to: str | float | None = None) -> Modes:
-    """The modes of a system: lowest ``count`` ones, those up to a frequency, or all finite ones."""
-    raise NotImplementedError
+    """Natural frequencies, damping ratios and mode shapes of a system.
+
+    Parameters
+    ----------
+    system
+        Bare matrices, or a structure; a structure is cut more finely until its accuracy is met, and the
+        modes then refer to that finer system.
+    count
+        How many modes, slowest first, rigid-body modes included; all finite ones if neither limit is given.
+    up_to
+        Only modes up to this natural frequency: text with a unit, or a number in Hz.
+
+    Returns
+    -------
+    Modes
+        See the class; frequencies in Hz, eigenvalues in 1/s, shapes of unit modal mass.
+
+    Raises
+    ------
+    ModelError
+        A limit that is not positive.
+    UnitError
+        ``up_to`` is not a frequency.
+    MatrixError
+        A motion has neither mass, damping nor stiffness.
+    AccuracyError
+        A solver did not finish, or its result can't be trusted.
+
+    References
+    ----------
+    The methods are named in `vib.solve.dense`, `vib.solve.lanczos`, `vib.solve.quadratic` and
+    `vib.solve.arnoldi`, the error of the division in `vib.convergence`.
+
+    Examples
+    --------
+    >>> import vib
+    >>> find_modes(vib.System(mass=[[2.0]], damping=[[0.8]], stiffness=[[8.0]])).damping_ratios.round(12)
+    array([0.1])
+    """
+    limit = _limit(up_to)
+    if count is not None and (isinstance(count, bool) or int(count) != count or count < 1):
+        raise ModelError(f"count: a whole number of modes from 1 is needed, got {count!r}.")
+    found = converged_modes(system, None if count is None else int(count), limit)
+    damped, used = found.solution.damped, found.system
+    rigid_descriptions: tuple[str, ...] = ()
+    shapes = damped.shapes
+    if damped.rigid:
+        still = shapes[:, : damped.rigid].real
+        rigid_descriptions, turn = name_rigid(used, still)
+        shapes = np.hstack([_aligned(used, still @ turn), shapes[:, damped.rigid :]])
+    shapes = _positive(shapes)
+    strain = strain_shares(used, shapes)
+    size = np.abs(damped.values)
+    ratios = -damped.values.real / np.where(size > 0, size, np.nan) + 0.0
+    elastic = describe(used, shapes[:, damped.rigid :], _after(strain, damped.rigid))
+    factors = participation(shapes, used.anatomy.carried) if used.anatomy else None
+    return Modes(
+        system=used,
+        eigenvalues=damped.values,
+        frequencies_hz=size / (2 * np.pi),
+        damped_frequencies_hz=damped.values.imag / (2 * np.pi),
+        undamped_frequencies_hz=damped.undamped / (2 * np.pi),
+        damping_ratios=ratios,
+        shapes=shapes,
+        errors_hz=(damped.errors + found.errors) / (2 * np.pi),
+        condition=damped.condition,
+        stable=not bool((damped.values.real > damped.movement).any()),
+        rigid_body_count=damped.rigid,
+        complete_below_hz=None if damped.certified is None else damped.certified / (2 * np.pi),
+        proportional=damped.proportional,
+        participation=factors,
+        effective_mass=None if factors is None else factors**2,
+        strain_energy=strain,
+        kinetic_energy=kinetic_shares(used, shapes),
+        descriptions=rigid_descriptions + elastic,
+        rigid_descriptions=rigid_descriptions,
+        damping_note=damping_note(used, found.solution.damping, proportional=damped.proportional),
+        remarks=_remarks(used, found),
+    )
+
+
+def _limit(up_to: str | float | None) -> float | None:
+    """The highest angular frequency asked for, rad/s."""
+    if up_to is None:
+        return None
+    if isinstance(up_to, str):
+        from vib.units import parse
+
+        value = parse(up_to, "frequency")
+    else:
+        value = float(up_to)
+    if not np.isfinite(value) or value <= 0:
+        raise ModelError(f"up_to: a positive frequency is needed, got {up_to!r}.")
+    return 2 * np.pi * value
+
+
+def _after(shares: Mapping[str, Array] | None, rigid: int) -> Mapping[str, Array] | None:
+    return None if shares is None else {name: share[rigid:] for name, share in shares.items()}
+
+
+def _aligned(system: System, motions: Array) -> Array:
+    """The named rigid-body motions, orthogonal in the mass in the order of their names."""
+    modal = motions.T @ (system.mass @ motions)
+    scale = np.sqrt(np.where(np.diag(modal) > 0, np.diag(modal), 1.0))
+    scaled = modal / np.outer(scale, scale)
+    if np.linalg.eigvalsh(scaled)[0] < 1e-12:  # one of them moves no mass: only its direction can be given
+        return motions / np.abs(motions).max(axis=0)
+    return np.asarray(np.linalg.solve(np.linalg.cholesky(scaled), (motions / scale).T).T)
+
+
+def _positive(shapes: Numbers) -> Numbers:
+    """Real shapes with their largest component positive; complex ones have it so already."""
+    if np.iscomplexobj(shapes) or not shapes.size:
+        return shapes
+    peak = shapes[np.argmax(np.abs(shapes), axis=0), np.arange(shapes.shape[1])]
+    return shapes * np.where(peak < 0, -1.0, 1.0)
+
+
+def _remarks(system: System, found: Converged) -> tuple[str, ...]:
+    remarks = [*(system.anatomy.remarks if system.anatomy else ()), *found.remarks, *found.solution.remarks]
+    damped = found.solution.damped
+    if damped.certified is None:
+        remarks.append(
+            "It was not checked whether a mode is missing: that cannot be counted for this damping."
+        )
+    elif found.solution.counted:
+        remarks.append("The number of modes was confirmed by an inertia count (Sylvester).")
+    if (damped.undamped < 0).any():
+        remarks.append(
+            "The stiffness is not positive: the structure is buckled or a spring has the wrong sign."
+        )
+    return tuple(remarks)

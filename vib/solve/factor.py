@@ -59,7 +59,9 @@ class Factor:
         scale = self.scale if right.ndim == 1 else self.scale[:, None]
         weighted = np.ascontiguousarray(scale * right)
         if isinstance(self.lower_upper, tuple):
-            found = scipy.linalg.lu_solve(self.lower_upper, weighted, trans=int(transposed), check_finite=False)
+            found = scipy.linalg.lu_solve(
+                self.lower_upper, weighted, trans=int(transposed), check_finite=False
+            )
         else:
             found = self.lower_upper.solve(weighted, trans="T" if transposed else "N")
         return np.asarray(scale * found)

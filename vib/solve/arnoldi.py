@@ -1,0 +1,240 @@
+"""The quadratic eigenproblem of large sparse systems: eigenvalues nearest zero by shift-invert Arnoldi.
+
+With states (q, v = q'), (A - s B)^-1 B needs only S = s^2 M + s (C + G) + K factored once, in real arithmetic
+(F. Tisseur, K. Meerbergen, SIAM Review 43 (2001) 235-286, section 5.2): for B (f, g) the solution is
+q = -inv(S) (M g + (C + G + s M) f), v = f + s q. The shift is zero, or slightly negative for a free structure,
+whose rigid-body motions are projected out exactly.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+import scipy.linalg
+import scipy.sparse.linalg as sparse_linalg
+
+from vib.errors import AccuracyError
+from vib.massless import root_scale
+from vib.solve.damped import Complex, Damped
+from vib.solve.factor import Factor, SingularFactorError, factorise
+from vib.solve.lanczos import Shifted, shifted
+from vib.solve.pairs import Pairs, Quadratic, damped_from_pairs, improve
+from vib.solve.undamped import CANCELLATION, EPS, Array, Matrix, Undamped
+
+
+def sparse_quadratic(
+    mass: Matrix, linear: Matrix, stiffness: Matrix, undamped: Undamped, law: Array, count: int
+) -> Damped:
+    """The ``count`` eigenvalues of least magnitude of a large sparse system, one of each conjugate pair.
+
+    Parameters
+    ----------
+    mass, linear, stiffness
+        (n, n) csr_array; ``linear`` with gyroscopic terms, ``stiffness`` perhaps unsymmetric.
+    undamped
+        The lowest modes of the mass and the symmetric part of the stiffness, rigid-body modes all there.
+    law
+        Damping ratio to be added in each of them.
+
+    Raises
+    ------
+    AccuracyError
+        The factorisation or the iteration failed, or the stiffness is unsymmetric and singular.
+    """
+    problem = _Problem.of(mass, linear, stiffness, undamped, law)
+    values, shapes = _search(problem, count, transposed=False)
+    if problem.symmetric:
+        duals = shapes.conj()
+    else:
+        others, found = _search(problem, count, transposed=True)
+        # A left vector of l is the conjugate of a right vector of the transposed problem.
+        duals = found[:, _partners(values, others)].conj()
+    base = shifted(mass, (stiffness + stiffness.T) / 2)
+    whole = Quadratic(
+        mass=mass,
+        linear=_LowRank(linear, problem.held, problem.rates),
+        constant=stiffness,
+        slack=np.zeros(mass.shape[0]),
+        norm=lambda x: _energy(mass, stiffness, base, x),
+        dual_norm=lambda force: _dual_energy(base, force),
+    )
+    passive = problem.symmetric_stiffness and _passive(mass, linear, undamped)
+    pairs = improve(whole, Pairs.found(values, shapes, duals), passive=passive)
+    return damped_from_pairs(pairs, problem.still, mass, complete=False)
+
+
+@dataclass(frozen=True, eq=False)
+class _LowRank:
+    """A sparse matrix plus ``held`` diag(``rates``) ``held``', with just the operations that are needed."""
+
+    matrix: Matrix
+    held: Array
+    rates: Array
+
+    def __matmul__(self, motion: Complex) -> Complex:
+        return np.asarray(self.matrix @ motion + self.held @ (self.rates[:, None] * (self.held.T @ motion)))
+
+    def __abs__(self) -> _LowRank:
+        return _LowRank(abs(self.matrix), np.abs(self.held), np.abs(self.rates))
+
+
+@dataclass(frozen=True, eq=False)
+class _Problem:
+    """Matrices, damping law, rigid-body motions and the one factorisation of S = s^2 M + s (C + G) + K."""
+
+    mass: Matrix
+    linear: Matrix
+    held: Array  # (n, r) M x of the modes that the damping law acts on
+    rates: Array  # (r,) their damping rates
+    still: Array  # (n, z) rigid-body motions
+    coasting: Array  # those of them that no velocity term touches
+    dragged: Array  # the others
+    symmetric: bool
+    symmetric_stiffness: bool
+    shift: float
+    speed: float  # a typical eigenvalue, to scale velocities like displacements
+    weight: Array  # and displacements like forces
+    factor: Factor
+
+    @staticmethod
+    def of(mass: Matrix, linear: Matrix, stiffness: Matrix, undamped: Undamped, law: Array) -> _Problem:
+        rates = 2 * law * undamped.angular
+        acted = rates > 0
+        still = undamped.shapes[:, : undamped.rigid]
+        straight = abs(stiffness - stiffness.T).max() == 0
+        if undamped.rigid and not straight:
+            raise AccuracyError(
+                "A large system with rigid-body motions and an unsymmetric stiffness can't be solved yet; "
+                "hold it by soft springs, or reduce it below 400 freedoms."
+            )
+        elastic = undamped.angular[undamped.rigid :]
+        speed = float(elastic[len(elastic) // 2]) if len(elastic) else 1.0
+        shift = -0.1 * float(elastic[0]) if undamped.rigid and len(elastic) else 0.0
+        coasting, dragged = _split(linear, still)
+        try:
+            factor = factorise(shift**2 * mass + shift * linear + stiffness, symmetric=False)
+        except SingularFactorError as problem:
+            raise AccuracyError(
+                "The stiffness is singular although no rigid-body motion was found; some entries are too far apart."
+            ) from problem
+        return _Problem(
+            mass=mass,
+            linear=linear,
+            held=mass @ undamped.shapes[:, acted],
+            rates=rates[acted],
+            still=still,
+            coasting=coasting,
+            dragged=dragged,
+            symmetric=bool(straight) and abs(linear - linear.T).max() == 0,
+            symmetric_stiffness=bool(straight),
+            shift=shift,
+            speed=speed,
+            weight=1 / root_scale(np.asarray(stiffness.diagonal())),
+            factor=factor,
+        )
+
+    def velocity_force(self, motion: Array, *, transposed: bool) -> Array:
+        """(C + G + law) @ motion."""
+        matrix = self.linear.T if transposed else self.linear
+        return np.asarray(matrix @ motion + self.held @ (self.rates * (self.held.T @ motion)))
+
+    def projected(self, motion: Array, speed: Array, *, transposed: bool) -> tuple[Array, Array]:
+        """The state without its part at eigenvalue zero: coasting motions, and the rest of dragged ones."""
+        if self.coasting.shape[1]:
+            motion = motion - self.coasting @ (self.coasting.T @ (self.mass @ motion))
+            speed = speed - self.coasting @ (self.coasting.T @ (self.mass @ speed))
+        if self.dragged.shape[1]:
+            matrix = self.linear.T if transposed else self.linear
+            kept = self.dragged.T @ (matrix @ motion + self.mass @ speed)
+            motion = motion - self.dragged @ np.linalg.solve(self.dragged.T @ (matrix @ self.dragged), kept)
+        return motion, speed
+
+
+def _split(linear: Matrix, still: Array) -> tuple[Array, Array]:
+    """Rigid-body motions that no velocity term touches, and the others."""
+    if not still.shape[1]:
+        return still, still
+    touched = np.vstack([linear @ still, linear.T @ still])
+    terms = float((abs(linear) @ np.abs(still)).max(initial=0.0))
+    _, sizes, turned = scipy.linalg.svd(touched, full_matrices=False)
+    free = sizes <= CANCELLATION * EPS * max(terms, np.finfo(float).tiny)
+    return still @ turned[free].T, still @ turned[~free].T
+
+
+def _search(problem: _Problem, count: int, *, transposed: bool) -> tuple[Complex, Complex]:
+    """Eigenvalues nearest the shift and displacement shapes, one of each pair, at least ``count`` if there are."""
+    size = problem.mass.shape[0]
+    solved = problem.factor.solve(problem.held, transposed=transposed) if problem.rates.size else problem.held
+    small = np.diag(1 / problem.rates) + problem.shift * (problem.held.T @ solved)
+
+    def solve(force: Array) -> Array:
+        found = problem.factor.solve_once(force, transposed=transposed)
+        if problem.shift == 0 or not problem.rates.size:
+            return found
+        return np.asarray(found - problem.shift * (solved @ np.linalg.solve(small, problem.held.T @ found)))
+
+    def step(state: Array) -> Array:
+        motion, speed = state[:size] / problem.weight, state[size:] * (problem.speed / problem.weight)
+        motion, speed = problem.projected(motion, speed, transposed=transposed)
+        force = problem.velocity_force(motion, transposed=transposed)
+        force = force + problem.mass @ (speed + problem.shift * motion)
+        found = -solve(force)
+        motion, speed = problem.projected(found, motion + problem.shift * found, transposed=transposed)
+        return np.concatenate([motion * problem.weight, speed * (problem.weight / problem.speed)])
+
+    operator = sparse_linalg.LinearOperator((2 * size, 2 * size), matvec=step, dtype=np.float64)
+    start = step(np.random.default_rng(2).standard_normal(2 * size))
+    wanted = min(2 * count + 4, 2 * size - 2)
+    try:
+        inverse, vectors = sparse_linalg.eigs(
+            operator, k=wanted, which="LM", v0=start, tol=0, ncv=min(2 * size, 2 * wanted + 20)
+        )
+    except sparse_linalg.ArpackError as fault:
+        raise AccuracyError(f"The Arnoldi process stopped: {fault}.") from fault
+    kept = np.abs(inverse) > 1e3 * EPS * np.abs(inverse).max()  # the rest belongs to projected-out motions
+    values, shapes = problem.shift + 1 / inverse[kept], vectors[:size, kept] / problem.weight[:, None]
+    return _upright(values, shapes)
+
+
+def _upright(values: Complex, shapes: Complex) -> tuple[Complex, Complex]:
+    """One of each conjugate pair; a lower one whose partner was not returned is turned up."""
+    upper = np.flatnonzero(values.imag >= 0)
+    lower = np.flatnonzero(values.imag < 0)
+    if len(upper):
+        away = np.abs(values[lower].conj()[:, None] - values[upper]).min(axis=1, initial=np.inf)
+        lower = lower[away > 1e-6 * np.abs(values[lower])]
+    found = np.concatenate([values[upper], values[lower].conj()])
+    moved = np.hstack([shapes[:, upper], shapes[:, lower].conj()])
+    order = np.argsort(np.abs(found), kind="stable")
+    return found[order], moved[:, order]
+
+
+def _partners(values: Complex, others: Complex) -> np.ndarray[tuple[int], np.dtype[np.intp]]:
+    """For each eigenvalue the nearest one of the transposed problem, each used once while there are any."""
+    distance = np.abs(values[:, None] - others)
+    chosen = np.zeros(len(values), dtype=np.intp)
+    for index in range(len(values)):
+        chosen[index] = int(np.argmin(distance[index]))
+        if index + 1 < len(values) and np.isfinite(np.delete(distance[index], chosen[index])).any():
+            distance[:, chosen[index]] = np.inf
+    return chosen
+
+
+def _energy(mass: Matrix, stiffness: Matrix, base: Shifted, motion: Complex) -> Array:
+    return np.abs(np.einsum("ij,ij->j", motion.conj(), stiffness @ motion - base.shift * (mass @ motion)))
+
+
+def _dual_energy(base: Shifted, force: Complex) -> Array:
+    real, imaginary = base.factor.solve(force.real), base.factor.solve(force.imag)
+    return np.abs(np.einsum("ij,ij->j", force.real, real) + np.einsum("ij,ij->j", force.imag, imaginary))
+
+
+def _passive(mass: Matrix, linear: Matrix, undamped: Undamped) -> bool:
+    """Whether the damping takes energy out of any motion and the stiffness stores it in any."""
+    if undamped.values.min(initial=0.0) < 0:
+        return False
+    half = (linear + linear.T) / 2
+    diagonal = np.asarray(half.diagonal())
+    rest = np.asarray(abs(half).sum(axis=1)).ravel() - np.abs(diagonal)
+    return bool((diagonal >= rest * (1 - 1e-12)).all())  # diagonally dominant: enough, not necessary

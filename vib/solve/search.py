@@ -1,0 +1,207 @@
+"""Which solver a system goes to, and the modes it asked for out of what that solver found."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+
+import numpy as np
+import scipy.sparse as sparse
+
+from vib.errors import AccuracyError, MatrixError
+from vib.massless import condense, dense, split_mass
+from vib.solve.arnoldi import sparse_quadratic
+from vib.solve.damped import Damped, proportional_modes
+from vib.solve.damping import ModalDamping, modal_damping
+from vib.solve.dense import dense_undamped
+from vib.solve.factor import negative_count
+from vib.solve.lanczos import count_below, sparse_undamped
+from vib.solve.quadratic import quadratic_modes
+from vib.solve.undamped import Matrix, Undamped
+from vib.system import System
+
+DENSE_SIZE = 150  # up to here all modes cost less than the set-up of the sparse solvers
+DENSE_DAMPED = 400  # with complex modes the dense solver is the better one up to here
+FIRST_GUESS = 24  # modes looked for first where those below a frequency could not be counted
+LARGEST_DENSE = 5000  # (n, n) arrays beyond this fill the memory of an ordinary machine
+
+
+@dataclass(frozen=True, eq=False)
+class Solution:
+    """Modes of the matrices as they are, and what to tell about them."""
+
+    damped: Damped
+    damping: ModalDamping
+    counted: bool  # an inertia count agreed with what was found
+    remarks: tuple[str, ...] = ()
+
+
+def solve_system(system: System, count: int | None, limit: float | None, *, certify: bool = True) -> Solution:
+    """The lowest ``count`` modes, those up to ``limit`` (rad/s), or all finite ones.
+
+    Raises
+    ------
+    AccuracyError
+        A solver did not finish, modes are missing, or all modes of too large a system were asked for.
+    MatrixError
+        A motion has neither mass, damping nor stiffness.
+    """
+    size = system.size
+    everything = count is None and limit is None
+    if everything and size > LARGEST_DENSE:
+        raise AccuracyError(
+            f"All modes of {size} freedoms are too many to compute at once; ask for a count or a highest frequency."
+        )
+    problem = _Problem(system)
+    if everything or size <= DENSE_SIZE or (not sparse.issparse(system.stiffness) and size <= LARGEST_DENSE):
+        return _dense(problem, count, limit, certify=certify)
+    below = None if limit is None else count_below(problem.mass, problem.straight, limit)
+    most = FIRST_GUESS if below is None else below
+    wanted = count if limit is None and count is not None else most if count is None else min(count, most)
+    if 4 * wanted > size and size <= LARGEST_DENSE:
+        return _dense(problem, count, limit, certify=certify)
+    return _sparse(problem, wanted, below, count, limit, certify=certify)
+
+
+class _Problem:
+    """The matrices of a system in the form that the solvers take."""
+
+    def __init__(self, system: System) -> None:
+        self.system = system
+        self.mass: Matrix = system.mass
+        self.stiffness: Matrix = system.stiffness
+        self.twisted = bool(system.unsymmetric and abs(self.stiffness - self.stiffness.T).max() > 0)
+        self.straight: Matrix = (self.stiffness + self.stiffness.T) / 2 if self.twisted else self.stiffness
+        self.spinning = system.gyroscopic is not None and abs(system.gyroscopic).max() > 0
+        damping, gyroscopic = system.damping, system.gyroscopic
+        terms = [matrix for matrix in (damping, gyroscopic) if matrix is not None]
+        self.linear: Matrix = sum(terms[1:], terms[0]) if terms else self.mass * 0.0
+        lopsided = bool(system.unsymmetric and damping is not None and abs(damping - damping.T).max() > 0)
+        self.real_shapes = not (self.twisted or self.spinning or lopsided)
+
+
+def _dense(problem: _Problem, count: int | None, limit: float | None, *, certify: bool) -> Solution:
+    system, mass, straight = problem.system, dense(problem.mass), dense(problem.straight)
+    _check_idle(problem, mass, straight)
+    undamped = dense_undamped(mass, straight)
+    damping = modal_damping(system, undamped)
+    if problem.real_shapes and damping.proportional:
+        lags = np.zeros((system.size, 0))
+        if (
+            undamped.shapes.shape[1] < system.size
+            and damping.rayleigh is not None
+            and damping.rayleigh[1] > 0
+        ):
+            lags = split_mass(mass).massless
+        found = proportional_modes(damping, lags)
+    else:
+        names = tuple(str(freedom) for freedom in system.freedoms)
+        linear, stiffness = dense(problem.linear), dense(problem.stiffness)
+        found = quadratic_modes(mass, linear, stiffness, damping.undamped, damping.law, names)
+    kept = cut(found, count, limit)
+    counted = certify and problem.real_shapes and _count_agrees(mass, straight, undamped, len(kept.values))
+    return Solution(kept, damping, counted)
+
+
+def _check_idle(
+    problem: _Problem, mass: np.ndarray[tuple[int, int], np.dtype[np.float64]], straight: Matrix
+) -> None:
+    idle = condense(mass, straight).idle
+    if idle.shape[1] and not problem.twisted:
+        touched = np.abs(dense(problem.linear) @ idle).max(axis=0)
+        terms = (np.abs(dense(problem.linear)) @ np.abs(idle)).max(axis=0)
+        loose = np.flatnonzero(touched <= 1e-13 * terms)
+        if len(loose):
+            motion = idle[:, loose[0]]
+            rows = np.sort(
+                np.argsort(-np.abs(motion))[: int((np.abs(motion) > 0.1 * np.abs(motion).max()).sum())]
+            )
+            named = ", ".join(f"row {row + 1} ({problem.system.freedoms[row]})" for row in rows[:4])
+            raise MatrixError(
+                f"mass and stiffness: {named} can move together with neither mass nor stiffness; "
+                "give that motion either, or leave it out."
+            )
+
+
+def _count_agrees(mass: Matrix, stiffness: Matrix, undamped: Undamped, kept: int) -> bool:
+    """Whether the inertia of K - s M, with s in the gap above the modes kept, counts what was computed."""
+    if undamped.values.min(initial=0.0) < 0:
+        return False
+    angular, errors = undamped.angular, undamped.errors
+    for inside in range(min(kept, len(angular)), len(angular) + 1):
+        low = angular[inside - 1] + 2 * errors[inside - 1] if inside else 0.0
+        high = angular[inside] - 2 * errors[inside] if inside < len(angular) else 2 * low
+        if high > low * (1 + 1e-9) and high > 0:
+            return negative_count(stiffness - ((low + high) / 2) ** 2 * mass) == inside
+    return False
+
+
+def _sparse(
+    problem: _Problem,
+    wanted: int,
+    below: int | None,
+    count: int | None,
+    limit: float | None,
+    *,
+    certify: bool,
+) -> Solution:
+    system = problem.system
+    for _ in range(6):
+        undamped = sparse_undamped(problem.mass, problem.straight, wanted, certify=certify)
+        if limit is not None and below == wanted and undamped.certified is not None:
+            undamped = replace(undamped, certified=max(undamped.certified, limit))  # counted there as well
+        damping = modal_damping(system, undamped)
+        if problem.real_shapes and damping.proportional:
+            found = proportional_modes(damping, np.zeros((system.size, 0)))
+        elif system.size <= DENSE_DAMPED:
+            return _dense(problem, count, limit, certify=certify)
+        else:
+            law = damping.law
+            found = sparse_quadratic(
+                problem.mass, problem.linear, problem.stiffness, damping.undamped, law, wanted
+            )
+        enough = (
+            limit is None or undamped.complete or bool(np.abs(found.values[-1:]).max(initial=0.0) > limit)
+        )
+        enough = enough or (found.proportional and below is not None and below <= len(undamped.values))
+        if enough and (count is None or len(found.values) >= count):
+            kept = cut(found, count, limit)
+            return Solution(
+                kept, damping, found.proportional and undamped.certified is not None, _law_remark(damping)
+            )
+        wanted = 2 * wanted + 4
+        if 2 * wanted > system.size:
+            return _dense(problem, count, limit, certify=certify)
+    raise AccuracyError("The search for modes below the highest frequency did not come to an end.")
+
+
+def _law_remark(damping: ModalDamping) -> tuple[str, ...]:
+    if damping.proportional or not damping.law.any():
+        return ()
+    return (
+        f"Stated damping ratios act on the lowest {len(damping.law)} undamped modes; dashpots act on all.",
+    )
+
+
+def cut(found: Damped, count: int | None, limit: float | None) -> Damped:
+    """The modes asked for, and below what magnitude they are complete."""
+    size = np.abs(found.values)
+    number = len(size) if count is None else min(count, len(size))
+    if limit is not None:
+        number = min(number, int((size <= limit).sum()))
+    certified = found.certified
+    if found.complete:
+        certified = float(size[-1]) if len(size) else 0.0
+        certified = max(certified, limit) if limit is not None else certified
+    if number < len(size) and certified is not None:
+        certified = min(certified, float(size[number] - found.errors[number]))
+    return replace(
+        found,
+        values=found.values[:number],
+        shapes=found.shapes[:, :number],
+        errors=found.errors[:number],
+        movement=found.movement[:number],
+        condition=found.condition[:number],
+        undamped=found.undamped[:number],
+        rigid=min(found.rigid, number),
+        certified=certified,
+    )
