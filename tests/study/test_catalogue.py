@@ -63,8 +63,8 @@ def test_torsion_constant_agrees_with_the_printed_one(family, share):
         assert abs(found - printed) <= allowed, (entry.designation, found, printed)
 
 
-# Source: EN 10365, EN 10210-2, EN 10219-2 and ASTM A6 tables (printed figures from memory); the values here are
-# recomputed by polygon integrals and two-dimensional St Venant solutions outside this project. cm^2, cm^4.
+# Source: EN 10365, EN 10210-2, EN 10219-2 and ASTM A6 tables (printed figures from memory); the values are
+# recomputed independently by polygon integrals and two-dimensional St Venant solutions; cm^2, cm^4.
 REFERENCE = {
     "IPE 200": (28.487, 1943.4, 142.37, 6.851),
     "HEA 160": (38.776, 1673.2, 615.58, 11.85),

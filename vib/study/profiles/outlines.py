@@ -133,12 +133,12 @@ def _arc(before: Corner, here: Corner, after: Corner, reach: float) -> Arc:
 
 def circle(centre: Point, radius: float, *, hole: bool = False) -> Loop:
     """A whole circle; clockwise if it is a hole."""
-    angles = [0.0, math.pi / 2, math.pi, 3 * math.pi / 2]
+    angles = [math.pi * k / 4 for k in range(8)]
     points = [(centre[0] + radius * math.cos(a), centre[1] + radius * math.sin(a)) for a in angles]
     if hole:
         points.reverse()
     sign = -1 if hole else 1
-    arcs = [Arc(centre, radius, points[i], points[(i + 1) % 4], sign) for i in range(4)]
+    arcs = [Arc(centre, radius, points[i], points[(i + 1) % 8], sign) for i in range(8)]
     return Loop(tuple(points), tuple(arcs))
 
 

@@ -12,6 +12,9 @@ from vib.study.profiles.walls import Wall, shear_area
 Polyline = tuple[Point, ...]
 
 OFF_SHEAR_CENTRE = "the shear centre is not at the centroid; bending and torsion are computed as if it were"
+THICK_WALLS = (
+    "the walls are too thick for the shear flow of thin walls; at most 5/6 of the area carries shear"
+)
 
 
 @dataclass(frozen=True)
@@ -67,6 +70,10 @@ def assemble(
     cos, sin = math.cos(turn), math.sin(turn)
     if isinstance(shear, list):
         shear = (shear_area(shear, turn), shear_area(shear, turn + math.pi / 2))
+        most = 5 / 6 * found.area
+        if max(shear) > most:
+            shear = (min(shear[0], most), min(shear[1], most))
+            remarks = (*remarks, THICK_WALLS)
     outline = tuple(polyline(loop, (y, z)) for loop in loops)
     low_y, low_z = (min(point[k] for point in outline[0]) for k in (0, 1))
     offset = (0.0, 0.0) if shear_centre is None else (shear_centre[0] - y, shear_centre[1] - z)

@@ -193,7 +193,9 @@ def _crossing_flange(
     for side in (-0.5, 0.5):
         leg = Leg((side * width, face), (side * web, face), (0.0, inward), flange, flange, radius)
         last = add_leg(walls, leg)
-        walls.append(Wall((side * web, middle), (0.0, middle), flange, core_flow(flange, radius), (last,)))
+        walls.append(
+            Wall((side * web, middle), (0.0, middle), flange, core_flow(flange, web, radius), (last,))
+        )
         ends.append(len(walls) - 1)
     return tuple(ends)
 
@@ -207,7 +209,7 @@ def _channel_walls(
         face, middle = up * height / 2, up * (height / 2 - root / 2)
         last = add_leg(walls, Leg((width, face), (web, face), (0.0, -up), tip, root, radius))
         # Twice the thickness: the whole block of the corner, though the flow turns at its middle.
-        walls.append(Wall((web, middle), (web / 2, middle), 2 * root, core_flow(root, radius), (last,)))
+        walls.append(Wall((web, middle), (web / 2, middle), 2 * root, core_flow(root, web, radius), (last,)))
         ends.append(len(walls) - 1)
     inside = height / 2 - root
     add_leg(walls, Leg((0.0, inside), (0.0, -inside), (1.0, 0.0), web, web, radius, radius), (ends[0],))

@@ -45,9 +45,12 @@ def channel_torsion(height: float, width: float, web: float, tip: float, root: f
     the corner.
     """
     if web > root:
-        walls = 2 * (_taper(width - web, tip, root) - _end(tip)) + rectangle_torsion(height, web)
+        stub = max(_taper(width - web, tip, root) - _end(tip), 0.0)
+        walls = 2 * stub + rectangle_torsion(height, web)
     else:
-        walls = 2 * (_taper(width, tip, root) - _end(tip) - _end(root)) + _strip(height - 2 * root, web)
+        mean = (tip + root) / 2
+        flange = rectangle_torsion(width, mean) + _taper(width, tip, root) - _strip(width, mean)
+        walls = 2 * flange + _strip(height - 2 * root, web)
     return walls + 2 * _corner(web, root, radius)
 
 
@@ -85,11 +88,14 @@ def _end(thickness: float) -> float:
 
 
 def _corner(one: float, other: float, radius: float) -> float:
-    """What an L junction adds, alpha D^4: El Darwish & Johnston; the thicker wall counts as the flange."""
+    """What an L junction adds, alpha D^4: El Darwish & Johnston; the thicker wall counts as the flange.
+
+    Below their range (walls of 0.4 to 1) the fit turns negative without a rounding; it then adds nothing.
+    """
     t, w, r = max(one, other), min(one, other), radius
     diameter = 2 * ((3 * r + w + t) - math.sqrt(2 * (2 * r + w) * (2 * r + t)))
     alpha = -0.0908 + 0.2621 * w / t + 0.1231 * r / t - 0.0752 * w * r / t**2 - 0.0945 * (w / t) ** 2
-    return alpha * diameter**4
+    return max(alpha, 0.0) * diameter**4
 
 
 def hollow_torsion(width: float, height: float, thickness: float, middle_radius: float) -> float:

@@ -130,9 +130,9 @@ def _fillet(radius: float, low: float, high: float) -> float:
     return (under(min(high, radius)) - under(low)) / (high - low)
 
 
-def core_flow(flange_thickness: float, root_radius: float) -> float:
+def core_flow(flange: float, web: float, root_radius: float) -> float:
     """The thickness that the flow finds where a flange crosses the web.
 
-    The flange and a quarter of the root radius: our own choice, from two-dimensional solutions.
+    The flange and a quarter of what it can spread into: our own choice, from two-dimensional solutions.
     """
-    return flange_thickness + root_radius / 4
+    return flange + (web + root_radius) / 4
