@@ -135,9 +135,9 @@ def check_mass(mass: Matrix, names: Sequence[str]) -> None:
     if (excess > 0).any():
         worst = int(np.argmax(excess))
         raise MatrixError(
-            f"mass: {float(values[worst])!r} at {_spot(int(rows[worst]), int(columns[worst]), names)} outweighs "
-            f"the masses {diagonal[rows[worst]]:.6g} and {diagonal[columns[worst]]:.6g} on the diagonal, so "
-            "some motion would have negative kinetic energy (the mass matrix is indefinite)."
+            f"mass: {float(values[worst])!r} at {_spot(int(rows[worst]), int(columns[worst]), names)} "
+            f"outweighs the masses {diagonal[rows[worst]]:.6g} and {diagonal[columns[worst]]:.6g} on the diagonal, "
+            "so some motion would have negative kinetic energy (the mass matrix is indefinite)."
         )
     vector = _negative_direction(mass, diagonal)
     if vector is not None:

@@ -62,8 +62,8 @@ def converged_modes(system: System, count: int | None, limit: float | None) -> C
         size = np.abs(solution.damped.values)
         if (errors <= division.accuracy * size).all():
             remark = (
-                f"Members are cut into pieces ({system.size} freedoms) so that, by comparison with half as many "
-                f"pieces, every frequency is within {100 * division.accuracy:.2g} %."
+                f"Members are cut into pieces ({system.size} freedoms) so that, by comparison with half as "
+                f"many pieces, every frequency is within {100 * division.accuracy:.2g} %."
             )
             return Converged(system, solution, errors, (remark,))
         if system.size > LARGEST // 2:
@@ -72,8 +72,8 @@ def converged_modes(system: System, count: int | None, limit: float | None) -> C
     errors = _errors(solution.damped, division.coarser() or system)
     worst = int((errors > division.accuracy * np.abs(solution.damped.values)).sum())
     remark = (
-        f"Members were cut as finely as is sane ({system.size} freedoms); {worst} frequencies are still not within "
-        f"{100 * division.accuracy:.2g} %, their error bars say how far off they may be."
+        f"Members were cut as finely as is sane ({system.size} freedoms); {worst} frequencies are still not "
+        f"within {100 * division.accuracy:.2g} %, their error bars say how far off they may be."
     )
     return Converged(system, solution, errors, (remark,))
 
@@ -97,7 +97,7 @@ def _planned(system: System, division: Division, solution: Solution, limit: floa
 
 
 def _errors(fine: Damped, coarse: System) -> Array:
-    """Error of each magnitude that the division leaves, rad/s; all of it where the coarser one has no such mode."""
+    """Error of each magnitude that the division leaves, rad/s; all where the coarser has no such mode."""
     number = len(fine.values)
     size = np.abs(fine.values)
     found = solve_system(coarse, number + 2, None, certify=False).damped
@@ -123,7 +123,7 @@ def _every_mode(system: System, division: Division) -> Converged:
     else:
         solution = solve_system(system, None, None)
     remark = (
-        "All modes of one division were asked for: it was not refined, and the upper frequencies describe the "
-        "division rather than the structure, as their error bars show."
+        "All modes of one division were asked for: it was not refined, and the upper frequencies describe "
+        "the division rather than the structure, as their error bars show."
     )
     return Converged(system, solution, _errors(solution.damped, coarse), (remark,))

@@ -34,6 +34,14 @@ def root_scale(diagonal: Array) -> Array:
     return np.where(size > 0, 1 / np.sqrt(np.where(size > 0, size, 1.0)), 1.0)
 
 
+def acts_on(matrix: Matrix, motions: Array) -> bool:
+    """Whether a matrix (n, n) makes any force of the motions (n, k), beyond cancellation round-off."""
+    if not motions.shape[1]:
+        return False
+    force, terms = np.abs(matrix @ motions), abs(matrix) @ np.abs(motions)
+    return bool((force > 256 * EPS * terms).any())
+
+
 @dataclass(frozen=True, eq=False)
 class MassSplit:
     """The motions with mass, ``massive`` (n, p), and without, ``massless`` (n, z); together a basis.
@@ -56,7 +64,7 @@ def split_mass(mass: Matrix) -> MassSplit:
     size = mass.shape[0]
     diagonal = np.asarray(mass.diagonal())
     heavy: list[tuple[Array, int]] = []
-    light: list[tuple[Array, int]] = [(_unit(size, i), int(i)) for i in np.flatnonzero(diagonal == 0)]
+    light: list[tuple[Array, int]] = [(_unit(size, int(i)), int(i)) for i in np.flatnonzero(diagonal == 0)]
     for block in _blocks(mass):
         if len(block) == 1:
             heavy.append((_unit(size, int(block[0])), int(block[0])))
@@ -135,8 +143,8 @@ def condense(mass: Matrix, stiffness: Matrix) -> Condensed:
     coupling = loose.T @ side
     if coupling.size and np.abs(coupling).max() > 1e3 * EPS * np.abs(loose.T @ light.T @ whole).max():
         raise MatrixError(
-            "mass and stiffness: a motion without mass is pulled by the others but has no stiffness of its own "
-            f"({_mostly(light @ loose[:, 0])}); give it mass or stiffness."
+            "mass and stiffness: a motion without mass is pulled by the others but has no stiffness of its "
+            f"own ({_mostly(light @ loose[:, 0])}); give it mass or stiffness."
         )
     follow = -basis[:, held] @ ((basis[:, held].T @ side) / values[held, None])
     condensed = heavy.T @ whole @ heavy + side.T @ follow
@@ -161,7 +169,7 @@ class FirstOrder:
     """x' = rate x + input f, q = shape x + give f, for forces f (n,) on the freedoms q (n,).
 
     The states x are the p motions with mass, their velocities, then the lagging motions without mass.
-    ``velocity`` (n, s) gives q' where ``give`` is zero; ``labels`` names each state by freedom (-1: a
+    ``labels`` names each state by freedom (-1: a
     combination) and ``order`` by kind: 0 displacement, 1 velocity, 2 lagging displacement.
     """
 
@@ -169,7 +177,6 @@ class FirstOrder:
     input: Array
     shape: Array
     give: Array
-    velocity: Array
     labels: tuple[int, ...]
     order: tuple[int, ...]
 
@@ -192,6 +199,11 @@ def first_order(mass: Matrix, damping: Matrix, stiffness: Matrix, names: Sequenc
     k, c = dense(stiffness), dense(damping)
     kpp, kpz, kzp, kzz = _quarters(k, heavy, light)
     cpp, cpz, czp, czz = _quarters(c, heavy, light)
+    terms = _quarters(np.abs(c), np.abs(heavy), np.abs(light))
+    cpz, czp, czz = (
+        np.where(np.abs(part) > 256 * EPS * term, part, 0.0)
+        for part, term in zip((cpz, czp, czz), terms[1:], strict=True)
+    )
     u1, u2, v1, v2 = _damped_parts(czz)
     if v2.shape[1] and max(_size(cpz @ v2), _size(u2.T @ czp)) > 1e3 * EPS * max(_size(cpz), _size(czp)):
         raise MatrixError(
@@ -222,10 +234,9 @@ def first_order(mass: Matrix, damping: Matrix, stiffness: Matrix, names: Sequenc
     rate = np.vstack([rate_p, scipy.linalg.cho_solve(inertia, rate_v), rate_a])
     force = np.vstack([np.zeros((p, len(k))), scipy.linalg.cho_solve(inertia, force_v), force_a])
     shape = np.hstack([heavy + light @ z_p, np.zeros((len(k), p)), light @ z_a])
-    velocity = shape @ rate
     labels = split.labels[:p] * 2 + _lag_labels(v1, split.labels[p:])
     order = (0,) * p + (1,) * p + (2,) * v1.shape[1]
-    return FirstOrder(rate, force, shape, light @ z_f @ light.T, velocity, labels, order)
+    return FirstOrder(rate, force, shape, light @ z_f @ light.T, labels, order)
 
 
 def _quarters(matrix: Array, heavy: Array, light: Array) -> tuple[Array, Array, Array, Array]:

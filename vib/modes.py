@@ -190,7 +190,7 @@ def find_modes(system: System, *, count: int | None = None, up_to: str | float |
 
     References
     ----------
-    The methods are named in `vib.solve.dense`, `vib.solve.lanczos`, `vib.solve.quadratic` and
+    The methods are named in `vib.solve.dense`, `vib.solve.shift_invert`, `vib.solve.quadratic` and
     `vib.solve.arnoldi`, the error of the division in `vib.convergence`.
 
     Examples
@@ -266,7 +266,7 @@ def _aligned(system: System, motions: Array) -> Array:
     scale = np.sqrt(np.where(np.diag(modal) > 0, np.diag(modal), 1.0))
     scaled = modal / np.outer(scale, scale)
     if np.linalg.eigvalsh(scaled)[0] < 1e-12:  # one of them moves no mass: only its direction can be given
-        return motions / np.abs(motions).max(axis=0)
+        return np.asarray(motions / np.abs(motions).max(axis=0))
     return np.asarray(np.linalg.solve(np.linalg.cholesky(scaled), (motions / scale).T).T)
 
 

@@ -2,8 +2,8 @@
 
 With states (q, v = q'), (A - s B)^-1 B needs only S = s^2 M + s (C + G) + K factored once, in real arithmetic
 (F. Tisseur, K. Meerbergen, SIAM Review 43 (2001) 235-286, section 5.2): for B (f, g) the solution is
-q = -inv(S) (M g + (C + G + s M) f), v = f + s q. The shift is zero, or slightly negative for a free structure,
-whose rigid-body motions are projected out exactly.
+q = -inv(S) (M g + (C + G + s M) f), v = f + s q. The shift is zero, or slightly negative for a free
+structure, whose rigid-body motions are projected out exactly.
 """
 
 from __future__ import annotations
@@ -18,8 +18,8 @@ from vib.errors import AccuracyError
 from vib.massless import root_scale
 from vib.solve.damped import Complex, Damped
 from vib.solve.factor import Factor, SingularFactorError, factorise
-from vib.solve.lanczos import Shifted, shifted
 from vib.solve.pairs import Pairs, Quadratic, damped_from_pairs, improve
+from vib.solve.shift_invert import Shifted, shifted
 from vib.solve.undamped import CANCELLATION, EPS, Array, Matrix, Undamped
 
 
@@ -116,7 +116,8 @@ class _Problem:
             factor = factorise(shift**2 * mass + shift * linear + stiffness, symmetric=False)
         except SingularFactorError as problem:
             raise AccuracyError(
-                "The stiffness is singular although no rigid-body motion was found; some entries are too far apart."
+                "The stiffness is singular although no rigid-body motion was found; "
+                "some entries are too far apart."
             ) from problem
         return _Problem(
             mass=mass,
@@ -163,7 +164,7 @@ def _split(linear: Matrix, still: Array) -> tuple[Array, Array]:
 
 
 def _search(problem: _Problem, count: int, *, transposed: bool) -> tuple[Complex, Complex]:
-    """Eigenvalues nearest the shift and displacement shapes, one of each pair, at least ``count`` if there are."""
+    """Eigenvalues nearest the shift and displacement shapes, one of each pair, ``count`` or more."""
     size = problem.mass.shape[0]
     solved = problem.factor.solve(problem.held, transposed=transposed) if problem.rates.size else problem.held
     small = np.diag(1 / problem.rates) + problem.shift * (problem.held.T @ solved)
@@ -222,12 +223,14 @@ def _partners(values: Complex, others: Complex) -> np.ndarray[tuple[int], np.dty
 
 
 def _energy(mass: Matrix, stiffness: Matrix, base: Shifted, motion: Complex) -> Array:
-    return np.abs(np.einsum("ij,ij->j", motion.conj(), stiffness @ motion - base.shift * (mass @ motion)))
+    force = stiffness @ motion - base.shift * (mass @ motion)
+    return np.asarray(np.abs(np.einsum("ij,ij->j", motion.conj(), force)))
 
 
 def _dual_energy(base: Shifted, force: Complex) -> Array:
     real, imaginary = base.factor.solve(force.real), base.factor.solve(force.imag)
-    return np.abs(np.einsum("ij,ij->j", force.real, real) + np.einsum("ij,ij->j", force.imag, imaginary))
+    both = np.einsum("ij,ij->j", force.real, real) + np.einsum("ij,ij->j", force.imag, imaginary)
+    return np.asarray(np.abs(both))
 
 
 def _passive(mass: Matrix, linear: Matrix, undamped: Undamped) -> bool:

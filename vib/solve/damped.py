@@ -21,7 +21,8 @@ class Damped:
 
     ``values`` (m,) complex, 1/s; ``shapes`` (n, m), real where ``proportional``; ``errors`` (m,) bound the
     error of abs(value), ``movement`` (m,) that of the value itself, 1/s; ``condition`` (m,); ``undamped``
-    (m,) angular frequency without damping, NaN for a lag without mass; ``certified`` as in `Undamped`, in 1/s.
+    (m,) angular frequency without damping, NaN for a lag without mass; ``certified`` as in
+    `Undamped`, in 1/s.
     """
 
     values: Complex

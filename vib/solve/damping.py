@@ -9,7 +9,8 @@ import scipy.linalg
 from numpy.typing import NDArray
 
 from vib.checks import entries
-from vib.massless import root_scale, split_mass
+from vib.massless import acts_on, dense, root_scale, split_mass
+from vib.solve.dense import dense_undamped
 from vib.solve.undamped import EPS, Array, Matrix, Undamped
 from vib.system import System
 
@@ -81,10 +82,10 @@ def modal_damping(system: System, undamped: Undamped) -> ModalDamping:
     rates = np.where(np.abs(rates) <= 256 * EPS * terms, 0.0, rates)
     if turned.complete:
         # A dashpot on a motion without mass brings a first-order lag, which no undamped shape has.
-        lags = shapes.shape[1] < shapes.shape[0] and abs(matrix @ split_mass(system.mass).massless).max() > 0
-        coupled = bool(lags) or _couples(shapes.T @ acted, np.abs(shapes).T @ (abs(matrix) @ np.abs(shapes)))
+        lags = shapes.shape[1] < shapes.shape[0] and acts_on(matrix, split_mass(system.mass).massless)
+        coupled = lags or _couples(shapes.T @ acted, np.abs(shapes).T @ (abs(matrix) @ np.abs(shapes)))
     else:
-        coupled = _leaves(system, turned, acted, rates)
+        coupled = _leaves(system, matrix, turned, acted, rates)
     return ModalDamping(turned, rates, law_ratios(system, turned), not coupled, None, _law_limit(system))
 
 
@@ -145,11 +146,11 @@ def _couples(modal: Array, terms: Array) -> bool:
     return bool(beside.any())
 
 
-def _leaves(system: System, undamped: Undamped, acted: Array, rates: Array) -> bool:
+def _leaves(system: System, matrix: Matrix, undamped: Undamped, acted: Array, rates: Array) -> bool:
     """Whether damping turns any of the shapes found into something else (for an incomplete set)."""
     shapes = undamped.shapes
     rest = np.abs(acted - (system.mass @ shapes) * rates)
-    terms = abs(system.damping) @ np.abs(shapes) + abs(system.mass) @ np.abs(shapes) * np.abs(rates)
+    terms = abs(matrix) @ np.abs(shapes) + abs(system.mass) @ np.abs(shapes) * np.abs(rates)
     weight = root_scale(np.asarray(system.stiffness.diagonal()))[:, None]
     rest, terms = rest * weight, terms * weight
     felt = terms > 1e-9 * terms.max(axis=0)
@@ -158,3 +159,15 @@ def _leaves(system: System, undamped: Undamped, acted: Array, rates: Array) -> b
 
 def _at(matrix: Matrix, rows: NDArray[np.int64], columns: NDArray[np.int64]) -> Array:
     return np.asarray(matrix[rows, columns], dtype=np.float64).ravel()
+
+
+def law_matrix(system: System) -> Array:
+    """The damping law as a matrix (n, n), M X diag(2 ratio w) X' M over all undamped modes X.
+
+    Zero for rigid-body modes; R. W. Clough, J. Penzien, Dynamics of Structures, chapter on the damping matrix
+    (superposition of modal damping matrices).
+    """
+    stiffness = dense(system.stiffness)
+    undamped = dense_undamped(dense(system.mass), (stiffness + stiffness.T) / 2)
+    held = dense(system.mass) @ undamped.shapes
+    return np.asarray((held * (2 * law_ratios(system, undamped) * undamped.angular)) @ held.T)

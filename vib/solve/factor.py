@@ -49,7 +49,7 @@ class Factor:
         """The solution of matrix x = right, (n,) or (n, m), with one step of refinement."""
         operator = self.matrix.T if transposed else self.matrix
         first = self._solve_once(right, transposed)
-        return first + self._solve_once(right - operator @ first, transposed)
+        return np.asarray(first + self._solve_once(right - operator @ first, transposed))
 
     def solve_once(self, right: Array, *, transposed: bool = False) -> Array:
         """The solution without refinement: enough inside an iteration that is checked at its end."""
@@ -93,7 +93,7 @@ def factorise(matrix: Matrix, *, symmetric: bool = True) -> Factor:
 
 
 def negative_count(matrix: Matrix) -> int | None:
-    """How many negative eigenvalues a symmetric matrix has (Sylvester's law of inertia); None if not known."""
+    """How many negative eigenvalues a symmetric matrix has (Sylvester's law); None if not known."""
     try:
         if sparse.issparse(matrix):
             counted = factorise(matrix).negatives
@@ -107,11 +107,12 @@ def negative_count(matrix: Matrix) -> int | None:
 
 def _largest(matrix: Matrix) -> Array:
     """The diagonal, with the largest of the row instead where it is zero."""
-    diagonal = np.abs(np.asarray(matrix.diagonal()))
+    diagonal: Array = np.abs(np.asarray(matrix.diagonal(), dtype=np.float64))
     if (diagonal > 0).all():
         return diagonal
     rows = abs(matrix).max(axis=1)
-    return np.where(diagonal > 0, diagonal, rows.toarray().ravel() if sparse.issparse(rows) else rows)
+    largest = rows.toarray().ravel() if sparse.issparse(rows) else rows
+    return np.asarray(np.where(diagonal > 0, diagonal, largest))
 
 
 def _scaled(matrix: Matrix, scale: Array) -> Any:

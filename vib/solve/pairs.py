@@ -131,7 +131,8 @@ def _dual_size(quadratic: Quadratic, y: Complex, residual: Complex, size: Array)
     energy = energy + size * np.abs(quadratic.linear.diagonal())[:, None]
     floor = np.finfo(float).tiny
     energy = np.where(energy > floor, energy, floor)
-    return np.sqrt(np.sum(np.abs(y) ** 2 * energy, axis=0) * np.sum(np.abs(residual) ** 2 / energy, axis=0))
+    left = np.sum(np.abs(y) ** 2 * energy, axis=0)
+    return np.asarray(np.sqrt(left * np.sum(np.abs(residual) ** 2 / energy, axis=0)))
 
 
 def _rounding(quadratic: Quadratic, x: Complex, y: Complex, size: Array) -> Array:
@@ -139,7 +140,7 @@ def _rounding(quadratic: Quadratic, x: Complex, y: Complex, size: Array) -> Arra
     there, back = np.abs(x), np.abs(y)
     terms = abs(quadratic.constant) @ there + size * (abs(quadratic.linear) @ there)
     terms = terms + size**2 * (abs(quadratic.mass) @ there)
-    return np.einsum("ij,ij->j", back, 4 * EPS * terms + quadratic.slack[:, None] * there)
+    return np.asarray(np.einsum("ij,ij->j", back, 4 * EPS * terms + quadratic.slack[:, None] * there))
 
 
 def _gaps(values: Complex) -> Array:
@@ -147,7 +148,7 @@ def _gaps(values: Complex) -> Array:
     every = np.concatenate([values, values[values.imag > 0].conj()])
     distance = np.abs(values[:, None] - every)
     distance[np.arange(len(values)), np.arange(len(values))] = np.inf
-    return distance.min(axis=1)
+    return np.asarray(distance.min(axis=1))
 
 
 def _critical(pairs: Pairs) -> Pairs:

@@ -1,9 +1,9 @@
 """The quadratic eigenproblem (l^2 M + l (C + G) + K) x = 0 of small systems, every finite eigenvalue.
 
 In the coordinates of the undamped modes, with states w q and q', the first-order matrix is
-[[0, W], [-W, -D]]: balanced, and normal where the damping is (F. Tisseur, K. Meerbergen, SIAM Review 43 (2001)
-235-286, section 3.5, for the choice of scaling). Motions without mass but with damping, and unsymmetric stiffness
-beside motions without mass, go through the first-order form of `vib.massless`.
+[[0, W], [-W, -D]]: balanced, and normal where there is no damping (choice of scaling: F. Tisseur,
+K. Meerbergen, SIAM Review 43 (2001) 235-286, section 3.5). Motions without mass but with damping, and
+unsymmetric stiffness beside motions without mass, go through the first-order form of `vib.massless`.
 """
 
 from __future__ import annotations
@@ -14,7 +14,7 @@ import numpy as np
 import scipy.linalg
 
 from vib.errors import AccuracyError
-from vib.massless import Matrix, dense, first_order, root_scale, split_mass
+from vib.massless import Matrix, acts_on, dense, first_order, root_scale, split_mass
 from vib.solve.damped import Damped
 from vib.solve.pairs import Pairs, Quadratic, damped_from_pairs, improve
 from vib.solve.undamped import CANCELLATION, EPS, Array, Undamped
@@ -44,9 +44,7 @@ def quadratic_modes(
     skew = (stiffness - stiffness.T) / 2
     twisted = bool(abs(skew).max() > 0)
     light = split_mass(mass).massless
-    lagging = light.shape[1] and (
-        twisted or abs(damping @ light).max() > 0 or abs(damping.T @ light).max() > 0
-    )
+    lagging = (twisted and light.shape[1] > 0) or acts_on(damping, light) or acts_on(damping.T, light)
     rates = 2 * law * undamped.angular
     shapes = undamped.shapes
     if lagging or (twisted and undamped.rigid):
@@ -88,7 +86,7 @@ def _judged(
 
 
 def _modal_pairs(modal: Quadratic, rigid: int) -> Pairs:
-    """Modal coordinates: displacements of rigid bodies are known eigenvectors at zero and leave the matrix."""
+    """Modal coordinates: displacements of rigid bodies are known eigenvectors at zero and left out."""
     size = len(modal.linear)
     turn, free = _undamped_first(modal.linear, rigid)
     linear = turn.T @ modal.linear @ turn
@@ -104,7 +102,8 @@ def _modal_pairs(modal: Quadratic, rigid: int) -> Pairs:
         return Pairs.none(size)
     values, left, right = scipy.linalg.eig(state, left=True, right=True)
     upright = values.imag >= 0
-    shapes, duals = np.zeros((2, size, int(upright.sum())), complex)
+    shapes = np.zeros((size, int(upright.sum())), dtype=np.complex128)
+    duals = shapes.copy()
     shapes[moving], duals[moving] = right[len(elastic) :, upright], left[len(elastic) :, upright]
     return Pairs.found(values[upright], turn @ shapes, turn @ duals)
 
@@ -131,8 +130,8 @@ def _through_first_order(whole: Quadratic, names: tuple[str, ...]) -> tuple[Pair
     dropped, kept = order[:zeros], order[zeros:]
     if zeros and len(kept) and abs(values[dropped[-1]]) > 1e-3 * abs(values[kept[0]]):
         raise AccuracyError(
-            f"Eigenvalues at zero ({zeros} by the rank of the matrices) can't be told from the slowest others; "
-            f"the nearest is {abs(values[kept[0]]):.3g} 1/s."
+            f"Eigenvalues at zero ({zeros} by the rank of the matrices) can't be told from the slowest "
+            f"others; the nearest is {abs(values[kept[0]]):.3g} 1/s."
         )
     kept = kept[values[kept].imag >= 0]
     shapes, duals = form.shape @ right[:, kept], form.input.T @ left[:, kept]

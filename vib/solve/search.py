@@ -14,9 +14,9 @@ from vib.solve.damped import Damped, proportional_modes
 from vib.solve.damping import ModalDamping, modal_damping
 from vib.solve.dense import dense_undamped
 from vib.solve.factor import negative_count
-from vib.solve.lanczos import count_below, sparse_undamped
 from vib.solve.quadratic import quadratic_modes
-from vib.solve.undamped import Matrix, Undamped
+from vib.solve.shift_invert import count_below, sparse_undamped
+from vib.solve.undamped import CANCELLATION, EPS, Array, Matrix, Undamped
 from vib.system import System
 
 DENSE_SIZE = 150  # up to here all modes cost less than the set-up of the sparse solvers
@@ -49,7 +49,8 @@ def solve_system(system: System, count: int | None, limit: float | None, *, cert
     everything = count is None and limit is None
     if everything and size > LARGEST_DENSE:
         raise AccuracyError(
-            f"All modes of {size} freedoms are too many to compute at once; ask for a count or a highest frequency."
+            f"All modes of {size} freedoms are too many to compute at once; "
+            "ask for a count or a highest frequency."
         )
     problem = _Problem(system)
     if everything or size <= DENSE_SIZE or (not sparse.issparse(system.stiffness) and size <= LARGEST_DENSE):
@@ -86,11 +87,7 @@ def _dense(problem: _Problem, count: int | None, limit: float | None, *, certify
     damping = modal_damping(system, undamped)
     if problem.real_shapes and damping.proportional:
         lags = np.zeros((system.size, 0))
-        if (
-            undamped.shapes.shape[1] < system.size
-            and damping.rayleigh is not None
-            and damping.rayleigh[1] > 0
-        ):
+        if undamped.shapes.shape[1] < system.size and damping.rayleigh is not None:
             lags = split_mass(mass).massless
         found = proportional_modes(damping, lags)
     else:
@@ -102,24 +99,22 @@ def _dense(problem: _Problem, count: int | None, limit: float | None, *, certify
     return Solution(kept, damping, counted)
 
 
-def _check_idle(
-    problem: _Problem, mass: np.ndarray[tuple[int, int], np.dtype[np.float64]], straight: Matrix
-) -> None:
-    idle = condense(mass, straight).idle
-    if idle.shape[1] and not problem.twisted:
-        touched = np.abs(dense(problem.linear) @ idle).max(axis=0)
-        terms = (np.abs(dense(problem.linear)) @ np.abs(idle)).max(axis=0)
-        loose = np.flatnonzero(touched <= 1e-13 * terms)
-        if len(loose):
-            motion = idle[:, loose[0]]
-            rows = np.sort(
-                np.argsort(-np.abs(motion))[: int((np.abs(motion) > 0.1 * np.abs(motion).max()).sum())]
-            )
-            named = ", ".join(f"row {row + 1} ({problem.system.freedoms[row]})" for row in rows[:4])
-            raise MatrixError(
-                f"mass and stiffness: {named} can move together with neither mass nor stiffness; "
-                "give that motion either, or leave it out."
-            )
+def _check_idle(problem: _Problem, mass: Array, straight: Array) -> None:
+    """Raise MatrixError for a motion that no matrix resists."""
+    idle = np.zeros((len(mass), 0)) if problem.twisted else condense(mass, straight).idle
+    if not idle.shape[1]:
+        return
+    linear = dense(problem.linear)
+    touched, terms = np.abs(linear @ idle).max(axis=0), (np.abs(linear) @ np.abs(idle)).max(axis=0)
+    loose = np.flatnonzero(touched <= CANCELLATION * EPS * terms)
+    if len(loose):
+        motion = np.abs(idle[:, loose[0]])
+        rows = np.flatnonzero(motion > 0.1 * motion.max())[:4]
+        named = ", ".join(f"row {row + 1} ({problem.system.freedoms[row]})" for row in rows)
+        raise MatrixError(
+            f"mass and stiffness: {named} can move together with neither mass nor stiffness; "
+            "give that motion either, or leave it out."
+        )
 
 
 def _count_agrees(mass: Matrix, stiffness: Matrix, undamped: Undamped, kept: int) -> bool:

@@ -12,8 +12,9 @@ Array = NDArray[np.float64]
 Matrix = Any
 EPS = float(np.finfo(float).eps)
 
-# A mode whose elastic energy is below this many units of round-off of the terms that cancel in it stores none.
-# Entries assembled from a few dozen rounded contributions are wrong by some tens of units; 256 leaves a margin.
+# A mode whose elastic energy is below this many units of round-off of the terms that cancel in it stores
+# none. Entries assembled from a few dozen rounded contributions are wrong by some tens of units; 256 leaves
+# a margin.
 CANCELLATION = 256.0
 
 
