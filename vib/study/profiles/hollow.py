@@ -6,10 +6,12 @@ import itertools
 import math
 
 from vib.errors import ModelError
-from vib.study.profiles.outlines import Corner, Point, circle, millimetres, rounded
-from vib.study.profiles.profile import Profile, assemble, not_negative, positive, sizes, thinner
+from vib.study.profiles.outlines import Corner, circle, millimetres, rounded
+from vib.study.profiles.profile import Profile, assemble, not_negative, positive, sizes, thick, thinner
 from vib.study.profiles.torsion import hollow_torsion
 from vib.study.profiles.walls import Wall, shear_area
+
+_CORNER_PIECES = 4
 
 
 def circular_hollow(diameter: float, thickness: float) -> Profile:
@@ -91,8 +93,8 @@ def rectangular_hollow(
             rounded(_box(inside_y, inside_z, inner, "inner_radius")[::-1]),
         ),
         torsion=hollow_torsion(width, height, thickness, (outer + inner) / 2),
-        shear=_hollow_shear(width, height, thickness, (outer + inner) / 2),
-        remarks=remarks,
+        shear=_hollow_shear(width, height, thickness, outer, inner),
+        remarks=(*remarks, *thick(thickness, min(width, height), 5)),
     )
 
 
@@ -101,24 +103,35 @@ def _box(width: float, height: float, radius: float, label: str) -> list[Corner]
     return [Corner(a, b, radius, label) for a, b in ((-y, -z), (y, -z), (y, z), (-y, z))]
 
 
-def _hollow_shear(width: float, height: float, thickness: float, radius: float) -> tuple[float, float]:
-    """Half of the section, cut where symmetry leaves no flow; both halves carry alike."""
+def _hollow_shear(
+    width: float, height: float, thickness: float, outer: float, inner: float
+) -> tuple[float, float]:
+    """Shear areas along y and z in m^2, with corners of the two radii."""
+    # Across a corner the flow finds the wall along its diagonal; the square, which counts the shorter way on
+    # the inside as well, is our own choice from two-dimensional solutions.
+    diagonal = math.sqrt(2) - (math.sqrt(2) - 1) * (outer - inner) / thickness
+    corner = thickness * diagonal**2
+    radius = (outer + inner) / 2
+    return (
+        2 * shear_area(_half(height, width, thickness, radius, corner), math.pi / 2),
+        2 * shear_area(_half(width, height, thickness, radius, corner), math.pi / 2),
+    )
+
+
+def _half(width: float, height: float, thickness: float, radius: float, corner: float) -> list[Wall]:
+    """The right half, cut where symmetry leaves no flow for an upright force; ``corner``: flow in corners."""
     y, z = (width - thickness) / 2, (height - thickness) / 2
-    r = min(radius, y, z)
-    pieces = 4
-    turns = [math.pi / 2 * k / pieces for k in range(pieces + 1)]
-    quarter = [(y - r + r * math.sin(a), z - r + r * math.cos(a)) for a in turns]
-    half = [(0.0, z), *quarter, *[(a, -b) for a, b in reversed(quarter)], (0.0, -z)]
-    across = 2 * shear_area(_chain(half, thickness), math.pi / 2)
-    turned = [(b, a) for a, b in quarter]
-    half = [(0.0, y), *turned[::-1], *[(a, -b) for a, b in turned], (0.0, -y)]
-    along = 2 * shear_area(_chain(half, thickness), math.pi / 2)
-    return along, across
-
-
-def _chain(points: list[Point], thickness: float) -> list[Wall]:
+    if radius > thickness / 2:
+        r = min(radius, y, z)
+        turns = [math.pi / 2 * k / _CORNER_PIECES for k in range(_CORNER_PIECES + 1)]
+        bend = [(y - r + r * math.sin(a), z - r + r * math.cos(a)) for a in turns]
+    else:
+        bend = [(y - thickness / 2, z), (y, z), (y, z - thickness / 2)]
+    line = [(0.0, z), *bend, *[(a, -b) for a, b in reversed(bend)], (0.0, -z)]
+    straight = {0, len(bend), 2 * len(bend)}
     walls: list[Wall] = []
-    for start, end in itertools.pairwise(points):
+    for number, (start, end) in enumerate(itertools.pairwise(line)):
+        flow = thickness if number in straight else corner
         if math.dist(start, end) > 0.0:
-            walls.append(Wall(start, end, thickness, thickness, (len(walls) - 1,) if walls else ()))
+            walls.append(Wall(start, end, thickness, flow, (len(walls) - 1,) if walls else ()))
     return walls

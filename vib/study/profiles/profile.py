@@ -12,9 +12,7 @@ from vib.study.profiles.walls import Wall, shear_area
 Polyline = tuple[Point, ...]
 
 OFF_SHEAR_CENTRE = "the shear centre is not at the centroid; bending and torsion are computed as if it were"
-THICK_WALLS = (
-    "the walls are too thick for the shear flow of thin walls; at most 5/6 of the area carries shear"
-)
+THICK_WALLS = "thick walls: the torsion constant and the shear areas may be 10 % or more off"
 
 
 @dataclass(frozen=True)
@@ -70,10 +68,11 @@ def assemble(
     cos, sin = math.cos(turn), math.sin(turn)
     if isinstance(shear, list):
         shear = (shear_area(shear, turn), shear_area(shear, turn + math.pi / 2))
+        # Walls that are hardly walls any more: no more than a solid rectangle has.
         most = 5 / 6 * found.area
         if max(shear) > most:
             shear = (min(shear[0], most), min(shear[1], most))
-            remarks = (*remarks, THICK_WALLS)
+            remarks = tuple(dict.fromkeys((*remarks, THICK_WALLS)))
     outline = tuple(polyline(loop, (y, z)) for loop in loops)
     low_y, low_z = (min(point[k] for point in outline[0]) for k in (0, 1))
     offset = (0.0, 0.0) if shear_centre is None else (shear_centre[0] - y, shear_centre[1] - z)
@@ -130,3 +129,8 @@ def thinner(wall: float, wall_name: str, side: float, side_name: str, walls: int
 def sizes(*lengths: float) -> str:
     """Lengths in m as short text in mm, for the names of profiles."""
     return " x ".join(f"{length * 1000:.6g}" for length in lengths) + " mm"
+
+
+def thick(thickness: float, side: float, part: float) -> tuple[str, ...]:
+    """The remark on thick walls if a wall is thicker than ``side / part``."""
+    return (THICK_WALLS,) if thickness * part > side * (1 + 1e-9) else ()

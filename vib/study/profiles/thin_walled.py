@@ -6,7 +6,7 @@ import math
 
 from vib.errors import ModelError
 from vib.study.profiles.outlines import Corner, rounded
-from vib.study.profiles.profile import Profile, assemble, not_negative, positive, sizes, thinner
+from vib.study.profiles.profile import Profile, assemble, not_negative, positive, sizes, thick, thinner
 from vib.study.profiles.torsion import (
     angle_torsion,
     channel_torsion,
@@ -41,7 +41,10 @@ def i_section(
         (rounded(corners),),
         torsion=crossed_torsion(2, height, width, web_thickness, f, r),
         shear=_i_walls(height, width, web_thickness, f, r),
-        remarks=crossed_torsion_remarks(web_thickness, f, r),
+        remarks=(
+            *crossed_torsion_remarks(web_thickness, f, r),
+            *thick(max(web_thickness, f), min(width, height), 4),
+        ),
     )
 
 
@@ -70,7 +73,10 @@ def t_section(
         (rounded(corners),),
         torsion=crossed_torsion(1, height, width, web_thickness, f, r),
         shear=_t_walls(height, width, web_thickness, f, r),
-        remarks=crossed_torsion_remarks(web_thickness, f, r),
+        remarks=(
+            *crossed_torsion_remarks(web_thickness, f, r),
+            *thick(max(web_thickness, f), min(width, height), 4),
+        ),
         shear_centre=(0.0, height - f / 2),
     )
 
@@ -135,6 +141,7 @@ def tapered_channel(
         torsion=channel_torsion(height, width, t, tip, root, r),
         shear=_channel_walls(height, width, t, tip, root, r),
         shear_centre=(offset, 0.0),
+        remarks=thick(max(t, root), min(width, height), 4),
     )
 
 
@@ -165,6 +172,7 @@ def angle(
         torsion=angle_torsion(a, b, t, root_radius),
         shear=_angle_walls(a, b, t, root_radius),
         shear_centre=(t / 2, t / 2),
+        remarks=thick(t, min(a, b), 6),
     )
 
 
