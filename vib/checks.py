@@ -23,7 +23,7 @@ Matrix = Any
 # Assembling a matrix and turning it into other axes rounds each entry a few dozen times; what differs by more
 # than this part of the diagonal was not meant to be symmetric.
 ROUND_OFF = 1e-12
-DENSE_LIMIT = 500  # a block of the mass matrix up to this size is checked by a dense factorisation
+DENSE_LIMIT = 100  # up to this size a sparse mass matrix is checked by a dense factorisation
 
 
 def as_matrix(name: str, value: object, size: int | None) -> Matrix:
@@ -136,8 +136,8 @@ def check_mass(mass: Matrix, names: Sequence[str]) -> None:
         worst = int(np.argmax(excess))
         raise MatrixError(
             f"mass: {float(values[worst])!r} at {_spot(int(rows[worst]), int(columns[worst]), names)} "
-            f"outweighs the masses {diagonal[rows[worst]]:.6g} and {diagonal[columns[worst]]:.6g} on the diagonal, "
-            "so some motion would have negative kinetic energy (the mass matrix is indefinite)."
+            f"outweighs the masses {diagonal[rows[worst]]:.6g} and {diagonal[columns[worst]]:.6g} on the "
+            "diagonal, so some motion would have negative kinetic energy (the mass matrix is indefinite)."
         )
     vector = _negative_direction(mass, diagonal)
     if vector is not None:
@@ -152,7 +152,7 @@ def _negative_direction(mass: Matrix, diagonal: Array) -> Array | None:
     scale = np.where(diagonal > 0, 1 / np.sqrt(np.where(diagonal > 0, diagonal, 1.0)), 0.0)
     size = len(diagonal)
     slack = size * ROUND_OFF
-    if size <= DENSE_LIMIT:
+    if size <= DENSE_LIMIT or not sparse.issparse(mass):
         dense = mass.toarray() if sparse.issparse(mass) else mass
         scaled = scale[:, None] * dense * scale
         if scipy.linalg.lapack.dpotrf(scaled + slack * np.eye(size), lower=1)[1] == 0:

@@ -9,7 +9,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
-from typing import Any
+from typing import Any, NamedTuple
 
 import numpy as np
 import scipy.linalg
@@ -63,34 +63,38 @@ def split_mass(mass: Matrix) -> MassSplit:
     """
     size = mass.shape[0]
     diagonal = np.asarray(mass.diagonal())
-    heavy: list[tuple[Array, int]] = []
-    light: list[tuple[Array, int]] = [(_unit(size, int(i)), int(i)) for i in np.flatnonzero(diagonal == 0)]
+    heavy: list[_Column] = []
+    light: list[_Column] = [_Column(int(i)) for i in np.flatnonzero(diagonal == 0)]
     for block in _blocks(mass):
         if len(block) == 1:
-            heavy.append((_unit(size, int(block[0])), int(block[0])))
+            heavy.append(_Column(int(block[0])))
             continue
         scale = root_scale(diagonal[block])
         inner = mass[block][:, block] if sparse.issparse(mass) else mass[np.ix_(block, block)]
         scaled = scale[:, None] * dense(inner) * scale
         slack = 4 * len(block) * EPS
         if scipy.linalg.lapack.dpotrf(scaled - slack * np.eye(len(block)), lower=1)[1] == 0:
-            heavy += [(_unit(size, int(i)), int(i)) for i in block]
+            heavy += [_Column(int(i)) for i in block]
             continue
         values, vectors = scipy.linalg.eigh(scaled)
         for value, vector in zip(values, vectors.T, strict=True):
-            whole = np.zeros(size)
-            whole[block] = scale * vector
-            (light if value <= slack else heavy).append((whole, -1))
-    columns = [*heavy, *light]
-    basis = np.array([vector for vector, _ in columns]).T
-    labels = tuple(label for _, label in columns)
+            (light if value <= slack else heavy).append(_Column(-1, block, scale * vector))
+    basis = np.zeros((size, size))
+    for number, column in enumerate([*heavy, *light]):
+        if column.label >= 0:
+            basis[column.label, number] = 1.0
+        else:
+            basis[column.rows, number] = column.values
+    labels = tuple(column.label for column in [*heavy, *light])
     return MassSplit(basis[:, : len(heavy)], basis[:, len(heavy) :], labels)
 
 
-def _unit(size: int, place: int) -> Array:
-    vector = np.zeros(size)
-    vector[place] = 1.0
-    return vector
+class _Column(NamedTuple):
+    """One motion: a single freedom ``label``, or -1 and ``values`` in ``rows``."""
+
+    label: int
+    rows: Any = None
+    values: Any = None
 
 
 def _blocks(mass: Matrix) -> list[NDArray[np.intp]]:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass, replace
+from typing import NamedTuple
 
 import numpy as np
 import scipy.sparse as sparse
@@ -20,7 +21,7 @@ from vib.solve.undamped import CANCELLATION, EPS, Array, Matrix, Undamped
 from vib.system import System
 
 DENSE_SIZE = 150  # up to here all modes cost less than the set-up of the sparse solvers
-DENSE_DAMPED = 400  # with complex modes the dense solver is the better one up to here
+LAW_MODES = 8  # undamped modes beyond those asked for that a damping law acts on beside dashpots
 FIRST_GUESS = 24  # modes looked for first where those below a frequency could not be counted
 LARGEST_DENSE = 5000  # (n, n) arrays beyond this fill the memory of an ordinary machine
 
@@ -45,7 +46,7 @@ def solve_system(system: System, count: int | None, limit: float | None, *, cert
     MatrixError
         A motion has neither mass, damping nor stiffness.
     """
-    size = system.size
+    size, ask = system.size, _Ask(count, limit, certify)
     everything = count is None and limit is None
     if everything and size > LARGEST_DENSE:
         raise AccuracyError(
@@ -53,14 +54,21 @@ def solve_system(system: System, count: int | None, limit: float | None, *, cert
             "ask for a count or a highest frequency."
         )
     problem = _Problem(system)
-    if everything or size <= DENSE_SIZE or (not sparse.issparse(system.stiffness) and size <= LARGEST_DENSE):
-        return _dense(problem, count, limit, certify=certify)
+    small = size <= LARGEST_DENSE
+    if everything or size <= DENSE_SIZE or (small and not sparse.issparse(system.stiffness)):
+        return _dense(problem, ask)
     below = None if limit is None else count_below(problem.mass, problem.straight, limit)
     most = FIRST_GUESS if below is None else below
     wanted = count if limit is None and count is not None else most if count is None else min(count, most)
-    if 4 * wanted > size and size <= LARGEST_DENSE:
-        return _dense(problem, count, limit, certify=certify)
-    return _sparse(problem, wanted, below, count, limit, certify=certify)
+    return _dense(problem, ask) if small and 4 * wanted > size else _sparse(problem, ask, wanted, below)
+
+
+class _Ask(NamedTuple):
+    """Which modes: the lowest ``number``, up to ``limit`` rad/s, and whether to count them."""
+
+    number: int | None
+    limit: float | None
+    certify: bool
 
 
 class _Problem:
@@ -80,7 +88,7 @@ class _Problem:
         self.real_shapes = not (self.twisted or self.spinning or lopsided)
 
 
-def _dense(problem: _Problem, count: int | None, limit: float | None, *, certify: bool) -> Solution:
+def _dense(problem: _Problem, ask: _Ask) -> Solution:
     system, mass, straight = problem.system, dense(problem.mass), dense(problem.straight)
     _check_idle(problem, mass, straight)
     undamped = dense_undamped(mass, straight)
@@ -94,8 +102,10 @@ def _dense(problem: _Problem, count: int | None, limit: float | None, *, certify
         names = tuple(str(freedom) for freedom in system.freedoms)
         linear, stiffness = dense(problem.linear), dense(problem.stiffness)
         found = quadratic_modes(mass, linear, stiffness, damping.undamped, damping.law, names)
-    kept = cut(found, count, limit)
-    counted = certify and problem.real_shapes and _count_agrees(mass, straight, undamped, len(kept.values))
+    kept = cut(found, ask.number, ask.limit)
+    counted = (
+        ask.certify and problem.real_shapes and _count_agrees(mass, straight, undamped, len(kept.values))
+    )
     return Solution(kept, damping, counted)
 
 
@@ -130,43 +140,40 @@ def _count_agrees(mass: Matrix, stiffness: Matrix, undamped: Undamped, kept: int
     return False
 
 
-def _sparse(
-    problem: _Problem,
-    wanted: int,
-    below: int | None,
-    count: int | None,
-    limit: float | None,
-    *,
-    certify: bool,
-) -> Solution:
-    system = problem.system
+def _sparse(problem: _Problem, ask: _Ask, wanted: int, below: int | None) -> Solution:
+    """Look for ``wanted`` modes, and for more until those asked for are among them."""
+    system, mass, straight = problem.system, problem.mass, problem.straight
+    spare = LAW_MODES if not problem.real_shapes or (system.damping is not None and _law(system)) else 0
     for _ in range(6):
-        undamped = sparse_undamped(problem.mass, problem.straight, wanted, certify=certify)
-        if limit is not None and below == wanted and undamped.certified is not None:
-            undamped = replace(undamped, certified=max(undamped.certified, limit))  # counted there as well
+        undamped = sparse_undamped(mass, straight, wanted + spare, certify=ask.certify)
+        inside = None if ask.limit is None else int((undamped.angular <= ask.limit).sum())
+        if ask.limit is not None and undamped.certified is not None and inside == below:
+            undamped = replace(undamped, certified=max(undamped.certified, ask.limit))
         damping = modal_damping(system, undamped)
         if problem.real_shapes and damping.proportional:
             found = proportional_modes(damping, np.zeros((system.size, 0)))
-        elif system.size <= DENSE_DAMPED:
-            return _dense(problem, count, limit, certify=certify)
+            enough = ask.limit is None or (inside is not None and inside == below)
+        elif undamped.rigid == len(undamped.values):
+            found, enough = None, False  # all rigid-body motions must be known before they can be set aside
         else:
-            law = damping.law
-            found = sparse_quadratic(
-                problem.mass, problem.linear, problem.stiffness, damping.undamped, law, wanted
-            )
-        enough = (
-            limit is None or undamped.complete or bool(np.abs(found.values[-1:]).max(initial=0.0) > limit)
-        )
-        enough = enough or (found.proportional and below is not None and below <= len(undamped.values))
-        if enough and (count is None or len(found.values) >= count):
-            kept = cut(found, count, limit)
-            return Solution(
-                kept, damping, found.proportional and undamped.certified is not None, _law_remark(damping)
-            )
+            linear, stiffness = problem.linear, problem.stiffness
+            found = sparse_quadratic(mass, linear, stiffness, damping.undamped, damping.law, wanted)
+            enough = ask.limit is None
+        if found is not None:
+            enough = enough or bool(np.abs(found.values[-1:]).max(initial=0.0) > (ask.limit or 0.0))
+            if enough and (ask.number is None or ask.limit is not None or len(found.values) >= ask.number):
+                kept = cut(found, ask.number, ask.limit)
+                counted = found.proportional and undamped.certified is not None
+                return Solution(kept, damping, counted, _law_remark(damping))
         wanted = 2 * wanted + 4
         if 2 * wanted > system.size:
-            return _dense(problem, count, limit, certify=certify)
+            return _dense(problem, ask)
     raise AccuracyError("The search for modes below the highest frequency did not come to an end.")
+
+
+def _law(system: System) -> bool:
+    law = system.damping_law
+    return bool(law.ratio or law.bands or law.material)
 
 
 def _law_remark(damping: ModalDamping) -> tuple[str, ...]:

@@ -2,7 +2,8 @@
 
 One factorisation of K - shift M; the Lanczos process of ARPACK (R. B. Lehoucq, D. C. Sorensen, C. Yang,
 ARPACK Users' Guide, SIAM 1998); one step of block inverse iteration with a Rayleigh-Ritz projection to
-polish; then the number of negative pivots of K - s M, which by Sylvester's law is the number of modes below sqrt(s).
+polish; then the number of negative pivots of K - s M, which by Sylvester's law is the number of modes
+below sqrt(s).
 """
 
 from __future__ import annotations
