@@ -1,42 +1,34 @@
 """The lowest modes of large sparse undamped systems, with a proof that none is missing.
 
 Shift-invert block Lanczos in the mass inner product (`vib.solve.krylov`) up to a bound on each eigenvalue's
-error, then a Sylvester inertia count just above the last mode (Grimes, Lewis & Simon 1994, sect. 4.4); where
-the count finds more, the search goes on in new directions until the numbers agree.
+error, then a Sylvester inertia count just above the last mode (R. G. Grimes, J. G. Lewis, H. D. Simon, SIAM
+J. Matrix Anal. Appl. 15 (1994) 228-272, section 4.4); where the count finds more, the search goes on in new
+directions until the numbers agree.
 """
 
 from __future__ import annotations
-
-import time
-from collections.abc import Callable
-from dataclasses import dataclass
 
 import numpy as np
 import scipy.linalg
 from numpy.typing import NDArray
 
 from vib.errors import AccuracyError
-from vib.solve.backends.interface import Array, Factor, FactorError, Matrix
-from vib.solve.bounds import ascending, theta_bounds
-from vib.solve.krylov import Krylov, Ritz
+from vib.solve.backends.interface import Matrix
+from vib.solve.bounds import About, Found, theta_bounds
+from vib.solve.clock import Clock, Progress
+from vib.solve.krylov import Ritz
 from vib.solve.pencil import Pencil
+from vib.solve.shift import Start
 from vib.solve.undamped import Undamped, elastic_ratio, round_off, stores_nothing
 
-Progress = Callable[[float, float], None]
-
 BLOCK = 8
-# Relative accuracy of each eigenvalue (of its distance from the shift), and of the residual, which sets that
-# of the shapes: they enter participation and energy shares, where six figures are plenty.
-VALUE_ACCURACY = 1e-11
-SHAPE_ACCURACY = 1e-7
-# A gap between two eigenvalues, relative to them, wide enough for an inertia count in its middle.
-GAP = 1e-5
-# First shift of a free structure, as a share of the highest eigenvalue: far above round-off in the stiffness,
-# far below its elastic modes. It is moved to the first elastic mode where it is out of proportion to that.
-FREE_SHIFT = 1e-9
-SHIFT_RANGE = (1e-6, 10.0)
 BASIS_BYTES = 4e9
-MOST_STEPS_PER_MODE = 40
+STEPS_AT_LEAST, STEPS_PER_BLOCK = 60, 30
+MOST_WIDENINGS = 8
+# An eigenvalue this close to the place of an inertia count, relative to it, may be counted on either side.
+PLACE_SLACK = 1e-9
+# Eigenvalues whose distances from the shift agree to this degree have their shapes turned together.
+CLUSTER = 1e-6
 
 
 def lowest_modes(
@@ -45,12 +37,13 @@ def lowest_modes(
     *,
     count: int | None = None,
     below: float | None = None,
+    free: bool = False,
     backend: str | None = None,
     block: int = BLOCK,
     basis_bytes: float = BASIS_BYTES,
     progress: Progress | None = None,
 ) -> Undamped:
-    """The lowest eigenvalues of stiffness x = value mass x, all multiplicities, certified by an inertia count.
+    """The lowest modes of stiffness x = value mass x, with all multiplicities, proved by an inertia count.
 
     Parameters
     ----------
@@ -60,6 +53,8 @@ def lowest_modes(
         How many modes.
     below
         Every mode below this angular frequency, rad/s; with ``count`` at most that many of them.
+    free
+        The structure is known to have rigid-body motions: saves trying to factorise the stiffness itself.
     backend
         Library that factorises, see `vib.solve.backends.choice.factor`; None for automatic choice.
     block
@@ -78,7 +73,7 @@ def lowest_modes(
     if count is None and below is None:
         raise ValueError("lowest_modes: give count, below or both.")
     with Pencil(mass, stiffness, backend) as pencil:
-        search = _Search(pencil, block, basis_bytes, _Clock(progress))
+        search = _Search(pencil, Start(block, basis_bytes), Clock(progress), free=free)
         try:
             return search.run(count, below)
         except KeyboardInterrupt:
@@ -87,220 +82,141 @@ def lowest_modes(
             raise AccuracyError(f"Interrupted after {done} modes had converged.", partial=found) from None
 
 
-@dataclass
-class _Clock:
-    """Share of the work done and the time it will still take, from the pace so far."""
-
-    report: Progress | None
-    factor_seconds: float = 0.0
-    step_seconds: float = 0.0
-    share: float = 0.0
-
-    def __post_init__(self) -> None:
-        self._start = time.perf_counter()
-
-    def tell(self, steps_left: float, factorisations_left: int) -> None:
-        if self.report is None:
-            return
-        past = time.perf_counter() - self._start
-        left = steps_left * self.step_seconds + factorisations_left * self.factor_seconds
-        self.share = max(self.share, past / (past + left)) if past + left > 0 else 0.0
-        self.report(self.share, left)
-
-
 class _Search:
-    """One search: the shift, the basis, what is wanted of it, and the proof."""
+    """One search: the basis about a shift, what is wanted of it, and the proof."""
 
-    def __init__(self, pencil: Pencil, block: int, basis_bytes: float, clock: _Clock) -> None:
-        self.pencil, self.block, self.basis_bytes, self.clock = pencil, block, basis_bytes, clock
-        self.krylov: Krylov | None = None
-        self.shift = 0.0
-        self.below_shift = 0
-        self.history: list[float] = []
+    def __init__(self, pencil: Pencil, start: Start, clock: Clock, *, free: bool) -> None:
+        self.pencil, self.start, self.clock, self.free = pencil, start, clock, free
+        self.about: About | None = None
 
     def run(self, count: int | None, below: float | None) -> Undamped:
-        size = self.pencil.size
-        limit_count: int | None = None
-        if below is not None:
-            limit_count = self._factorise(below**2).negative
-            if limit_count is None:
-                raise AccuracyError("The inertia of the shifted stiffness could not be found; ask by count.")
-            if limit_count == 0:
-                none = np.zeros(0)
-                return Undamped(none, np.zeros((size, 0)), none, 0, complete=False, certified=below)
-        wanted = min(limit_count if limit_count is not None else size, count if count is not None else size)
-        capacity = self._capacity(wanted)
-        krylov = self._settle(capacity)
-        if limit_count is not None and wanted == limit_count and below is not None:
-            ritz, order = self._converge(krylov, wanted)
-            return self._result(krylov, ritz, order[:wanted], certified=below)
-        return self._certified(krylov, wanted)
+        wanted = self.pencil.size if count is None else min(count, self.pencil.size)
+        if below is None:
+            return self._by_count(wanted)
+        counted = self.clock.time_factor(self.pencil, below**2).negative
+        if counted is None:
+            raise AccuracyError("The inertia of the shifted stiffness could not be found; ask by count.")
+        if counted == 0:
+            none = np.zeros(0)
+            return Undamped(none, np.zeros((self.pencil.size, 0)), none, 0, complete=False, certified=below)
+        if counted > wanted:
+            return self._by_count(wanted)
+        about = self._begin(counted)
+        found = self._agree(about, self._converge(about, counted), counted, below**2)
+        return results(self.pencil, about, found.order[:counted], found.ritz, certified=below)
 
     def partial(self) -> Undamped | None:
         """The modes that have converged so far, lowest first, without proof."""
-        krylov = self.krylov
-        if krylov is None or krylov.done == 0:
+        if self.about is None or self.about.krylov.done == 0:
             return None
-        ritz = krylov.ritz()
-        order, _ = ascending(ritz, self.shift, self.below_shift)
-        good = self._converged(ritz)[order]
-        first = int(np.argmin(good)) if not good.all() else len(good)
-        return self._result(krylov, ritz, order[:first], certified=None) if first else None
+        found = self._look(self.about)
+        first = len(found.good) if found.good.all() else int(np.argmin(found.good))
+        return results(self.pencil, self.about, found.order[:first], found.ritz) if first else None
 
-    def _factorise(self, shift: float) -> Factor:
-        start = time.perf_counter()
-        factor = self.pencil.factorise(shift)
-        self.clock.factor_seconds = time.perf_counter() - start
-        return factor
+    def _begin(self, wanted: int) -> About:
+        self.about = self.start.settle(self.pencil, wanted, self.clock, free=self.free)
+        return self.about
 
-    def _capacity(self, wanted: int) -> int:
-        """Columns of the basis: enough not to restart, if the memory allows it."""
-        most = int(self.basis_bytes / (8 * self.pencil.size))
-        least = wanted + 4 * self.block
-        if most < least:
-            gigabytes = least * 8 * self.pencil.size / 1e9
-            raise AccuracyError(
-                f"{wanted} modes of {self.pencil.size} freedoms need a basis of {gigabytes:.1f} GB, "
-                f"{self.basis_bytes / 1e9:.1f} GB are allowed; ask for fewer modes or a lower limit."
+    def _by_count(self, wanted: int) -> Undamped:
+        """Converge, then count the eigenvalues just above the last mode."""
+        about = self._begin(wanted)
+        found = self._converge(about, wanted)
+        while (gap := found.gap_above(about, wanted)) is None and not found.everything:
+            self._advance(about, found, wanted)
+            found = self._converge(about, wanted)
+        if gap is None:
+            return results(
+                self.pencil, about, found.order[:wanted], found.ritz, complete=len(found.order) <= wanted
             )
-        return min(most, 3 * wanted + 16 * self.block)
+        counted = self.clock.time_factor(self.pencil, gap).negative
+        if counted is not None:
+            found = self._agree(about, found, counted, gap)
+        certified = float(np.sqrt(gap)) if counted is not None and gap > 0 else None
+        return results(self.pencil, about, found.order[:wanted], found.ritz, certified=certified)
 
-    # -- the shift ---------------------------------------------------------------------------------------
+    def _agree(self, about: About, found: Found, counted: int, place: float) -> Found:
+        """Search on in new directions until as many eigenvalues below ``place`` are found as were counted."""
+        slack = PLACE_SLACK * abs(place)
+        for _ in range(MOST_WIDENINGS):
+            if (found.values < place - slack).sum() > counted:
+                raise AccuracyError(
+                    f"The inertia count finds {counted} modes where the search found more; neither can be "
+                    "trusted. Check the matrices for entries of very different size.",
+                    partial=self.partial(),
+                )
+            if (found.values < place + slack).sum() >= counted:
+                return found
+            about.krylov.take_factor(self.clock.time_factor(self.pencil, about.shift))
+            self._make_room(about, found, counted)
+            about.krylov.add_random()
+            found = self._converge(about, counted)
+        missing = counted - int((found.values < place).sum())
+        raise AccuracyError(f"{missing} of {counted} modes could not be found.", partial=self.partial())
 
-    def _settle(self, capacity: int) -> Krylov:
-        """A basis about a shift where K - shift M is safely regular: 0, or below 0 for a free structure."""
-        try:
-            krylov = self._begin(0.0, capacity)
-            if not self._trial(krylov)[0]:
-                return krylov
-        except FactorError:
-            pass
-        self.krylov = None
-        shift = -FREE_SHIFT * self.pencil.highest_ratio()
-        for _ in range(6):
-            krylov = self._begin(shift, capacity)
-            krylov.step()
-            _, elastic = self._trial(krylov)
-            if elastic is None or SHIFT_RANGE[0] * elastic <= -shift <= SHIFT_RANGE[1] * elastic:
-                break
-            shift = -elastic
-        return krylov
-
-    def _begin(self, shift: float, capacity: int) -> Krylov:
-        factor = self._factorise(shift)
-        self.shift = shift
-        self.below_shift = factor.negative or 0
-        self.krylov = Krylov(self.pencil, factor, block=self.block, capacity=capacity)
-        return self.krylov
-
-    def _trial(self, krylov: Krylov) -> tuple[bool, float | None]:
-        """Whether the basis so far holds a rigid-body motion, and its lowest elastic eigenvalue."""
-        basis = krylov.basis
-        values, turn = scipy.linalg.eigh(_symmetric(basis.T @ (self.pencil.stiffness @ basis)))
-        energy, terms = elastic_ratio(self.pencil.stiffness, basis @ turn)
-        rigid = stores_nothing(energy, terms)
-        elastic = np.abs(energy[~rigid])
-        return bool(rigid.any()), float(elastic.min()) if elastic.size else None
-
-    # -- convergence -------------------------------------------------------------------------------------
-
-    def _converged(self, ritz: Ritz) -> NDArray[np.bool_]:
-        size = np.abs(ritz.theta)
-        return (theta_bounds(ritz) <= VALUE_ACCURACY * size) & (ritz.residuals <= SHAPE_ACCURACY * size)
-
-    def _converge(self, krylov: Krylov, wanted: int) -> tuple[Ritz, NDArray[np.intp]]:
-        """Go on until the lowest ``wanted`` approximations have converged."""
-        most = 20 + MOST_STEPS_PER_MODE * -(-wanted // self.block)
+    def _converge(self, about: About, wanted: int) -> Found:
+        """Go on until the lowest ``wanted`` approximations have converged, or there are no more."""
+        most = STEPS_AT_LEAST + STEPS_PER_BLOCK * -(-wanted // self.start.block)
         for _ in range(most):
-            if krylov.done:
-                ritz = krylov.ritz()
-                order, _ = ascending(ritz, self.shift, self.below_shift)
-                good = self._converged(ritz)[order]
-                if len(order) >= wanted and good[:wanted].all():
-                    return ritz, order
-                self._tell(ritz, order, wanted)
-                if krylov.full:
-                    kept = order[: min(len(order), wanted + (krylov.done - wanted) // 3)]
-                    krylov.restart(ritz, np.sort(kept))
-            if krylov.exhausted:
-                krylov.add_random()
-                if krylov.exhausted:  # the operator's whole range is in the basis
-                    ritz = krylov.ritz()
-                    return ritz, ascending(ritz, self.shift, self.below_shift)[0]
-            start = time.perf_counter()
-            krylov.step()
-            self.clock.step_seconds = time.perf_counter() - start
+            found = self._look(about)
+            if found.everything or (len(found.order) >= wanted and found.good[:wanted].all()):
+                return found
+            self.clock.tell(found.slowest(wanted), wanted / self.start.block)
+            self._advance(about, found, wanted)
         raise AccuracyError(
-            f"The search for {wanted} modes did not converge in {most} steps.", partial=self.partial()
+            f"The search for {wanted} modes did not converge in {most} steps.", self.partial()
         )
 
-    def _tell(self, ritz: Ritz, order: NDArray[np.intp], wanted: int) -> None:
-        """Report progress: steps left from how fast the slowest wanted residual falls."""
-        expected = (2 * wanted + 6 * self.block) / self.block - len(self.history)
-        if len(order) >= wanted:
-            chosen = order[:wanted]
-            worst = (ritz.residuals[chosen] / np.abs(ritz.theta[chosen])).max()
-            self.history.append(float(np.log10(max(worst, 1e-30))))
-            fall = self.history[0] - self.history[-1]
-            if len(self.history) > 3 and fall > 0:
-                pace = fall / (len(self.history) - 1)
-                expected = (self.history[-1] - np.log10(SHAPE_ACCURACY)) / pace
-        self.clock.tell(max(1.0, expected), 1)
+    def _look(self, about: About) -> Found:
+        return Found.of(about.krylov.ritz(), about)
 
-    # -- the proof ---------------------------------------------------------------------------------------
-
-    def _certified(self, krylov: Krylov, wanted: int) -> Undamped:
-        """Converge, count the eigenvalues just above the last mode, go on while there are more."""
-        ritz, order = self._converge(krylov, wanted)
-        while True:
-            found = self._gap_above(ritz, order, wanted)
-            if found is not None or krylov.exhausted:
-                break
-            ritz, order = self._converge_more(krylov, wanted)
-        if found is None:
-            everything = len(order) <= wanted
-            return self._result(krylov, ritz, order[:wanted], certified=None, complete=everything)
-        below, place = found
-        counted = self._factorise(place).negative
-        for _ in range(10):
-            if counted is None or counted == below:
-                break
-            if counted < below:
-                raise AccuracyError(
-                    f"The inertia count finds {counted} modes where the search found {below}; neither can be "
-                    "trusted. Check the matrices for entries of very different size.",
-                    partial=self._result(krylov, ritz, order[:wanted], certified=None),
-                )
-            krylov.take_factor(self._factorise(self.shift))
+    def _advance(self, about: About, found: Found, wanted: int) -> None:
+        """One step, after a restart where the basis is full."""
+        krylov = about.krylov
+        self._make_room(about, found, wanted)
+        if krylov.exhausted:
             krylov.add_random()
-            ritz, order = self._converge(krylov, counted)
-            _, values = ascending(ritz, self.shift, self.below_shift)
-            below = int((values < place).sum())
-        if counted is not None and counted != below:
-            raise AccuracyError(
-                f"{counted - below} of {counted} modes could not be found.",
-                partial=self._result(krylov, ritz, order[:wanted], certified=None),
-            )
-        certified = None if counted is None else float(np.sqrt(max(place, 0.0)))
-        return self._result(krylov, ritz, order[:wanted], certified=certified)
+        if not krylov.exhausted:
+            self.clock.time_step(krylov)
 
-    def _gap_above(self, ritz: Ritz, order: NDArray[np.intp], wanted: int) -> tuple[int, float] | None:
-        """How many approximations lie below the first safe gap at or above ``wanted``, and the gap's middle."""
-        raise NotImplementedError
-
-    def _result(
-        self,
-        krylov: Krylov,
-        ritz: Ritz,
-        chosen: NDArray[np.intp],
-        *,
-        certified: float | None,
-        complete: bool = False,
-    ) -> Undamped:
-        """Shapes and frequencies of the approximations of the given numbers, with their errors."""
-        pencil = self.pencil
-        raise NotImplementedError
+    def _make_room(self, about: About, found: Found, wanted: int) -> None:
+        krylov = about.krylov
+        if krylov.full:
+            spare = max(self.start.block, (krylov.done - wanted) // 3)
+            krylov.restart(found.ritz, np.sort(found.order[: wanted + spare]))
 
 
-def _symmetric(matrix: Array) -> Array:
-    return np.asarray((matrix + matrix.T) / 2)
+def results(
+    pencil: Pencil,
+    about: About,
+    chosen: NDArray[np.intp],
+    ritz: Ritz,
+    *,
+    certified: float | None = None,
+    complete: bool = False,
+) -> Undamped:
+    """Shapes and frequencies of the approximations of the given numbers, with their errors."""
+    theta, bounds = ritz.theta[chosen], theta_bounds(ritz)[chosen]
+    shapes = about.krylov.vectors(ritz, chosen)
+    with_stiffness, with_mass = pencil.stiffness @ shapes, pencil.mass @ shapes
+    apart = np.abs(np.diff(theta)) > CLUSTER * np.abs(theta[1:])
+    for group in np.split(np.arange(len(theta)), np.flatnonzero(apart) + 1):
+        stiff = shapes[:, group].T @ with_stiffness[:, group]
+        heavy = shapes[:, group].T @ with_mass[:, group]
+        _, turn = scipy.linalg.eigh((stiff + stiff.T) / 2, (heavy + heavy.T) / 2)
+        shapes[:, group] = shapes[:, group] @ turn
+    energy, terms = elastic_ratio(pencil.stiffness, shapes)
+    rigid = stores_nothing(energy, terms)
+    values = np.where(rigid, 0.0, energy)
+    angular = np.sqrt(np.abs(values))
+    _, mass_terms = elastic_ratio(pencil.mass, shapes)
+    far = np.where(rigid, 1.0, 2 * angular)
+    errors = np.where(rigid, 0.0, bounds / theta**2 / far + round_off(terms, mass_terms, angular))
+    order = np.lexsort((values, ~rigid))
+    return Undamped(
+        values=values[order],
+        shapes=np.ascontiguousarray(shapes[:, order]),
+        errors=errors[order],
+        rigid=int(rigid.sum()),
+        complete=complete,
+        certified=certified,
+    )

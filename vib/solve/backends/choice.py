@@ -1,0 +1,97 @@
+"""Which library factorises a matrix, and what happens when its answer fails the residual check."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Iterator
+
+import numpy as np
+import scipy.sparse as sparse
+
+from vib.solve.backends import pardiso
+from vib.solve.backends.interface import Factor, FactorError, Matrix
+from vib.solve.backends.superlu import SuperLU
+
+# Below this many equations the quarter of a second that loading PARDISO takes is more than it saves.
+WORTH_LOADING = 6000
+
+BACKENDS = (pardiso.Pardiso.backend, SuperLU.backend)
+
+
+def factor(
+    matrix: Matrix,
+    *,
+    symmetric: bool,
+    definite: bool = False,
+    upper_only: bool = False,
+    backend: str | None = None,
+) -> Factor:
+    """Factorise a real sparse matrix by the best library at hand, checked, with others to fall back on.
+
+    Parameters
+    ----------
+    matrix
+        (n, n), sparse.
+    symmetric
+        The matrix equals its transpose; only its upper triangle is then read.
+    definite
+        All eigenvalues of a symmetric matrix are positive; a little faster, fails otherwise.
+    upper_only
+        ``matrix`` holds the upper triangle of a symmetric matrix, every diagonal entry stored.
+    backend
+        "PARDISO" or "SuperLU" and no other; None for automatic choice.
+
+    Returns
+    -------
+    Factor
+        Use it in a ``with`` block, or call its ``release``.
+
+    Raises
+    ------
+    FactorError
+        No method gave solutions that satisfy the equations; the message lists what each said.
+    """
+    if backend not in (None, *BACKENDS):
+        raise ValueError(f"backend: expected one of {', '.join(BACKENDS)}, got {backend!r}.")
+    given = sparse.csr_array(matrix)
+    if symmetric and not upper_only:
+        given = upper_triangle(given)
+    given.sort_indices()
+    said = []
+    for attempt in _attempts(given, symmetric=symmetric, definite=definite, backend=backend):
+        try:
+            return attempt()
+        except FactorError as error:
+            said.append(str(error))
+    raise FactorError(" ".join(["The matrix could not be factorised.", *said]))
+
+
+def upper_triangle(matrix: Matrix) -> sparse.csr_array:
+    """The upper triangle, zeros on the diagonal stored as well."""
+    upper = sparse.csr_array(sparse.triu(matrix, format="csr"))
+    upper.sum_duplicates()
+    first = upper.indptr[:-1]
+    ends = np.diff(upper.indptr) == 0
+    leads = np.where(ends, -1, upper.indices[np.minimum(first, max(upper.nnz - 1, 0))] if upper.nnz else -1)
+    missing = np.flatnonzero(leads != np.arange(len(leads)))
+    if missing.size:
+        listed = upper.tocoo()
+        rows = np.concatenate([listed.coords[0], missing])
+        columns = np.concatenate([listed.coords[1], missing])
+        values = np.concatenate([listed.data, np.zeros(missing.size)])
+        upper = sparse.csr_array((values, (rows, columns)), shape=upper.shape)
+    return upper
+
+
+def _attempts(
+    matrix: sparse.csr_array, *, symmetric: bool, definite: bool, backend: str | None
+) -> Iterator[Callable[[], Factor]]:
+    """Ways to factorise, best first."""
+    wanted = backend == pardiso.Pardiso.backend
+    if wanted or (backend is None and matrix.shape[0] >= WORTH_LOADING and pardiso.installed()):
+        yield lambda: pardiso.Pardiso(matrix, symmetric=symmetric, definite=definite)
+        if symmetric and not definite:
+            yield lambda: pardiso.Pardiso(matrix, symmetric=True, matching=True)
+    if backend in (None, SuperLU.backend):
+        yield lambda: SuperLU(matrix, symmetric=symmetric)
+        if symmetric:
+            yield lambda: SuperLU(matrix, symmetric=True, pivoting=True)

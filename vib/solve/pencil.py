@@ -1,0 +1,94 @@
+"""The pencil K - shift M of large sparse matrices, ready to be factorised at one shift after another."""
+
+from __future__ import annotations
+
+import numpy as np
+import scipy.sparse as sparse
+from numpy.typing import NDArray
+
+from vib.solve.backends.choice import factor, upper_triangle
+from vib.solve.backends.interface import Factor, Matrix
+
+
+class Pencil:
+    """K - shift M, its upper triangle on one pattern, and at most one factorisation of it at a time.
+
+    Use it in a ``with`` block; leaving the block, also by an error or an interruption, gives the memory of
+    the factorisation back.
+    """
+
+    def __init__(self, mass: Matrix, stiffness: Matrix, backend: str | None = None) -> None:
+        """Take symmetric sparse matrices (n, n); ``backend`` as in `vib.solve.backends.choice.factor`."""
+        self.mass, self.stiffness = _plain(mass), _plain(stiffness)
+        self.size = int(self.mass.shape[0])
+        both = _both(self.stiffness, self.mass)
+        self._pattern = (both.indices, both.indptr)
+        self._stiff, self._massive = both.data.real.copy(), both.data.imag.copy()
+        self._backend = backend
+        self._factor: Factor | None = None
+        self.shift = np.nan
+
+    def __enter__(self) -> Pencil:
+        return self
+
+    def __exit__(self, *_: object) -> None:
+        self.release()
+
+    def release(self) -> None:
+        """Give the memory of the factorisation back."""
+        if self._factor is not None:
+            self._factor.release()
+            self._factor = None
+
+    def factorise(self, shift: float) -> Factor:
+        """K - shift M factorised; the one before it is gone.
+
+        Raises
+        ------
+        FactorError
+            See `vib.solve.backends.choice.factor`; K - shift M may be singular.
+        """
+        if self._factor is not None and shift == self.shift:
+            return self._factor
+        matrix = sparse.csr_array(
+            (self._stiff - shift * self._massive, *self._pattern), shape=(self.size,) * 2
+        )
+        matrix.has_sorted_indices = True
+        before, self._factor = self._factor, None
+        if before is not None:
+            try:
+                before.replace(matrix)
+            except BaseException as error:
+                before.release()
+                before = None
+                if not isinstance(error, ValueError):
+                    raise
+        self._factor = before or factor(matrix, symmetric=True, upper_only=True, backend=self._backend)
+        self.shift = shift
+        return self._factor
+
+    def highest_ratio(self) -> float:
+        """Largest ratio of diagonal stiffness to diagonal mass: about the highest eigenvalue there is."""
+        mass, stiffness = self.mass.diagonal(), np.abs(self.stiffness.diagonal())
+        moving = mass > 0
+        return float((stiffness[moving] / mass[moving]).max()) if moving.any() else 0.0
+
+
+def _plain(matrix: Matrix) -> sparse.csr_array:
+    """As CSR without stored zeros (a copy only where there are any)."""
+    listed = sparse.csr_array(matrix)
+    if (listed.data == 0).any():
+        listed = listed.copy()
+        listed.eliminate_zeros()
+    listed.sort_indices()
+    return listed
+
+
+def _both(stiffness: sparse.csr_array, mass: sparse.csr_array) -> sparse.csr_array:
+    """Upper triangles in one complex matrix, stiffness real, mass imaginary: the union of their patterns."""
+    heavy = upper_triangle(mass)
+    weights: NDArray[np.complex128] = 1j * heavy.data
+    merged = upper_triangle(stiffness) + sparse.csr_array(
+        (weights, heavy.indices, heavy.indptr), shape=heavy.shape
+    )
+    return upper_triangle(merged)
