@@ -1,0 +1,35 @@
+"""Cells of a mesh: one file per family, and this index of them by kind.
+
+Solids (three freedoms per node) and shells (six). Kinds and node numbering are those of meshio (and VTK).
+"""
+
+from __future__ import annotations
+
+from vib.structure.cells.checks import check_cells
+from vib.structure.cells.family import Family, Properties, Stresses
+from vib.structure.cells.hexahedron import Hexahedron
+from vib.structure.cells.hexahedron20 import Hexahedron20
+from vib.structure.cells.hexahedron27 import Hexahedron27
+from vib.structure.cells.pyramid import Pyramid
+from vib.structure.cells.pyramid13 import Pyramid13
+from vib.structure.cells.tetra import Tetra
+from vib.structure.cells.tetra10 import Tetra10
+from vib.structure.cells.wedge import Wedge
+from vib.structure.cells.wedge15 import Wedge15
+
+FAMILIES: dict[str, Family] = {
+    family.kind: family
+    for family in (
+        Tetra(),
+        Tetra10(),
+        Hexahedron(),
+        Hexahedron20(),
+        Hexahedron27(),
+        Wedge(),
+        Wedge15(),
+        Pyramid(),
+        Pyramid13(),
+    )
+}
+
+__all__ = ["FAMILIES", "Family", "Properties", "Stresses", "check_cells"]
