@@ -246,7 +246,7 @@ def report(
     """
     from vib.cli.jobs import write_report
 
-    return write_report(study, count, up_to, band, units, out, Wish(json, None, quiet))
+    return write_report(study, (count, up_to), band, units, out, Wish(json, None, quiet))
 
 
 @app.command(short_help="JSON Schema of the study file.")

@@ -11,11 +11,13 @@ from vib.cli.delivery import DONE, OBJECTION, Answer, Wish, deliver, put, warnin
 if TYPE_CHECKING:
     from vib.cli.starts import StartOptions
     from vib.modes import Modes
+    from vib.response.ring import Ring
     from vib.study import Study
     from vib.units import UnitSystem
 
 Chosen = Literal["si", "us"] | None
 _USUAL_COUNT = 12
+_FEW = 6
 
 
 def new_study(kind: str | None, out: Path | None, wish: Wish) -> int:
@@ -105,7 +107,7 @@ def _modes(study: Study, count: int | None, up_to: str | None) -> Modes:
 def show_ring(path: Path, options: StartOptions, units: Chosen, pictures: str, wish: Wish) -> int:
     """The free response."""
     from vib.cli.starts import start_arguments
-    from vib.show.tables.ring import ring_blocks, ring_document
+    from vib.show.tables.ring import ring_blocks, ring_document, start_words
 
     with warnings_as_remarks(wish):
         study = _read(path)
@@ -120,7 +122,7 @@ def show_ring(path: Path, options: StartOptions, units: Chosen, pictures: str, w
             return ring_files(ring, document, shown, pictures)
 
         answer = Answer(
-            ring_blocks(ring, study.title, shown),
+            ring_blocks(ring, study.title, start_words(arguments, shown), shown),
             document,
             ring.remarks,
             files,
@@ -161,6 +163,58 @@ def screening_modes(study: Study, band: str | None) -> Modes:
 
     limit = highest_needed_hz(study.excitations, band=band, accuracy=study.accuracy)
     return study.system(up_to=limit).modes(up_to=limit)
+
+
+def write_report(
+    path: Path,
+    limits: tuple[int | None, str | None],
+    band: str | None,
+    units: Chosen,
+    out: Path | None,
+    wish: Wish,
+) -> int:
+    """The page; its path is the result."""
+    from vib.show.blocks import Sentence
+    from vib.show.files import write_files
+    from vib.show.page import Findings, render_page
+    from vib.structure.survey import survey as survey_of
+
+    with warnings_as_remarks(wish):
+        study = _read(path)
+        survey = survey_of(study)
+        modes = _report_modes(study, limits, band)
+        shown = _units(study, units)
+        ring, start = _report_ring(study, modes, shown)
+        screening = None
+        if study.excitations:
+            from vib.screening import screen
+
+            screening = screen(modes, study.excitations, band=band)
+        wish.tell("drawing the page")
+        page = render_page(Findings(study, survey, modes, ring, screening, shown, start))
+        name = f"{path.stem}.html"
+        (written,) = write_files(out if out is not None else Path(), {name: page.encode("utf-8")})
+    return deliver(Answer([Sentence(str(written))], {"page": str(written)}), wish)
+
+
+def _report_modes(study: Study, limits: tuple[int | None, str | None], band: str | None) -> Modes:
+    """The modes that were asked for; else those that the screening needs, and a few at the least."""
+    count, up_to = limits
+    if count is not None or up_to is not None or not study.excitations:
+        return _modes(study, count, up_to)
+    found = screening_modes(study, band)
+    return found if found.count >= _FEW else _modes(study, _FEW, None)
+
+
+def _report_ring(study: Study, modes: Modes, units: UnitSystem) -> tuple[Ring | None, str]:
+    """The ringing that [impact] asks for, and its start in words."""
+    if study.impact is None:
+        return None, ""
+    from vib.cli.starts import StartOptions, start_arguments
+    from vib.show.tables.ring import start_words
+
+    arguments = start_arguments(study, StartOptions())
+    return modes.system.ring(**arguments, modes=modes), start_words(arguments, units)
 
 
 def print_schema() -> int:

@@ -56,7 +56,21 @@ class Facts:
     rows: tuple[tuple[str, str], ...]
 
 
-Block = Table | Heading | Sentence | Facts
+@dataclass(frozen=True)
+class Bullets:
+    """A list of sentences."""
+
+    rows: tuple[str, ...]
+
+
+Block = Bullets | Table | Heading | Sentence | Facts
+
+
+def unit_label(unit: str) -> str:
+    """A unit as it is printed: "kg m^2" is "kg·m²"."""
+    for plain, raised in (("^2", "²"), ("^3", "³"), ("^4", "⁴")):
+        unit = unit.replace(plain, raised)
+    return unit if "%" in unit or " to " in unit or "±" in unit else unit.replace(" ", "·")
 
 
 def text_column(heading: str) -> Column:

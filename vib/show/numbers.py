@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 
 MISSING = "-"
 
@@ -26,6 +27,18 @@ def _fixed(value: float, digits: int) -> str:
     # the exponent after rounding: 9.9996 to four digits is 10.00
     exponent = int(f"{value:.{digits - 1}e}".split("e")[1])
     return f"{value:.{max(digits - 1 - exponent, 0)}f}"
+
+
+def aligned(values: Sequence[float], largest: float, digits: int = 4) -> list[str]:
+    """Figures of one kind with the same decimals, so many digits for the largest; round-off shows as 0."""
+    if not largest or not math.isfinite(largest):
+        return ["0" if value == 0 else significant(value, digits) for value in values]
+    exponent = int(f"{largest:.{digits - 1}e}".split("e")[1])
+    if not -4 <= exponent < 6:
+        return [significant(value, digits) if abs(value) > 1e-9 * largest else "0" for value in values]
+    decimals = max(digits - 1 - exponent, 0)
+    found = [f"{value:.{decimals}f}" for value in values]
+    return ["0" if not figure.strip("-0.") else figure for figure in found]
 
 
 def error_bar(value: float) -> str:

@@ -6,7 +6,7 @@ import io
 from collections.abc import Sequence
 from typing import TYPE_CHECKING
 
-from vib.show.blocks import SYMBOLS, Block, Facts, Heading, Sentence, Table, Tone
+from vib.show.blocks import SYMBOLS, Block, Bullets, Facts, Heading, Sentence, Table, Tone, unit_label
 
 if TYPE_CHECKING:
     from rich.console import Console
@@ -68,15 +68,23 @@ def _print(console: Console, block: Block) -> None:
     elif isinstance(block, Facts):
         width = max((len(name) for name, _ in block.rows), default=0) + 2
         for name, value in block.rows:
-            lines = Text(value).wrap(console, max(console.width - width, 20))
-            first = Text(name.ljust(width))
-            for line in lines:
-                console.print(first + line)
-                first = Text(" " * width)
+            _hang(console, name.ljust(width), value)
+    elif isinstance(block, Bullets):
+        for row in block.rows:
+            _hang(console, "- ", row)
     else:
         if block.title:
             console.print(Text(block.title, style="bold"))
         console.print(_grid(block))
+
+
+def _hang(console: Console, first: str, text: str) -> None:
+    """Text after a first piece, further lines set in."""
+    from rich.text import Text
+
+    for line in Text(text).wrap(console, max(console.width - len(first), 20)):
+        console.print(Text(first) + line)
+        first = " " * len(first)
 
 
 def _grid(block: Table) -> Grid:
@@ -86,7 +94,7 @@ def _grid(block: Table) -> Grid:
 
     grid = Grid(box=box.SIMPLE_HEAD, show_edge=False, pad_edge=False, padding=(0, 1), header_style="")
     for column in block.columns:
-        heading = f"{column.heading}\n{column.unit}" if column.unit else column.heading
+        heading = f"{column.heading}\n{unit_label(column.unit)}" if column.unit else column.heading
         widest = max((len(row[len(grid.columns)]) for row in block.rows), default=0)
         grid.add_column(
             Text(heading),
@@ -96,7 +104,8 @@ def _grid(block: Table) -> Grid:
             overflow="fold",
             min_width=min(widest, 8) if column.figures else min(widest, 12),
         )
-    tones: tuple[Tone, ...] = block.tones or ("plain",) * len(block.rows)
+    plain: Tone = "plain"
+    tones = block.tones or (plain,) * len(block.rows)
     for number, (row, tone) in enumerate(zip(block.rows, tones, strict=True)):
         if block.sums and number == len(block.rows) - block.sums:
             grid.add_section()

@@ -56,7 +56,10 @@ _STYLE: dict[str, Any] = {
     "grid.color": "#e2e2e2",
     "grid.linewidth": 0.5,
     "lines.linewidth": 1.3,
-    "legend.frameon": False,
+    "legend.frameon": True,
+    "legend.framealpha": 0.85,
+    "legend.edgecolor": "none",
+    "legend.fancybox": False,
     "legend.fontsize": 7.5,
     "figure.dpi": 100,
     "path.simplify": True,
@@ -129,6 +132,13 @@ def _saved(figure: Figure, kind: str, **more: Any) -> bytes:
     return out.getvalue()
 
 
+_LONG_NUMBER = re.compile(r"-?\d+\.\d{3,}")
+
+
+def _shorter(number: re.Match[str]) -> str:
+    return f"{float(number[0]):.2f}".rstrip("0").rstrip(".")
+
+
 def _svg(figure: Figure, prefix: str, words: str) -> str:
     import xml.etree.ElementTree as Tree
 
@@ -139,7 +149,10 @@ def _svg(figure: Figure, prefix: str, words: str) -> str:
     tag = re.sub(r"[^A-Za-z0-9_-]", "-", prefix)
     for element in root.iter():
         for name, value in element.attrib.items():
-            if name == "id":
+            if name == "d":
+                # a hundredth of a point is finer than any printer
+                element.set(name, _LONG_NUMBER.sub(_shorter, value))
+            elif name == "id":
                 element.set(name, f"{tag}-{value}")
             elif name.endswith("href") and value.startswith("#"):
                 element.set(name, f"#{tag}-{value[1:]}")

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from itertools import pairwise
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -62,10 +63,10 @@ def history_picture(ring: Ring, output: int, units: UnitSystem) -> Picture:
 def _mark(axes: Axes, ring: Ring, output: int, scale: float, unit: str) -> list[tuple[Any, str]]:
     """The peak, and where the motion has fallen for good."""
     name = ring.freedoms[output]
-    peak = next(
-        peak for peak in ring.peaks if peak.output == name and peak.quantity == "displacement"
+    peak = next(peak for peak in ring.peaks if peak.output == name and peak.quantity == "displacement")
+    (dot,) = axes.plot(
+        peak.time_s, peak.value * scale, "o", ms=5, mfc=COLOURS[1], mec="white", ls="none", zorder=5
     )
-    (dot,) = axes.plot(peak.time_s, peak.value * scale, "o", ms=5, mfc=COLOURS[1], mec="white", ls="none", zorder=5)
     handles: list[tuple[Any, str]] = [(dot, f"peak {significant(peak.value * scale, 3)} {unit}")]
     fall = ring.falls[output]
     end = float(ring.time_s.max())
@@ -121,7 +122,7 @@ def share_picture(ring: Ring) -> Picture:
         axes.invert_yaxis()
         axes.grid(axis="y", visible=False)
         axes.set_xlabel("share of the displacement at its peak, %")
-        legend(axes, handles, outputs, loc="best")
+        legend(axes, handles, outputs, loc="upper left", bbox_to_anchor=(1.0, 1.0))
     return Picture("ring_shares", figure, "Share of each mode in the peak displacements")
 
 
@@ -133,7 +134,7 @@ def _thinned(times: Array, values: Array) -> tuple[Array, Array]:
         return times, values
     edges = np.linspace(0, len(times), _BINS + 1).astype(int)
     kept: list[int] = []
-    for low, high in zip(edges, edges[1:], strict=False):
+    for low, high in pairwise(edges):
         part = values[low:high]
         if np.isnan(part).all():
             kept.append(int(low))

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from itertools import pairwise
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -18,6 +19,8 @@ if TYPE_CHECKING:
 
 _SIZE = 0.13  # largest displacement drawn, as a share of the longest diagonal
 _MOST_BARS = 40
+_LEVELS = 12  # steps of the colour scale
+_STROKES = 24  # pieces a member is drawn with
 
 
 def shape_picture(modes: Modes, index: int, up: str = "z") -> Picture:
@@ -30,7 +33,7 @@ def shape_picture(modes: Modes, index: int, up: str = "z") -> Picture:
     with style():
         figure = sheet(3.4, 2.7 if anatomy is not None else 2.2)
         axes = figure.add_subplot()
-        axes.set_title(f"Mode {number}   {frequency}")
+        axes.set_title(f"Mode {number}: {frequency}")
         if anatomy is not None and len(anatomy.wireframe.nodes_m):
             _draw_structure(axes, anatomy, np.real(shape), up)
         else:
@@ -52,24 +55,33 @@ def _draw_structure(axes: Axes, anatomy: Anatomy, shape: Array, up: str) -> None
     draw_at_rest(axes, wireframe, up)
     away = wireframe.nodes_m + shift
     members = {part.name for part in anatomy.parts if part.kind == "members"}
-    segments: list[Any] = []
-    values: list[float] = []
+    strokes: dict[int, list[Array]] = {}
     for part, nodes in wireframe.lines:
         track = list(nodes)
-        if part not in members:
+        if part in members:
+            between = max(1, round(_STROKES / len(track)))
+            sizes = smooth(amplitude[track][:, None], between)[:, 0]
+            _collect(strokes, on_paper(smooth(away[track], between), up), sizes)
+        else:
             axes.plot(*on_paper(away[track], up).T, color=INK, lw=0.6, ls=(0, (1.5, 1.5)), zorder=2)
-            continue
-        paper = on_paper(smooth(away[track]), up)
-        sizes = smooth(amplitude[track][:, None])[:, 0]
-        segments += list(np.stack([paper[:-1], paper[1:]], axis=1))
-        values += list((sizes[:-1] + sizes[1:]) / 2)
-    drawn = LineCollection(segments, cmap=_motion_colours(), linewidths=1.9, capstyle="round", zorder=3)
-    drawn.set_array(np.array(values))
-    drawn.set_clim(0.0, 1.0)
-    axes.add_collection(drawn)
+    colours = _motion_colours()
+    for level, lines in sorted(strokes.items()):
+        colour = colours(level / (_LEVELS - 1))
+        axes.add_collection(
+            LineCollection(lines, colors=[colour], linewidths=1.9, capstyle="round", zorder=3 + level / 100)
+        )
     _draw_bodies(axes, anatomy, shape, largest, up)
     axes.autoscale_view()
     draw_triad(axes, up, 0.09)
+
+
+def _collect(strokes: dict[int, list[Array]], paper: Array, sizes: Array) -> None:
+    """Cut a line into strokes of about one amplitude, and put each with its level of colour."""
+    middle = np.clip((sizes[:-1] + sizes[1:]) / 2, 0.0, 1.0)
+    levels = np.round(middle * (_LEVELS - 1)).astype(int)
+    edges = [0, *(np.flatnonzero(np.diff(levels)) + 1), len(levels)]
+    for start, end in pairwise(edges):
+        strokes.setdefault(int(levels[start]), []).append(paper[start : end + 1])
 
 
 def _draw_bodies(axes: Axes, anatomy: Anatomy, shape: Array, largest: float, up: str) -> None:

@@ -73,7 +73,8 @@ def smooth(track: Array, between: int = 5) -> Array:
     left = np.minimum(steps.astype(int), count - 2)
     a, b = (left + 1 - steps)[:, None], (steps - left)[:, None]
     curved: Array = (a**3 - a) * bend[left] + (b**3 - b) * bend[left + 1]
-    return a * track[left] + b * track[left + 1] + curved / 6
+    found = a * track[left] + b * track[left + 1] + curved / 6
+    return np.asarray(found, dtype=np.float64)
 
 
 def _second_derivatives(track: Array) -> Array:

@@ -37,7 +37,7 @@ def structure_picture(study: Study, system: System, frames: Iterable[tuple[Array
     with style():
         places = _all_places(study, anatomy)
         size = extent(places)
-        figure = sheet(7.0, 0.8 + sheet_height(places, up, 4.6, 1.8, 4.4))
+        figure = sheet(7.0, 1.1 + sheet_height(places, up, 6.2, 1.5, 4.4))
         axes = figure.add_subplot()
         bare_axes(axes)
         handles = _draw_members(axes, anatomy, up)
@@ -53,8 +53,9 @@ def structure_picture(study: Study, system: System, frames: Iterable[tuple[Array
             axes,
             [handle for handle, _ in handles],
             [label for _, label in handles],
-            loc="center left",
-            bbox_to_anchor=(1.0, 0.5),
+            loc="upper center",
+            bbox_to_anchor=(0.5, -0.01),
+            ncols=3,
         )
     return Picture("model", figure, f"Drawing of the model: {study.title}")
 
@@ -99,22 +100,20 @@ def _draw_bodies(axes: Axes, study: Study, anatomy: Anatomy, up: str) -> list[tu
 
 
 def _draw_springs(axes: Axes, study: Study, size: float, up: str) -> list[tuple[Any, str]]:
-    """A zigzag between two points, or from a point to the ground below it."""
+    """A zigzag between two points, or from a point to the ground: below it, beside it where a support is."""
     handle = None
-    down = np.zeros(3)
-    down["xyz".index(up)] = -_COIL * size
+    held = {name for support in study.supports for name in support.at}
     for spring in study.springs:
         for pair in spring.between:
-            ends = [None if name == "ground" else np.array(study.points[name]) for name in pair]
-            near = ends[0] if ends[0] is not None else ends[1]
-            if near is None:
-                continue
-            far = ends[1] if ends[0] is not None and ends[1] is not None else near + down
-            start, end = on_paper(np.stack([near, far]), up)
-            track = _zigzag(start, end, 0.009 * size)
+            points = [name for name in pair if name != "ground"]
+            paper = on_paper(np.array([study.points[name] for name in points]), up)
+            if len(points) == 1:
+                aside = points[0] in held
+                reach = np.array([-1.6, 0.0] if aside else [0.0, -1.0]) * _COIL * size
+                paper = np.stack([paper[0], paper[0] + reach])
+                _hatch(axes, paper[1], 0.014 * size, upright=aside)
+            track = _zigzag(paper[0], paper[1], 0.009 * size)
             (handle,) = axes.plot(*track.T, color=COLOURS[3], lw=1.2, zorder=4, solid_joinstyle="miter")
-            if any(place is None for place in ends):
-                _hatch(axes, on_paper(far, up)[0], 0.014 * size)
     return [(handle, "spring or dashpot")] if handle is not None else []
 
 
@@ -130,12 +129,15 @@ def _zigzag(start: Array, end: Array, width: float) -> Array:
     return found
 
 
-def _hatch(axes: Axes, place: Array, width: float) -> None:
-    """The ground: a short line with strokes below."""
-    axes.plot([place[0] - width, place[0] + width], [place[1]] * 2, color=INK, lw=1.0, zorder=4)
+def _hatch(axes: Axes, place: Array, width: float, *, upright: bool) -> None:
+    """The ground: a short line with strokes behind it."""
+    along, behind = np.array([width, 0.0]), np.array([-0.5 * width, -0.6 * width])
+    if upright:
+        along, behind = along[::-1], behind[::-1]
+    axes.plot(*np.stack([place - along, place + along]).T, color=INK, lw=1.0, zorder=4)
     for step in np.linspace(-0.8, 1.0, 4):
-        foot = place[0] + step * width
-        axes.plot([foot, foot - 0.5 * width], [place[1], place[1] - 0.6 * width], color=INK, lw=0.6, zorder=4)
+        foot = place + step * along
+        axes.plot(*np.stack([foot, foot + behind]).T, color=INK, lw=0.6, zorder=4)
 
 
 def _draw_supports(axes: Axes, study: Study, up: str) -> list[tuple[Any, str]]:

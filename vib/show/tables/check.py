@@ -5,8 +5,8 @@ from __future__ import annotations
 from collections.abc import Sequence
 from typing import TYPE_CHECKING, Any
 
-from vib.show.blocks import Block, Column, Facts, Heading, Sentence, Table, text_column
-from vib.show.numbers import MISSING, significant
+from vib.show.blocks import Block, Bullets, Column, Facts, Heading, Table, text_column, unit_label
+from vib.show.numbers import MISSING, aligned, significant
 from vib.show.words import CAUTION, caution
 from vib.units import UnitSystem, shown, shown_unit, text
 
@@ -44,7 +44,7 @@ def facts(study: Study, survey: Survey, units: UnitSystem) -> Facts:
         )
     if survey.inertia_kg_m2 is not None:
         diagonal = [survey.inertia_kg_m2[i, i] for i in range(3)]
-        unit = shown_unit("inertia", units)
+        unit = unit_label(shown_unit("inertia", units))
         rows.append(("inertia about it", f"{_triple(diagonal, 'inertia', units)} {unit} (about x, y, z)"))
     rows.append(("gravity", f"along -{study.up}" if study.matrices is None else MISSING))
     if survey.sag is not None:
@@ -96,10 +96,8 @@ def sag_table(survey: Survey, units: UnitSystem) -> Table | None:
     ranked = sorted(
         survey.sag.displacement_m.items(), key=lambda entry: -sum(part * part for part in entry[1])
     )
-    rows = [
-        (name, *(significant(_tidy(shown(part, "length", units)), 3) for part in moved))
-        for name, moved in ranked
-    ]
+    largest = max(abs(part) for _, moved in ranked for part in moved)
+    rows = [(name, *_in_units(moved, largest, "length", units)) for name, moved in ranked]
     unit = shown_unit("length", units)
     columns = (text_column("place"), *(Column(axis, unit) for axis in "xyz"))
     return Table("Sag under its own weight", columns, _first(rows, 4))
@@ -110,14 +108,11 @@ def reaction_table(survey: Survey, units: UnitSystem) -> Table | None:
     if survey.sag is None or not survey.sag.reactions:
         return None
     reactions = survey.sag.reactions
-    size = max(abs(part) for reaction in reactions for part in reaction.force_n)
-    rows = [
-        (reaction.name, *(_small(part, size, "force", units) for part in reaction.force_n))
-        for reaction in reactions
-    ]
     whole = [sum(reaction.force_n[axis] for reaction in reactions) for axis in range(3)]
+    largest = max(abs(part) for reaction in reactions for part in reaction.force_n)
+    rows = [(reaction.name, *_in_units(reaction.force_n, largest, "force", units)) for reaction in reactions]
     shown_rows = _first(rows, 4)
-    sums = ("all", *(_small(part, size, "force", units) for part in whole))
+    sums = ("all", *_in_units(whole, largest, "force", units))
     unit = shown_unit("force", units)
     columns = (text_column("carried by"), *(Column(axis, unit) for axis in "xyz"))
     return Table("Forces that carry the weight", columns, (*shown_rows, sums), sums=1)
@@ -151,7 +146,7 @@ def assumption_blocks(remarks: Sequence[str]) -> list[Block]:
     """What was taken as rigid, massless, undamped or left out."""
     if not remarks:
         return []
-    return [Heading("Assumptions and remarks"), *(Sentence(f"- {remark}") for remark in remarks)]
+    return [Heading("Assumptions and remarks"), Bullets(tuple(remarks))]
 
 
 def check_document(study: Study, survey: Survey) -> dict[str, Any]:
@@ -228,13 +223,8 @@ def _triple(values: Sequence[float] | Any, kind: str, units: UnitSystem) -> str:
     return ", ".join("0" if abs(number) < 1e-9 * largest else significant(number) for number in numbers)
 
 
-def _small(value: float, size: float, kind: str, units: UnitSystem) -> str:
-    """A figure, or 0 where it is round-off beside the largest."""
-    return "0" if abs(value) <= 1e-9 * size else significant(shown(value, kind, units))
-
-
-def _tidy(value: float) -> float:
-    return 0.0 if abs(value) < 1e-12 else value
+def _in_units(values: Sequence[float], largest: float, kind: str, units: UnitSystem) -> list[str]:
+    return aligned([shown(value, kind, units) for value in values], shown(largest, kind, units))
 
 
 def _direction(axis: Sequence[float]) -> str:

@@ -14,8 +14,6 @@ from vib.show.words import caution, completeness, rigid_motion, stability
 if TYPE_CHECKING:
     from vib.modes import Array, Modes
 
-_DIRECTIONS = ("x", "y", "z", "rx", "ry", "rz")
-
 
 def modes_blocks(modes: Modes, title: str) -> list[Block]:
     """All that the ``modes`` command shows."""
@@ -70,20 +68,10 @@ def mass_table(modes: Modes) -> Table | None:
     rows.append(("sum", *(whole_percent(share) for share in shares.sum(axis=0))))
     columns = (
         Column("mode"),
-        *(
-            Column(
-                f"along {name}" if len(name) == 1 else f"about {name[1]}",
-                "% of mass" if len(name) == 1 else "%",
-            )
-            for name in _DIRECTIONS
-        ),
+        *(Column(f"along {name}", "% of mass") for name in "xyz"),
+        *(Column(f"about {name}", "% at origin") for name in "xyz"),
     )
-    return Table(
-        "Effective mass, per cent of the whole (turns: about axes through the origin)",
-        columns,
-        tuple(rows),
-        sums=1,
-    )
+    return Table("Effective mass, of the whole", columns, tuple(rows), sums=1)
 
 
 def energy_words(shares: Mapping[str, Array] | None, index: int, most: int = 3) -> str:

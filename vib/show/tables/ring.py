@@ -2,9 +2,10 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from typing import TYPE_CHECKING, Any
 
-from vib.show.blocks import Block, Column, Facts, Heading, Sentence, Table, text_column
+from vib.show.blocks import Block, Column, Facts, Heading, Sentence, Table, text_column, unit_label
 from vib.show.numbers import percent, significant
 from vib.show.words import CAUTION, caution
 from vib.units import UnitSystem, shown, shown_unit
@@ -21,9 +22,40 @@ KINDS = {
 }
 
 
-def ring_blocks(ring: Ring, title: str, units: UnitSystem) -> list[Block]:
+def start_words(arguments: Mapping[str, Any], units: UnitSystem) -> str:
+    """What sets it ringing, in words, from the SI arguments of `vib.response.ring.ring`."""
+    along = arguments.get("along")
+    turning = isinstance(along, str) and along.lstrip("+-").startswith("r")
+    place = str(arguments.get("at"))
+    if isinstance(along, str):
+        place += f" {'about' if turning else 'along'} {along.replace('r', '') if turning else along}"
+    elif along is not None:
+        place += f" along ({', '.join(f'{part:.3g}' for part in along)})"
+    if "pulse" in arguments:
+        peak, lasts = arguments["pulse"]
+        size = _text(peak, ("force", "moment")[turning], units)
+        return f"half-sine pulse of {size} and {_text(lasts, 'time', units)} at {place}"
+    for name, (words, *kinds) in _STARTS.items():
+        if name in arguments:
+            return words.format(_text(arguments[name], kinds[turning], units), place)
+    return ""
+
+
+_STARTS = {
+    "impulse": ("impulse of {} at {}", "impulse", "angular_impulse"),
+    "pull": ("steady pull of {} at {}, let go", "force", "moment"),
+    "displacement": ("pulled by {} at {}, let go", "length", "angle"),
+    "velocity": ("started with {} at {}, all else at rest", "velocity", "angular_velocity"),
+}
+
+
+def _text(value: float, kind: str, units: UnitSystem) -> str:
+    return f"{shown(value, kind, units):.4g} {unit_label(shown_unit(kind, units))}"
+
+
+def ring_blocks(ring: Ring, title: str, start: str, units: UnitSystem) -> list[Block]:
     """All that the ``ring`` command shows."""
-    blocks: list[Block] = [Heading(title), Sentence(f"Start: {ring.start}."), ring_stability(ring)]
+    blocks: list[Block] = [Heading(title), Sentence(f"Start: {start}."), ring_stability(ring)]
     for turning in (False, True):
         table = peak_table(ring, turning, units)
         if table is not None:
@@ -116,7 +148,10 @@ def _share(share: float) -> str:
 def ring_facts(ring: Ring) -> Facts:
     """How it was computed."""
     rows = [
-        ("record", f"{significant(float(ring.time_s[-1]), 4)} s in {len(ring.time_s)} times: {ring.duration_note}"),
+        (
+            "record",
+            f"{significant(float(ring.time_s[-1]), 4)} s in {len(ring.time_s)} times: {ring.duration_note}",
+        ),
         ("method", f"{ring.method}, condition number {significant(ring.condition, 3)}"),
         ("model", ring.model),
         ("left out", _truncation(ring)),
@@ -150,4 +185,3 @@ def history_columns(ring: Ring) -> dict[str, Any]:
         for position, output in enumerate(ring.freedoms):
             columns[f"{name}_{units[ring.rotational[position]]} {output}"] = array[:, position]
     return columns
-
