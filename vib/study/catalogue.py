@@ -192,9 +192,10 @@ def _angle(designation: str, found: re.Match[str]) -> Profile:
     entry = entries("angle").get(key)
     if entry is None:
         raise _unknown(designation, key)
-    root = entry.dimensions["r1"]
+    size = entry.dimensions
+    upright, lying = (size["a"], size["b"]) if first >= second else (size["b"], size["a"])
     # EN 10056-1 rounds the toes to half the root radius.
-    profile = angle(first * _MM, second * _MM, thickness * _MM, root, root / 2)
+    profile = angle(upright, lying, size["t"], size["r1"], size["r1"] / 2)
     return replace(profile, name=f"L {first:g}x{second:g}x{thickness:g}")
 
 
