@@ -16,7 +16,9 @@ VALUES = [0.7, 2.4e-3, 5.1e-6, 1.7e-6, 4.2e-6, 1.1e-3, 1.6e-3, 2.1e11, 8.1e10, 7
 
 
 def one_bar(**changed: float) -> Bars:
-    return Bars(**{name: np.array([changed.get(name, value)]) for name, value in zip(NAMES, VALUES, strict=True)})
+    return Bars(
+        **{name: np.array([changed.get(name, value)]) for name, value in zip(NAMES, VALUES, strict=True)}
+    )
 
 
 def shape_functions(x: np.ndarray, length: float, shear: float) -> tuple[np.ndarray, ...]:
@@ -57,7 +59,9 @@ def test_bending_matrices_are_those_of_the_static_shape_functions(plane, shear_a
     points, weights = np.polynomial.legendre.leggauss(6)
     w, r, curvature, angle = shape_functions(0.5 * length * (points + 1), length, shear)
     weights = 0.5 * length * weights
-    stiffness = young * second * (curvature * weights) @ curvature.T + shear_stiffness * (angle * weights) @ angle.T
+    stiffness = (
+        young * second * (curvature * weights) @ curvature.T + shear_stiffness * (angle * weights) @ angle.T
+    )
     mass = line * (w * weights) @ w.T + VALUES[9] * second * (r * weights) @ r.T
     index = {"xy": [1, 5, 7, 11], "xz": [2, 4, 8, 10]}[plane]
     signs = np.array([1.0, 1, 1, 1]) if plane == "xy" else np.array([1.0, -1, 1, -1])
@@ -98,7 +102,9 @@ def test_rigid_motion_stores_nothing_and_carries_the_whole_mass(angle, turn, til
     rigid = np.concatenate([arms(start), arms(start + VALUES[0] * along)])
     stiffness, mass = (to_global(f(bar), axes)[0] for f in (local_stiffness, local_mass))
     motion = rigid @ np.array(moved)
-    assert abs(motion @ stiffness @ motion) <= 1e-12 * (np.abs(motion) @ np.abs(stiffness) @ np.abs(motion) + 1e-300)
+    assert abs(motion @ stiffness @ motion) <= 1e-12 * (
+        np.abs(motion) @ np.abs(stiffness) @ np.abs(motion) + 1e-300
+    )
 
     length, area, iy, iz, *_, density = VALUES
     middle = start + 0.5 * length * along

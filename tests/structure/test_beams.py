@@ -168,7 +168,9 @@ def test_rods_and_shafts(beam, cut, frequencies, ends, component):
     found = frequencies(cut(beam(turned, material=material, section=section), 80), component) * 2 * PI / speed
     wanted = np.array(roots)
     dispersion = 1 + (wanted / 80) ** 2 / 24
-    np.testing.assert_allclose(found[: len(roots)], wanted * dispersion, rtol=2e-7, atol=1e-5)  # root of round-off
+    np.testing.assert_allclose(
+        found[: len(roots)], wanted * dispersion, rtol=2e-7, atol=1e-5
+    )  # root of round-off
 
 
 ROD_TIPS = {

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections import Counter
 from dataclasses import dataclass, fields, replace
 
 import numpy as np
@@ -92,7 +93,7 @@ def read_stretches(study: Study, points: dict[str, int], faults: list[str]) -> S
     length = np.linalg.norm(along, axis=1)
     extent = max(float(np.ptp(tips, axis=(0, 1)).max()), float(np.abs(reach).max())) if count else 0.0
     entries = tuple(f'{entry} ("{study.members[i].name}")' for i, entry, _, _ in rows)
-    labels = tuple(f"{study.members[i].name} {run[k]}-{run[k + 1]}" for i, _, run, k in rows)
+    labels = _labels([f"{study.members[i].name} {run[k]}-{run[k + 1]}" for i, _, run, k in rows])
     for s in np.flatnonzero(length <= 1e-9 * extent).tolist():
         name_a, name_b = (rows[s][2][rows[s][3] + k] for k in (0, 1))
         faults.append(
@@ -101,6 +102,11 @@ def read_stretches(study: Study, points: dict[str, int], faults: list[str]) -> S
     along = np.where(length[:, None] > 0, along, [1.0, 0.0, 0.0]) / np.where(length > 0, length, 1.0)[:, None]
     drawn = _drawn_axes(study, group, along, entries, faults)
     bars, angle = _bars(study, group, np.where(length > 0, length, 1.0))
+    for s in np.flatnonzero(loose(released) & (bars.density == 0)):
+        faults.append(
+            f"{entries[s]}: its releases let it move freely and it has no mass, so its movement is "
+            "undetermined; hold a component at one end, or give its material a density"
+        )
     return Stretches(
         ends, tips, reach, released, drawn, axes.turn_about_x(drawn, angle), bars, group, entries, labels
     )  # fmt: skip
@@ -109,6 +115,26 @@ def read_stretches(study: Study, points: dict[str, int], faults: list[str]) -> S
 def pieces_of(bars: Bars, counts: Indices) -> Bars:
     """One piece of each stretch that is cut into ``counts`` (s,) equal pieces."""
     return replace(bars, length=bars.length / counts)
+
+
+def loose(released: Flags) -> Flags:
+    """(s,) stretches that their releases (s, 2, 6) leave free to move by themselves as rigid bodies."""
+    found = np.zeros(len(released), dtype=bool)
+    for s in np.flatnonzero(released.any(axis=2).all(axis=1)):
+        start, end = ~released[s]
+        rows = np.concatenate([np.eye(6)[start], arms(np.array([1.0, 0.0, 0.0]))[end]])
+        found[s] = np.linalg.matrix_rank(rows) < 6
+    return found
+
+
+def _labels(names: list[str]) -> tuple[str, ...]:
+    """Each name once: the second of the same gets a (2), and so on."""
+    times: Counter[str] = Counter()
+    found = []
+    for name in names:
+        times[name] += 1
+        found.append(name if times[name] == 1 else f"{name} ({times[name]})")
+    return tuple(found)
 
 
 def _named_runs(i: int, members: Members) -> list[tuple[str, tuple[str, ...]]]:

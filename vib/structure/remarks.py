@@ -8,6 +8,7 @@ import numpy as np
 
 from vib.structure.axes import STANDING, standing, unit_axis
 from vib.structure.layout import Layout
+from vib.structure.members import loose
 from vib.structure.oddities import oddities
 
 _MOST_NAMES = 8
@@ -50,6 +51,9 @@ def _of_members(layout: Layout) -> Iterator[str]:
     massless = [members.name for i, members in enumerate(study.members) if not _density(layout, i)]
     if massless:
         yield f"members without mass (density 0): {listing(massless)}"
+    free = np.flatnonzero(loose(stretches.released))
+    if len(free):
+        yield f"members that their releases let move freely: {listing(stretches.labels[s] for s in free)}"
     along = stretches.axes[:, 0]
     default = np.array([members.up is None for members in study.members])[stretches.group]
     exactly = np.linalg.norm(np.cross(along, unit_axis(study.up)), axis=1) < 1e-9
