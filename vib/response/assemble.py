@@ -74,11 +74,13 @@ def _reduced(system: System, start: Start, outputs: Sequence[Output]) -> Assembl
         forces.append(start.direction)
         if start.kind == "velocity":
             given.append(start.direction)
-    extra = np.hstack([corrections(system, np.array(forces).T), np.array(given).reshape(-1, system.size).T])
     earlier: Motion | None = None
     for count in COUNTS:
         count = min(count, system.size // 2)
-        model = reduced_model(system, lowest(system, count), count, extra)
+        modes = lowest(system, count)
+        fixed = corrections(system, modes, np.array(forces).T)
+        extra = np.hstack([fixed, np.array(given).reshape(-1, system.size).T])
+        model = reduced_model(system, modes, extra)
         motion, remarks = _motion(model, start, outputs)
         if earlier is None:
             earlier = motion
@@ -120,7 +122,7 @@ def _truncation_remarks(truncation: Mapping[str, float]) -> tuple[str, ...]:
     ]
     if large:
         remarks.append(
-            f"Not settled: {', '.join(large)} of the peak still depends on the modes left out. A sharp blow "
-            "excites all modes; give its real duration with pulse."
+            f"Not settled: {', '.join(large)} of the peak still depends on the modes left out; the sharper the "
+            "start, the more modes it excites."
         )
     return tuple(remarks)

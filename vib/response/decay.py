@@ -54,9 +54,8 @@ class Fall:
     """When one output has fallen to a tenth and to a hundredth of its displacement peak, s from the start.
 
     ``envelope_to_10_percent_s`` and ``envelope_to_1_percent_s``: from then on the envelope, and so the
-    output, stays below; for held systems a safe upper bound. ``record_to_...``: the last time the motion
-    itself is above, within the record. None: it does not get there (or, for the record, not before its
-    end). What stays in the end (a free machine comes to rest elsewhere) is taken off first.
+    output, stays below: a safe upper bound. ``record_to_...``: the last time the motion itself is above.
+    None: it does not get there (or, for the record, it ends before the envelope is there). What stays in the end (a free machine comes to rest elsewhere) is taken off first.
     """
 
     output: str
@@ -135,7 +134,11 @@ def peak_of(motion: Motion, times: Array, record: Array, order: int) -> tuple[fl
     inner = np.flatnonzero((size[1:-1] >= size[:-2]) & (size[1:-1] >= size[2:])) + 1
     # 20 samples per swing cut a peak by at most 1.3 %, so a lower sample can't belong to the largest
     near = inner[size[inner] > 0.95 * size.max(initial=0.0)]
-    near = near[np.argsort(-size[near], kind="stable")][:4]
+    # ranked by the parabola through three samples; of equal peaks the first is meant
+    before, after = size[near - 1], size[near + 1]
+    bend = np.minimum(before - 2 * size[near] + after, -np.finfo(float).tiny)
+    height = size[near] - (after - before) ** 2 / (8 * bend)
+    near = near[np.lexsort((near, -np.round(height / max(height.max(initial=0.0), 1e-300), 3)))][:4]
     best = int(np.argmax(size))
     value, when = float(record[best]), float(times[best])
     for index in near:
@@ -143,7 +146,7 @@ def peak_of(motion: Motion, times: Array, record: Array, order: int) -> tuple[fl
         if root is None:
             continue
         there = float(motion(np.array([root]), order)[0, 0])
-        if abs(there) > abs(value):
+        if abs(there) > abs(value) * (1 + 1e-9):
             value, when = there, root
     return value, when
 

@@ -133,8 +133,10 @@ def _split(matrix: Array, limit: float) -> tuple[list[Part], tuple[float, float]
 
 def _residual(matrix: Array, parts: list[Part]) -> float:
     """How badly the bases are invariant, in units of ten roundings of the matrix."""
-    rest = [np.abs(matrix @ part.right - part.right @ part.block).max(initial=0.0) for part in parts]
-    return float(max(rest) / (10 * len(matrix) * EPS * max(np.linalg.norm(matrix, 1), np.finfo(float).tiny)))
+    moved = matrix @ np.hstack([part.right for part in parts])
+    kept = np.hstack([part.right @ part.block for part in parts])
+    size = 10 * len(matrix) * EPS * max(float(np.linalg.norm(matrix, 1)), float(np.finfo(float).tiny))
+    return float(np.abs(moved - kept).max(initial=0.0)) / size
 
 
 def _linked(values: Numbers, gap: float) -> NDArray[np.int64]:

@@ -14,10 +14,11 @@ import numpy as np
 import scipy.linalg
 import scipy.sparse as sparse
 
+from vib.modes import find_modes
 from vib.response.exponential import Array
 from vib.response.first_order import RingModel, modal_model
 from vib.solve.dense import dense_undamped
-from vib.solve.lanczos import shifted, sparse_undamped
+from vib.solve.factor import factorise
 from vib.solve.undamped import Undamped, elastic_ratio, stores_nothing
 from vib.system import Matrix, System
 
@@ -26,13 +27,28 @@ _DEPENDENT = 1e-10  # directions left with less than this share of their mass ad
 
 
 def lowest(system: System, count: int) -> Undamped:
-    """The lowest ``count`` undamped modes."""
-    if sparse.issparse(system.mass) and sparse.issparse(system.stiffness) and count < system.size // 2:
-        return sparse_undamped(system.mass, system.stiffness, count, certify=False)
-    return dense_undamped(system.mass, system.stiffness).first(count)
+    """The lowest ``count`` undamped modes of symmetric matrices.
+
+    Raises
+    ------
+    AccuracyError
+        The solver did not finish.
+    """
+    if not sparse.issparse(system.stiffness) or 4 * count > system.size:
+        return dense_undamped(system.mass, system.stiffness).first(count)
+    modes = find_modes(System(mass=system.mass, stiffness=system.stiffness), count=count)
+    angular = 2 * np.pi * modes.frequencies_hz
+    return Undamped(
+        # a growing mode of negative stiffness is real and stands alone
+        values=np.where(modes.eigenvalues.real > 0, -(angular**2), angular**2),
+        shapes=np.asarray(modes.shapes.real),
+        errors=2 * np.pi * modes.errors_hz,
+        rigid=modes.rigid_body_count,
+        complete=False,
+    )
 
 
-def corrections(system: System, vectors: Array) -> Array:
+def corrections(system: System, modes: Undamped, vectors: Array) -> Array:
     """Static answers (n, c) to forces ``vectors`` (n, c), and to the forces of localised dashpots.
 
     For a free system the answer to the force and a small inertia: with the rigid-body modes beside it, that
@@ -42,16 +58,17 @@ def corrections(system: System, vectors: Array) -> Array:
     for matrix in (system.damping, system.gyroscopic):
         if matrix is not None:
             forces.append(_acting(matrix))
-    forces_together = np.hstack(forces)
-    if not forces_together.shape[1]:
-        return forces_together
-    return np.asarray(shifted(system.mass, system.stiffness).factor.solve(forces_together))
+    together = np.hstack(forces)
+    stiffness = system.stiffness
+    if modes.rigid:
+        elastic = modes.values[modes.rigid :]
+        stiffness = stiffness + (float(elastic[0]) if elastic.size else 1.0) * system.mass
+    return factorise(stiffness).solve(together)
 
 
-def reduced_model(system: System, modes: Undamped, count: int, extra: Array) -> RingModel:
-    """The model of the first ``count`` of ``modes`` and the directions ``extra`` (n, c)."""
-    kept = modes.first(count)
-    shapes = kept.shapes
+def reduced_model(system: System, modes: Undamped, extra: Array) -> RingModel:
+    """The model of the lowest ``modes`` and the directions ``extra`` (n, c)."""
+    shapes = modes.shapes
     rest = extra
     for _ in range(2):  # twice is enough to make it orthogonal to rounding
         rest = rest - shapes @ (shapes.T @ (system.mass @ rest))
@@ -60,13 +77,13 @@ def reduced_model(system: System, modes: Undamped, count: int, extra: Array) -> 
     values, turn = scipy.linalg.eigh(_symmetric(rest.T @ (system.stiffness @ rest)))
     added = rest @ turn
     still = stores_nothing(*elastic_ratio(system.stiffness, added)) if added.shape[1] else np.zeros(0, bool)
-    squares = np.concatenate([kept.values, np.where(still, 0.0, values)])
+    squares = np.concatenate([modes.values, np.where(still, 0.0, values)])
     order = np.lexsort((squares, squares != 0))
     whole = replace(
-        kept,
+        modes,
         values=squares[order],
         shapes=np.hstack([shapes, added])[:, order],
-        errors=np.concatenate([kept.errors, np.zeros(len(values))])[order],
+        errors=np.concatenate([modes.errors, np.zeros(len(values))])[order],
         rigid=int((squares == 0).sum()),
         complete=True,  # of the reduced problem, which is what its damping is judged by
     )

@@ -125,8 +125,12 @@ class Ring:
             values: list[float | None] = [None] * (2 * len(FALLS))
             if moves[output]:
                 values = [envelope_fall(self.contributions, output, share * size) for share in FALLS]
+                # the record tells only if it lasts until the motion surely stays below
                 values += [
-                    record_fall(one, constant, times, records[:, output], share * size) for share in FALLS
+                    record_fall(one, constant, times, records[:, output], share * size)
+                    if safe is not None and safe <= times[-1]
+                    else None
+                    for share, safe in zip(FALLS, tuple(values), strict=True)
                 ]
             found.append(Fall(label, *values))
         return tuple(found)

@@ -21,7 +21,8 @@ class RingMode:
 
     ``frequency_hz`` is natural, ``abs(eigenvalue) / 2 pi``; ``damping_ratio`` None for rigid-body motion;
     ``logarithmic_decrement`` None where nothing swings. ``fall_to_10_percent_s`` and
-    ``fall_to_1_percent_s`` are how long its own envelope takes, None if it does not fall. ``amplitude``
+    ``fall_to_1_percent_s`` are how long its own envelope takes, None if it does not fall or has no envelope
+    of its own (clustered). ``amplitude``
     (p,) is abs(weight), in m or rad, NaN where clustered; ``share_of_peak`` (p,) is its signed part of each
     output's displacement at that output's peak: the shares of all eigenvalues and of what stays add to 1.
     """
@@ -69,7 +70,9 @@ def _row(found: Contributions, shares: Array, index: int, number: int) -> RingMo
     rigid = abs(value) <= found.parts[index].rounding
     size = 0.0 if rigid else abs(value)
     ratio = None if rigid else decay / size
-    falls = [-math.log(share) / decay if decay > 0 else None for share in FALLS]
+    falls: list[float | None] = [None] * len(FALLS)
+    if decay > 0 and not found.clustered[index]:
+        falls = [-math.log(share) / decay for share in FALLS]
     return RingMode(
         number=number,
         eigenvalue=0j if rigid else value,
