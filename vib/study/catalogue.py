@@ -7,14 +7,14 @@ dimensions (``vib.study.profiles``), not taken from the printed figures, which s
 
 from __future__ import annotations
 
-import csv
 import difflib
 import math
 import re
 from collections.abc import Callable, Mapping
-from dataclasses import dataclass, replace
+from dataclasses import replace
 from functools import cache
 from pathlib import Path
+from typing import NamedTuple
 
 from vib.errors import ModelError
 from vib.study.profiles import (
@@ -27,7 +27,7 @@ from vib.study.profiles import (
 )
 
 _DATA = Path(__file__).parent / "data"
-_MM, _INCH = 1e-3, 0.0254
+_MM, _INCH, _PERCENT = 1e-3, 0.0254, 0.01
 
 _HOLLOW = re.compile(r"(SHS|RHS|CHS)([\d.]+)X([\d.]+)(?:X([\d.]+))?(?:HOT(?:FINISHED)?|(COLD)(?:FORMED)?)?")
 _ANGLE = re.compile(r"L([\d.]+)X([\d.]+)(?:X([\d.]+))?")
@@ -35,8 +35,7 @@ _CAPITALS = "ABCDEFGHIJKLMNOPQRSTUVWXYZ"
 _WIDE = re.compile(r"HE(\d+)([ABM])")
 
 
-@dataclass(frozen=True)
-class Entry:
+class Entry(NamedTuple):
     """One row of a table.
 
     ``dimensions`` in metres by the names of the file's header, the slope of a flange as a ratio;
@@ -49,8 +48,7 @@ class Entry:
     printed_unit: float
 
 
-@dataclass(frozen=True)
-class _Table:
+class _Table(NamedTuple):
     file: str
     dimensions: tuple[str, ...]
     unit: float
@@ -75,15 +73,17 @@ def families() -> tuple[str, ...]:
 def entries(family: str) -> Mapping[str, Entry]:
     """The rows of one table, by plain designation: capitals without spaces."""
     table = _TABLES[family]
-    with (_DATA / table.file).open(encoding="utf-8", newline="") as lines:
-        rows = list(csv.DictReader(line for line in lines if not line.startswith("#")))
+    text = (_DATA / table.file).read_text(encoding="utf-8")
+    head, *rows = (line.split(",") for line in text.splitlines() if not line.startswith("#"))
+    sizes = len(table.dimensions) + 1
     found = {}
     for row in rows:
-        designation = row.pop("designation")
-        dimensions = {name: float(row.pop(name)) * table.unit for name in table.dimensions if name != "slope"}
-        if "slope" in row:
-            dimensions["slope"] = float(row.pop("slope")) / 100
-        found[_plain(designation)] = Entry(designation, dimensions, row, table.printed_unit)
+        dimensions = {
+            name: float(cell) * (_PERCENT if name == "slope" else table.unit)
+            for name, cell in zip(head[1:sizes], row[1:sizes], strict=True)
+        }
+        printed = dict(zip(head[sizes:], row[sizes:], strict=True))
+        found[_plain(row[0])] = Entry(row[0], dimensions, printed, table.printed_unit)
     return found
 
 

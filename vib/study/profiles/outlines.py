@@ -7,15 +7,14 @@ that holes subtract by themselves. Lengths are metres throughout.
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from typing import NamedTuple
 
 from vib.errors import ModelError
 
 Point = tuple[float, float]
 
 
-@dataclass(frozen=True)
-class Corner:
+class Corner(NamedTuple):
     """A corner of a polygon at (y, z), rounded to ``radius`` by an arc tangent to both sides.
 
     ``label`` is the name of the radius in messages.
@@ -27,8 +26,7 @@ class Corner:
     label: str = "radius"
 
 
-@dataclass(frozen=True)
-class Arc:
+class Arc(NamedTuple):
     """The arc of ``radius`` about ``centre`` from ``start`` to ``end``, less than half a turn.
 
     ``sign`` is +1 where it bulges outwards of an anticlockwise chord polygon, -1 where it cuts in.
@@ -41,8 +39,7 @@ class Arc:
     sign: int
 
 
-@dataclass(frozen=True)
-class Loop:
+class Loop(NamedTuple):
     """A closed loop: the chord polygon ``points`` and the ``arcs`` that stand on some of its sides.
 
     ``arcs[i]`` stands on the side from ``points[i]`` to the next point, None where that is straight.
@@ -52,8 +49,7 @@ class Loop:
     arcs: tuple[Arc | None, ...]
 
 
-@dataclass(frozen=True)
-class AreaIntegrals:
+class AreaIntegrals(NamedTuple):
     """Integrals over an area: 1, y, z (m^2, m^3), z^2, y^2 and y z (m^4)."""
 
     area: float

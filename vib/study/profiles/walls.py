@@ -11,16 +11,15 @@ metres throughout.
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
 from itertools import pairwise
+from typing import NamedTuple
 
 Point = tuple[float, float]
 
 _STRIPS = 4
 
 
-@dataclass(frozen=True)
-class Wall:
+class Wall(NamedTuple):
     """A straight strip of wall from ``start`` to ``end`` (middle line).
 
     ``thickness`` times length is the area it carries, ``flow`` the thickness that the shear flow finds; at a
@@ -67,8 +66,7 @@ def _centroid(walls: list[Wall]) -> Point:
     return y, z
 
 
-@dataclass(frozen=True)
-class Leg:
+class Leg(NamedTuple):
     """A straight leg of a section from ``start`` to ``end``, tapering from ``thin`` to ``thick``.
 
     The line from start to end is the flat face of the leg and ``inward`` the unit vector to its other face;
