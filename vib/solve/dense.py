@@ -98,12 +98,13 @@ def _semidefinite(
 
     stretched = product.T @ left
     # Residual in two norms: with inv(M) it is good for stiff modes, with inv(K) for soft ones.
-    by_mass = np.linalg.norm(product @ stretched - angular**2 * left, axis=0) / (2 * angular)
+    residual = np.linalg.norm(product @ stretched - angular**2 * left, axis=0)
+    by_gap = _by_gap(residual, np.einsum("ij,ij->j", stretched, stretched), angular**2)
     stiffness_scale = root_scale(np.diag(reduced.stiffness))
     force = stiffness_scale[:, None] * (lower @ left) / mass_scale[:, None]
     inverse = scipy.linalg.solve_triangular(upper[:, :rank].T, force[order[:rank]], lower=True)
     by_stiffness = np.linalg.norm(stretched - angular**2 * inverse, axis=0) / 2
-    errors = np.minimum(by_mass, by_stiffness)
+    errors = np.minimum(np.minimum(residual, by_gap) / (2 * angular), by_stiffness)
 
     null = np.zeros((size, size - rank))
     if rank < size:
@@ -119,6 +120,17 @@ def _semidefinite(
         np.hstack([null, shapes(left)]),
         np.concatenate([none, errors]),
     )
+
+
+def _by_gap(residual: Array, quotient: Array, values: Array) -> Array:
+    """Error of each eigenvalue from its Rayleigh quotient: residual^2 / gap to the nearest other eigenvalue.
+
+    T. Kato, J. Phys. Soc. Japan 4 (1949) 334-339; G. Temple, Proc. R. Soc. Lond. A 119 (1928) 276-293.
+    """
+    distance = np.abs(values[:, None] - values)
+    np.fill_diagonal(distance, np.inf)
+    gap = distance.min(axis=1, initial=np.inf) - residual
+    return np.where(gap > 0, residual**2 / np.where(gap > 0, gap, 1.0) + np.abs(quotient - values), np.inf)
 
 
 def _singular(product: Array) -> tuple[Array, Array]:
