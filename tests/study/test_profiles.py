@@ -6,7 +6,7 @@ from dataclasses import fields
 from typing import Any
 
 import pytest
-from hypothesis import given
+from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from vib.errors import ModelError
@@ -111,9 +111,9 @@ def build(name, scale=1.0, **changes):
     ],
 )
 def test_torsion_of_rectangles(ratio, beta, printed):
-    """J = beta a b^3. Source: Timoshenko & Goodier, Theory of Elasticity, torsion of rectangular bars (from
+    """J = beta a b^3; the long digits are the Fourier series in 40 digits.
 
-    memory; the long digits are the Fourier series in 40 digits).
+    Source: Timoshenko & Goodier, Theory of Elasticity, torsion of rectangular bars (printed, from memory).
     """
     lying, upright = rectangle(0.02 * ratio, 0.02), rectangle(0.02, 0.02 * ratio)
     assert lying.torsion_constant == pytest.approx(beta * ratio * 0.02**4, rel=1e-8)
@@ -195,6 +195,7 @@ def test_general_section():
 
 
 @pytest.mark.parametrize("name", SHAPES)
+@settings(deadline=None)
 @given(scale=st.floats(1e-3, 1e3))
 def test_scaling(name, scale):
     """Lengths times s: areas times s^2, fourth powers times s^4, angles unchanged."""
@@ -221,6 +222,7 @@ def test_bounds(name):
     assert all(getattr(profile, field.name) is not None for field in fields(profile))
 
 
+@settings(deadline=None)
 @given(width=st.floats(0.01, 1), height=st.floats(0.01, 1), share=st.floats(0.01, 0.49))
 def test_sharp_hollow_is_outer_minus_inner(width, height, share):
     t = share * min(width, height)
@@ -233,6 +235,7 @@ def test_sharp_hollow_is_outer_minus_inner(width, height, share):
     assert hollow.remarks[0] == "the corners are taken as sharp: no outer_radius was given"
 
 
+@settings(deadline=None)
 @given(a=st.floats(0.03, 0.3), b=st.floats(0.03, 0.3), share=st.floats(0.05, 0.3))
 def test_invariants_of_turned_axes(a, b, share):
     """Iy + Iz and Iy Iz - Iyz^2 do not depend on the axes; the drawn ones from two rectangles by hand."""
@@ -295,6 +298,7 @@ def test_remarks_on_what_is_off():
     assert "torsion constant may be" in t_section(0.1, 0.08, 0.005, 0.005, 0.011).remarks[1]
 
 
+@settings(deadline=None)
 @given(
     height=st.floats(0.05, 0.5), slender=st.floats(0.2, 2.0),
     web=st.floats(0.02, 0.9), flange=st.floats(0.02, 0.45),
