@@ -32,7 +32,8 @@ def _frequencies(system: System, components: str | None = None) -> np.ndarray:
     keep = [i for i, freedom in enumerate(system.freedoms) if not wanted or freedom.component in wanted]
     stiffness, mass = (matrix.toarray()[np.ix_(keep, keep)] for matrix in (system.stiffness, system.mass))
     values = scipy.linalg.eigh(stiffness, mass, eigvals_only=True)
-    return np.sqrt(np.maximum(values, 0.0)) / (2 * np.pi)
+    found: np.ndarray = np.sqrt(np.maximum(values, 0.0)) / (2 * np.pi)
+    return found
 
 
 @pytest.fixture(scope="session")

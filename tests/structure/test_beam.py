@@ -72,7 +72,7 @@ def test_bending_matrices_are_those_of_the_static_shape_functions(plane, shear_a
 
 
 def test_tip_of_a_cantilever():
-    """PL^3/3EI + PL/(G As) under a force, ML/EI under a moment, TL/GJ, NL/EA: any text on strength of materials."""
+    """PL^3/3EI + PL/(G As) under a force, ML/EI under a moment, TL/GJ, NL/EA: strength of materials."""
     tip = np.linalg.inv(local_stiffness(one_bar())[0, 6:, 6:])
     length, area, iy, iz, torsion, asy, asz, young, shear, _ = VALUES
     wanted = [
@@ -93,7 +93,7 @@ components = st.floats(-5, 5)
 @settings(max_examples=40, deadline=None)
 @given(angle=angles, turn=angles, tilt=angles, moved=st.tuples(*[components] * 6))
 def test_rigid_motion_stores_nothing_and_carries_the_whole_mass(angle, turn, tilt, moved):
-    """A bar anywhere, any way up, moved as one body: no strain energy, and the kinetic energy of a rigid bar."""
+    """A bar anywhere, moved as one body: no strain energy, and the kinetic energy of a rigid bar."""
     along = np.array([np.cos(angle) * np.cos(tilt), np.sin(angle) * np.cos(tilt), np.sin(tilt)])
     up = np.array([-np.sin(angle), np.cos(angle), 0.3])
     axes = turn_about_x(member_axes(along[None], up[None], np.array([turn])), np.array([0.2]))

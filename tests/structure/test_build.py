@@ -1,5 +1,7 @@
 """The system of a study: damping, parts, pictures, remarks, and errors that name the entry and the mend."""
 
+from typing import Any
+
 import numpy as np
 import pytest
 
@@ -7,7 +9,7 @@ import vib
 from vib.errors import MatrixError, ModelError
 
 BAR = {"shape": "rectangle", "width": 0.08, "height": 0.05}
-POINTS = {"A": [0, 0, 0], "B": [2, 0, 0], "C": [2, 0, 1]}
+POINTS: dict[str, Any] = {"A": [0, 0, 0], "B": [2, 0, 0], "C": [2, 0, 1]}
 
 
 @pytest.fixture(scope="session")
@@ -93,14 +95,14 @@ def test_places_and_lines(bars):
     np.testing.assert_allclose(anatomy.places["C"].motion @ about_x, [0, 0.5, 0, 1, 0, 0])
     frame = anatomy.wireframe
     assert frame.motion.shape == (3 * len(frame.nodes_m), len(about_x))
-    by_name = {}
+    by_name: dict[str, Any] = {}
     for name, nodes in frame.lines:
         by_name.setdefault(name, []).append(frame.nodes_m[list(nodes)])
     np.testing.assert_allclose(by_name["bars"][0], [[x, 0, 0] for x in (0, 0.5, 1, 1.5, 2)])
     np.testing.assert_allclose(by_name["bars"][1][-1], [2, 0.1, 1])
-    np.testing.assert_allclose(by_name["bars"][2], [[2, 0, 1], [2, 0.1, 1]])
-    np.testing.assert_allclose(by_name["tie"][0], [[0, 0, 0], [2, 0, 1]])
-    np.testing.assert_allclose(by_name["motor"][0], [[2, 0, 1.5], [2, 0, 1]])
+    np.testing.assert_allclose(by_name["bars"][2], np.array([[2, 0, 1], [2, 0.1, 1]]))
+    np.testing.assert_allclose(by_name["tie"][0], np.array([[0, 0, 0], [2, 0, 1]]))
+    np.testing.assert_allclose(by_name["motor"][0], np.array([[2, 0, 1.5], [2, 0, 1]]))
 
 
 def test_names_that_two_kinds_share_are_told_apart(bars):
@@ -117,18 +119,27 @@ def test_a_run_given_twice_is_two_members(bars):
     )
 
 
-REMARKS = {
+BALL = {"name": "b", "mass": 1, "inertia": [1, 1, 1], "carried_by": "E"}
+CHANNEL = {
+    "shape": "channel",
+    "height": 0.1,
+    "width": 0.05,
+    "web_thickness": 0.006,
+    "flange_thickness": 0.008,
+}
+GENERAL = {"area": 1e-3, "second_moment_y": 1e-6, "second_moment_z": 1e-6, "torsion_constant": 1e-6}
+REMARKS: dict[str, Any] = {
     "unused": ({"points": {**POINTS, "E": [9, 9, 9]}}, "point E is used by no member, body or spring"),
     "held but unused": (
         {"points": {**POINTS, "E": [9, 9, 9]}, "supports": [{"at": ["A", "E"], "hold": "all"}]},
         "point E is used by no member, body or spring",
     ),
     "same place": (
-        {"points": {**POINTS, "E": [2, 0, 1]}, "bodies": [{"name": "b", "mass": 1, "inertia": [1, 1, 1], "carried_by": "E"}]},
+        {"points": {**POINTS, "E": [2, 0, 1]}, "bodies": [BALL]},
         "points C and E are at the same place but not joined by it",
     ),
     "on a run": (
-        {"points": {**POINTS, "E": [0.7, 0, 0]}, "bodies": [{"name": "b", "mass": 1, "inertia": [1, 1, 1], "carried_by": "E"}]},
+        {"points": {**POINTS, "E": [0.7, 0, 0]}, "bodies": [BALL]},
         "point E lies on bars A-B but is not joined to it",
     ),
     "free": ({"supports": []}, "nothing holds the structure"),
@@ -142,15 +153,15 @@ REMARKS = {
     ),
     "point masses": ({"bodies": [{"name": "b", "mass": 1, "carried_by": "C"}]}, "(point masses): b"),
     "shear centre": (
-        {"sections": {"bar": {"shape": "channel", "height": 0.1, "width": 0.05, "web_thickness": 0.006, "flange_thickness": 0.008}}},
+        {"sections": {"bar": CHANNEL}},
         "section bar: the shear centre is not at the centroid",
     ),
     "no shear": (
-        {"sections": {"bar": {"area": 1e-3, "second_moment_y": 1e-6, "second_moment_z": 1e-6, "torsion_constant": 1e-6}}},
+        {"sections": {"bar": GENERAL}},
         "section bar: shear_area_y was not given",
     ),
     "leaning": ({"points": {**POINTS, "C": [2.0005, 0, 1]}}, "count as standing along it"),
-}  # fmt: skip
+}
 
 
 @pytest.mark.parametrize("case", REMARKS)
@@ -175,7 +186,7 @@ def test_a_member_free_to_spin_is_told(describe):
     assert "members that their releases let move freely: strut A-C" in remarks
 
 
-ERRORS = {
+ERRORS: dict[str, Any] = {
     "zero length": (
         {"points": {"A": [0, 0, 0], "B": [0, 0, 0], "C": [1, 0, 0]}},
         {},
@@ -233,7 +244,8 @@ def test_several_faults_come_together(bars):
 def test_matrices_that_do_not_vibrate_name_the_entry(tmp_path):
     file = tmp_path / "skewed.toml"
     file.write_text(
-        '[units]\nmass = "kg"\nstiffness = "N/m"\n[matrices]\nmass = [[1, 0], [0, 1]]\nstiffness = [[2, 1], [0, 2]]\n'
+        '[units]\nmass = "kg"\nstiffness = "N/m"\n[matrices]\nmass = [[1, 0], [0, 1]]\n'
+        "stiffness = [[2, 1], [0, 2]]\n"
     )
     with pytest.raises(MatrixError, match=r"matrices\.stiffness"):
         vib.read(file).system()
@@ -243,8 +255,10 @@ def test_rayleigh_damping_of_matrices(tmp_path):
     file = tmp_path / "damped.toml"
     file.write_text(
         '[units]\nmass = "kg"\nstiffness = "N/m"\ndamping = "N s/m"\n[matrices]\nmass = [[1, 0], [0, 1]]\n'
-        'stiffness = [[2, 0], [0, 3]]\ndamping = [[0.1, 0], [0, 0.2]]\n[damping]\nrayleigh = [["1 Hz", 0.01], ["2 Hz", 0.01]]\n'
+        "stiffness = [[2, 0], [0, 3]]\ndamping = [[0.1, 0], [0, 0.2]]\n"
+        '[damping]\nrayleigh = [["1 Hz", 0.01], ["2 Hz", 0.01]]\n'
     )
     alpha, beta = vib.study.machine.rayleigh_constants(((1.0, 0.01), (2.0, 0.01)))
     wanted = np.diag([0.1 + alpha + 2 * beta, 0.2 + alpha + 3 * beta])
-    np.testing.assert_allclose(vib.read(file).system().damping, wanted)
+    found: Any = vib.read(file).system().damping
+    np.testing.assert_allclose(found, wanted)

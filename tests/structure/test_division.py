@@ -42,7 +42,7 @@ def portal(describe):
 
 
 def test_half_the_pieces_span_a_part_of_the_same_space(portal):
-    """Static condensation of the finer structure on the coarser freedoms gives both of its matrices exactly."""
+    """Static condensation of the finer structure on the coarser freedoms gives its matrices exactly."""
     fine = portal.system()
     coarse = fine.anatomy.division.coarser()
 

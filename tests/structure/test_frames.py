@@ -97,7 +97,7 @@ def test_bracket_in_its_plane(frame, without_rotary_inertia):
 
 
 def test_bracket_out_of_its_plane(frame, cut):
-    """L of round bar 20 mm in bending and torsion, torsional inertia rho J only; exact dynamic stiffness, 5e-4.
+    """L of round bar 20 mm in bending and torsion, torsional inertia rho J only; exact solution, 5e-4.
 
     Second moments are doubled one at a time to take the rotary inertia of bending out and to leave the
     polar inertia in (it is the sum of the two). Linear torsion pieces need 16 for the fifth mode.
@@ -136,7 +136,7 @@ SWAY = {
 @pytest.mark.parametrize("ratio", SWAY)
 @pytest.mark.parametrize("feet", ["clamped", "pinned"])
 def test_sway_stiffness_of_a_portal(describe, cut, ratio, feet):
-    """24 EI/h^3 (6g+1)/(6g+4) and EI/h^3 12g/(2g+1) by slope-deflection; Chopra, Dynamics of Structures ch. 1."""
+    """24 EI/h^3 (6g+1)/(6g+4) and EI/h^3 12g/(2g+1) by slope-deflection; Chopra (ch. 1)."""
     stiff = 1e8  # area: members do not stretch to speak of
     study = describe(
         points={"A": [0, 0, 0], "B": [0, 0, 1], "C": [1, 0, 1], "D": [1, 0, 0]},
@@ -173,7 +173,7 @@ def test_rigid_beam_on_two_columns(describe, cut, frequencies):
 
 
 def test_block_on_four_springs(describe, frequencies):
-    """Sway and rocking of a resiliently supported body: Harris & Crede (eds.), Shock and Vibration Handbook."""
+    """Sway and rocking of a supported body: Harris & Crede (eds.), Shock and Vibration Handbook"""
     corners = {
         f"P{i}": [x, y, -0.3] for i, (x, y) in enumerate([(0.5, 0.3), (0.5, -0.3), (-0.5, 0.3), (-0.5, -0.3)])
     }
@@ -278,7 +278,7 @@ def test_turning_and_moving_everything_changes_no_frequency(describe, frequencie
     turn=st.floats(-3, 3),
 )
 def test_a_free_structure_moves_as_one_body_for_nothing(describe, moved, offset, turn):
-    """No strain energy in a free structure with offsets, bodies and springs; carried mass equals rigid mass."""
+    """No strain energy in a free structure with offsets, bodies and springs; it carries its rigid mass."""
     study = describe(
         points={"A": [0.3, 0, 0], "B": [1, 0.2, 0.1], "C": [1.3, 1.1, 0.4], "D": [0.2, 1.4, -0.3]},
         sections={"bar": {"shape": "rectangle", "width": 0.08, "height": 0.05}},
@@ -292,13 +292,22 @@ def test_a_free_structure_moves_as_one_body_for_nothing(describe, moved, offset,
                 "turn": turn,
             }
         ],
-        bodies=[{"name": "motor", "mass": 4.0, "centre": [1, 1, 1], "inertia": [1, 2, 3], "carried_by": ["C"]},
-                {"name": "pump", "mass": 3.0, "inertia": [1, 2, 2], "carried_by": ["D"]}],
-        springs=[{"name": "s", "between": [["A", "D"], ["C", "D"]], "stiffness": {"x": 1e5, "rx": 1e3, "y": 2e4, "z": 1e4}}],
-    )  # fmt: skip
+        bodies=[
+            {"name": "motor", "mass": 4.0, "centre": [1, 1, 1], "inertia": [1, 2, 3], "carried_by": ["C"]},
+            {"name": "pump", "mass": 3.0, "inertia": [1, 2, 2], "carried_by": ["D"]},
+        ],
+        springs=[
+            {
+                "name": "s",
+                "between": [["A", "D"], ["C", "D"]],
+                "stiffness": {"x": 1e5, "rx": 1e3, "y": 2e4, "z": 1e4},
+            }
+        ],
+    )
     layout = read_layout(study)
     assembly = assemble(layout, first_counts(layout))
     system = to_system(assembly)
+    assert system.anatomy is not None
     transform, rigid = assembly.nodes.transform.toarray(), assembly.rigid_motion()
     freely = np.linalg.lstsq(transform, rigid, rcond=None)[0]
     np.testing.assert_allclose(transform @ freely, rigid, atol=1e-12)  # no tie hinders it

@@ -46,6 +46,7 @@ def test_the_middle_of_a_beam_sags_most(bars):
     area, second = 0.08 * 0.05, 0.08 * 0.05**3 / 12
     line = 7850 * area * GRAVITY
     wanted = 5 * line * 16 / (384 * 210e9 * second) + line * 4 / (8 * 210e9 / 2.6 * area * 5 / 6)
+    assert sag is not None
     np.testing.assert_allclose(sag.greatest_m, wanted, rtol=1e-9)
     assert sag.greatest_at == "bars A-B at 2/4 of its length"
     np.testing.assert_allclose(sag.greatest_place_m, [1, 0, 0])
@@ -91,7 +92,9 @@ def test_reactions_carry_the_weight(bars, up, lift, stiffness):
         )
     )
     assert found.sag is not None
-    places = dict(A=[0.1, 0, 0], B=[0, 0.2, 2], C=[1.5, 0, 2], D=[1.6, 0.9, 0.1], E=[0.5, 1, 0])
+    assert found.mass_kg is not None
+    assert found.centre_m is not None
+    places = {"A": [0.1, 0, 0], "C": [1.5, 0, 2], "D": [1.6, 0.9, 0.1], "E": [0.5, 1, 0]}
     force = sum(np.array(reaction.force_n) for reaction in found.sag.reactions)
     moment = sum(
         np.array(reaction.moment_nm) + np.cross(places[reaction.point], reaction.force_n)
@@ -109,12 +112,23 @@ def test_mass_centre_and_inertia(bars):
         bars(
             {"A": [0, 0, 0], "B": [2, 0, 0]},
             [["A", "B"]],
-            bodies=[{"name": "m", "mass": 10, "inertia": [1, 2, 3], "products": [0.1, 0.2, 0.3], "centre": [2, 1, 0.5], "carried_by": "B"}],
+            bodies=[
+                {
+                    "name": "m",
+                    "mass": 10,
+                    "inertia": [1, 2, 3],
+                    "products": [0.1, 0.2, 0.3],
+                    "centre": [2, 1, 0.5],
+                    "carried_by": "B",
+                }
+            ],
             supports=[{"at": "A", "hold": "all"}],
         )
-    )  # fmt: skip
+    )
     bar = 7850 * 0.004 * 2
     assert found.mass_kg == pytest.approx(bar + 10, rel=1e-12)
+    assert found.centre_m is not None
+    assert found.inertia_kg_m2 is not None
     centres = np.array([[1, 0, 0], [2, 1, 0.5]])
     centre = np.array([bar, 10]) @ centres / (bar + 10)
     np.testing.assert_allclose(found.centre_m, centre, rtol=1e-12)
@@ -213,6 +227,7 @@ def test_a_very_soft_mount_still_sags(bars):
         )
     )
     assert found.sag is not None
+    assert found.mass_kg is not None
     np.testing.assert_allclose(found.sag.displacement_m["A"][2], -found.mass_kg * GRAVITY, rtol=1e-4)
     assert found.grounded == ("s A-ground",)
 

@@ -264,7 +264,7 @@ def test_a_slanting_spring(describe, frequencies):
 
 
 def test_products_of_inertia_are_integrals_of_plus_xy(describe, frequencies):
-    """Two masses at +-(1, 1, 0): Ixy = +2 m, so the body turns without inertia about the line through them."""
+    """Two masses at +-(1, 1, 0): Ixy = +2 m, so no inertia about the line through them."""
     study = describe(
         points={"A": [0, 0, 0]},
         bodies=[{"name": "d", "mass": 2.0, "inertia": [2, 2, 4], "products": [2, 0, 0], "carried_by": "A"}],

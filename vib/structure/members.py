@@ -102,7 +102,7 @@ def read_stretches(study: Study, points: dict[str, int], faults: list[str]) -> S
     along = np.where(length[:, None] > 0, along, [1.0, 0.0, 0.0]) / np.where(length > 0, length, 1.0)[:, None]
     drawn = _drawn_axes(study, group, along, entries, faults)
     bars, angle = _bars(study, group, np.where(length > 0, length, 1.0))
-    for s in np.flatnonzero(loose(released) & (bars.density == 0)):
+    for s in np.flatnonzero(loose(released) & (bars.density == 0)).tolist():
         faults.append(
             f"{entries[s]}: its releases let it move freely and it has no mass, so its movement is "
             "undetermined; hold a component at one end, or give its material a density"
@@ -120,7 +120,8 @@ def pieces_of(bars: Bars, counts: Indices) -> Bars:
 def loose(released: Flags) -> Flags:
     """(s,) stretches that their releases (s, 2, 6) leave free to move by themselves as rigid bodies."""
     found = np.zeros(len(released), dtype=bool)
-    for s in np.flatnonzero(released.any(axis=2).all(axis=1)):
+    both_ends = np.asarray(released.any(axis=2))
+    for s in np.flatnonzero(both_ends[:, 0] & both_ends[:, 1]):
         start, end = ~released[s]
         rows = np.concatenate([np.eye(6)[start], arms(np.array([1.0, 0.0, 0.0]))[end]])
         found[s] = np.linalg.matrix_rank(rows) < 6

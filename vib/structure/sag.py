@@ -141,8 +141,7 @@ def _reactions(assembly: Assembly, motion: Array, residual: Array) -> tuple[Reac
         everything = np.flatnonzero(ties.hub == place)
         unbalanced = np.einsum("hij,hi->j", ties.rigid[everything], at_places[everything])
         shares = np.linalg.lstsq(arms.T, unbalanced, rcond=None)[0]
-        for (point, component), share in zip(rows, shares.tolist(), strict=True):
-            forces[point, component] = share
+        forces[tuple(np.array(rows).T)] = shares
     found = [
         Reaction(f"support of {name}", name, *_force_and_moment(forces[i]))
         for i, name in enumerate(layout.point_names)
