@@ -85,7 +85,7 @@ SHAPES: dict[str, tuple[Any, dict[str, float]]] = {
     ),
     "angle": (
         angle,
-        {"leg_a": 0.1, "leg_b": 0.05, "thickness": 0.008, "root_radius": 0.008, "toe_radius": 0.004},
+        {"height": 0.1, "width": 0.05, "thickness": 0.008, "root_radius": 0.008, "toe_radius": 0.004},
     ),
 }
 
@@ -352,7 +352,7 @@ def test_zero_is_refused_where_it_leaves_nothing(name, key):
         ("i_section", {"web_thickness": 0.1}, "web_thickness: 100 mm must be less than width, 100 mm; give"),
         ("t_section", {"flange_thickness": 0.1}, "flange_thickness: 100 mm must be less than height"),
         ("channel", {"web_thickness": 0.09}, "web_thickness: 90 mm must be less than width, 80 mm"),
-        ("angle", {"thickness": 0.06}, "thickness: 60 mm must be less than leg_b, 50 mm"),
+        ("angle", {"thickness": 0.06}, "thickness: 60 mm must be less than width, 50 mm"),
         ("tapered_channel", {"flange_slope": 0.4}, "flange_slope: 0.4 leaves no thickness at the free edge"),
         ("square_hollow", {"outer_radius": 0.06, "inner_radius": 0.04}, "outer_radius: 60 mm does not fit"),
         ("square_hollow", {"outer_radius": 0.045, "inner_radius": 0.045}, "inner_radius: 45 mm does not fit"),

@@ -160,8 +160,6 @@ class Section(Table):
             from vib.study.catalogue import find_profile
 
             return find_profile(self.shape)
-        if self.shape == "angle":
-            given["leg_a"], given["leg_b"] = given.pop("height"), given.pop("width")
         drawn: Profile = getattr(profiles, SHAPES[self.shape][0])(**given)
         return drawn
 

@@ -146,9 +146,9 @@ def tapered_channel(
 
 
 def angle(
-    leg_a: float, leg_b: float, thickness: float, root_radius: float = 0.0, toe_radius: float = 0.0
+    height: float, width: float, thickness: float, root_radius: float = 0.0, toe_radius: float = 0.0
 ) -> Profile:
-    """An angle: ``leg_a`` upright at the left, ``leg_b`` along the bottom to +y.
+    """An angle: ``height`` upright at the left, ``width`` along the bottom to +y.
 
     Its principal axes are turned: by +45 degrees for equal legs, y then being the strong axis.
 
@@ -157,11 +157,11 @@ def angle(
     ModelError
         A dimension not above zero (the radii may be zero), or walls and radii that do not fit.
     """
-    positive(leg_a=leg_a, leg_b=leg_b, thickness=thickness)
+    positive(height=height, width=width, thickness=thickness)
     not_negative(root_radius=root_radius, toe_radius=toe_radius)
-    thinner(thickness, "thickness", leg_a, "leg_a", 1)
-    thinner(thickness, "thickness", leg_b, "leg_b", 1)
-    a, b, t = leg_a, leg_b, thickness
+    thinner(thickness, "thickness", height, "height", 1)
+    thinner(thickness, "thickness", width, "width", 1)
+    a, b, t = height, width, thickness
     corners = [
         Corner(0, 0), Corner(b, 0), Corner(b, t, toe_radius, "toe_radius"),
         Corner(t, t, root_radius, "root_radius"), Corner(t, a, toe_radius, "toe_radius"), Corner(0, a),
@@ -224,11 +224,11 @@ def _channel_walls(
     return walls
 
 
-def _angle_walls(leg_a: float, leg_b: float, thickness: float, radius: float) -> list[Wall]:
+def _angle_walls(height: float, width: float, thickness: float, radius: float) -> list[Wall]:
     walls: list[Wall] = []
     t = thickness
-    add_leg(walls, Leg((0.0, leg_a), (0.0, t), (1.0, 0.0), t, t, radius))
-    add_leg(walls, Leg((leg_b, 0.0), (t, 0.0), (0.0, 1.0), t, t, radius))
+    add_leg(walls, Leg((0.0, height), (0.0, t), (1.0, 0.0), t, t, radius))
+    add_leg(walls, Leg((width, 0.0), (t, 0.0), (0.0, 1.0), t, t, radius))
     # The flow hardly works in the block of the corner.
     walls.append(Wall((0.0, t / 2), (t, t / 2), t, math.inf))
     return walls
