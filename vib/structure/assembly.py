@@ -8,9 +8,10 @@ import numpy as np
 import scipy.sparse as sparse
 from numpy.typing import NDArray
 
+from vib.structure.beam import twist_between
 from vib.structure.freedoms import Nodes, number_nodes
 from vib.structure.layout import Layout
-from vib.structure.members import material_of
+from vib.structure.members import material_of, pieces_of
 from vib.structure.rigid import arms
 from vib.structure.springs import GROUND
 from vib.system import Array, Matrix, Part
@@ -20,7 +21,7 @@ Indices = NDArray[np.intp]
 
 @dataclass(frozen=True, eq=False)
 class Raw:
-    """One part on the components of the nodes (6 k, 6 k), before anything is eliminated; None: has none."""
+    """One part on the rows of `Nodes.transform`, before anything is eliminated; None: has none."""
 
     name: str
     kind: str
@@ -64,14 +65,16 @@ class Assembly:
         )
 
     def raw_sum(self, what: str) -> Matrix:
-        """Stiffness, mass or dashpot of everything on the components of the nodes."""
+        """Stiffness, mass or dashpot of everything on the rows of `Nodes.transform`."""
         size = self.nodes.transform.shape[0]
         found = [getattr(part, what) for part in self.raw if getattr(part, what) is not None]
         return sum(found[1:], found[0]) if found else sparse.csr_array((size, size))
 
     def rigid_motion(self) -> Array:
-        """(6 k, 6) components of every node when everything moves as one body, about the origin."""
-        return arms(self.nodes.places_m).reshape(-1, 6)
+        """Components of every node when everything moves as one body, about the origin; no twists."""
+        found = np.zeros((self.nodes.transform.shape[0], 6))
+        found[: 6 * len(self.nodes.places_m)] = arms(self.nodes.places_m).reshape(-1, 6)
+        return found
 
 
 def assemble(layout: Layout, counts: Indices) -> Assembly:
@@ -87,14 +90,18 @@ def assemble(layout: Layout, counts: Indices) -> Assembly:
     size = nodes.transform.shape[0]
     raw = [*_member_parts(layout, counts, nodes, names), *_spring_parts(layout, size, names)]
     for i, mass in enumerate(layout.bodies.mass):
-        place = np.full((1, 1), len(layout.point_names) + i)
-        raw.append(Raw(names["bodies", i], "body", None, scatter(mass[None], place, size)))
+        rows = components_of(np.array([[len(layout.point_names) + i]]))
+        raw.append(Raw(names["bodies", i], "body", None, scatter(mass[None], rows, size)))
     return Assembly(layout, counts, nodes, tuple(raw))
 
 
-def scatter(blocks: Array, nodes: Indices, size: int) -> Matrix:
-    """Sum (e, 6 m, 6 m) blocks of elements with nodes (e, m) into a sparse (size, size) array."""
-    index = (6 * nodes[:, :, None] + np.arange(6)).reshape(len(nodes), -1)
+def components_of(nodes: Indices) -> Indices:
+    """(e, 6 m) rows of the six components of nodes (e, m)."""
+    return (6 * nodes[:, :, None] + np.arange(6)).reshape(len(nodes), 6 * nodes.shape[1])
+
+
+def scatter(blocks: Array, index: Indices, size: int) -> Matrix:
+    """Sum (e, m, m) blocks of elements with rows (e, m) into a sparse (size, size) array."""
     rows = np.broadcast_to(index[:, :, None], blocks.shape).reshape(-1)
     columns = np.broadcast_to(index[:, None, :], blocks.shape).reshape(-1)
     values = blocks.reshape(-1)
@@ -122,21 +129,42 @@ def _member_parts(
         mine = group == i
         which, chain = nodes.stretch[mine], nodes.chain[mine]
         _, _, ratio = material_of(layout.study, i)
-        own = [scatter(blocks[which], chain, size) for blocks in (stiffness, mass)]
+        rows = components_of(chain)
+        own = [scatter(blocks[which], rows, size) for blocks in (stiffness, mass)]
+        twisting = nodes.twists[mine] >= 0
+        if twisting.any():
+            rows = np.concatenate(
+                [nodes.twists[mine][twisting, None], rows[twisting, 3:6], rows[twisting, 9:12]], axis=1
+            )
+            own = [
+                known + scatter(blocks, rows, size)
+                for known, blocks in zip(own, _twists(layout, counts, which[twisting]), strict=True)
+            ]
         found.append(Raw(names["members", i], "members", own[0], own[1], damping_ratio=ratio))
     return found
+
+
+def _twists(layout: Layout, counts: Indices, stretch: Indices) -> tuple[Array, Array]:
+    """Stiffness and mass (pieces, 7, 7) of the twist between nodes with the turns of both nodes."""
+    bars = pieces_of(layout.stretches.bars, counts)
+    stiff, own, shared = (values[stretch] for values in twist_between(bars))
+    stiffness, mass = np.zeros((2, len(stretch), 7, 7))
+    stiffness[:, 0, 0], mass[:, 0, 0] = stiff, own
+    link = np.tile(shared[:, None] * layout.stretches.axes[stretch, 0], 2)
+    mass[:, 0, 1:] = mass[:, 1:, 0] = link
+    return stiffness, mass
 
 
 def _spring_parts(layout: Layout, size: int, names: dict[tuple[str, int], str]) -> list[Raw]:
     springs = layout.springs
     grounded = springs.ends[:, 1] == GROUND
     # a grounded spring has no second node: its blocks there are zero and fall away
-    ends = np.where(grounded[:, None], springs.ends[:, :1], springs.ends)
+    rows = components_of(np.where(grounded[:, None], springs.ends[:, :1], springs.ends))
     found = []
     for i in range(len(layout.study.springs)):
         mine = springs.owner == i
         both = [
-            scatter(springs.matrices(constants)[mine], ends[mine], size) if constants[mine].any() else None
+            scatter(springs.matrices(constants)[mine], rows[mine], size) if constants[mine].any() else None
             for constants in (springs.stiffness, springs.dashpot)
         ]
         found.append(Raw(names["springs", i], "springs", both[0], None, both[1]))

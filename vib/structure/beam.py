@@ -12,6 +12,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import NDArray
 
 from vib.structure.rigid import turned
 from vib.system import Array
@@ -35,6 +36,16 @@ class Bars:
     youngs_modulus: Array
     shear_modulus: Array
     density: Array
+
+    def twists_softly(self) -> NDArray[np.bool_]:
+        """(e,) open sections: torsion waves run at less than half the speed that a round bar has.
+
+        Their torsion is a long way softer than their bending, so that linear pieces would have to be far
+        shorter for torsion than for anything else; they get `twist_between`.
+        """
+        polar = self.second_moment_y + self.second_moment_z
+        found: NDArray[np.bool_] = (self.torsion_constant < polar / 4) & (self.density > 0)
+        return found
 
     def shear_ratio_z(self) -> Array:
         """12 E Iz / (G Asy L^2): shear against bending flexibility in the x-y plane."""
@@ -83,6 +94,18 @@ def local_mass(bars: Bars) -> Array:
     about_y = _bending_mass(line, density * bars.second_moment_y, bars.shear_ratio_y(), length)
     _add_planes(found, about_z, about_y)
     return found
+
+
+def twist_between(bars: Bars) -> tuple[Array, Array, Array]:
+    """A turn about x that rises and falls between the nodes, 4 s (1 - s): one more freedom of a bar.
+
+    Its stiffness (N m), its own inertia (kg m^2) and its inertia against the turn of either node, each
+    (e,). Linear torsion and this make a quadratic; the two share no stiffness (a hierarchical function:
+    O. C. Zienkiewicz, R. L. Taylor, The Finite Element Method, chapter on shape functions).
+    """
+    twisting = bars.shear_modulus * bars.torsion_constant / bars.length
+    polar = bars.density * (bars.second_moment_y + bars.second_moment_z) * bars.length
+    return 16 / 3 * twisting, 8 / 15 * polar, polar / 3
 
 
 def to_global(local: Array, axes: Array) -> Array:

@@ -25,10 +25,11 @@ def expected_error(stretches: Stretches, piece_m: Array, frequency_hz: float) ->
     """(s,) relative error of a frequency whose wave runs along pieces of length ``piece_m`` (s,).
 
     With k the wave number of each kind of wave and h the length of a piece, consistent-mass elements are too
-    high by (k h)^4 / 1440 in bending (cubic shape functions) and by (k h)^2 / 24 in axial, torsion and shear
-    waves (linear ones). Source: dispersion of consistent-mass elements, T. J. R. Hughes, The Finite Element
-    Method (1987), section 9.1 (linear), and the same expansion for the cubic beam; from memory, confirmed
-    by the tests.
+    high by (k h)^4 / 1440 in bending (cubic shape functions), by (k h)^2 / 24 in axial, torsion and shear
+    waves (linear ones), and by (k h)^4 / 1440 in torsion with `beam.twist_between` (quadratic ones).
+    Source: M. Ainsworth, SIAM J. Numer. Anal. 42 (2004) 553-575, dispersion of order p:
+    (k h)^(2 p) / (2 (2 p + 1)) (p! / (2 p)!)^2; for the beam the same expansion; from memory, confirmed by
+    the tests.
     """
     bars = stretches.bars
     omega = 2 * np.pi * frequency_hz
@@ -39,7 +40,8 @@ def expected_error(stretches: Stretches, piece_m: Array, frequency_hz: float) ->
     axial = bars.density * omega**2 / bars.youngs_modulus
     polar = bars.density * (bars.second_moment_y + bars.second_moment_z)
     torsion = polar * omega**2 / (bars.shear_modulus * bars.torsion_constant)
-    return np.maximum(bending + shear * piece_m**2 / 24, np.maximum(axial, torsion) * piece_m**2 / 24)
+    turning = np.where(bars.twists_softly(), (torsion * piece_m**2) ** 2 / 1440, torsion * piece_m**2 / 24)
+    return np.maximum(bending + shear * piece_m**2 / 24, np.maximum(axial * piece_m**2 / 24, turning))
 
 
 def counts_for(layout: Layout, frequency_hz: float) -> NDArray[np.intp]:

@@ -21,10 +21,11 @@ MOST_FREEDOMS = 200_000
 class Nodes:
     """Points, bodies, separate ends of stretches and cuts inside them, numbered in this order.
 
-    ``places_m`` (k, 3); ``transform`` sparse (6 k, n): the components of every node from the freedoms;
-    ``freedoms`` their names; ``chain`` (pieces, 2) the nodes of every piece, stretch by stretch;
-    ``stretch`` (pieces,); ``ends`` (s, 2) the nodes at the ends of each stretch; ``inside`` (s,) the first
-    node inside each stretch.
+    ``places_m`` (k, 3); ``transform`` sparse (6 k + t, n): the components of every node from the freedoms,
+    and below them the t twists between nodes (`beam.twist_between`); ``freedoms`` their names; ``chain``
+    (pieces, 2) the nodes of every piece, stretch by stretch; ``stretch`` (pieces,) that it belongs to;
+    ``twists`` (pieces,) the row of its twist, -1 for none; ``ends`` (s, 2) the nodes at the ends of each
+    stretch; ``inside`` (s,) the first node inside each stretch.
     """
 
     places_m: Array
@@ -32,6 +33,7 @@ class Nodes:
     freedoms: tuple[Freedom, ...]
     chain: Indices
     stretch: Indices
+    twists: Indices
     ends: Indices
     inside: Indices
 
@@ -49,13 +51,15 @@ def number_nodes(layout: Layout, counts: Indices) -> Nodes:
     ModelError
         There would be more freedoms than `MOST_FREEDOMS`.
     """
+    stretches = layout.stretches
+    soft = stretches.bars.twists_softly()
     inner = int((counts - 1).sum())
-    if 6 * inner > MOST_FREEDOMS:
+    size = 6 * inner + int(counts[soft].sum())
+    if size > MOST_FREEDOMS:
         raise ModelError(
-            f"the members would be cut into {int(counts.sum())} pieces with {6 * inner} freedoms, more than "
+            f"the members would be cut into {int(counts.sum())} pieces with {size} freedoms, more than "
             f"{MOST_FREEDOMS}; ask for a lower frequency limit or fewer modes, or for less accuracy"
         )
-    stretches = layout.stretches
     first_end = len(layout.ties.hub)
     separate = stretches.separate
     ends = np.where(separate, first_end + np.cumsum(separate).reshape(-1, 2) - 1, stretches.ends)
@@ -70,13 +74,23 @@ def number_nodes(layout: Layout, counts: Indices) -> Nodes:
     tips = stretches.tips_m
     between = (1 - share) * tips[stretch[cut], 0] + share * tips[stretch[cut], 1]
     places = np.concatenate([layout.coordinates_m, layout.bodies.centres_m, tips[separate], between])
-    transform, freedoms = _transform(layout, separate, inner)
+    twisting = soft[stretch]
+    twists = np.where(twisting, 6 * len(places) - 1 + np.cumsum(twisting), -1)
+    transform, freedoms = _transform(layout, separate, 6 * inner + int(twisting.sum()))
     freedoms += _names_inside(layout, counts)
-    return Nodes(places, transform, tuple(freedoms), np.stack([behind, ahead], axis=1), stretch, ends, inside)
+    freedoms += [
+        Freedom(f"{layout.stretches.labels[s]} piece {k + 1}/{counts[s]}", "rx")
+        for s, k in zip(stretch[twisting].tolist(), step[twisting].tolist(), strict=True)
+    ]
+    chain = np.stack([behind, ahead], axis=1)
+    return Nodes(places, transform, tuple(freedoms), chain, stretch, twists, ends, inside)
 
 
-def _transform(layout: Layout, separate: NDArray[np.bool_], inner: int) -> tuple[Matrix, list[Freedom]]:
-    """The sparse matrix, and the names of all freedoms but those inside stretches, which come last."""
+def _transform(layout: Layout, separate: NDArray[np.bool_], own_rows: int) -> tuple[Matrix, list[Freedom]]:
+    """The sparse matrix, and the names of all freedoms but the last, those inside stretches.
+
+    ``own_rows`` counts the rows inside stretches, which are freedoms themselves.
+    """
     ties, stretches = layout.ties, layout.stretches
     column = np.full(ties.kept.shape, -1, dtype=np.intp)
     column[ties.kept] = np.arange(ties.kept.sum())
@@ -103,11 +117,11 @@ def _transform(layout: Layout, separate: NDArray[np.bool_], inner: int) -> tuple
             _entries(ties.follow, column[ties.hub], 0),
             _entries(follow, column[ties.hub[at]], len(ties.hub)),
             _entries(along, own, len(ties.hub)),
-            (6 * outer + np.arange(6 * inner), len(names) + np.arange(6 * inner), np.ones(6 * inner)),
+            (6 * outer + np.arange(own_rows), len(names) + np.arange(own_rows), np.ones(own_rows)),
             strict=True,
         )
     )
-    shape = (6 * (outer + inner), len(names) + 6 * inner)
+    shape = (6 * outer + own_rows, len(names) + own_rows)
     return sparse.coo_array((values, (rows, columns)), shape=shape).tocsr(), names
 
 

@@ -160,7 +160,7 @@ def _reactions(assembly: Assembly, motion: Array, residual: Array) -> tuple[Reac
 def _gather(assembly: Assembly, forces: Array) -> NDArray[np.float64]:
     """(h, 6) forces on nodes, those on separate ends of members moved to their points."""
     stretches = assembly.layout.stretches
-    at_nodes = forces.reshape(-1, 6)
+    at_nodes = forces[: 6 * len(assembly.nodes.places_m)].reshape(-1, 6)
     found = at_nodes[: len(assembly.layout.ties.hub)].copy()
     separate = stretches.separate
     moved = np.einsum("xij,xi->xj", stretches.attachment()[separate], at_nodes[assembly.nodes.ends[separate]])
@@ -170,7 +170,7 @@ def _gather(assembly: Assembly, forces: Array) -> NDArray[np.float64]:
 
 def _describe(assembly: Assembly, motion: Array, reactions: tuple[Reaction, ...]) -> Sag:
     layout = assembly.layout
-    shifts = motion.reshape(-1, 6)[:, :3]
+    shifts = motion[: 6 * len(assembly.nodes.places_m)].reshape(-1, 6)[:, :3]
     names = (*layout.point_names, *layout.bodies.names)
     size = np.linalg.norm(shifts, axis=1)
     # a place with a name wins over an end of a member that moves as much
