@@ -13,7 +13,7 @@ from __future__ import annotations
 import sys
 from collections.abc import Sequence
 
-from vib.cli.delivery import explain, go_quiet_on_broken_pipe
+from vib.cli.delivery import DONE, INTERRUPTED, explain, go_quiet_on_broken_pipe
 
 __all__ = ["run"]
 
@@ -27,11 +27,15 @@ def run(arguments: Sequence[str] | None = None) -> int:
 
         given = list(sys.argv[1:] if arguments is None else arguments) or ["--help"]
         status = get_command(app).main(given, prog_name="vib", standalone_mode=False)
-        return status if isinstance(status, int) else 0
+        if status == INTERRUPTED:  # the parser caught it and said nothing
+            return explain("interrupted", INTERRUPTED)
+        return status if isinstance(status, int) else DONE
     except KeyboardInterrupt:
-        return explain("interrupted", 130)
+        return explain("interrupted", INTERRUPTED)
     except BrokenPipeError:
         go_quiet_on_broken_pipe()
-        return 0
+        return DONE
     except Exception as error:
+        if type(error).__name__ == "Abort":  # the parser's word for an interrupt, wherever its class lives
+            return explain("interrupted", INTERRUPTED)
         return explain(error)

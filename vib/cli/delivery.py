@@ -22,11 +22,11 @@ DONE, OBJECTION, FAILED, INTERRUPTED = 0, 1, 2, 130
 class Answer:
     """What a command found: blocks to read, a JSON document, remarks, files, and the exit status.
 
-    ``files`` makes the content of every file by its name; it is called only where files are wanted.
+    ``document`` and ``files`` (the content of every file by its name) are made only where they are wanted.
     """
 
     blocks: Sequence[Block]
-    document: Mapping[str, Any]
+    document: Callable[[], Mapping[str, Any]]
     remarks: Sequence[str] = ()
     files: Callable[[], Mapping[str, bytes]] | None = None
     status: int = DONE
@@ -56,7 +56,7 @@ def deliver(answer: Answer, wish: Wish) -> int:
 
     stream = output()
     if wish.json:
-        shown = to_json(answer.document) + "\n"
+        shown = to_json(answer.document()) + "\n"
     else:
         width = _width(stream)
         colour = _colourful(stream)
@@ -149,8 +149,6 @@ def _fault_lines(error: Exception | str) -> list[str]:
     if isinstance(error, MemoryError):
         return ["not enough memory for this; ask for fewer modes (--count, --up-to) or use a larger machine"]
     name = type(error).__name__
-    if name == "Abort":
-        return ["interrupted"]
     said = " ".join(str(error).split())
     return [
         f"internal error ({name}{': ' if said else ''}{said}); this is a fault of vib, please report it with "

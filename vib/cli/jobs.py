@@ -3,8 +3,9 @@
 from __future__ import annotations
 
 import json
+from functools import cache
 from pathlib import Path
-from typing import TYPE_CHECKING, Literal
+from typing import TYPE_CHECKING, Any, Literal
 
 from vib.cli.delivery import DONE, OBJECTION, Answer, Wish, deliver, put, warnings_as_remarks
 
@@ -28,7 +29,7 @@ def new_study(kind: str | None, out: Path | None, wish: Wish) -> int:
 
     if kind is None:
         listed = Facts(tuple(STARTERS.items()))
-        return deliver(Answer([Sentence("Starters, for vib new KIND:"), listed], dict(STARTERS)), wish)
+        return deliver(Answer([Sentence("Starters, for vib new KIND:"), listed], lambda: STARTERS), wish)
     starter = starter_text(kind)
     target = out if out is not None else Path(f"{kind}.toml")
     write_new(target, starter.encode("utf-8"))
@@ -45,12 +46,15 @@ def check_study(path: Path, units: Chosen, pictures: str, wish: Wish) -> int:
     with warnings_as_remarks(wish):
         study = _read(path)
         survey = survey_of(study)
-        document = check_document(study, survey)
+
+        @cache
+        def document() -> dict[str, Any]:
+            return check_document(study, survey)
 
         def files() -> dict[str, bytes]:
             from vib.show.bundles import check_files
 
-            return check_files(study, survey, document, pictures)
+            return check_files(study, survey, document(), pictures)
 
         return deliver(Answer(check_blocks(study, survey, _units(study, units)), document, files=files), wish)
 
@@ -73,7 +77,7 @@ def show_modes(
 
         answer = Answer(
             modes_blocks(modes, study.title),
-            modes_document(modes, study.title),
+            lambda: modes_document(modes, study.title),
             modes.remarks,
             files,
             DONE if modes.stable else OBJECTION,
@@ -94,9 +98,9 @@ def _units(study: Study, chosen: Chosen) -> UnitSystem:
 def _modes(study: Study, count: int | None, up_to: str | None) -> Modes:
     """The modes asked for; without a wish the slowest ones, or all of a small set of matrices."""
     if up_to is not None:
-        from vib.units import parse
+        from vib.cli.starts import read_option
 
-        limit = parse(up_to, "frequency", unit=study.units.declared().get("frequency"))
+        limit = read_option(study, "up-to", up_to, "frequency")
         return study.system(up_to=limit).modes(count=count, up_to=limit)
     system = study.system()
     if count is None and study.matrices is not None and system.size <= _USUAL_COUNT:
@@ -114,12 +118,15 @@ def show_ring(path: Path, options: StartOptions, units: Chosen, pictures: str, w
         arguments = start_arguments(study, options)
         ring = study.system().ring(**arguments)
         shown = _units(study, units)
-        document = ring_document(ring, study.title)
+
+        @cache
+        def document() -> dict[str, Any]:
+            return ring_document(ring, study.title)
 
         def files() -> dict[str, bytes]:
             from vib.show.bundles import ring_files
 
-            return ring_files(ring, document, shown, pictures)
+            return ring_files(ring, document(), shown, pictures)
 
         answer = Answer(
             ring_blocks(ring, study.title, start_words(arguments, shown), shown),
@@ -140,12 +147,15 @@ def show_screening(path: Path, band: str | None, pictures: str, wish: Wish) -> i
         study = _read(path)
         modes = screening_modes(study, band)
         screening = screen(modes, study.excitations, band=band)
-        document = screening_document(screening, study.title, modes)
+
+        @cache
+        def document() -> dict[str, Any]:
+            return screening_document(screening, study.title, modes)
 
         def files() -> dict[str, bytes]:
             from vib.show.bundles import screening_files
 
-            return screening_files(screening, modes, document, pictures)
+            return screening_files(screening, modes, document(), pictures)
 
         answer = Answer(
             screening_blocks(screening, study.title),
@@ -174,7 +184,7 @@ def write_report(
     wish: Wish,
 ) -> int:
     """The page; its path is the result."""
-    from vib.show.blocks import Sentence
+    from vib.show.documents import to_json
     from vib.show.files import write_files
     from vib.show.page import Findings, render_page
     from vib.structure.survey import survey as survey_of
@@ -194,7 +204,9 @@ def write_report(
         page = render_page(Findings(study, survey, modes, ring, screening, shown, start))
         name = f"{path.stem}.html"
         (written,) = write_files(out if out is not None else Path(), {name: page.encode("utf-8")})
-    return deliver(Answer([Sentence(str(written))], {"page": str(written)}), wish)
+    # a path must not be broken into lines, however long it is
+    put(to_json({"page": str(written)}) + "\n" if wish.json else f"{written}\n")
+    return DONE
 
 
 def _report_modes(study: Study, limits: tuple[int | None, str | None], band: str | None) -> Modes:

@@ -69,7 +69,7 @@ def start_arguments(study: Study, options: StartOptions) -> dict[str, Any]:
     arguments: dict[str, Any] = {"at": at, "along": along}
     arguments |= _start(study, options, given, along)
     if options.duration is not None:
-        arguments["duration"] = _read(study, "duration", options.duration, "time")
+        arguments["duration"] = read_option(study, "duration", options.duration, "time")
     elif impact is not None and impact.duration is not None:
         arguments["duration"] = impact.duration
     watch = [_place(study, text, along) for text in options.watch]
@@ -95,11 +95,14 @@ def _start(study: Study, options: StartOptions, given: list[str], along: Along) 
         assert options.pulse is not None
         peak, lasts = options.pulse
         kind = ("force", "moment")[turning]
-        return {"pulse": (_read(study, "pulse", peak, kind), _read(study, "pulse", lasts, "time"))}
-    return {name: _read(study, name, getattr(options, name), _KINDS[name][turning])}
+        return {
+            "pulse": (read_option(study, "pulse", peak, kind), read_option(study, "pulse", lasts, "time"))
+        }
+    return {name: read_option(study, name, getattr(options, name), _KINDS[name][turning])}
 
 
-def _read(study: Study, option: str, text: str, kind: str) -> float:
+def read_option(study: Study, option: str, text: str, kind: str) -> float:
+    """An SI float from the text of an option; a bare number means what [units] of the study declares."""
     from vib.units import parse
 
     try:

@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
-from vib.show.blocks import SYMBOLS, Block, Bullets, Facts, Sentence, unit_label
+from vib.show.blocks import SYMBOLS, Block, Bullets, Facts, Sentence, Table, unit_label
 from vib.show.figures.ringing import ring_pictures
 from vib.show.figures.shapes import shape_picture
 from vib.show.figures.speeds import speed_pictures
@@ -68,12 +68,12 @@ class Section:
     items: tuple[Block | Drawing | None, ...]
 
     @property
-    def shown(self) -> list[Block | Drawing | list[Drawing]]:
-        """What there is; small drawings in a row are one group."""
+    def shown(self) -> list[Block | Drawing | list[Any]]:
+        """What there is; small drawings in a row, and tables in a row, are one group."""
         found: list[Any] = []
         for item in self.items:
-            if isinstance(item, Drawing) and item.small:
-                if not (found and isinstance(found[-1], list)):
+            if isinstance(item, Table) or (isinstance(item, Drawing) and item.small):
+                if not (found and isinstance(found[-1], list) and type(found[-1][0]) is type(item)):
                     found.append([])
                 found[-1].append(item)
             elif item is not None:
