@@ -101,3 +101,10 @@ def test_named_freedoms_of_bare_matrices(modes_at, excitation):
     assert drive(named, excitation(speed="1 Hz", at="tip", along="x")) == pytest.approx([0.75, 0.0])
     # all three freedoms of the point move together: 5 over the greatest freedom, 4, is held to 1
     assert drive(named, excitation(speed="1 Hz", at="tip")) == pytest.approx([1.0, 1.0])
+
+
+def test_no_modes_have_no_drive(two_points, excitation):
+    modes = two_points([shape(A_x=1.0)])
+    none = type(modes)(**{**vars(modes), "shapes": np.zeros((12, 0))})
+    assert drive(none, excitation(speed="1 Hz", at="A")).shape == (0,)
+    assert drive(none, excitation(speed="1 Hz", at="A", along="rz")).shape == (0,)

@@ -110,7 +110,7 @@ def _greatest_translation(modes: Modes, shapes: NDArray[Any]) -> Array:
     anatomy = modes.system.anatomy
     assert anatomy is not None
     nodes = np.asarray(anatomy.wireframe.motion @ shapes)
-    drawn = _amplitude(nodes.reshape(-1, 3, shapes.shape[1]))
+    drawn = _amplitude(nodes.reshape(len(nodes) // 3, 3, shapes.shape[1]))
     named = [_amplitude(_motion(place, shapes)[:3])[np.newaxis] for place in anatomy.places.values()]
     greatest: Array = np.concatenate([drawn, *named]).max(axis=0)
     modal_mass = (shapes.conj() * (modes.system.mass @ shapes)).sum(axis=0).real
