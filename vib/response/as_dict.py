@@ -72,7 +72,7 @@ def _output(ring: Ring, index: int) -> dict[str, Any]:
 
 
 def _mode(ring: Ring, row: RingMode) -> dict[str, Any]:
-    amplitude = numbers(row.amplitude)
+    amplitude, shares = numbers(row.amplitude), numbers(row.share_of_peak)
     return {
         "number": row.number,
         "frequency_hz": row.frequency_hz,
@@ -87,7 +87,7 @@ def _mode(ring: Ring, row: RingMode) -> dict[str, Any]:
             {
                 "name": name,
                 "amplitude_rad" if turns else "amplitude_m": amplitude[index],
-                "share_of_peak": float(row.share_of_peak[index]),
+                "share_of_peak": shares[index],
             }
             for index, (name, turns) in enumerate(zip(ring.freedoms, ring.rotational, strict=True))
         ],

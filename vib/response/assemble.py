@@ -11,7 +11,7 @@ from vib.response.first_order import RingModel, full_model
 from vib.response.groups import take_apart
 from vib.response.motion import HalfSine, Motion
 from vib.response.outputs import Output
-from vib.response.reduced import corrections, lowest, reduced_model
+from vib.response.reduced import LowestModes, corrections, first_motion, reduced_model
 from vib.response.starts import Start
 from vib.solve.damping import modal_damping
 from vib.solve.dense import dense_undamped
@@ -74,13 +74,15 @@ def _reduced(system: System, start: Start, outputs: Sequence[Output]) -> Assembl
         forces.append(start.direction)
         if start.kind == "velocity":
             given.append(start.direction)
+    lowest = LowestModes(system)
+    fixed = corrections(system, lowest(COUNTS[0]), np.array(forces).T)
+    if start.kind in ("impulse", "pulse") and start.direction is not None:
+        fixed = np.hstack([fixed, first_motion(system, start.direction)])
+    extra = np.hstack([fixed, np.array(given).reshape(-1, system.size).T])
     earlier: Motion | None = None
     for count in COUNTS:
         count = min(count, system.size // 2)
-        modes = lowest(system, count)
-        fixed = corrections(system, modes, np.array(forces).T)
-        extra = np.hstack([fixed, np.array(given).reshape(-1, system.size).T])
-        model = reduced_model(system, modes, extra)
+        model = reduced_model(system, lowest(count), extra)
         motion, remarks = _motion(model, start, outputs)
         if earlier is None:
             earlier = motion
@@ -122,7 +124,7 @@ def _truncation_remarks(truncation: Mapping[str, float]) -> tuple[str, ...]:
     ]
     if large:
         remarks.append(
-            f"Not settled: {', '.join(large)} of the peak still depends on the modes left out; the sharper the "
-            "start, the more modes it excites."
+            f"Not settled: {', '.join(large)} of the peak still depends on the modes left out; the sharper "
+            "the start, the more modes it excites."
         )
     return tuple(remarks)

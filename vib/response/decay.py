@@ -55,7 +55,8 @@ class Fall:
 
     ``envelope_to_10_percent_s`` and ``envelope_to_1_percent_s``: from then on the envelope, and so the
     output, stays below: a safe upper bound. ``record_to_...``: the last time the motion itself is above.
-    None: it does not get there (or, for the record, it ends before the envelope is there). What stays in the end (a free machine comes to rest elsewhere) is taken off first.
+    None: it does not get there (or, for the record, it ends before the envelope is there). What stays in
+    the end (a free machine comes to rest elsewhere) is taken off first.
     """
 
     output: str

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from typing import TYPE_CHECKING
 
 import numpy as np
 
@@ -12,7 +13,10 @@ from vib.response.exponential import Array
 from vib.response.starts import Along, Start
 from vib.system import System
 
-MOST_BY_DEFAULT = 24  # outputs chosen unasked
+if TYPE_CHECKING:
+    from vib.modes import Modes
+
+MOST_BY_DEFAULT = 12  # outputs chosen unasked
 
 
 @dataclass(frozen=True, eq=False)
@@ -25,12 +29,16 @@ class Output:
 
 
 def choose_outputs(
-    system: System, start: Start, watch: Sequence[tuple[str, Along]] | None
+    system: System,
+    start: Start,
+    watch: Sequence[tuple[str, Along]] | None,
+    modes: Modes | None = None,
 ) -> tuple[tuple[Output, ...], tuple[str, ...]]:
     """The outputs asked for, or a choice, and a remark on what the choice leaves out.
 
     By default every freedom of bare matrices. For a structure: the struck place along the blow, then x, y, z
-    of the struck place, of each body and of each point that can move, at most `MOST_BY_DEFAULT` of them.
+    of the struck place and of each body, then of the points those that move most by ``modes``; at most
+    `MOST_BY_DEFAULT` of them.
 
     Raises
     ------
@@ -45,31 +53,45 @@ def choose_outputs(
             Output(str(named), identity[i], named.component.startswith("r"))
             for i, named in enumerate(system.freedoms)
         ), ()
-    bodies = [part.name for part in system.anatomy.parts if part.kind == "body"]
-    places = [name for name in bodies if name in system.anatomy.places]
-    places += [name for name in system.anatomy.places if name not in places]
-    if start.at in places:
-        places.remove(start.at)
-        places.insert(0, start.at)
-    found: list[Output] = []
-    if start.at is not None and start.along not in ("x", "y", "z"):
-        found.append(_output(system, start.at, start.along))
+    places = system.anatomy.places
+    bodies = [part.name for part in system.anatomy.parts if part.kind == "body" and part.name in places]
+    first = [start.at] if start.at in places else []
+    first += [name for name in bodies if name not in first]
+    found = [] if start.at is None else [_output(system, start.at, start.along)]
+    found += _translations(system, [name for name in first if name is not None])
+    points = _translations(system, [name for name in places if name not in first])
+    sizes = [_size(modes, start, output) for output in points]
+    found += [points[i] for i in sorted(range(len(points)), key=lambda i: -sizes[i])]
+    found = list({output.name: output for output in found}.values())
+    left_out = found[MOST_BY_DEFAULT:]
+    remarks: tuple[str, ...] = ()
+    if left_out:
+        remarks = (
+            f"{MOST_BY_DEFAULT} outputs are recorded, {len(left_out)} more that could move are not: name the "
+            "ones you want with watch.",
+        )
+    return tuple(found[:MOST_BY_DEFAULT]), remarks
+
+
+def _translations(system: System, places: Sequence[str]) -> list[Output]:
+    found = []
     for name in places:
         for along in ("x", "y", "z"):
             try:
                 found.append(_output(system, name, along))
             except ModelError:  # held there: nothing to see
                 continue
-    if start.at is not None and start.along in ("x", "y", "z"):
-        found.sort(key=lambda output: output.name != f"{start.at} {start.along}")
-    left_out = found[MOST_BY_DEFAULT:]
-    remarks: tuple[str, ...] = ()
-    if left_out:
-        remarks = (
-            f"{MOST_BY_DEFAULT} outputs are recorded; {left_out[0].name} and {len(left_out) - 1} after it "
-            "are not: name the ones you want with watch.",
-        )
-    return tuple(found[:MOST_BY_DEFAULT]), remarks
+    return found
+
+
+def _size(modes: Modes | None, start: Start, output: Output) -> float:
+    """About how far an output moves after a blow: the sum of what each mode may add."""
+    if modes is None or start.direction is None:
+        return 0.0
+    elastic = modes.frequencies_hz > 0
+    shapes = modes.shapes[:, elastic]
+    sizes = np.abs(output.direction @ shapes) * np.abs(start.direction @ shapes)
+    return float((sizes / modes.frequencies_hz[elastic]).sum())
 
 
 def _asked(system: System, watch: Sequence[tuple[str, Along]]) -> tuple[Output, ...]:

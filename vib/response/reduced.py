@@ -1,9 +1,9 @@
 """A ring model of few states for a large system, and how much its cutting short matters.
 
-The lowest undamped modes span the slow motion; static corrections for the loads, the outputs, the dashpots
-and a given initial state stand for all modes above (the mode acceleration idea; R. R. Craig,
-"Structural Dynamics", mode-displacement and mode-acceleration methods, chapter from memory). What is left out
-is estimated by the difference to a basis of half as many modes.
+The lowest undamped modes span the slow motion; static corrections for the loads, the outputs, the dashpots,
+the first motion after a blow and a given initial state stand for all modes above (the mode acceleration idea;
+R. R. Craig, "Structural Dynamics", mode-displacement and mode-acceleration methods, chapter from memory).
+What is left out is estimated by the difference to a basis of half as many modes.
 """
 
 from __future__ import annotations
@@ -18,34 +18,44 @@ from vib.modes import find_modes
 from vib.response.exponential import Array
 from vib.response.first_order import RingModel, modal_model
 from vib.solve.dense import dense_undamped
-from vib.solve.factor import factorise
+from vib.solve.factor import SingularFactorError, factorise
 from vib.solve.undamped import Undamped, elastic_ratio, stores_nothing
 from vib.system import Matrix, System
 
 MOST_DASHPOT_COLUMNS = 60  # beyond these the damping is taken as spread out, where modes alone serve well
+ALL_AT_ONCE = 800  # freedoms up to which all modes cost less than the lowest ones several times
 _DEPENDENT = 1e-10  # directions left with less than this share of their mass add nothing
 
 
-def lowest(system: System, count: int) -> Undamped:
-    """The lowest ``count`` undamped modes of symmetric matrices.
+class LowestModes:
+    """The lowest undamped modes of symmetric matrices, as many as are asked for."""
 
-    Raises
-    ------
-    AccuracyError
-        The solver did not finish.
-    """
-    if not sparse.issparse(system.stiffness) or 4 * count > system.size:
-        return dense_undamped(system.mass, system.stiffness).first(count)
-    modes = find_modes(System(mass=system.mass, stiffness=system.stiffness), count=count)
-    angular = 2 * np.pi * modes.frequencies_hz
-    return Undamped(
-        # a growing mode of negative stiffness is real and stands alone
-        values=np.where(modes.eigenvalues.real > 0, -(angular**2), angular**2),
-        shapes=np.asarray(modes.shapes.real),
-        errors=2 * np.pi * modes.errors_hz,
-        rigid=modes.rigid_body_count,
-        complete=False,
-    )
+    def __init__(self, system: System) -> None:
+        self.system = system
+        self._all: Undamped | None = None
+
+    def __call__(self, count: int) -> Undamped:
+        """The lowest ``count`` modes.
+
+        Raises
+        ------
+        AccuracyError
+            The solver did not finish.
+        """
+        system = self.system
+        if system.size <= ALL_AT_ONCE or not sparse.issparse(system.stiffness) or 4 * count > system.size:
+            self._all = self._all or dense_undamped(system.mass, system.stiffness)
+            return self._all.first(count)
+        modes = find_modes(System(mass=system.mass, stiffness=system.stiffness), count=count)
+        squares = (2 * np.pi * modes.frequencies_hz) ** 2
+        return Undamped(
+            # a growing mode of negative stiffness is real and stands alone
+            values=np.where(modes.eigenvalues.real > 0, -squares, squares),
+            shapes=np.asarray(modes.shapes.real),
+            errors=2 * np.pi * modes.errors_hz,
+            rigid=modes.rigid_body_count,
+            complete=False,
+        )
 
 
 def corrections(system: System, modes: Undamped, vectors: Array) -> Array:
@@ -64,6 +74,14 @@ def corrections(system: System, modes: Undamped, vectors: Array) -> Array:
         elastic = modes.values[modes.rigid :]
         stiffness = stiffness + (float(elastic[0]) if elastic.size else 1.0) * system.mass
     return factorise(stiffness).solve(together)
+
+
+def first_motion(system: System, force: Array) -> Array:
+    """The acceleration (n, 1) a force starts with, M^-1 force; no column where the mass is singular."""
+    try:
+        return factorise(system.mass).solve(force)[:, None]
+    except SingularFactorError:
+        return np.zeros((system.size, 0))
 
 
 def reduced_model(system: System, modes: Undamped, extra: Array) -> RingModel:

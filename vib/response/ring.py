@@ -139,7 +139,7 @@ class Ring:
     def modes(self) -> tuple[RingMode, ...]:
         """What each eigenvalue that matters adds to each output's displacement peak, slowest first."""
         times = [peak.time_s for peak in self.peaks if peak.quantity == "displacement"]
-        return ring_modes(self.contributions, np.array(times))
+        return ring_modes(self.contributions, np.array(times), np.array(self.rotational))
 
     def to_dict(self) -> dict[str, Any]:
         """Numbers, texts and lists only (None for what does not exist), names carrying their units."""
@@ -219,9 +219,9 @@ def ring(
     """
     request = Request(impulse, pulse, pull, displacement, velocity, at, along)
     asked, length = _asked_times(times, duration)
-    divided, notes = _divided(system, request, modes)
+    divided, used, notes = _divided(system, request, modes)
     begun = read_start(divided, request)
-    outputs, choice = choose_outputs(divided, begun, watch)
+    outputs, choice = choose_outputs(divided, begun, watch, used)
     rotational = np.array([output.rotational for output in outputs])
     assembled = assemble(divided, begun, outputs)
     motion = assembled.motion
@@ -273,20 +273,24 @@ def _asked_times(times: ArrayLike | None, duration: Quantity | None) -> tuple[Ar
     return asked, float(asked.max()) or None
 
 
-def _divided(system: System, request: Request, modes: Modes | None) -> tuple[System, tuple[str, ...]]:
-    """The system in the division whose lower modes are accurate, and what that leaves of error."""
+def _divided(
+    system: System, request: Request, modes: Modes | None
+) -> tuple[System, Modes | None, tuple[str, ...]]:
+    """The system in the division whose lower modes are accurate, these, and what that leaves of error."""
     if system.anatomy is None or system.anatomy.division is None:
-        return system, ()
+        return system, None, ()
     if any(value is not None and np.ndim(value) == 1 for value in (request.displacement, request.velocity)):
-        return system, ("The division into pieces is the one given: the initial state names its freedoms.",)
+        note = "The division into pieces is the one given: the initial state names its freedoms."
+        return system, None, (note,)
     if modes is None:
         modes = system.modes(count=min(12, system.size))
     elastic = modes.frequencies_hz > 0
     worst = float((modes.errors_hz[elastic] / modes.frequencies_hz[elastic]).max(initial=0.0))
-    return modes.system, (
+    note = (
         f"Numerical error of the first {len(modes.frequencies_hz)} natural frequencies: at most {worst:.1e}, "
-        "relative; higher modes are less accurate.",
+        "relative; higher modes are less accurate."
     )
+    return modes.system, modes, (note,)
 
 
 def _state_remarks(found: Contributions) -> tuple[str, ...]:

@@ -11,11 +11,12 @@ from vib.response.exponential import Array
 from vib.response.motion import Motion
 
 SAMPLES_PER_PERIOD = 20
-MOST_AUTOMATIC = 20_000
+MOST_AUTOMATIC = 10_000
 MOST_ASKED = 200_000
 UNDAMPED_PERIODS = 20
-_DISPLACEMENT_SHARE = 0.01  # a part of less than this share of the motion does not set the step
-_VELOCITY_SHARE = 0.05
+NOTICED = 1e-3  # outputs that move less than this share of the largest don't set step and length
+_SHARE = 0.01  # nor does a part of less than this share of an output's motion
+_FAST_SHARE = 0.1  # of the acceleration: from here on it is said that faster parts are not resolved
 
 
 @dataclass(frozen=True, eq=False)
@@ -29,26 +30,25 @@ class Sampling:
 
 def sample(found: Contributions, motion: Motion, rotational: Flags, duration_s: float | None) -> Sampling:
     """Times over ``duration_s``, or until every output has fallen to 1 % of its peak."""
-    step, slowest = _step_and_slowest(found, rotational)
+    step, slowest, remarks = _step_and_slowest(found, rotational)
     if motion.pulse is not None:
         step = min(step, motion.pulse.duration_s / SAMPLES_PER_PERIOD)
     if duration_s is not None:
         count = int(min(np.ceil(duration_s / step), MOST_ASKED)) + 1
-        remarks: tuple[str, ...] = ()
         if duration_s / step > MOST_ASKED:
-            remarks = (
+            remarks += (
                 f"The record has {MOST_ASKED} steps, fewer than {SAMPLES_PER_PERIOD} per shortest period "
                 "that matters: peaks may lie between the samples. Ask for a shorter duration.",
             )
         return Sampling(np.linspace(0.0, duration_s, max(count, 2)), "the duration asked for", remarks)
     end = _until_one_percent(found, motion, rotational, step, slowest)
-    words, remarks = "until every output has fallen to 1 % of its peak", ()
+    words = "until every output has fallen to 1 % of its peak"
     if end is None:
         end = found.origin_s + UNDAMPED_PERIODS * slowest
         words = f"{UNDAMPED_PERIODS} periods of the slowest part: not every output falls to 1 % of its peak"
     end = max(end, found.origin_s + 2 * step)
     if end > MOST_AUTOMATIC * step:
-        remarks = (
+        remarks += (
             f"The record ends at {MOST_AUTOMATIC} steps; {words} it would take {end:.4g} s. "
             "Give a duration to see more.",
         )
@@ -57,30 +57,40 @@ def sample(found: Contributions, motion: Motion, rotational: Flags, duration_s: 
     return Sampling(np.linspace(0.0, end, max(count, 2)), words, remarks)
 
 
-def significant(sizes: Array, rotational: Flags) -> Flags:
-    """(p,) True for outputs that move at all, beside the largest of their kind."""
+def significant(sizes: Array, rotational: Flags, least: float = 1e-9) -> Flags:
+    """(p,) True for outputs that move more than ``least`` of the largest of their kind."""
     found = np.zeros(len(sizes), bool)
     for kind in (rotational, ~rotational):
         if kind.any():
-            found |= kind & (sizes > 1e-9 * sizes[kind].max())
+            found |= kind & (sizes > least * sizes[kind].max())
     return found
 
 
-def _step_and_slowest(found: Contributions, rotational: Flags) -> tuple[float, float]:
+def _step_and_slowest(found: Contributions, rotational: Flags) -> tuple[float, float, tuple[str, ...]]:
+    """A twentieth of the shortest period that matters, the longest such period, and a remark."""
     speed = np.abs(found.eigenvalues)
     if not speed.any():
-        return 1.0 / SAMPLES_PER_PERIOD, 1.0
-    at_origin = np.abs(np.where(found.clustered, 0.0, found.weights))
-    total = at_origin.sum(axis=1)
-    moving = significant(total, rotational) & (total > 0)
-    matters = found.clustered & (speed > 0)
-    for sizes, limit in ((at_origin, _DISPLACEMENT_SHARE), (at_origin * speed, _VELOCITY_SHARE)):
-        whole = sizes.sum(axis=1, keepdims=True)
-        shares = sizes[moving] / np.where(whole[moving] > 0, whole[moving], 1.0)
-        matters = matters | (shares >= limit).any(axis=0)
-    matters &= speed > 1e-9 * speed.max()
+        return 1.0 / SAMPLES_PER_PERIOD, 1.0, ()
+    sizes = np.abs(np.where(found.clustered, 0.0, found.weights))
+    total = sizes.sum(axis=1)
+    moving = significant(total, rotational, NOTICED) & (total > 0)
+    shares = sizes[moving] / total[moving, None]
+    matters = (found.clustered | (shares >= _SHARE).any(axis=0)) & (speed > 1e-9 * speed.max())
     chosen = speed[matters] if matters.any() else speed[speed > 0]
-    return 2 * np.pi / float(chosen.max()) / SAMPLES_PER_PERIOD, 2 * np.pi / float(chosen.min())
+    remarks: tuple[str, ...] = ()
+    jerky = sizes[moving] * speed**2
+    fast = jerky[:, speed > 1.01 * chosen.max()].sum(axis=1)
+    if (fast > _FAST_SHARE * jerky.sum(axis=1)).any():
+        remarks = (
+            f"Parts above {chosen.max() / (2 * np.pi):.3g} Hz add less than {100 * _SHARE:g} % to any "
+            "displacement and are not resolved by the samples; they do matter to accelerations, whose peaks "
+            "may lie between samples.",
+        )
+    return (
+        2 * np.pi / float(chosen.max()) / SAMPLES_PER_PERIOD,
+        2 * np.pi / float(chosen.min()),
+        remarks,
+    )
 
 
 def _until_one_percent(
@@ -89,7 +99,7 @@ def _until_one_percent(
     """When the envelope of every moving output is below 1 % of its peak, s; None if that never happens."""
     early = np.linspace(0.0, found.origin_s + 1.5 * slowest, int(min(1.5 * slowest / step, 4000)) + 50)
     peaks = np.abs(motion(early) - found.constant).max(axis=0)
-    moving = significant(peaks, rotational)
+    moving = significant(peaks, rotational, NOTICED)
     if (found.drifts & moving).any():
         return None
     stays = found.decay_per_s <= 0

@@ -7,9 +7,10 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from vib.response.contributions import Contributions
+from vib.response.contributions import Contributions, Flags
 from vib.response.decay import FALLS, logarithmic_decrement
 from vib.response.exponential import Array
+from vib.response.sampling import NOTICED, significant
 
 LEAST_SHARE = 1e-3
 MOST_ROWS = 40
@@ -24,7 +25,8 @@ class RingMode:
     ``fall_to_1_percent_s`` are how long its own envelope takes, None if it does not fall or has no envelope
     of its own (clustered). ``amplitude``
     (p,) is abs(weight), in m or rad, NaN where clustered; ``share_of_peak`` (p,) is its signed part of each
-    output's displacement at that output's peak: the shares of all eigenvalues and of what stays add to 1.
+    output's displacement at that output's peak: the shares of all eigenvalues and of what stays add to 1
+    (NaN for an output that does not move).
     """
 
     number: int
@@ -40,25 +42,30 @@ class RingMode:
     share_of_peak: Array
 
 
-def shares_at(found: Contributions, times: Array) -> Array:
-    """(p, g): each eigenvalue's signed part of output i at time ``times[i]``, relative to the output."""
+def shares_at(found: Contributions, times: Array) -> tuple[Array, Array]:
+    """Each eigenvalue's signed share of output i at ``times[i]`` (p, g), and the size of the output (p,)."""
     index = {id(part): place for place, part in enumerate(found.motion.parts.parts)}
     columns = [index[id(part)] for part in found.parts]
     shares = np.zeros((len(times), len(found.parts)))
+    totals = np.zeros(len(times))
     for output, when in enumerate(times):
         one = found.motion.select(output)
         total = float(one(np.array([when]))[0, 0])
+        totals[output] = abs(total)
         if total:
             shares[output] = one.by_part(float(when))[0, columns] / total
-    return shares
+    return shares, totals
 
 
-def ring_modes(found: Contributions, peak_times: Array) -> tuple[RingMode, ...]:
-    """Rows for the eigenvalues that matter to some output, slowest first."""
-    shares = shares_at(found, peak_times)
+def ring_modes(found: Contributions, peak_times: Array, rotational: Flags) -> tuple[RingMode, ...]:
+    """Rows for the eigenvalues that matter to some output that moves, slowest first."""
+    shares, peaks = shares_at(found, peak_times)
+    shares[~significant(peaks, rotational)] = np.nan
+    noticed = significant(peaks, rotational, NOTICED)
     sizes = np.abs(np.where(found.clustered, 0.0, found.weights))
     total = sizes.sum(axis=1, keepdims=True)
-    relative = np.maximum(np.abs(shares), sizes / np.where(total > 0, total, 1.0)).max(axis=0, initial=0.0)
+    relative = np.maximum(np.abs(shares), sizes / np.where(total > 0, total, 1.0))[noticed]
+    relative = relative.max(axis=0, initial=0.0)
     chosen = np.flatnonzero(relative >= LEAST_SHARE)
     if len(chosen) > MOST_ROWS:
         chosen = np.sort(chosen[np.argsort(-relative[chosen], kind="stable")[:MOST_ROWS]])
