@@ -47,7 +47,7 @@ def linear_field(coordinates: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
 
 
 @families
-def test_shape_functions_are_one_at_their_own_node(family: Solid):
+def test_shape_functions_are_one_at_their_own_node(family: Solid) -> None:
     nodes = family.reference.copy()
     if family.kind.startswith("pyramid"):
         nodes[4, 2] -= 1e-12  # rational functions have a limit, not a value, at the apex
@@ -55,7 +55,7 @@ def test_shape_functions_are_one_at_their_own_node(family: Solid):
 
 
 @families
-def test_gradients_are_derivatives_of_the_shape_functions(family: Solid):
+def test_gradients_are_derivatives_of_the_shape_functions(family: Solid) -> None:
     points, step = family.stiffness_rule.points, 1e-5
     for axis in range(3):
         ahead, behind = (family.shape(points + sign * step * np.eye(3)[axis]) for sign in (1, -1))
@@ -65,7 +65,7 @@ def test_gradients_are_derivatives_of_the_shape_functions(family: Solid):
 
 
 @families
-def test_exactly_six_motions_without_strain(family: Solid):
+def test_exactly_six_motions_without_strain(family: Solid) -> None:
     cells = distorted(family)
     for cell, matrix in zip(cells, family.stiffness(cells, MATERIAL), strict=True):
         stiffness = np.linalg.eigvalsh(matrix)
@@ -75,7 +75,7 @@ def test_exactly_six_motions_without_strain(family: Solid):
 
 
 @families
-def test_constant_stress_patch(family: Solid):
+def test_constant_stress_patch(family: Solid) -> None:
     """Constant strain: exact energy, exact stress at every point, on any shape of cell.
 
     Source: the patch test, B. M. Irons, A. Razzaque (1972); R. L. Taylor et al., IJNME 22 (1986) 39-62.
@@ -95,8 +95,8 @@ def test_constant_stress_patch(family: Solid):
 
 
 @families
-def test_internal_forces_of_constant_stress_balance_in_a_patch(family: Solid):
-    """Two ways to the force on the nodes: the matrix, and boundary tractions through the mass of the gradient."""
+def test_internal_forces_of_constant_stress_balance_in_a_patch(family: Solid) -> None:
+    """Nodal forces of a constant stress: by the matrix, and by the integral of the shape gradients."""
     cells = distorted(family)
     displacements, stress = linear_field(cells)
     tensor = stress[[0, 5, 4, 5, 1, 3, 4, 3, 2]].reshape(3, 3)
@@ -111,8 +111,8 @@ def test_internal_forces_of_constant_stress_balance_in_a_patch(family: Solid):
 
 
 @pytest.mark.parametrize("family", SECOND_ORDER, ids=lambda family: family.kind)
-def test_second_order_cells_bend_exactly(family: Solid):
-    """A beam in pure bending, u quadratic: x-stress linear in y, all others zero, energy exact (affine cell)."""
+def test_second_order_cells_bend_exactly(family: Solid) -> None:
+    """A beam in pure bending, u quadratic: x-stress linear in y, all others zero; energy exact."""
     cell = distorted(family)[:1]
     x, y, z = np.moveaxis(cell, 2, 0)
     bent = np.stack([x * y, -(x**2 + 0.3 * (y**2 - z**2)) / 2, -0.3 * y * z], axis=2)
@@ -125,7 +125,7 @@ def test_second_order_cells_bend_exactly(family: Solid):
     assert energy == pytest.approx(7.0 * second_moment, rel=1e-12)
 
 
-def test_incompatible_modes_bend_exactly():
+def test_incompatible_modes_bend_exactly() -> None:
     """One rectangular hexahedron in pure bending has the energy of beam theory (R. L. Taylor et al. 1976)."""
     family = FAMILIES["hexahedron"]
     cell = family.reference[None] * [2.0, 0.5, 0.25]  # type: ignore[attr-defined]
@@ -138,7 +138,7 @@ def test_incompatible_modes_bend_exactly():
 
 
 @families
-def test_mass_and_inertia_are_those_of_the_body(family: Solid):
+def test_mass_and_inertia_are_those_of_the_body(family: Solid) -> None:
     """Total mass, centre and inertia against an independent quadrature, on straight-sided cells."""
     cell = distorted(family)[:1]
     matrix = family.mass(cell, MATERIAL)[0]
@@ -166,7 +166,7 @@ def test_mass_and_inertia_are_those_of_the_body(family: Solid):
         ("pyramid13", 4 / 3, 4 / 15),
     ],
 )
-def test_volume_and_second_moment_of_the_reference_cell(kind: str, volume: float, second: float):
+def test_volume_and_second_moment_of_the_reference_cell(kind: str, volume: float, second: float) -> None:
     """Closed forms: integral of 1 and of x^2 over each reference cell."""
     family = FAMILIES[kind]
     assert isinstance(family, Solid)
@@ -177,7 +177,7 @@ def test_volume_and_second_moment_of_the_reference_cell(kind: str, volume: float
 
 
 @families
-def test_affine_cells_need_no_quadrature(family: Solid):
+def test_affine_cells_need_no_quadrature(family: Solid) -> None:
     cell = distorted(family)[:1]
     by_quadrature = family._condensed(family._quadrature_blocks(cell, MATERIAL))
     found = family.stiffness_blocks(cell, MATERIAL)
@@ -190,7 +190,9 @@ def test_affine_cells_need_no_quadrature(family: Solid):
     vector=arrays(np.float64, 3, elements=st.floats(-1, 1)),
     shift=arrays(np.float64, 3, elements=st.floats(-10, 10)),
 )
-def test_turned_and_moved_cells_have_the_same_stiffness(family: Solid, vector: np.ndarray, shift: np.ndarray):
+def test_turned_and_moved_cells_have_the_same_stiffness(
+    family: Solid, vector: np.ndarray, shift: np.ndarray
+) -> None:
     cells = distorted(family)
     rotation = np.eye(3) + 2 * _skew(vector) @ (np.eye(3) + _skew(vector)) / (1 + vector @ vector)
     large = np.kron(np.eye(family.nodes), rotation)
@@ -204,7 +206,7 @@ def _skew(v: np.ndarray) -> np.ndarray:
 
 
 @families
-def test_mirrored_order_turns_a_cell_round(family: Solid):
+def test_mirrored_order_turns_a_cell_round(family: Solid) -> None:
     cells = distorted(family)
     inverted = cells * [1, 1, -1]
     with pytest.raises(ModelError, match=rf"{family.kind} cells 1, 2 are turned inside out"):
@@ -216,7 +218,7 @@ def test_mirrored_order_turns_a_cell_round(family: Solid):
 
 
 @families
-def test_flat_and_folded_cells_are_named(family: Family):
+def test_flat_and_folded_cells_are_named(family: Family) -> None:
     assert isinstance(family, Solid)
     cells = np.repeat(distorted(family), 7, axis=0)
     cells[2] = cells[2] * [1, 1, 0]

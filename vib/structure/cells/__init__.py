@@ -12,8 +12,13 @@ from vib.structure.cells.hexahedron20 import Hexahedron20
 from vib.structure.cells.hexahedron27 import Hexahedron27
 from vib.structure.cells.pyramid import Pyramid
 from vib.structure.cells.pyramid13 import Pyramid13
+from vib.structure.cells.quad import Quad
+from vib.structure.cells.quad8 import Quad8
+from vib.structure.cells.quad9 import Quad9
 from vib.structure.cells.tetra import Tetra
 from vib.structure.cells.tetra10 import Tetra10
+from vib.structure.cells.triangle import Triangle
+from vib.structure.cells.triangle6 import Triangle6
 from vib.structure.cells.wedge import Wedge
 from vib.structure.cells.wedge15 import Wedge15
 
@@ -29,6 +34,11 @@ FAMILIES: dict[str, Family] = {
         Wedge15(),
         Pyramid(),
         Pyramid13(),
+        Triangle(),
+        Triangle6(),
+        Quad(),
+        Quad8(),
+        Quad9(),
     )
 }
 

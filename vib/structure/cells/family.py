@@ -83,7 +83,7 @@ class Stresses:
     ``values`` (e, p, s, m), one last index per displacement field.
     Solids: s = 6, xx, yy, zz, yz, zx, xy in Pa.
     Shells: s = 8, membrane forces xx, yy, xy (N/m), moments xx, yy, xy (N), shear forces xz, yz (N/m) in the
-    axes ``frames`` (e, 3, 3), rows local x, y, z. ``compliance`` (e, s, s): values' compliance values is
+    axes ``frames`` (e, p, 3, 3), rows local x, y, z. ``compliance`` (e, s, s): values' compliance values is
     twice the strain energy per volume (shells: per area).
     """
 

@@ -1,17 +1,17 @@
 """Membrane triangle with rotations about the normal, and the motion of Allman's edges for its mass.
 
-Stiffness: the optimal triangle of C. A. Felippa, A study of optimal membrane triangles with drilling freedoms,
-Comput. Methods Appl. Mech. Engrg. 192 (2003) 2125-2168: basic stiffness of constant stress (P. G. Bergan,
-C. A. Felippa, CMAME 50 (1985) 25-69, lumping factor 3/2) plus a higher-order stiffness with the published
-parameters, exact for in-plane bending of rectangles of any aspect ratio.
+Stiffness: the optimal triangle of C. A. Felippa, A study of optimal membrane triangles with drilling
+freedoms, Comput. Methods Appl. Mech. Engrg. 192 (2003) 2125-2168: basic stiffness of constant stress
+(P. G. Bergan, C. A. Felippa, CMAME 50 (1985) 25-69, lumping factor 3/2) plus a higher-order stiffness with
+the published parameters, exact for in-plane bending of rectangles of any aspect ratio.
 """
 
 from __future__ import annotations
 
 import numpy as np
 
+from vib.structure.cells.facet import plane_stress
 from vib.structure.cells.family import Array, Properties
-from vib.structure.cells.shell import plane_stress
 
 _ALPHA = 1.5
 # beta_1 to beta_9 of the optimal triangle
@@ -32,13 +32,13 @@ def optimal_triangle(flat: Array, properties: Properties) -> Array:
     area = triangle_area(flat)
     lumped = _lumping(flat)
     basic = (thickness / area)[:, None, None] * (lumped @ plane @ lumped.swapaxes(1, 2))
-    natural = _natural_strains(flat, area)
+    natural = _natural_strains(flat)
     stiff = natural.swapaxes(1, 2) @ plane @ natural
-    lengths = _edge_lengths(flat)
-    corners = []
+    squares = np.sum((flat - np.roll(flat, -1, axis=1)) ** 2, axis=2)  # edges 21, 32, 13
+    corners: list[Array] = []
     for places in _CORNER_BETA:
         numbers = np.array([[_BETA[place - 1] for place in row] for row in places])
-        corners.append((2 * area / 3)[:, None, None] * numbers / lengths[:, :, None] ** 2)
+        corners.append((2 * area / 3)[:, None, None] * numbers / squares[:, :, None])
     higher = np.zeros((count, 3, 3))
     for first, second in ((0, 1), (1, 2), (2, 0)):
         midway = (corners[first] + corners[second]) / 2
@@ -84,45 +84,24 @@ def edge_swell(flat: Array, edges: Array) -> Array:
     return found.reshape(count, len(edges), 2, 3 * nodes)
 
 
-def _edge_lengths(flat: Array) -> Array:
-    """Of the edges 21, 32, 13, (e, 3)."""
-    found: Array = np.linalg.norm(flat - np.roll(flat, -1, axis=1), axis=2)
-    return found
-
-
 def _lumping(flat: Array) -> Array:
     """Forces and moments on the corners per constant stress, without the thickness: (e, 9, 3)."""
     found = np.zeros((len(flat), 3, 3, 3))
-    for corner in range(3):
-        before, after = (corner + 2) % 3, (corner + 1) % 3
-        across = flat[:, after] - flat[:, before]
-        x, y = across[:, 0], across[:, 1]  # x of corner j less k, y of j less k (corner, j, k cyclic)
-        to_before, to_after = flat[:, corner] - flat[:, before], flat[:, after] - flat[:, corner]
-        found[:, corner, 0, 0] = found[:, corner, 1, 2] = y
-        found[:, corner, 0, 2] = found[:, corner, 1, 1] = -x
-        found[:, corner, 2, 0] = _ALPHA / 6 * y * (-to_before[:, 1] + -to_after[:, 1] * -1)
-        found[:, corner, 2, 1] = _ALPHA / 6 * x * 0
-        found[:, corner, 2, 2] = 0
-        _moments(found[:, corner, 2], to_before, to_after, across)
+    for i, j, k in ((0, 1, 2), (1, 2, 0), (2, 0, 1)):
+        x_kj, y_jk = flat[:, k, 0] - flat[:, j, 0], flat[:, j, 1] - flat[:, k, 1]
+        x_ij, y_ji = flat[:, i, 0] - flat[:, j, 0], flat[:, j, 1] - flat[:, i, 1]
+        x_ki, y_ik = flat[:, k, 0] - flat[:, i, 0], flat[:, i, 1] - flat[:, k, 1]
+        found[:, i, 0, 0] = found[:, i, 1, 2] = y_jk
+        found[:, i, 0, 2] = found[:, i, 1, 1] = x_kj
+        found[:, i, 2, 0] = _ALPHA / 6 * y_jk * (y_ik - y_ji)
+        found[:, i, 2, 1] = _ALPHA / 6 * x_kj * (x_ki - x_ij)
+        found[:, i, 2, 2] = _ALPHA / 3 * (x_ki * y_ik - x_ij * y_ji)
     return found.reshape(len(flat), 9, 3) / 2
 
 
-def _moments(row: Array, to_before: Array, to_after: Array, across: Array) -> None:
-    x_ij, y_ij = -to_after[:, 0], -to_after[:, 1]  # corner i less the next, j
-    x_ki, y_ki = -to_before[:, 0], -to_before[:, 1]  # k less i
-    x_jk, y_jk = across[:, 0], across[:, 1]
-    row[:, 0] = _ALPHA / 6 * y_jk * (-y_ki + y_ij)
-    row[:, 1] = _ALPHA / 6 * -x_jk * (x_ki - x_ij)
-    row[:, 2] = _ALPHA / 3 * (x_ki * -y_ki - x_ij * -y_ij)
-
-
-def _natural_strains(flat: Array, area: Array) -> Array:
+def _natural_strains(flat: Array) -> Array:
     """Strains xx, yy, xy per strains along the edges 21, 32, 13, (e, 3, 3)."""
-    along = np.roll(flat, -1, axis=1) - flat  # edges 21, 32, 13
+    along = np.roll(flat, -1, axis=1) - flat
     x, y = along[:, :, 0], along[:, :, 1]
-    # strain along an edge is c^2 e_xx + s^2 e_yy + s c e_xy; its inverse by 3 x 3 solution
-    lengths = np.linalg.norm(along, axis=2)
-    direct = np.stack([x**2, y**2, x * y], axis=2) / lengths[:, :, None] ** 2
-    del area
-    found: Array = np.linalg.inv(direct)
-    return found
+    direct = np.stack([x**2, y**2, x * y], axis=2) / (x**2 + y**2)[:, :, None]
+    return np.asarray(np.linalg.inv(direct), dtype=np.float64)
