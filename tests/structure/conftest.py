@@ -10,6 +10,7 @@ import scipy.linalg
 from vib.structure.assembly import assemble
 from vib.structure.build import to_system
 from vib.structure.layout import read_layout
+from vib.structure.remarks import assumptions
 from vib.study import Study
 from vib.system import System
 from vib.units import KINDS
@@ -23,7 +24,7 @@ def _describe(**tables: Any) -> Study:
 
 def _cut(study: Study, count: int) -> System:
     layout = read_layout(study)
-    return to_system(assemble(layout, np.full(len(layout.stretches.labels), count)))
+    return to_system(assemble(layout, np.full(len(layout.stretches.labels), count)), assumptions(layout))
 
 
 def _frequencies(system: System, components: str | None = None) -> np.ndarray:

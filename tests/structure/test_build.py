@@ -206,6 +206,20 @@ ERRORS: dict[str, Any] = {
         {},
         r'points\.E: nothing resists a movement along y and z .*hold = \["y", "z"\]',
     ),
+    "a point that all its members release": (
+        {},
+        {"releases": {"end": "all"}},
+        r"points\.C: nothing resists a movement along x and y and z",
+    ),
+    "numbers too large": (
+        {
+            "materials": {"hard": {"like": "steel", "youngs_modulus": 1e308}},
+            "points": {**POINTS, "B": [1e-3, 0, 0]},
+        },
+        {"material": "hard"},
+        r'members\[0\]\.runs\[0\] \("bars"\): its length, section and material give .* check their units',
+    ),
+    "a point too far": ({"points": {**POINTS, "C": [1e150, 0, 0]}}, {}, r"points\.C: lies 1e\+150 m away"),
     "unclear spring axes": (
         {
             "springs": [
@@ -233,6 +247,16 @@ def test_errors_name_the_entry(bars, case):
     tables, members, message = ERRORS[case]
     with pytest.raises(ModelError, match=message):
         bars(members, **tables).system()
+
+
+def test_a_structure_that_is_held_altogether(describe):
+    study = describe(
+        points={"A": [0, 0, 0]},
+        bodies=[{"name": "block", "mass": 1.0, "carried_by": "A"}],
+        supports=[{"at": "A", "hold": "all"}],
+    )
+    with pytest.raises(ModelError, match="nothing can vibrate; hold fewer components"):
+        study.system()
 
 
 def test_several_faults_come_together(bars):

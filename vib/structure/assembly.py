@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections import Counter
 from dataclasses import dataclass
 
 import numpy as np
@@ -114,8 +115,8 @@ def _part_names(layout: Layout) -> dict[tuple[str, int], str]:
     study = layout.study
     words = {"members": "members", "springs": "springs", "bodies": "body"}
     named = {(kind, i): row.name for kind in words for i, row in enumerate(getattr(study, kind))}
-    often = [name for name in named.values() if list(named.values()).count(name) > 1]
-    return {key: f"{name} ({words[key[0]]})" if name in often else name for key, name in named.items()}
+    times = Counter(named.values())
+    return {key: f"{name} ({words[key[0]]})" if times[name] > 1 else name for key, name in named.items()}
 
 
 def _member_parts(

@@ -48,7 +48,7 @@ def build_system(study: Study, frequency_hz: float | None = None) -> System:
         return _from_matrices(study)
     layout = read_layout(study)
     counts = first_counts(layout) if frequency_hz is None else counts_for(layout, frequency_hz)
-    return to_system(assemble(layout, counts))
+    return to_system(assemble(layout, counts), assumptions(layout))
 
 
 @dataclass(eq=False)
@@ -58,25 +58,37 @@ class PieceDivision:
     layout: Layout
     counts: NDArray[np.intp]
     accuracy: float
+    remarks: tuple[str, ...]
 
     def coarser(self) -> System | None:
         """Half the pieces; None where a stretch cannot be halved, or there is none."""
         if not len(self.counts) or (self.counts % 2).any():
             return None
-        return to_system(assemble(self.layout, self.counts // 2))
+        return self._cut(self.counts // 2)
 
     def finer(self) -> System:
         """Twice the pieces."""
-        return to_system(assemble(self.layout, self.counts * 2))
+        return self._cut(self.counts * 2)
 
     def for_frequency(self, frequency_hz: float) -> System:
         """Pieces short enough for modes up to this frequency."""
-        return to_system(assemble(self.layout, counts_for(self.layout, frequency_hz)))
+        return self._cut(counts_for(self.layout, frequency_hz))
+
+    def _cut(self, counts: NDArray[np.intp]) -> System:
+        return to_system(assemble(self.layout, counts), self.remarks)
 
 
-def to_system(assembly: Assembly) -> System:
-    """The system of an assembled structure."""
+def to_system(assembly: Assembly, remarks: tuple[str, ...] = ()) -> System:
+    """The system of an assembled structure, with what there is to remark on it.
+
+    Raises
+    ------
+    ModelError
+        Supports hold every freedom.
+    """
     study, layout = assembly.layout.study, assembly.layout
+    if not assembly.size:
+        raise ModelError("supports: they hold everything, so that nothing can vibrate; hold fewer components")
     parts = assembly.parts()
     mass = _total(assembly, [part.mass for part in parts])
     stiffness = _total(assembly, [part.stiffness for part in parts])
@@ -89,8 +101,8 @@ def to_system(assembly: Assembly) -> System:
         wireframe=draw(assembly),
         carried=assembly.nodes.transform.T @ pushed,
         rigid_mass=rigid.T @ pushed,
-        remarks=assumptions(layout),
-        division=PieceDivision(layout, assembly.counts, study.accuracy),
+        remarks=remarks,
+        division=PieceDivision(layout, assembly.counts, study.accuracy, remarks),
     )
     return System(
         mass=mass,

@@ -18,6 +18,8 @@ from vib.study import Study
 from vib.study.quantities import COMPONENTS
 from vib.system import Array
 
+_FARTHEST = 1e9  # m; beyond it, squares and cubes of lengths leave the range of numbers
+
 
 @dataclass(frozen=True, eq=False)
 class Layout:
@@ -44,10 +46,26 @@ class Layout:
         return float(np.ptp(places, axis=0).max()) or 1.0
 
     def piece_matrices(self, counts: NDArray[np.intp]) -> tuple[Array, Array]:
-        """Stiffness and mass (s, 12, 12) of one piece of each stretch, in global components."""
+        """Stiffness and mass (s, 12, 12) of one piece of each stretch, in global components.
+
+        Raises
+        ------
+        ModelError
+            Dimensions so large or small that the stiffness cannot be written as a number.
+        """
         bars = pieces_of(self.stretches.bars, counts)
         turn = self.stretches.principal_axes
-        return to_global(local_stiffness(bars), turn), to_global(local_mass(bars), turn)
+        with np.errstate(all="ignore"):
+            stiffness, mass = local_stiffness(bars), local_mass(bars)
+            own = np.diagonal(stiffness, axis1=1, axis2=2).min(axis=1)
+            fine = np.isfinite(stiffness + mass).all(axis=(1, 2)) & (own > np.finfo(float).tiny)
+        if not fine.all():
+            entry = self.stretches.entries[int(np.argmin(fine))]
+            raise ModelError(
+                f"{entry}: its length, section and material give a stiffness or mass beyond all numbers; "
+                "check their units"
+            )
+        return to_global(stiffness, turn), to_global(mass, turn)
 
 
 def read_layout(study: Study) -> Layout:
@@ -59,7 +77,13 @@ def read_layout(study: Study) -> Layout:
         The structure cannot be built as described; every fault that was found, each naming its entry.
     """
     points = {name: i for i, name in enumerate(study.points)}
-    faults: list[str] = []
+    faults = [
+        f"points.{name}: lies {max(map(abs, place)):.3g} m away; check its unit"
+        for name, place in study.points.items()
+        if max(map(abs, place)) > _FARTHEST
+    ]
+    if faults:
+        raise ModelError("\n".join(faults))
     stretches = read_stretches(study, points, faults)
     springs = read_springs(study, points, faults)
     bodies = read_bodies(study, points)

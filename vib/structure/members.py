@@ -96,9 +96,8 @@ def read_stretches(study: Study, points: dict[str, int], faults: list[str]) -> S
     labels = _labels([f"{study.members[i].name} {run[k]}-{run[k + 1]}" for i, _, run, k in rows])
     for s in np.flatnonzero(length <= 1e-9 * extent).tolist():
         name_a, name_b = (rows[s][2][rows[s][3] + k] for k in (0, 1))
-        faults.append(
-            f"{entries[s]}: no length between {name_a} and {name_b}; their ends are at the same place"
-        )
+        apart = "at the same place" if length[s] == 0 else f"only {length[s]:.3g} m apart"
+        faults.append(f"{entries[s]}: no length between {name_a} and {name_b}; its ends are {apart}")
     along = np.where(length[:, None] > 0, along, [1.0, 0.0, 0.0]) / np.where(length > 0, length, 1.0)[:, None]
     drawn = _drawn_axes(study, group, along, entries, faults)
     bars, angle = _bars(study, group, np.where(length > 0, length, 1.0))

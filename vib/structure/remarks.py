@@ -10,6 +10,7 @@ from vib.structure.axes import STANDING, standing, unit_axis
 from vib.structure.layout import Layout
 from vib.structure.members import loose
 from vib.structure.oddities import oddities
+from vib.structure.springs import GROUND
 
 _MOST_NAMES = 8
 
@@ -96,7 +97,7 @@ def _of_springs(layout: Layout) -> Iterator[str]:
 
 
 def _of_freedoms(layout: Layout) -> Iterator[str]:
-    if not layout.held.any() and not (layout.springs.ends[:, 1] == -1).any():
+    if not layout.held.any() and not (layout.springs.ends[:, 1] == GROUND).any():
         yield "nothing holds the structure: it is free in space"
     names = (*layout.point_names, *layout.bodies.names)
     by_rotations: dict[tuple[str, ...], list[str]] = {}

@@ -13,6 +13,7 @@ from vib.structure.division import first_counts
 from vib.structure.layout import read_layout
 from vib.structure.remarks import assumptions
 from vib.structure.sag import STANDARD_GRAVITY, Reaction, Sag, find_sag
+from vib.structure.springs import GROUND
 from vib.study import Study
 from vib.study.quantities import COMPONENTS
 from vib.system import Array
@@ -124,7 +125,11 @@ def survey(study: Study) -> Survey:
             for name, row in zip(layout.point_names, layout.held, strict=True)
             if row.any()
         ),
-        grounded=tuple(label for label in layout.springs.labels if label.endswith("-ground")),
+        grounded=tuple(
+            label
+            for label, (_, end) in zip(layout.springs.labels, layout.springs.ends, strict=True)
+            if end == GROUND
+        ),
         runs=_run_axes(assembly),
         freedoms=assembly.size,
         up=_triple(up),

@@ -63,19 +63,16 @@ def tie(
     surely = np.zeros(len(places), dtype=bool)
     surely[hub[stretches.ends[~stretches.released.any(axis=2)]]] = True
     left_out = {}
-    unused = np.zeros(len(places), dtype=bool)
+    unused = np.ones(count, dtype=bool)
+    unused[stretches.ends.reshape(-1)] = unused[springs.ends[springs.ends != GROUND]] = False
+    unused &= bodies.lead_of_point < 0
+    kept[:count] &= ~unused[:, None]
     for place in np.flatnonzero(kept.any(axis=1) & ~surely):
-        if not touch[place].any():
-            unused[place], kept[place] = True, False
-            continue
         name = names[place] if place < count else bodies.names[place - count]
         taken = _leave_out(touch[place], kept, expansion, int(place), size, name, faults)
         if taken:
             left_out[int(place)] = taken
     expansion *= kept[:, None, :]
-    unused = unused[:count] | (
-        held.all(axis=1) & ~touch[:count].any(axis=(1, 2)) & (bodies.lead_of_point < 0)
-    )
     return Ties(hub, rigid, rigid @ expansion[hub], kept, left_out, unused)
 
 
