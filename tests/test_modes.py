@@ -6,6 +6,8 @@ forms in 40 to 80 digits), whose entry is given in brackets.
 
 from __future__ import annotations
 
+from typing import Any
+
 import numpy as np
 import pytest
 
@@ -29,7 +31,7 @@ def chain(springs, masses):
 
 TWO = chain([18000.0, 7000.0, 2500.0], [12.0, 5.0])  # [MDOF-2]
 
-ANGULAR = {
+ANGULAR: dict[str, tuple[dict[str, Any], Any, float]] = {
     # Rayleigh, Theory of Sound (loaded string): 2 sin((2 j - 1) pi / (2 (2 N + 1))) [MDOF-CHAIN-FREE]
     "free end, 3": (chain([1, 1, 1], [1, 1, 1]), [0.44504186791263, 1.2469796037175, 1.8019377358048], 1e-12),
     "free end, 5": (
@@ -55,7 +57,7 @@ ANGULAR = {
     ),
     # A. K. Chopra, Dynamics of Structures, worked example of the two-storey frame (from memory) [TEXT-1]
     "two storeys": (chain([2, 1], [2, 1]), [0.707106781187, 1.41421356237], 1e-11),
-    # R. W. Clough, J. Penzien, Dynamics of Structures, worked example of the three-storey frame (from memory);
+    # R. W. Clough, J. Penzien, Dynamics of Structures, worked example, three-storey frame (from memory);
     # kip, inch: top to bottom 1.0, 1.5, 2.0 kip s^2/in on 600, 1200, 1800 kip/in [TEXT-2]
     "three storeys": (
         chain([1800, 1200, 600], [2.0, 1.5, 1.0]),
@@ -78,6 +80,7 @@ def test_undamped_closed_forms(name):
     assert modes.proportional
     assert modes.stable
     assert np.isrealobj(modes.shapes)
+    assert modes.complete_below_hz is not None
     assert modes.complete_below_hz >= modes.frequencies_hz[-1]
     np.testing.assert_array_equal(np.isnan(modes.damping_ratios), np.asarray(expected) == 0)
     # Unit modal mass and no coupling, to a few round-off units per freedom.
@@ -152,7 +155,7 @@ def pairs(*values):
     return np.array([complex(*value) for value in values])
 
 
-DAMPED = {
+DAMPED: dict[str, tuple[dict[str, Any], Any, float]] = {
     # Quartic det(s^2 M + s C + K) = 0, own data, 80 digits [MDOF-NP1], [MDOF-NP2], [MDOF-NP3]
     "dashpot to ground": (
         {"mass": [[2, 0], [0, 1]], "damping": [[0, 0], [0, 0.9]], "stiffness": [[35, -15], [-15, 15]]},
@@ -353,8 +356,8 @@ def test_critical_damping(mass):
     assert (modes.errors_hz > 1e-9).all()
 
 
-def test_coupled_critical_damping_is_covered_by_the_error_bar():
-    """(s + 1)^2 in one coordinate, an undamped oscillator in another, turned by 0.4 rad in mass and stiffness."""
+def test_nearly_critical_damping():
+    """(s + 1)^2 in one coordinate and an undamped oscillator in another, coupled gyroscopically by 1e-3."""
     cos, sin = np.cos(0.4), np.sin(0.4)
     turn = np.array([[cos, -sin], [sin, cos]])
     damping, stiffness = (turn @ np.diag(d) @ turn.T for d in ([2.0, 0.0], [1.0, 9.0]))
@@ -363,7 +366,7 @@ def test_coupled_critical_damping_is_covered_by_the_error_bar():
     modes = System(mass=mass, damping=damping, gyroscopic=skew, stiffness=stiffness).modes()
     assert len(modes.eigenvalues) in (2, 3)
     assert modes.condition.max() > 100
-    # The double root splits by the square root of the perturbation (1e-3)^2 * s^2 / (s^2 + 9), s = -1: +- 3.2e-4.
+    # (s + 1)^2 = -(1e-3 s)^2 / (s^2 + 9), at s = -1: it splits by 3.2e-4, and next terms are 1e-3 of that.
     near = modes.eigenvalues[np.abs(modes.eigenvalues + 1) < 0.01]
     np.testing.assert_allclose(np.abs(near + 1), np.sqrt(1e-6 / 10), rtol=2e-3)
 

@@ -61,7 +61,7 @@ def test_massless_without_damping_follows_at_once():
     space = system.state_space()
     assert space.states == ("1 displacement", "1 velocity")
     np.testing.assert_allclose(space.A[1, 0], -(3.0 * 6.0 / 9.0) / 2.0, rtol=1e-15)
-    np.testing.assert_allclose(space.D, [[0, 0], [0, 1 / 9.0]], rtol=1e-15)
+    np.testing.assert_allclose(space.D, np.diag([0, 1 / 9.0]), rtol=1e-15)
     with pytest.raises(ModelError, match="how fast the force changes"):
         system.state_space(quantity="velocity")
     np.testing.assert_allclose(  # watched where there is mass it is well defined
@@ -124,7 +124,7 @@ def test_eigenvalues_are_those_of_the_modes(size, seed, massless):
     modes = system.modes()
     found, expected = both(modes.eigenvalues), np.linalg.eigvals(system.state_space().A)
     assert len(found) == len(expected) == 2 * size - min(massless, size)
-    # Each within its condition number times the error of either method, about size * 1e-13 relative to the largest.
+    # Within the condition number times the error of either method, below 1e-12 of the largest for 10 states.
     slack = 1e-12 * np.abs(expected).max() * np.maximum(modes.condition.max(), 1.0)
     assert np.abs(found[:, None] - expected).min(axis=1).max() <= slack
     assert np.abs(found - expected[:, None]).min(axis=1).max() <= slack
@@ -161,4 +161,4 @@ def test_arrays_that_do_not_fit(arrays, error, message):
 
 def test_quantity_is_one_of_three():
     with pytest.raises(ModelError, match="displacement, velocity or acceleration"):
-        state_space(System(mass=M, stiffness=K), quantity="jerk")
+        state_space(System(mass=M, stiffness=K), quantity="jerk")  # type: ignore[arg-type]

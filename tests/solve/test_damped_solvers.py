@@ -1,0 +1,142 @@
+"""The damped solvers: dense against sparse, residuals, laws."""
+
+from __future__ import annotations
+
+import numpy as np
+import pytest
+import scipy.sparse as sparse
+from hypothesis import given, settings
+from hypothesis import strategies as st
+
+from vib.solve.arnoldi import sparse_quadratic
+from vib.solve.damping import rayleigh_parts
+from vib.solve.dense import dense_undamped
+from vib.solve.quadratic import quadratic_modes
+from vib.solve.shift_invert import sparse_undamped
+from vib.system import DampingLaw, System
+
+SIZE = 70  # enough for the sparse solver, which is called directly
+LARGE = 160  # enough for a system to be handed to the sparse solvers
+
+
+def long_chain(free=False, size=SIZE):
+    stiffness = 2 * np.eye(size) - np.eye(size, k=1) - np.eye(size, k=-1)
+    if free:
+        stiffness[0, 0] = stiffness[-1, -1] = 1
+    return sparse.csr_array(np.diag(1 + 0.3 * np.sin(np.arange(size)))), sparse.csr_array(stiffness)
+
+
+def dashpots(size=SIZE, **places):
+    damping = np.zeros((size, size))
+    for place, value in places.items():
+        index = int(place[1:])
+        damping[index, index] += value
+    return damping
+
+
+@pytest.mark.parametrize("free", [False, True])
+@pytest.mark.parametrize("case", ["dashpots", "strong", "law", "spin", "drag between"])
+def test_sparse_agrees_with_dense(case, free):
+    """The lowest eigenvalues by Arnoldi and all by the dense solver, within their bounds."""
+    mass, stiffness = long_chain(free)
+    linear = dashpots(_3=0.4, _40=0.1, _60=0.02)
+    if case == "strong":
+        linear = dashpots(_10=30.0, _50=4.0)
+    if case == "drag between":
+        linear[20:22, 20:22] += [[3, -3], [-3, 3]]
+        linear[3, 3] = linear[40, 40] = linear[60, 60] = 0.0
+    if case == "spin":
+        for i in range(40, 60, 2):
+            linear[i, i + 1] += 0.5
+            linear[i + 1, i] -= 0.5
+    count = 12
+    near = sparse_undamped(mass, stiffness, 20)
+    every = dense_undamped(mass.toarray(), stiffness.toarray())
+    law, whole_law = np.zeros((2, SIZE))
+    if case == "law":  # on the same modes in both
+        law[near.rigid : 20] = whole_law[near.rigid : 20] = 0.03
+    names = tuple(str(i) for i in range(SIZE))
+    exact = quadratic_modes(mass, linear, stiffness, every, whole_law, names)
+    found = sparse_quadratic(mass, sparse.csr_array(linear), stiffness, near, law[:20], count)
+    assert found.rigid == exact.rigid == int(free)
+    assert len(found.values) >= count
+    distance = np.abs(found.values[:count] - exact.values[:count])
+    assert (distance <= 1e-9 * np.abs(exact.values[:count])).all()
+    assert (distance <= found.movement[:count] + exact.movement[:count] + 1e-15).all()
+    elastic = slice(found.rigid, count)
+    np.testing.assert_allclose(found.condition[elastic], exact.condition[elastic], rtol=1e-5)
+    for index in range(found.rigid, count):
+        s, shape = found.values[index], found.shapes[:, index]
+        full = linear + (law[:20] * 2 * near.angular * (mass @ near.shapes)) @ (mass @ near.shapes).T
+        terms = (s**2 * (mass @ shape), s * (full @ shape), stiffness @ shape)
+        size = max(np.abs(term).max() for term in terms)
+        assert np.abs(sum(terms)).max() <= 1e-9 * size
+
+
+@settings(max_examples=30, deadline=None)
+@given(st.integers(1, 6), st.integers(0, 10**6), st.floats(1e-3, 30.0), st.booleans())
+def test_laws_of_the_damped_problem(size, seed, strength, spinning):
+    """Residuals, the sum of all eigenvalues (minus the trace of inv(M) C), passivity, and scaling."""
+    rng = np.random.default_rng(seed)
+    mass, damping, stiffness = (root @ root.T for root in rng.standard_normal((3, size, size + 1)))
+    mass = mass + 0.1 * np.trace(mass) / size * np.eye(size)
+    damping = strength * damping
+    skew = rng.standard_normal((size, size)) if spinning else np.zeros((size, size))
+    skew = skew - skew.T
+    modes = System(mass=mass, damping=damping, gyroscopic=skew, stiffness=stiffness).modes()
+    whole = np.concatenate([modes.eigenvalues, modes.eigenvalues[modes.eigenvalues.imag > 0].conj()])
+    assert len(whole) == 2 * size
+    trace = np.trace(np.linalg.solve(mass, damping))
+    assert abs(whole.sum() + trace) <= 1e-10 * np.abs(whole).sum()
+    assert (modes.eigenvalues.real <= 0).all()
+    assert modes.stable
+    for s, shape in zip(modes.eigenvalues, modes.shapes.T, strict=True):
+        terms = (s**2 * (mass @ shape), s * ((damping + skew) @ shape), stiffness @ shape)
+        assert np.abs(sum(terms)).max() <= 1e-9 * max(np.abs(term).max() for term in terms)
+    scaled = System(mass=3 * mass, damping=3 * damping, gyroscopic=3 * skew, stiffness=3 * stiffness).modes()
+    slack = 2 * np.pi * (modes.errors_hz + scaled.errors_hz) + 1e-13 * np.abs(modes.eigenvalues)
+    assert (np.abs(np.abs(scaled.eigenvalues) - np.abs(modes.eigenvalues)) <= slack).all()
+
+
+def test_rayleigh_parts():
+    mass, stiffness = long_chain()
+    found = rayleigh_parts(mass, 0.3 * mass + 2e-4 * stiffness, stiffness)
+    assert found is not None
+    np.testing.assert_allclose(np.array(found), np.array([0.3, 2e-4]), rtol=1e-12)
+    assert rayleigh_parts(mass, sparse.csr_array(dashpots(_3=1.0)), stiffness) is None
+    near = 0.3 * mass + 2e-4 * stiffness + sparse.csr_array(dashpots(_7=1e-8))
+    assert rayleigh_parts(mass, near, stiffness) is None  # a dashpot of 1e-8 is still a dashpot
+
+
+@pytest.mark.parametrize("law", [DampingLaw(), DampingLaw(ratio=0.02)])
+def test_sparse_proportional_damping(law):
+    mass, stiffness = long_chain(size=LARGE)
+    system = System(mass=mass, damping=0.01 * mass + 0.02 * stiffness, stiffness=stiffness, damping_law=law)
+    modes = system.modes(count=10)
+    assert modes.proportional
+    angular = modes.undamped_frequencies_hz * 2 * np.pi
+    np.testing.assert_allclose(modes.damping_ratios, 0.005 / angular + 0.01 * angular + law.ratio, rtol=1e-10)
+    assert modes.complete_below_hz > modes.frequencies_hz[-1]
+
+
+def test_overdamped_modes_beyond_the_search_limit_what_is_complete():
+    """C = b K with 1 / b below the modes found: slow eigenvalues gather at 1 / b and can't all be there."""
+    mass, stiffness = long_chain(size=LARGE)
+    modes = System(mass=mass, damping=50.0 * stiffness, stiffness=stiffness).modes(count=10)
+    assert modes.complete_below_hz is not None
+    assert modes.complete_below_hz * 2 * np.pi <= 1 / 50.0
+    every = System(mass=mass, damping=50.0 * stiffness, stiffness=stiffness).modes()
+    inside = every.frequencies_hz < modes.complete_below_hz
+    np.testing.assert_allclose(modes.frequencies_hz[: inside.sum()], every.frequencies_hz[inside], rtol=1e-8)
+
+
+def test_limit_in_a_large_damped_system():
+    mass, stiffness = long_chain(size=LARGE)
+    system = System(
+        mass=mass, damping=sparse.csr_array(dashpots(LARGE, _3=0.4, _90=6.0)), stiffness=stiffness
+    )
+    every, found = system.modes(), system.modes(up_to=0.03)
+    expected = every.eigenvalues[every.frequencies_hz <= 0.03]
+    np.testing.assert_allclose(found.eigenvalues, expected, rtol=1e-9)
+    assert found.complete_below_hz is None
+    assert any("not checked" in remark for remark in found.remarks)
