@@ -23,7 +23,7 @@ CORNERS = {3: [[0.0, 0.0], [2.1, 0.3], [0.4, 1.7]], 4: [[0.0, 0.0], [2.1, 0.3], 
 
 def rotation(vector: np.ndarray) -> np.ndarray:
     skew = np.array([[0, -vector[2], vector[1]], [vector[2], 0, -vector[0]], [-vector[1], vector[0], 0]])
-    return np.eye(3) + 2 * skew @ (np.eye(3) + skew) / (1 + vector @ vector)
+    return np.asarray(np.eye(3) + 2 * skew @ (np.eye(3) + skew) / (1 + vector @ vector))
 
 
 def cell(family: Family, warp: float = 0.0, seed: int = 1) -> np.ndarray:
