@@ -12,6 +12,7 @@ from vib.system import Array
 
 _SAME = 1e-6  # of the structure's extent
 _CHUNK = 2_000_000
+_SKEW = np.array([0.5377, 0.6180, 0.5736])  # a direction that no structure has any reason to share
 
 
 def oddities(layout: Layout) -> Iterator[str]:
@@ -35,7 +36,7 @@ def oddities(layout: Layout) -> Iterator[str]:
 
 def _pairs_at_one_place(places: Array, tolerance: float) -> Iterator[tuple[int, int]]:
     """Sorted along a skew line, neighbours in space are neighbours in order."""
-    shadow = places @ np.array([0.5377, 0.6180, 0.5736])
+    shadow = places @ _SKEW
     order = np.argsort(shadow, kind="stable")
     for step in range(1, len(order)):
         a, b = order[:-step], order[step:]
@@ -50,14 +51,21 @@ def _points_on_stretches(layout: Layout) -> Iterator[tuple[int, int]]:
     """(stretch, point) where a point lies between the ends of a stretch that does not join it."""
     stretches, points = layout.stretches, layout.coordinates_m
     tolerance = _SAME * layout.extent_m
+    order = np.argsort(points @ _SKEW, kind="stable")
+    shadow = points[order] @ _SKEW
+    # only points whose shadow falls into that of the stretch can lie on it
+    ends = np.sort(stretches.tips_m @ _SKEW, axis=1) + 2 * tolerance * np.array([-1, 1])
+    first, last = np.searchsorted(shadow, ends[:, 0]), np.searchsorted(shadow, ends[:, 1])
     block = max(1, _CHUNK // max(1, len(points)))
-    for first in range(0, len(stretches.labels), block):
-        mine = slice(first, first + block)
-        away = points[None] - stretches.tips_m[mine, :1]
-        x = stretches.axes[mine, 0]
-        along = np.einsum("spi,si->sp", away, x)
-        aside = np.abs(away - along[..., None] * x[:, None]).max(axis=2)
-        between = (along > tolerance) & (along < stretches.bars.length[mine, None] - tolerance)
-        for s, point in zip(*np.nonzero(between & (aside <= tolerance)), strict=True):
-            if point not in stretches.ends[first + s] and not layout.ties.unused[point]:
-                yield first + int(s), int(point)
+    for start in range(0, len(stretches.labels), block):
+        counts = (last - first)[start : start + block]
+        s = np.repeat(np.arange(start, start + len(counts)), counts)
+        step = np.arange(len(s)) - np.repeat(np.cumsum(counts) - counts, counts)
+        point = order[first[s] + step]
+        away = points[point] - stretches.tips_m[s, 0]
+        x = stretches.axes[s, 0]
+        along = (away * x).sum(axis=1)
+        aside = np.abs(away - along[:, None] * x).max(axis=1)
+        on = (aside <= tolerance) & (along > tolerance) & (along < stretches.bars.length[s] - tolerance)
+        on &= (stretches.ends[s] != point[:, None]).all(axis=1) & ~layout.ties.unused[point]
+        yield from ((int(i), int(j)) for i, j in zip(s[on], point[on], strict=True))
