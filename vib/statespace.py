@@ -168,12 +168,24 @@ def _velocity_terms(system: System) -> Matrix:
     for matrix in (system.damping, system.gyroscopic):
         if matrix is not None:
             terms = terms + dense(matrix)
-    law = system.damping_law
-    if law.ratio or law.bands or law.material:
-        from vib.solve.damping import law_matrix
+    return terms + _law_terms(system)
 
-        terms = terms + law_matrix(system)
-    return terms
+
+def _law_terms(system: System) -> Array:
+    """The damping law as a matrix (n, n), M X diag(2 ratio w) X' M over all undamped modes X.
+
+    R. W. Clough, J. Penzien, Dynamics of Structures, chapter on the damping matrix (superposition of modal
+    damping matrices).
+    """
+    law = system.damping_law
+    if not (law.ratio or law.bands or law.material):
+        return np.zeros((system.size, system.size))
+    stiffness = (system.stiffness + system.stiffness.T) / 2 if system.unsymmetric else system.stiffness
+    undamped = type(system)(mass=system.mass, stiffness=stiffness, freedoms=system.freedoms).modes()
+    frequencies = np.where(undamped.eigenvalues.imag > 0, undamped.frequencies_hz, 0.0)
+    rates = 4 * np.pi * frequencies * law.ratios(system, frequencies, undamped.shapes)
+    held = system.mass @ undamped.shapes
+    return np.asarray((held * rates) @ held.T)
 
 
 def _directions(system: System, places: Sequence[Place] | None) -> tuple[Array, tuple[str, ...]]:

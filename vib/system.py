@@ -129,6 +129,19 @@ class DampingLaw:
     bands: tuple[tuple[float, float, float], ...] = ()
     material: bool = False
 
+    def ratios(self, system: System, frequencies_hz: Array, shapes: Array) -> Array:
+        """Ratio (m,) of undamped modes at ``frequencies_hz`` (m,) with ``shapes`` (n, m); 0 for rigid."""
+        ratios = np.full(len(frequencies_hz), float(self.ratio))
+        for low, high, ratio in self.bands:
+            ratios += np.where((frequencies_hz >= low) & (frequencies_hz <= high), ratio, 0.0)
+        if self.material and system.anatomy is not None:
+            whole = np.einsum("ij,ij->j", shapes, system.stiffness @ shapes)
+            for part in system.anatomy.parts:
+                if part.damping_ratio and part.stiffness is not None:
+                    held = np.einsum("ij,ij->j", shapes, part.stiffness @ shapes)
+                    ratios += part.damping_ratio * held / np.where(whole > 0, whole, np.inf)
+        return np.where(frequencies_hz > 0, ratios, 0.0)
+
 
 @dataclass(frozen=True, kw_only=True, eq=False)
 class System:

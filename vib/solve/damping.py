@@ -9,8 +9,7 @@ import scipy.linalg
 from numpy.typing import NDArray
 
 from vib.checks import entries
-from vib.massless import acts_on, dense, root_scale, split_mass
-from vib.solve.dense import dense_undamped
+from vib.massless import acts_on, root_scale, split_mass
 from vib.solve.undamped import EPS, Array, Matrix, Undamped
 from vib.system import System
 
@@ -43,20 +42,9 @@ class ModalDamping:
 
 
 def law_ratios(system: System, undamped: Undamped) -> Array:
-    """Ratio of each undamped mode (m,) by the system's damping law; 0 for rigid-body modes."""
-    law = system.damping_law
-    frequencies = undamped.angular / (2 * np.pi)
-    ratios = np.full(len(frequencies), float(law.ratio))
-    for low, high, ratio in law.bands:
-        ratios += np.where((frequencies >= low) & (frequencies <= high), ratio, 0.0)
-    if law.material and system.anatomy is not None:
-        shapes = undamped.shapes
-        whole = np.einsum("ij,ij->j", shapes, system.stiffness @ shapes)
-        for part in system.anatomy.parts:
-            if part.damping_ratio and part.stiffness is not None:
-                held = np.einsum("ij,ij->j", shapes, part.stiffness @ shapes)
-                ratios += part.damping_ratio * held / np.where(whole > 0, whole, np.inf)
-    return np.where(undamped.values > 0, ratios, 0.0)
+    """Ratio of each undamped mode (m,) by the system's damping law; 0 for rigid-body and unstable modes."""
+    frequencies = np.where(undamped.values > 0, undamped.angular / (2 * np.pi), 0.0)
+    return system.damping_law.ratios(system, frequencies, undamped.shapes)
 
 
 def modal_damping(system: System, undamped: Undamped) -> ModalDamping:
@@ -159,15 +147,3 @@ def _leaves(system: System, matrix: Matrix, undamped: Undamped, acted: Array, ra
 
 def _at(matrix: Matrix, rows: NDArray[np.int64], columns: NDArray[np.int64]) -> Array:
     return np.asarray(matrix[rows, columns], dtype=np.float64).ravel()
-
-
-def law_matrix(system: System) -> Array:
-    """The damping law as a matrix (n, n), M X diag(2 ratio w) X' M over all undamped modes X.
-
-    Zero for rigid-body modes; R. W. Clough, J. Penzien, Dynamics of Structures, chapter on the damping matrix
-    (superposition of modal damping matrices).
-    """
-    stiffness = dense(system.stiffness)
-    undamped = dense_undamped(dense(system.mass), (stiffness + stiffness.T) / 2)
-    held = dense(system.mass) @ undamped.shapes
-    return np.asarray((held * (2 * law_ratios(system, undamped) * undamped.angular)) @ held.T)

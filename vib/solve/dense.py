@@ -20,32 +20,37 @@ from vib.solve.undamped import EPS, Array, Matrix, Undamped, elastic_ratio, roun
 # Above this ratio of highest to lowest frequency the fast singular value routine, whose error is relative to
 # the highest, is replaced by the one-sided Jacobi one. Vectors then hold 1e-16 * 1e5, frequencies its square.
 GRADED = 1e5
+JACOBI_SIZE = 1000  # beyond, the Jacobi method takes too long; error bars say what the other one leaves
 
 
 def dense_undamped(mass: Matrix, stiffness: Matrix) -> Undamped:
-    """All finite modes of symmetric dense matrices.
+    """All finite modes of symmetric matrices, (n, n); see `condensed_modes`."""
+    return condensed_modes(condense(mass, stiffness))
+
+
+def condensed_modes(reduced: Condensed) -> Undamped:
+    """All finite modes of a symmetric system whose motions without mass were eliminated.
 
     Parameters
     ----------
-    mass, stiffness
-        (n, n), dense or sparse; the mass positive semi-definite.
+    reduced
+        From `vib.massless.condense`, which raises where they can't be.
 
     Raises
     ------
-    MatrixError
-        See `vib.massless.condense`.
     AccuracyError
         The singular value routine did not converge.
     """
-    reduced = condense(mass, stiffness)
     factor = _stiffness_factor(reduced.stiffness)
     if factor is None:
-        values, local, errors = _indefinite(reduced)
+        null, (values, local, errors) = 0, _indefinite(reduced)
     else:
+        null = len(reduced.mass) - factor[0].shape[1]
         values, local, errors = _semidefinite(reduced, *factor)
     energy, terms = elastic_ratio(reduced.stiffness, local)
     mass_terms = np.einsum("ij,ij->j", np.abs(local), np.abs(reduced.mass) @ np.abs(local))
-    rigid = stores_nothing(energy, terms)
+    # Pivots of the scaled stiffness that cancel to round-off: the same criterion, before a shape is known.
+    rigid = stores_nothing(energy, terms) | (np.arange(len(values)) < null)
     values = np.where(rigid, 0.0, values)
     errors = np.where(rigid, 0.0, errors + round_off(terms, mass_terms, np.sqrt(np.abs(values))))
     order = np.lexsort((values, ~rigid))
@@ -138,7 +143,7 @@ def _singular(product: Array) -> tuple[Array, Array]:
     if product.shape[1] == 0:
         return product, np.zeros(0)
     left, values, _ = scipy.linalg.svd(product, full_matrices=False)
-    if values[0] <= GRADED * values[-1]:
+    if values[0] <= GRADED * values[-1] or len(product) > JACOBI_SIZE:
         # The Rayleigh quotient as a sum of squares: its error is the square of that of the vector.
         return np.asarray(left), np.linalg.norm(product.T @ left, axis=0)
     # joba=2: the matrix is well conditioned but for scaling of rows and columns; jobr=0: full range;

@@ -64,9 +64,10 @@ def quadratic_modes(
         slack=2 * undamped.angular * undamped.errors,
     )
     rigid = 0 if twisted else undamped.rigid
-    return _judged(
-        modal, _modal_pairs(modal, rigid), np.eye(len(rates))[:, :rigid], shapes, dense(mass), undamped
-    )
+    still = np.abs(shapes[:, :rigid])
+    terms = max(float((abs(matrix) @ still).max(initial=0.0)) for matrix in (damping, damping.T))
+    pairs = _modal_pairs(modal, rigid, terms * float(np.abs(shapes).max(initial=0.0)))
+    return _judged(modal, pairs, np.eye(len(rates))[:, :rigid], shapes, dense(mass), undamped)
 
 
 def _judged(
@@ -85,10 +86,10 @@ def _judged(
     return damped_from_pairs(lifted, lift @ still, mass, complete=True)
 
 
-def _modal_pairs(modal: Quadratic, rigid: int) -> Pairs:
+def _modal_pairs(modal: Quadratic, rigid: int, terms: float) -> Pairs:
     """Modal coordinates: displacements of rigid bodies are known eigenvectors at zero and left out."""
     size = len(modal.linear)
-    turn, free = _undamped_first(modal.linear, rigid)
+    turn, free = _undamped_first(modal.linear, rigid, terms)
     linear = turn.T @ modal.linear @ turn
     square = np.abs(np.diag(modal.constant))
     elastic = np.arange(rigid, size)
@@ -108,14 +109,17 @@ def _modal_pairs(modal: Quadratic, rigid: int) -> Pairs:
     return Pairs.found(values[upright], turn @ shapes, turn @ duals)
 
 
-def _undamped_first(linear: Array, rigid: int) -> tuple[Array, int]:
-    """A rotation of the rigid-body coordinates that puts those no velocity term touches first; how many."""
+def _undamped_first(linear: Array, rigid: int, terms: float) -> tuple[Array, int]:
+    """A rotation of the rigid-body coordinates that puts those no velocity term touches first; how many.
+
+    ``terms`` is the size of what cancels where nothing touches a motion.
+    """
     turn = np.eye(len(linear))
     if not rigid:
         return turn, 0
     touched = np.vstack([linear[:, :rigid], linear[:rigid].T])
     _, sizes, turned = scipy.linalg.svd(touched, full_matrices=False)
-    free = sizes <= CANCELLATION * EPS * max(float(np.abs(linear).max()), np.finfo(float).tiny)
+    free = sizes <= CANCELLATION * EPS * max(terms, np.finfo(float).tiny)
     order = np.argsort(~free, kind="stable")
     turn[:rigid, :rigid] = turned[order].T
     return turn, int(free.sum())

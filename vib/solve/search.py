@@ -13,14 +13,16 @@ from vib.massless import condense, dense, split_mass
 from vib.solve.arnoldi import sparse_quadratic
 from vib.solve.damped import Damped, proportional_modes
 from vib.solve.damping import ModalDamping, modal_damping
-from vib.solve.dense import dense_undamped
+from vib.solve.dense import condensed_modes
 from vib.solve.factor import negative_count
 from vib.solve.quadratic import quadratic_modes
 from vib.solve.shift_invert import count_below, sparse_undamped
 from vib.solve.undamped import CANCELLATION, EPS, Array, Matrix, Undamped
 from vib.system import System
 
-DENSE_SIZE = 150  # up to here all modes cost less than the set-up of the sparse solvers
+DENSE_SIZE = 100  # up to here all modes cost less than the set-up of the sparse solvers
+ARRAY_SIZE = 400  # dense arrays are treated as such up to here whatever is asked for
+THIN = 0.25  # and beyond as sparse where no more than this part of their entries is not zero
 LAW_MODES = 8  # undamped modes beyond those asked for that a damping law acts on beside dashpots
 FIRST_GUESS = 24  # modes looked for first where those below a frequency could not be counted
 LARGEST_DENSE = 5000  # (n, n) arrays beyond this fill the memory of an ordinary machine
@@ -55,7 +57,7 @@ def solve_system(system: System, count: int | None, limit: float | None, *, cert
         )
     problem = _Problem(system)
     small = size <= LARGEST_DENSE
-    if everything or size <= DENSE_SIZE or (small and not sparse.issparse(system.stiffness)):
+    if everything or size <= (DENSE_SIZE if sparse.issparse(system.stiffness) else ARRAY_SIZE):
         return _dense(problem, ask)
     below = None if limit is None else count_below(problem.mass, problem.straight, limit)
     most = FIRST_GUESS if below is None else below
@@ -78,6 +80,8 @@ class _Problem:
         self.system = system
         self.mass: Matrix = system.mass
         self.stiffness: Matrix = system.stiffness
+        if system.size > ARRAY_SIZE and _thin(system):
+            self.mass, self.stiffness = sparse.csr_array(system.mass), sparse.csr_array(system.stiffness)
         self.twisted = bool(system.unsymmetric and abs(self.stiffness - self.stiffness.T).max() > 0)
         self.straight: Matrix = (self.stiffness + self.stiffness.T) / 2 if self.twisted else self.stiffness
         self.spinning = system.gyroscopic is not None and abs(system.gyroscopic).max() > 0
@@ -88,10 +92,18 @@ class _Problem:
         self.real_shapes = not (self.twisted or self.spinning or lopsided)
 
 
+def _thin(system: System) -> bool:
+    """Whether dense arrays hold few enough entries to be worth the sparse solvers."""
+    filled = max(np.count_nonzero(dense(matrix)) for matrix in (system.mass, system.stiffness))
+    return not sparse.issparse(system.stiffness) and bool(filled <= THIN * system.size**2)
+
+
 def _dense(problem: _Problem, ask: _Ask) -> Solution:
     system, mass, straight = problem.system, dense(problem.mass), dense(problem.straight)
-    _check_idle(problem, mass, straight)
-    undamped = dense_undamped(mass, straight)
+    reduced = condense(mass, straight)
+    if not problem.twisted:
+        _check_idle(problem, reduced.idle)
+    undamped = condensed_modes(reduced)
     damping = modal_damping(system, undamped)
     if problem.real_shapes and damping.proportional:
         lags = np.zeros((system.size, 0))
@@ -109,9 +121,8 @@ def _dense(problem: _Problem, ask: _Ask) -> Solution:
     return Solution(kept, damping, counted)
 
 
-def _check_idle(problem: _Problem, mass: Array, straight: Array) -> None:
-    """Raise MatrixError for a motion that no matrix resists."""
-    idle = np.zeros((len(mass), 0)) if problem.twisted else condense(mass, straight).idle
+def _check_idle(problem: _Problem, idle: Array) -> None:
+    """Raise MatrixError for a motion without mass and stiffness that nothing damps either."""
     if not idle.shape[1]:
         return
     linear = dense(problem.linear)

@@ -16,7 +16,16 @@ import scipy.sparse.linalg as sparse_linalg
 
 from vib.errors import AccuracyError
 from vib.solve.factor import Factor, SingularFactorError, factorise, negative_count
-from vib.solve.undamped import Array, Matrix, Undamped, elastic_ratio, round_off, stores_nothing
+from vib.solve.undamped import (
+    CANCELLATION,
+    EPS,
+    Array,
+    Matrix,
+    Undamped,
+    elastic_ratio,
+    round_off,
+    stores_nothing,
+)
 
 # Pivots of K scaled to a unit diagonal that are smaller than this may be those of a free structure.
 NEARLY_FREE = 1e-9
@@ -125,7 +134,9 @@ def _search(mass: Matrix, stiffness: Matrix, base: Shifted, wanted: int, attempt
     values, shapes = _polish(mass, stiffness, base, vectors)
     energy, terms = elastic_ratio(stiffness, shapes)
     mass_terms = np.einsum("ij,ij->j", np.abs(shapes), abs(mass) @ np.abs(shapes))
-    rigid = stores_nothing(energy, terms)
+    # Shapes are mixed with each other by round-off; energy of that order is none of their own.
+    mixed = (CANCELLATION * EPS) ** 2 * float(np.abs(values).max(initial=0.0))
+    rigid = stores_nothing(energy, terms) | (np.abs(values) <= mixed)
     angular = np.sqrt(np.abs(np.where(rigid, 0.0, values)))
     errors = _residual_bound(mass, stiffness, base, shapes, values) + round_off(terms, mass_terms, angular)
     order = np.lexsort((values, ~rigid))
