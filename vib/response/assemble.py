@@ -20,6 +20,7 @@ from vib.system import System
 FULL_SIZE = 100  # freedoms up to which the whole first-order model is used, whatever the damping
 UNCOUPLED_SIZE = 600  # and up to which it is used where the damping leaves the modes uncoupled
 COUNTS = (30, 60, 120, 240)  # modes of a reduced model; more where the truncation is still too large
+MOST_CORRECTED_OUTPUTS = 40  # beyond these the outputs get no static corrections of their own
 TRUNCATION = 1e-3  # of the displacement peak; where more modes are not tried any further
 QUANTITIES = ("displacement", "velocity", "acceleration")
 _SAMPLES = 1500
@@ -68,20 +69,20 @@ def _motion(model: RingModel, start: Start, outputs: Sequence[Output]) -> tuple[
 
 
 def _reduced(system: System, start: Start, outputs: Sequence[Output]) -> Assembled:
-    forces = [output.direction for output in outputs]
+    few = len(outputs) <= MOST_CORRECTED_OUTPUTS
+    forces = [output.direction for output in outputs] if few else []
     given = [vector for vector in (start.displacement, start.velocity) if vector is not None]
     if start.direction is not None:
         forces.append(start.direction)
         if start.kind == "velocity":
             given.append(start.direction)
     lowest = LowestModes(system)
-    fixed = corrections(system, lowest(COUNTS[0]), np.array(forces).T)
+    fixed = corrections(system, lowest(COUNTS[0]), np.array(forces).reshape(-1, system.size).T)
     if start.kind in ("impulse", "pulse") and start.direction is not None:
         fixed = np.hstack([fixed, first_motion(system, start.direction)])
     extra = np.hstack([fixed, np.array(given).reshape(-1, system.size).T])
     earlier: Motion | None = None
-    for count in COUNTS:
-        count = min(count, system.size // 2)
+    for count in [count for count in COUNTS if count <= 0.6 * system.size]:
         model = reduced_model(system, lowest(count), extra)
         motion, remarks = _motion(model, start, outputs)
         if earlier is None:
@@ -89,7 +90,7 @@ def _reduced(system: System, start: Start, outputs: Sequence[Output]) -> Assembl
             continue
         truncation = _difference(motion, earlier, model, outputs)
         earlier = motion
-        if truncation["displacement"] <= TRUNCATION or count == system.size // 2:
+        if truncation["displacement"] <= TRUNCATION:
             break
     words = f"reduced first-order model, {len(model.matrix)} states: {count} modes and static corrections"
     return Assembled(motion, words, (*remarks, *_truncation_remarks(truncation)), truncation)

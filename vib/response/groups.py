@@ -121,8 +121,14 @@ def _split(matrix: Array, limit: float) -> tuple[list[Part], tuple[float, float]
         parts = _parts(matrix, values, vectors, labels)
         if parts is None:
             continue
+        # [v, conj v] = sqrt(2) [Re v, Im v] U with U unitary: the same singular values in real arithmetic
         basis = np.hstack(
-            [part.right if part.factor == 1 else np.hstack([part.right, part.right.conj()]) for part in parts]
+            [
+                part.right.real
+                if part.factor == 1
+                else np.sqrt(2) * np.hstack([part.right.real, part.right.imag])
+                for part in parts
+            ]
         )
         lengths = np.linalg.svd(basis, compute_uv=False)
         if lengths[-1] > 0 and lengths[0] / lengths[-1] * max(1.0, _residual(matrix, parts)) <= limit:
@@ -187,13 +193,14 @@ def _invariant_basis(matrix: Array, inside: Complex, outside: Numbers) -> Number
     return basis[:, : len(inside)] if count == len(inside) else None
 
 
-def _with_left(parts: list[Part], basis: Numbers) -> list[Part]:
+def _with_left(parts: list[Part], basis: Array) -> list[Part]:
     inverse = np.linalg.inv(basis)
     finished, row = [], 0
     for part in parts:
         size = part.right.shape[1]
         left = inverse[row : row + size]
-        left = left.real if part.factor == 1 else left
+        if part.factor == 2:
+            left = (left - 1j * inverse[row + size : row + 2 * size]) / np.sqrt(2)
         row += size * int(part.factor)
         finished.append(Part(part.eigenvalues, part.block, part.right, left, part.factor))
     return finished

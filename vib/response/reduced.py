@@ -69,6 +69,8 @@ def corrections(system: System, modes: Undamped, vectors: Array) -> Array:
         if matrix is not None:
             forces.append(_acting(matrix))
     together = np.hstack(forces)
+    if not together.shape[1]:
+        return together
     stiffness = system.stiffness
     if modes.rigid:
         elastic = modes.values[modes.rigid :]
