@@ -69,6 +69,12 @@ def test_up_to_limits_the_modes(vib, chain):
     assert [mode["number"] for mode in found["modes"]] == [1]
 
 
+def test_a_range_without_modes_says_so(vib, chain, tmp_path):
+    done = vib("modes", chain, "--up-to", "0.1 Hz")
+    assert (done.status, "No mode was found" in done.out) == (0, True)
+    assert vib("report", chain, "--up-to", "0.1 Hz", "--out", tmp_path).status == 0
+
+
 @pytest.mark.parametrize("command", ["modes", "screen"])
 def test_an_unstable_system_exits_with_1_and_says_so(vib, unstable, command):
     done = vib(command, unstable)

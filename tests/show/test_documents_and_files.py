@@ -15,7 +15,12 @@ from vib.show.files import csv_bytes, write_files, write_new
 
 
 def test_everything_becomes_plain_json():
-    document = {"a": np.array([1.0, np.nan, np.inf]), "b": np.float64(2), "c": (np.int64(3), None), 4: 1 + 2j}
+    document = {
+        "a": np.array([1.0, np.nan, np.inf]),
+        "b": np.float64(2),
+        "c": (np.int64(3), None),
+        "4": 1 + 2j,
+    }
     text = to_json(document)
     assert json.loads(text) == {
         "a": [1.0, None, None],

@@ -121,6 +121,23 @@ def test_the_wireframe_moves_as_the_places_do(frame):
     assert on_paper(np.zeros((4, 3))).shape == (4, 2)
 
 
+def test_round_off_is_not_drawn_as_a_shape(tmp_path):
+    """A bar along x that turns freely about x moves none of its points."""
+    path = tmp_path / "bar.toml"
+    path.write_text(
+        '[points]\nA = ["0 m", "0 m", "0 m"]\nB = ["1 m", "0 m", "0 m"]\n'
+        '[sections.s]\nshape = "SHS 60x60x4"\n'
+        '[[members]]\nsection = "s"\nmaterial = "structural steel"\nruns = [["A", "B"]]\n'
+        '[[supports]]\nat = ["A", "B"]\nhold = "translations"\n'
+    )
+    import vib
+
+    modes = vib.read(path).system().modes(count=2)
+    assert modes.rigid_body_count == 1
+    assert "turns on the spot: no point moves" in texts(shape_picture(modes, 0).svg())
+    assert "turns on the spot: no point moves" not in texts(shape_picture(modes, 1).svg())
+
+
 def test_a_thinned_record_keeps_its_peaks():
     times = np.linspace(0, 1, 50001)
     values = np.sin(2 * np.pi * 50 * times)

@@ -53,7 +53,13 @@ def test_aligned_figures_have_the_same_decimals_and_no_round_off():
 def test_shares():
     assert percent(0.0123) == "1.23"
     assert percent(None) == "-"
-    assert [whole_percent(share) for share in (0.0, 0.004, 0.706, math.nan)] == ["0", "<1", "71", "-"]
+    assert [whole_percent(share) for share in (0.0, 1e-30, 0.004, 0.706, math.nan)] == [
+        "0",
+        "0",
+        "<1",
+        "71",
+        "-",
+    ]
 
 
 def test_joined():

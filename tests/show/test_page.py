@@ -20,7 +20,8 @@ class Reader(html.parser.HTMLParser):
 
     def __init__(self):
         super().__init__()
-        self.tags, self.ids, self.text, self.open = Counter(), [], [], []
+        self.tags: Counter[str] = Counter()
+        self.ids, self.text, self.open = [], [], []
         self.references = []
 
     def handle_starttag(self, tag, attributes):

@@ -34,6 +34,14 @@ def test_figures_are_right_aligned_under_their_unit():
     assert ends[0] == ends[2] == ends[3]
 
 
+def test_a_heading_too_long_for_its_column_is_folded_and_never_cut():
+    columns = tuple(Column(f"heading number {i}", "% of everything") for i in range(9))
+    text = render([Table("", columns, (tuple("123" for _ in columns),))])
+    assert max(map(len, text.splitlines())) <= 80
+    assert text.count("123") == 9
+    assert "".join(text.split()).count("g") >= 18  # all of heading and everything is there
+
+
 def test_markup_and_emoji_in_names_are_plain_text():
     assert "[bold]x[/bold] :smile:" in render(
         [Sentence("[bold]x[/bold] :smile:"), table((("[red]", "1", ":x:"),))]

@@ -60,6 +60,8 @@ def whole_percent(share: float) -> str:
     """A share in whole per cent, "<1" for what is there but small."""
     if math.isnan(share):
         return MISSING
+    if abs(share) < 1e-6:
+        return "0"
     if 0 < share < 0.005:
         return "<1"
     return f"{100 * share:.0f}"

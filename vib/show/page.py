@@ -17,7 +17,7 @@ from vib.show.figures.structure import structure_picture
 from vib.show.numbers import joined, significant
 from vib.show.tables.check import axes_table, facts, part_table, reaction_table, sag_table, support_table
 from vib.show.tables.data import material_table, section_table
-from vib.show.tables.modes import energy_words, frequency_table, mass_table
+from vib.show.tables.modes import NONE_FOUND, energy_words, frequency_table, mass_table
 from vib.show.tables.ring import fall_table, peak_table, ring_facts, ring_stability, share_table
 from vib.show.tables.screen import keep_out_table, line_table, meeting_table, screening_verdict
 from vib.show.words import CAUTION, completeness, rigid_motion, stability
@@ -148,7 +148,7 @@ def _ring_words(ring: Ring, start: str) -> Sentence:
 def _error_words(modes: Modes) -> Sentence:
     elastic = modes.frequencies_hz > 0
     if not elastic.any():
-        return Sentence("No mode has a frequency above zero.", "careful")
+        return Sentence("No mode above 0 Hz was found, so there is no numerical error to state.", "careful")
     worst = float((modes.errors_hz[elastic] / modes.frequencies_hz[elastic]).max())
     return Sentence(f"Numerical error of the frequencies: at most {significant(100 * worst, 2)} %.")
 
@@ -218,7 +218,7 @@ def _modes(findings: Findings) -> Section:
         "Modes",
         "modes",
         (
-            frequency_table(modes),
+            frequency_table(modes) if modes.count else NONE_FOUND,
             stability(modes),
             *rigid_motion(modes),
             Sentence(said, "quiet"),
@@ -285,7 +285,7 @@ def _screening(findings: Findings) -> Section:
 def _evidence(findings: Findings) -> Section:
     """What makes the figures trustworthy, or says how far they are."""
     modes, ring = findings.modes, findings.ring
-    worst = significant(float(modes.condition.max()), 3)
+    worst = significant(float(modes.condition.max(initial=1.0)), 3)
     rows = [
         ("completeness", completeness(modes).text),
         ("largest error bar", _error_words(modes).text),

@@ -100,9 +100,8 @@ def _grid(block: Table) -> Grid:
             Text(heading),
             justify="right" if column.figures else "left",
             vertical="top",
-            no_wrap=column.figures,
             overflow="fold",
-            min_width=min(widest, 8) if column.figures else min(widest, 12),
+            min_width=widest if column.figures else min(widest, 12),
         )
     plain: Tone = "plain"
     tones = block.tones or (plain,) * len(block.rows)

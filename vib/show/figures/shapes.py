@@ -20,7 +20,8 @@ if TYPE_CHECKING:
 _SIZE = 0.13  # largest displacement drawn, as a share of the longest diagonal
 _MOST_BARS = 40
 _LEVELS = 12  # steps of the colour scale
-_STROKES = 24  # pieces a member is drawn with
+_STROKES = 60  # pieces a member is drawn with, about
+_NOTHING = 1e-7  # motion of points beside that of the freedoms, below which there is none
 
 
 def shape_picture(modes: Modes, index: int, up: str = "z") -> Picture:
@@ -48,7 +49,11 @@ def _draw_structure(axes: Axes, anatomy: Anatomy, shape: Array, up: str) -> None
     shift = moved(wireframe, shape)
     amplitude = np.linalg.norm(shift, axis=1)
     largest = float(amplitude.max(initial=0.0))
-    if largest > 0:
+    if largest <= _NOTHING * extent(wireframe.nodes_m) * float(np.abs(shape).max(initial=0.0)):
+        # what is left is round-off, which must not be blown up to a shape
+        shift, amplitude, largest = np.zeros_like(shift), np.zeros_like(amplitude), 0.0
+        axes.text(0.5, 0.02, "turns on the spot: no point moves", transform=axes.transAxes, ha="center")
+    else:
         shift = shift * (_SIZE * extent(wireframe.nodes_m) / largest)
         amplitude = amplitude / largest
     bare_axes(axes)
@@ -59,7 +64,7 @@ def _draw_structure(axes: Axes, anatomy: Anatomy, shape: Array, up: str) -> None
     for part, nodes in wireframe.lines:
         track = list(nodes)
         if part in members:
-            between = max(1, round(_STROKES / len(track)))
+            between = min(6, max(1, round(_STROKES / len(track))))
             sizes = smooth(amplitude[track][:, None], between)[:, 0]
             _collect(strokes, on_paper(smooth(away[track], between), up), sizes)
         else:

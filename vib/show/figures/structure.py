@@ -46,6 +46,9 @@ def structure_picture(study: Study, system: System, frames: Iterable[tuple[Array
         handles += _draw_springs(axes, study, size, up)
         handles += _draw_supports(axes, study, up)
         _name_points(axes, study, up)
+        # a study of one place only is not blown up to fill the sheet
+        middle = on_paper(places.mean(axis=0), up)
+        axes.update_datalim(middle + 0.12 * size * np.array([[-1.0, -1.0], [1.0, 1.0]]))
         axes.autoscale_view()
         draw_triad(axes, up, 0.085)
         handles += drawn_frames
@@ -187,7 +190,7 @@ def _label(axes: Axes, place: Sequence[float] | Array, text: str, bold: bool = F
     axes.annotate(
         short(text, 24),
         (float(place[0]), float(place[1])),
-        xytext=(6, 4) if bold else (3.5, 2.5),
+        xytext=(6, -11) if bold else (3.5, 2.5),
         textcoords="offset points",
         fontsize=7.5 if bold else 6.5,
         fontweight="bold" if bold else "normal",

@@ -15,9 +15,12 @@ if TYPE_CHECKING:
     from vib.modes import Array, Modes
 
 
+NONE_FOUND = Sentence("No mode was found in the range asked for.", "careful")
+
+
 def modes_blocks(modes: Modes, title: str) -> list[Block]:
     """All that the ``modes`` command shows."""
-    blocks: list[Block] = [Heading(title), frequency_table(modes)]
+    blocks: list[Block] = [Heading(title), frequency_table(modes) if modes.count else NONE_FOUND]
     blocks += [stability(modes), *rigid_motion(modes), completeness(modes)]
     blocks.append(Sentence(f"Damping: {modes.damping_note}"))
     masses = mass_table(modes)
@@ -56,7 +59,7 @@ def frequency_table(modes: Modes) -> Table:
 def mass_table(modes: Modes) -> Table | None:
     """Effective mass of each mode as a share of the whole, along and about the axes; None without anatomy."""
     anatomy = modes.system.anatomy
-    if modes.effective_mass is None or anatomy is None:
+    if modes.effective_mass is None or anatomy is None or not modes.count:
         return None
     whole = np.diag(anatomy.rigid_mass)
     shares = np.divide(
@@ -68,10 +71,10 @@ def mass_table(modes: Modes) -> Table | None:
     rows.append(("sum", *(whole_percent(share) for share in shares.sum(axis=0))))
     columns = (
         Column("mode"),
-        *(Column(f"along {name}", "% of mass") for name in "xyz"),
-        *(Column(f"about {name}", "% at origin") for name in "xyz"),
+        *(Column(f"along {name}", "%") for name in "xyz"),
+        *(Column(f"about {name}", "%") for name in "xyz"),
     )
-    return Table("Effective mass, of the whole", columns, tuple(rows), sums=1)
+    return Table("Effective mass, share of the whole (turns: about the origin)", columns, tuple(rows), sums=1)
 
 
 def energy_words(shares: Mapping[str, Array] | None, index: int, most: int = 3) -> str:
