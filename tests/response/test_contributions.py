@@ -63,7 +63,7 @@ def test_parts_of_matrices_with_defective_blocks(seed):
     random = np.random.default_rng(seed)
     jordan = np.zeros((6, 6))
     jordan[:2, :2] = [[-1.0, 1.0], [0.0, -1.0]]
-    jordan[2:, 2:] = [[-0.25, 3, 1, 0], [-3, -0.25, 0, 1], [0, 0, -0.25, 3], [0, 0, -3, -0.25]]
+    jordan[2:, 2:] = np.array([[-0.25, 3, 1, 0], [-3, -0.25, 0, 1], [0, 0, -0.25, 3], [0, 0, -3, -0.25]])
     lower = np.tril(random.integers(-1, 2, (6, 6)).astype(float), -1) + np.eye(6)
     matrix = lower @ jordan @ np.round(np.linalg.inv(lower))
     parts = take_apart(matrix)
@@ -89,7 +89,7 @@ def test_uncoupled_states_are_split_exactly():
     """A critically damped oscillator beside an ordinary one: only the first needs the exponential."""
     matrix = np.zeros((4, 4))
     matrix[:2, :2] = [[0, 1], [-4, -4]]
-    matrix[2:, 2:] = [[0, 1], [-9, -0.1]]
+    matrix[2:, 2:] = [[0.0, 1.0], [-9.0, -0.1]]
     parts = take_apart(matrix)
     assert [part.single for part in parts.parts] == [False, True]
     rebuilt = sum(part.factor * (part.right @ part.block @ part.left).real for part in parts.parts)

@@ -222,7 +222,7 @@ def test_pull_and_release_starts_from_the_static_shape_at_rest():
 
 def test_damping_law_gives_the_ratios_it_states():
     system = System(mass=MASS, stiffness=STIFFNESS, damping_law=DampingLaw(ratio=0.02))
-    ratios = [row.damping_ratio for row in system.ring(impulse=1.0, at="1").modes]
+    ratios = np.array([row.damping_ratio for row in system.ring(impulse=1.0, at="1").modes], float)
     np.testing.assert_allclose(ratios, 0.02, rtol=1e-12)
     np.testing.assert_allclose(ratios, system.modes().damping_ratios, rtol=1e-12)
 

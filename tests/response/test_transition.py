@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from typing import Any
+
 import mpmath
 import numpy as np
 import pytest
@@ -14,7 +16,7 @@ from vib.response.transition import Propagator, constant_input, transition
 
 # Source of all cases below: the project's reference collection, entries STM-2R, STM-2C, STM-3M, STM-3R,
 # STM-D2, STM-D3, STM-PROP, STM-RB: partial fractions of companion matrices, checked there with mpmath.
-REFERENCES = {
+REFERENCES: dict[str, Any] = {
     "2R": ([[0, 1], [-2.17, -3.8]], 0.2, "eigenvalues",
            [[0.966020593091677, 0.138089082418388], [-0.299653308847902, 0.441282079901803]]),
     "2R 1 s": ([[0, 1], [-2.17, -3.8]], 1.0, "eigenvalues",
@@ -65,7 +67,11 @@ def test_stiff_reference(t):
     matrix = np.array([[0, 1, 0], [0, 0, 1], [-100.0, -10100.01, -10001.01]])
     expected = exact(matrix, t)
     found = transition(matrix, t)
-    assert np.linalg.norm(found - expected) <= 1e-12 * np.linalg.norm(expected)
+    assert norm(found - expected) <= 1e-12 * norm(expected)
+
+
+def norm(matrix):
+    return float(np.linalg.norm(matrix))
 
 
 def exact(matrix, t):
@@ -98,11 +104,11 @@ def test_random_defective_matrices_with_50_digits(seed):
     matrix = defective(seed, 5)
     for t in (0.3, 2.0, -0.7):
         expected = exact(matrix, t)
-        scale = np.linalg.norm(expected)
-        assert np.linalg.norm(transition(matrix, t) - expected) <= 1e-12 * scale
+        scale = norm(expected)
+        assert norm(transition(matrix, t) - expected) <= 1e-12 * scale
         start = np.arange(1.0, 6.0)
         moved = Propagator(matrix).apply(start, [t])[0]
-        assert np.linalg.norm(moved - expected @ start) <= 1e-12 * scale * np.linalg.norm(start)
+        assert norm(moved - expected @ start) <= 1e-12 * scale * norm(start)
 
 
 @pytest.mark.parametrize("gap", [1e-3, 1e-6, 1e-9, 1e-12])
@@ -151,8 +157,8 @@ spans = st.floats(-1.5, 1.5, allow_subnormal=False)
 @given(matrices, spans)
 def test_random_matrices_with_50_digits(matrix, t):
     expected = exact(matrix, t)
-    allowed = 1e-12 * max(1.0, np.linalg.norm(expected))
-    assert np.linalg.norm(transition(matrix, t) - expected) <= allowed
+    allowed = 1e-12 * max(1.0, norm(expected))
+    assert norm(transition(matrix, t) - expected) <= allowed
 
 
 @settings(max_examples=60, deadline=None)
@@ -161,27 +167,27 @@ def test_laws(matrix, one, two):
     """Semigroup, inverse, derivative, determinant."""
     propagator = Propagator(matrix)
     first, second = propagator(one), propagator(two)
-    size = np.linalg.norm(first) * np.linalg.norm(second)
+    size = norm(first) * norm(second)
     np.testing.assert_allclose(propagator(one + two), first @ second, rtol=0, atol=1e-11 * size)
     back = propagator(-one)
     np.testing.assert_allclose(
-        first @ back, np.eye(len(matrix)), rtol=0, atol=1e-11 * np.linalg.norm(first) * np.linalg.norm(back)
+        first @ back, np.eye(len(matrix)), rtol=0, atol=1e-11 * norm(first) * norm(back)
     )
     # central difference: error h^2/6 |A|^3 |Phi| and rounding eps/h |Phi|
     h = 1e-5
     slope = (propagator(one + h) - propagator(one - h)) / (2 * h)
-    norm = max(1.0, np.linalg.norm(matrix))
-    np.testing.assert_allclose(slope, matrix @ first, rtol=0, atol=1e-7 * norm**3 * np.linalg.norm(first))
+    largest = max(1.0, norm(matrix))
+    np.testing.assert_allclose(slope, matrix @ first, rtol=0, atol=1e-7 * largest**3 * norm(first))
     n = len(matrix)
     assert np.linalg.det(first) == pytest.approx(
-        np.exp(np.trace(matrix) * one), abs=1e-11 * max(1.0, np.linalg.norm(first) ** n)
+        np.exp(np.trace(matrix) * one), abs=1e-11 * max(1.0, norm(first) ** n)
     )
 
 
 @pytest.mark.parametrize("matrix", [[[0, 1], [-5.45, -0.8]], [[0, 1], [-1.96, -2.8]], [[0, 1], [0, 0]]])
 @pytest.mark.parametrize(
     "times",
-    [np.linspace(0, 7, 300), np.linspace(-7, 0, 50), np.linspace(2, -3, 41), np.array([3.0, 0.1, 3.0, 0, 5])],
+    [np.linspace(0, 7, 90), np.linspace(-7, 0, 50), np.linspace(2, -3, 41), np.array([3.0, 0.1, 3.0, 0, 5])],
     ids=["uniform", "backwards", "through zero", "any order"],
 )
 def test_many_times_are_each_as_one_time(matrix, times):
@@ -202,20 +208,25 @@ def test_long_uniform_records_take_few_exponentials(monkeypatch):
 
     calls = []
     original = scipy.linalg.expm
-    monkeypatch.setattr(scipy.linalg, "expm", lambda a: calls.append(1) or original(a))
-    transition([[0, 1], [-1.96, -2.8]], np.linspace(0, 5, 10_000))
+
+    def counted(matrix):
+        calls.append(1)
+        return original(matrix)
+
+    monkeypatch.setattr(scipy.linalg, "expm", counted)
+    transition([[0.0, 1.0], [-1.96, -2.8]], np.linspace(0, 5, 10_000))
     assert len(calls) <= 201  # twice the root of 10 000, and one
 
 
 def test_constant_input_reference():
     """STM-STEP of the reference collection: unit step on STM-2C from rest, 1 s."""
-    found = constant_input([[0, 1], [-5.45, -0.8]], [[0.0], [1.0]], 1.0)
+    found = constant_input([[0.0, 1.0], [-5.45, -0.8]], [[0.0], [1.0]], 1.0)
     np.testing.assert_allclose(found.input_effect[:, 0], [0.24948363283832, 0.2173309357197], atol=1e-12)
 
 
 def test_constant_input_on_a_free_mass():
     """Singular A: a mass pushed by a constant force moves as t^2 / 2."""
-    found = constant_input([[0, 1], [0, 0]], [[0.0], [1.0]], [0.5, 2.0])
+    found = constant_input([[0.0, 1.0], [0.0, 0.0]], [[0.0], [1.0]], [0.5, 2.0])
     np.testing.assert_allclose(found.input_effect[:, :, 0], [[0.125, 0.5], [2.0, 2.0]], rtol=1e-14)
     assert found.method == "matrix exponential"
 
@@ -228,7 +239,7 @@ def test_constant_input_with_50_digits(seed):
     augmented = np.block([[matrix, push], [np.zeros((2, 6))]])
     expected = exact(augmented, 1.3)
     found = constant_input(matrix, push, 1.3)
-    scale = np.linalg.norm(expected)
+    scale = norm(expected)
     np.testing.assert_allclose(found.transition, expected[:4, :4], rtol=0, atol=1e-12 * scale)
     np.testing.assert_allclose(found.input_effect, expected[:4, 4:], rtol=0, atol=1e-12 * scale)
 
@@ -242,7 +253,7 @@ def test_growth_past_the_largest_number_is_an_error(matrix):
 
 
 def test_decay_to_nothing_is_no_error():
-    assert np.all(transition([[0, 1], [-1.96, -2.8]], 1e5) == 0)
+    assert np.all(transition([[0.0, 1.0], [-1.96, -2.8]], 1e5) == 0)
     assert np.all(transition([[-3.0]], 1e5) == 0)
 
 
@@ -252,7 +263,7 @@ def test_times_past_the_digits_of_the_matrix_are_an_error():
 
 
 def test_complex_matrices_stay_complex_and_real_ones_real():
-    assert transition([[0, 1], [-5.45, -0.8]], 1.0).dtype == np.float64
+    assert transition([[0.0, 1.0], [-5.45, -0.8]], 1.0).dtype == np.float64
     np.testing.assert_allclose(transition([[1j]], np.pi), [[-1]], atol=1e-15)
 
 
@@ -260,7 +271,7 @@ def test_bad_input_is_named():
     with pytest.raises(ShapeError, match=r"A: expected shape \(2, 2\), got \(2, 3\)"):
         transition(np.zeros((2, 3)), 1.0)
     with pytest.raises(MatrixError, match="row 2, column 1 is nan"):
-        transition([[0, 1], [np.nan, 0]], 1.0)
+        transition([[0.0, 1.0], [np.nan, 0.0]], 1.0)
     with pytest.raises(AccuracyError, match="finite number of seconds"):
         transition([[0.0]], np.inf)
     with pytest.raises(ShapeError, match="start"):

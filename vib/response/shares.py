@@ -26,7 +26,7 @@ class RingMode:
     of its own (clustered). ``amplitude``
     (p,) is abs(weight), in m or rad, NaN where clustered; ``share_of_peak`` (p,) is its signed part of each
     output's displacement at that output's peak: the shares of all eigenvalues and of what stays add to 1
-    (NaN for an output that does not move).
+    (0 for an output that does not move).
     """
 
     number: int
@@ -60,7 +60,7 @@ def shares_at(found: Contributions, times: Array) -> tuple[Array, Array]:
 def ring_modes(found: Contributions, peak_times: Array, rotational: Flags) -> tuple[RingMode, ...]:
     """Rows for the eigenvalues that matter to some output that moves, slowest first."""
     shares, peaks = shares_at(found, peak_times)
-    shares[~significant(peaks, rotational)] = np.nan
+    shares[~significant(peaks, rotational)] = 0.0
     noticed = significant(peaks, rotational, NOTICED)
     sizes = np.abs(np.where(found.clustered, 0.0, found.weights))
     total = sizes.sum(axis=1, keepdims=True)
