@@ -1,4 +1,4 @@
-"""From matrices of pieces, springs and bodies to sparse matrices on the freedoms."""
+"""From matrices of pieces, springs and bodies to sparse matrices of every part."""
 
 from __future__ import annotations
 
@@ -15,61 +15,60 @@ from vib.structure.layout import Layout
 from vib.structure.members import material_of, pieces_of
 from vib.structure.rigid import arms
 from vib.structure.springs import GROUND
+from vib.structure.stacks import components_of, reduce_stack, scatter, unstack
 from vib.system import Array, Matrix, Part
 
 Indices = NDArray[np.intp]
 
 
 @dataclass(frozen=True, eq=False)
-class Raw:
-    """One part on the rows of `Nodes.transform`, before anything is eliminated; None: has none."""
-
-    name: str
-    kind: str
-    stiffness: Matrix | None
-    mass: Matrix | None
-    dashpot: Matrix | None = None
-    damping_ratio: float | None = None
-
-
-@dataclass(frozen=True, eq=False)
 class Assembly:
-    """A layout cut into pieces: its nodes, and its parts on the components of the nodes."""
+    """A layout cut into pieces: its nodes, and its parts on the rows of `Nodes.transform`.
+
+    The matrices are stacks (see `stacks`), one of ``stiffness`` for each member group and then each spring
+    table, one of ``mass`` for each member group and then each body, one of ``dashpot`` for each spring
+    table. ``names`` of all parts: member groups, spring tables, bodies.
+    """
 
     layout: Layout
     counts: Indices
     nodes: Nodes
-    raw: tuple[Raw, ...]
+    names: tuple[str, ...]
+    stiffness: Matrix
+    mass: Matrix
+    dashpot: Matrix
 
     @property
     def size(self) -> int:
         """How many freedoms."""
         return len(self.nodes.freedoms)
 
-    def reduce(self, raw: Matrix | None) -> Matrix | None:
-        """T' X T on the freedoms, symmetric to the last bit."""
-        if raw is None:
-            return None
-        transform = self.nodes.transform
-        found = transform.T @ (raw @ transform)
-        found = 0.5 * (found + found.T)
-        found.eliminate_zeros()
-        return sparse.csr_array(found)
+    def group_name(self, i: int) -> str:
+        """The name of a member group."""
+        return self.names[i]
 
-    def parts(self) -> tuple[Part, ...]:
-        """Every part on the freedoms."""
-        return tuple(
-            Part(
-                part.name, part.kind, self.reduce(part.stiffness), self.reduce(part.mass), part.damping_ratio
-            )
-            for part in self.raw
-        )
+    def spring_name(self, i: int) -> str:
+        """The name of a spring table."""
+        return self.names[len(self.layout.study.members) + i]
 
-    def raw_sum(self, what: str) -> Matrix:
-        """Stiffness, mass or dashpot of everything on the rows of `Nodes.transform`."""
-        size = self.nodes.transform.shape[0]
-        found = [getattr(part, what) for part in self.raw if getattr(part, what) is not None]
-        return sum(found[1:], found[0]) if found else sparse.csr_array((size, size))
+    def body_name(self, i: int) -> str:
+        """The name of a body."""
+        return self.names[len(self.layout.study.members) + len(self.layout.study.springs) + i]
+
+    def reduced(self, stack: Matrix) -> Matrix:
+        """A stack on the freedoms, each matrix symmetric to the last bit."""
+        return reduce_stack(stack, self.nodes.transform)
+
+    def parts(self, stiffness: Matrix, mass: Matrix) -> tuple[Part, ...]:
+        """Every part, from stacks of the shape of ``stiffness`` and ``mass``; None for what a part lacks."""
+        study = self.layout.study
+        groups, springs, bodies = (len(table) for table in (study.members, study.springs, study.bodies))
+        stiff = [matrix if matrix.nnz else None for matrix in unstack(stiffness)] + [None] * bodies
+        heavy: list[Matrix | None] = [matrix if matrix.nnz else None for matrix in unstack(mass)]
+        heavy[groups:groups] = [None] * springs
+        kinds = ["members"] * groups + ["springs"] * springs + ["body"] * bodies
+        ratios = [material_of(study, i)[2] for i in range(groups)] + [None] * (springs + bodies)
+        return tuple(Part(*row) for row in zip(self.names, kinds, stiff, heavy, ratios, strict=True))
 
     def rigid_motion(self) -> Array:
         """Components of every node when everything moves as one body, about the origin; no twists."""
@@ -84,65 +83,53 @@ def assemble(layout: Layout, counts: Indices) -> Assembly:
     Raises
     ------
     ModelError
-        There would be too many freedoms.
+        There would be too many freedoms, or a member of impossible dimensions.
     """
     nodes = number_nodes(layout, counts)
-    names = _part_names(layout)
     size = nodes.transform.shape[0]
-    raw = [*_member_parts(layout, counts, nodes, names), *_spring_parts(layout, size, names)]
-    for i, mass in enumerate(layout.bodies.mass):
-        rows = components_of(np.array([[len(layout.point_names) + i]]))
-        raw.append(Raw(names["bodies", i], "body", None, scatter(mass[None], rows, size)))
-    return Assembly(layout, counts, nodes, tuple(raw))
+    stiffness, mass = _members(layout, counts, nodes)
+    springs, dashpots = _springs(layout, size)
+    bodies = layout.bodies.mass
+    numbers = np.arange(len(bodies))
+    rows = components_of(len(layout.point_names) + numbers[:, None])
+    heavy = scatter(bodies, rows, size, numbers, len(bodies))
+    return Assembly(
+        layout,
+        counts,
+        nodes,
+        _part_names(layout),
+        sparse.vstack([stiffness, springs], format="csr"),
+        sparse.vstack([mass, heavy], format="csr"),
+        dashpots,
+    )
 
 
-def components_of(nodes: Indices) -> Indices:
-    """(e, 6 m) rows of the six components of nodes (e, m)."""
-    return (6 * nodes[:, :, None] + np.arange(6)).reshape(len(nodes), 6 * nodes.shape[1])
-
-
-def scatter(blocks: Array, index: Indices, size: int) -> Matrix:
-    """Sum (e, m, m) blocks of elements with rows (e, m) into a sparse (size, size) array."""
-    rows = np.broadcast_to(index[:, :, None], blocks.shape).reshape(-1)
-    columns = np.broadcast_to(index[:, None, :], blocks.shape).reshape(-1)
-    values = blocks.reshape(-1)
-    some = values != 0
-    return sparse.coo_array((values[some], (rows[some], columns[some])), shape=(size, size)).tocsr()
-
-
-def _part_names(layout: Layout) -> dict[tuple[str, int], str]:
+def _part_names(layout: Layout) -> tuple[str, ...]:
     """The names of the tables; where two kinds share a name, the kind is added."""
     study = layout.study
-    words = {"members": "members", "springs": "springs", "bodies": "body"}
-    named = {(kind, i): row.name for kind in words for i, row in enumerate(getattr(study, kind))}
-    times = Counter(named.values())
-    return {key: f"{name} ({words[key[0]]})" if times[name] > 1 else name for key, name in named.items()}
+    tables = (("members", study.members), ("springs", study.springs), ("body", study.bodies))
+    named = [(row.name, word) for word, table in tables for row in table]
+    times = Counter(name for name, _ in named)
+    return tuple(f"{name} ({word})" if times[name] > 1 else name for name, word in named)
 
 
-def _member_parts(
-    layout: Layout, counts: Indices, nodes: Nodes, names: dict[tuple[str, int], str]
-) -> list[Raw]:
-    stiffness, mass = layout.piece_matrices(counts)
-    size = nodes.transform.shape[0]
+def _members(layout: Layout, counts: Indices, nodes: Nodes) -> tuple[Matrix, Matrix]:
+    """Stacks of stiffness and mass, one of each member group."""
+    size, groups = nodes.transform.shape[0], len(layout.study.members)
     group = layout.stretches.group[nodes.stretch]
-    found = []
-    for i in range(len(layout.study.members)):
-        mine = group == i
-        which, chain = nodes.stretch[mine], nodes.chain[mine]
-        _, _, ratio = material_of(layout.study, i)
-        rows = components_of(chain)
-        own = [scatter(blocks[which], rows, size) for blocks in (stiffness, mass)]
-        twisting = nodes.twists[mine] >= 0
-        if twisting.any():
-            rows = np.concatenate(
-                [nodes.twists[mine][twisting, None], rows[twisting, 3:6], rows[twisting, 9:12]], axis=1
-            )
-            own = [
-                known + scatter(blocks, rows, size)
-                for known, blocks in zip(own, _twists(layout, counts, which[twisting]), strict=True)
-            ]
-        found.append(Raw(names["members", i], "members", own[0], own[1], damping_ratio=ratio))
-    return found
+    rows = components_of(nodes.chain)
+    stiffness, mass = (
+        scatter(blocks[nodes.stretch], rows, size, group, groups) for blocks in layout.piece_matrices(counts)
+    )
+    soft = nodes.twists >= 0
+    if not soft.any():
+        return stiffness, mass
+    rows = np.concatenate([nodes.twists[soft, None], rows[soft, 3:6], rows[soft, 9:12]], axis=1)
+    more = (
+        scatter(blocks, rows, size, group[soft], groups)
+        for blocks in _twists(layout, counts, nodes.stretch[soft])
+    )
+    return stiffness + next(more), mass + next(more)
 
 
 def _twists(layout: Layout, counts: Indices, stretch: Indices) -> tuple[Array, Array]:
@@ -156,17 +143,14 @@ def _twists(layout: Layout, counts: Indices, stretch: Indices) -> tuple[Array, A
     return stiffness, mass
 
 
-def _spring_parts(layout: Layout, size: int, names: dict[tuple[str, int], str]) -> list[Raw]:
+def _springs(layout: Layout, size: int) -> tuple[Matrix, Matrix]:
+    """Stacks of stiffness and dashpots, one of each spring table."""
     springs = layout.springs
     grounded = springs.ends[:, 1] == GROUND
     # a grounded spring has no second node: its blocks there are zero and fall away
     rows = components_of(np.where(grounded[:, None], springs.ends[:, :1], springs.ends))
-    found = []
-    for i in range(len(layout.study.springs)):
-        mine = springs.owner == i
-        both = [
-            scatter(springs.matrices(constants)[mine], rows[mine], size) if constants[mine].any() else None
-            for constants in (springs.stiffness, springs.dashpot)
-        ]
-        found.append(Raw(names["springs", i], "springs", both[0], None, both[1]))
-    return found
+    stiffness, dashpots = (
+        scatter(springs.matrices(constants), rows, size, springs.owner, len(layout.study.springs))
+        for constants in (springs.stiffness, springs.dashpot)
+    )
+    return stiffness, dashpots

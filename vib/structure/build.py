@@ -6,7 +6,6 @@ import math
 from dataclasses import dataclass
 
 import numpy as np
-import scipy.sparse as sparse
 from numpy.typing import NDArray
 
 from vib.errors import MatrixError, ModelError
@@ -15,6 +14,7 @@ from vib.structure.division import counts_for, first_counts
 from vib.structure.layout import Layout, read_layout
 from vib.structure.picture import draw, find_places
 from vib.structure.remarks import assumptions
+from vib.structure.stacks import add_up
 from vib.study import Study
 from vib.study.machine import rayleigh_constants
 from vib.system import Anatomy, DampingLaw, Freedom, Matrix, Part, System
@@ -89,12 +89,12 @@ def to_system(assembly: Assembly, remarks: tuple[str, ...] = ()) -> System:
     study, layout = assembly.layout.study, assembly.layout
     if not assembly.size:
         raise ModelError("supports: they hold everything, so that nothing can vibrate; hold fewer components")
-    parts = assembly.parts()
-    mass = _total(assembly, [part.mass for part in parts])
-    stiffness = _total(assembly, [part.stiffness for part in parts])
-    dashpots = [assembly.reduce(part.dashpot) for part in assembly.raw if part.dashpot is not None]
+    stiffnesses, masses = assembly.reduced(assembly.stiffness), assembly.reduced(assembly.mass)
+    stiffness, mass = add_up(stiffnesses), add_up(masses)
+    dashpots = add_up(assembly.reduced(assembly.dashpot))
+    parts = assembly.parts(stiffnesses, masses)
     rigid = assembly.rigid_motion()
-    pushed = assembly.raw_sum("mass") @ rigid
+    pushed = add_up(assembly.mass) @ rigid
     anatomy = Anatomy(
         places=find_places(assembly),
         parts=parts,
@@ -107,18 +107,11 @@ def to_system(assembly: Assembly, remarks: tuple[str, ...] = ()) -> System:
     return System(
         mass=mass,
         stiffness=stiffness,
-        damping=_damping(study, mass, stiffness, dashpots),
+        damping=_damping(study, mass, stiffness, [dashpots] if dashpots.nnz else []),
         freedoms=assembly.nodes.freedoms,
         damping_law=_law(study, parts),
         anatomy=anatomy,
     )
-
-
-def _total(assembly: Assembly, matrices: list[Matrix | None]) -> Matrix:
-    found = [matrix for matrix in matrices if matrix is not None]
-    if not found:
-        return sparse.csr_array((assembly.size, assembly.size))
-    return sparse.csr_array(sum(found[1:], found[0]))
 
 
 def _damping(study: Study, mass: Matrix, stiffness: Matrix, dashpots: list[Matrix]) -> Matrix | None:

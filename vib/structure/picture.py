@@ -37,17 +37,15 @@ def draw(assembly: Assembly) -> Wireframe:
     rows = (6 * np.arange(len(nodes.places_m))[:, None] + np.arange(3)).reshape(-1)
     lines: list[tuple[str, tuple[int, ...]]] = []
     for s, count in enumerate(assembly.counts.tolist()):
-        name = assembly.raw[stretches.group[s]].name
+        name = assembly.group_name(stretches.group[s])
         lines.append((name, nodes.along(s, count)))
         for end in (0, 1):
             if stretches.reach_m[s, end].any():
                 lines.append((name, (int(stretches.ends[s, end]), int(nodes.ends[s, end]))))
-    first_spring = len(layout.study.members)
     for (a, b), owner in zip(springs.ends.tolist(), springs.owner.tolist(), strict=True):
         if b != GROUND:
-            lines.append((assembly.raw[first_spring + owner].name, (a, b)))
-    first_body = first_spring + len(layout.study.springs)
+            lines.append((assembly.spring_name(owner), (a, b)))
     for i, carriers in enumerate(layout.bodies.carriers):
         centre = len(layout.point_names) + i
-        lines += [(assembly.raw[first_body + i].name, (centre, point)) for point in carriers]
+        lines += [(assembly.body_name(i), (centre, point)) for point in carriers]
     return Wireframe(nodes.places_m, sparse.csr_array(nodes.transform[rows]), tuple(lines))

@@ -12,6 +12,7 @@ from numpy.typing import NDArray
 
 from vib.structure.assembly import Assembly
 from vib.structure.springs import GROUND
+from vib.structure.stacks import add_up
 from vib.system import Array, Matrix
 
 STANDARD_GRAVITY = (
@@ -62,10 +63,10 @@ def find_sag(assembly: Assembly, up: Array) -> tuple[Sag | None, tuple[str, ...]
     up
         (3,) unit vector; gravity pulls the other way.
     """
-    raw_stiffness = assembly.raw_sum("stiffness")
-    load = assembly.raw_sum("mass") @ (assembly.rigid_motion()[:, :3] @ (-STANDARD_GRAVITY * up))
+    raw_stiffness = add_up(assembly.stiffness)
+    load = add_up(assembly.mass) @ (assembly.rigid_motion()[:, :3] @ (-STANDARD_GRAVITY * up))
     transform = assembly.nodes.transform
-    stiffness = assembly.reduce(raw_stiffness)
+    stiffness = assembly.reduced(raw_stiffness)
     pull = transform.T @ load
     moved = _solve(stiffness, pull)
     if moved is None:

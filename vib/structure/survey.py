@@ -14,6 +14,7 @@ from vib.structure.layout import read_layout
 from vib.structure.remarks import assumptions
 from vib.structure.sag import STANDARD_GRAVITY, Reaction, Sag, find_sag
 from vib.structure.springs import GROUND
+from vib.structure.stacks import add_up
 from vib.study import Study
 from vib.study.quantities import COMPONENTS
 from vib.system import Array
@@ -112,7 +113,7 @@ def survey(study: Study) -> Survey:
     layout = read_layout(study)
     assembly = assemble(layout, first_counts(layout))
     rigid = assembly.rigid_motion()
-    whole = rigid.T @ (assembly.raw_sum("mass") @ rigid)
+    whole = rigid.T @ (add_up(assembly.mass) @ rigid)
     mass, centre, inertia = _about_centre(whole)
     sag, sag_remarks = find_sag(assembly, up)
     return Survey(
@@ -153,7 +154,7 @@ def _part_masses(assembly: Assembly, rigid: Array) -> tuple[PartMass, ...]:
     stretches = assembly.layout.stretches
     along = rigid[:, 0]
     found = []
-    for i, part in enumerate(assembly.raw):
+    for i, part in enumerate(assembly.parts(assembly.stiffness, assembly.mass)):
         mass = 0.0 if part.mass is None else float(along @ (part.mass @ along))
         members = part.kind == "members"
         length = float(stretches.bars.length[stretches.group == i].sum()) if members else None
@@ -168,7 +169,7 @@ def _run_axes(assembly: Assembly) -> tuple[RunAxes, ...]:
     for s, entry in enumerate(stretches.entries):
         start, end = (layout.point_names[point] for point in stretches.ends[s])
         x, y, z = (_triple(axis) for axis in stretches.axes[s])
-        name = assembly.raw[stretches.group[s]].name
+        name = assembly.group_name(stretches.group[s])
         middle = _triple(stretches.tips_m[s].mean(axis=0))
         length = float(stretches.bars.length[s])
         found.append(RunAxes(name, entry.split(" ")[0], start, end, length, middle, x, y, z))
