@@ -81,7 +81,7 @@ def test_a_name_in_another_script_draws_without_a_warning():
 
 def test_bare_matrices_are_drawn_as_bars(bare):
     shown = texts(shape_picture(bare.modes, 0).svg())
-    assert {"freedom", "1", "2"} <= set(shown)
+    assert {"freedom (hollow: a quarter cycle later)", "1", "2"} <= set(shown)
 
 
 @pytest.mark.parametrize("up", ["x", "y", "z"])

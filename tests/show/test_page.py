@@ -111,6 +111,13 @@ def test_the_page_is_the_same_every_time(page, frame):
     assert "2026-01-02" in page
 
 
+def test_the_verdict_names_what_drives_which_mode(page, frame):
+    verdict = page[page.index('class="verdict') : page.index("<h2>")]
+    for row in frame.screening.objections:
+        assert f"Mode {row.mode} at" in verdict
+    assert frame.screening.objections
+
+
 def test_evidence_is_told(page):
     text = " ".join("".join(read(page).text).split())
     for wanted in ("complete below", "± Hz", "condition number", "of the whole mass", "freedoms"):

@@ -19,7 +19,13 @@ from vib.show.tables.check import axes_table, facts, part_table, reaction_table,
 from vib.show.tables.data import material_table, section_table
 from vib.show.tables.modes import NONE_FOUND, energy_words, frequency_table, mass_table
 from vib.show.tables.ring import fall_table, peak_table, ring_facts, ring_stability, share_table
-from vib.show.tables.screen import keep_out_table, line_table, meeting_table, screening_verdict
+from vib.show.tables.screen import (
+    keep_out_table,
+    line_table,
+    meeting_table,
+    objection_words,
+    screening_verdict,
+)
 from vib.show.words import CAUTION, completeness, rigid_motion, stability
 from vib.units import UnitSystem
 
@@ -128,6 +134,7 @@ def verdict(findings: Findings) -> list[Sentence]:
         )
     elif modes.stable or screening.objections:
         told.append(screening_verdict(screening))
+        told += [Sentence(words) for words in objection_words(screening)]
     if modes.stable:
         told.append(first)
     told += rigid_motion(modes)

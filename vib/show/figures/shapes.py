@@ -125,15 +125,6 @@ def _draw_bars(axes: Axes, modes: Modes, shape: Any) -> None:
         axes.plot(numbers, real, "-", color=COLOURS[0], lw=1.2)
     if np.iscomplexobj(shape):
         axes.plot(numbers, np.imag(shape) / largest, "D", mfc="white", mec=COLOURS[1], ms=4, ls="none")
-        axes.text(
-            0.99,
-            0.97,
-            "filled: now, hollow: a quarter cycle later",
-            transform=axes.transAxes,
-            ha="right",
-            va="top",
-            fontsize=6.5,
-        )
     axes.set_ylim(-1.25, 1.25)
     axes.set_xlim(0.4, len(shape) + 0.6)
     axes.set_ylabel("motion (largest = 1)")
@@ -146,4 +137,4 @@ def _draw_bars(axes: Axes, modes: Modes, shape: Any) -> None:
             rotation=35 if slant else 0,
             ha="right" if slant else "center",
         )
-    axes.set_xlabel("freedom")
+    axes.set_xlabel("freedom (hollow: a quarter cycle later)" if np.iscomplexobj(shape) else "freedom")

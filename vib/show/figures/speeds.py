@@ -17,6 +17,7 @@ if TYPE_CHECKING:
     from vib.screening.screening import SpeedDiagram
 
 _MOST_LABELS = 14
+_ORDERS = tuple(colour for colour in COLOURS if colour not in (BAD, COLOURS[4], INK))
 
 
 def speed_pictures(screening: Screening, modes: Modes) -> list[Picture]:
@@ -60,7 +61,7 @@ def _draw_orders(axes: Axes, diagram: SpeedDiagram) -> list[tuple[Any, str]]:
     handles = []
     speeds = np.array([0.0, diagram.speed_to])
     for number, order in enumerate(diagram.orders):
-        colour = COLOURS[number % 6]
+        colour = _ORDERS[number % len(_ORDERS)]
         line = order * speeds
         axes.fill_between(
             speeds * 60,

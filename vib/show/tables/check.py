@@ -6,7 +6,7 @@ from collections.abc import Sequence
 from typing import TYPE_CHECKING, Any
 
 from vib.show.blocks import Block, Bullets, Column, Facts, Heading, Table, text_column, unit_label
-from vib.show.numbers import MISSING, aligned, significant
+from vib.show.numbers import MISSING, aligned, joined, significant
 from vib.show.words import CAUTION, caution
 from vib.units import UnitSystem, shown, shown_unit, text
 
@@ -52,7 +52,10 @@ def facts(study: Study, survey: Survey, units: UnitSystem) -> Facts:
         rows.append(("greatest sag", f"{greatest} at {survey.sag.greatest_at}"))
     rows.append(("freedoms", f"{survey.freedoms} (members are cut finer where accuracy asks for it)"))
     if study.matrices is not None:
-        rows = [("freedoms", str(survey.freedoms))]
+        given = [
+            name for name in ("mass", "stiffness", "damping", "gyroscopic") if getattr(study.matrices, name)
+        ]
+        rows = [("matrices", joined(given)), ("freedoms", str(survey.freedoms))]
     rows.append(("accuracy asked", f"{100 * study.accuracy:.3g} % of each frequency"))
     return Facts(tuple(rows))
 

@@ -34,7 +34,7 @@ def start_words(arguments: Mapping[str, Any], units: UnitSystem) -> str:
     if "pulse" in arguments:
         peak, lasts = arguments["pulse"]
         size = _text(peak, ("force", "moment")[turning], units)
-        return f"half-sine pulse of {size} and {_text(lasts, 'time', units)} at {place}"
+        return f"half-sine pulse of {size} lasting {_text(lasts, 'time', units)} at {place}"
     for name, (words, *kinds) in _STARTS.items():
         if name in arguments:
             return words.format(_text(arguments[name], kinds[turning], units), place)

@@ -36,6 +36,20 @@ def screening_verdict(screening: Screening) -> Sentence:
     return Sentence(screening.verdict, "good" if screening.clear else "careful")
 
 
+def objection_words(screening: Screening, most: int = 6) -> list[str]:
+    """Each mode that counts, and what would drive it."""
+    found: dict[int, list[Row]] = {}
+    for row in screening.objections:
+        found.setdefault(row.mode, []).append(row)
+    told = [
+        f"Mode {mode} at {significant(rows[0].frequency_hz, 4)} Hz: "
+        + joined([f"{_line_words(row.line)} (off by {_signed_percent(row.separation)} %)" for row in rows])
+        for mode, rows in found.items()
+    ]
+    more = [f"and {len(told) - most} more, see the screening"] if len(told) > most else []
+    return told[:most] + more
+
+
 def line_table(screening: Screening) -> Table:
     """What shakes: every order and fixed frequency with its band, and the mode nearest to it."""
     rows = []
