@@ -65,17 +65,14 @@ def split_mass(mass: Matrix) -> MassSplit:
     diagonal = np.asarray(mass.diagonal())
     heavy: list[_Column] = []
     light: list[_Column] = [_Column(int(i)) for i in np.flatnonzero(diagonal == 0)]
-    for block in _blocks(mass):
-        if len(block) == 1:
-            heavy.append(_Column(int(block[0])))
-            continue
-        scale = root_scale(diagonal[block])
-        inner = mass[block][:, block] if sparse.issparse(mass) else mass[np.ix_(block, block)]
-        scaled = scale[:, None] * dense(inner) * scale
-        slack = 4 * len(block) * EPS
-        if scipy.linalg.lapack.dpotrf(scaled - slack * np.eye(len(block)), lower=1)[1] == 0:
+    with_mass = np.flatnonzero(diagonal != 0)
+    blocks = [with_mass] if _regular(_scaled_block(mass, with_mass)) else _blocks(mass, with_mass)
+    for block in blocks:
+        scaled = _scaled_block(mass, block)
+        if len(block) == 1 or _regular(scaled):
             heavy += [_Column(int(i)) for i in block]
             continue
+        scale, slack = root_scale(diagonal[block]), 4 * len(block) * EPS
         values, vectors = scipy.linalg.eigh(scaled)
         for value, vector in zip(values, vectors.T, strict=True):
             (light if value <= slack else heavy).append(_Column(-1, block, scale * vector))
@@ -97,11 +94,24 @@ class _Column(NamedTuple):
     values: Any = None
 
 
-def _blocks(mass: Matrix) -> list[NDArray[np.intp]]:
-    """The freedoms with mass, grouped by what the off-diagonal masses couple."""
-    from scipy.sparse.csgraph import connected_components
+def _scaled_block(mass: Matrix, rows: NDArray[np.intp]) -> Array:
+    inner = mass[rows][:, rows] if sparse.issparse(mass) else mass[np.ix_(rows, rows)]
+    scale = root_scale(np.asarray(mass.diagonal())[rows])
+    return np.asarray(scale[:, None] * dense(inner) * scale)
 
-    kept = np.flatnonzero(np.asarray(mass.diagonal()) != 0)
+
+def _regular(scaled: Array) -> bool:
+    """Whether no eigenvalue of a block of unit diagonal is within round-off of zero."""
+    slack = 4 * len(scaled) * EPS
+    return (
+        not len(scaled) or scipy.linalg.lapack.dpotrf(scaled - slack * np.eye(len(scaled)), lower=1)[1] == 0
+    )
+
+
+def _blocks(mass: Matrix, kept: NDArray[np.intp]) -> list[NDArray[np.intp]]:
+    """The freedoms with mass, grouped by what the off-diagonal masses couple."""
+    from scipy.sparse.csgraph import connected_components  # 20 ms to import, and seldom needed
+
     pattern = sparse.csr_array(mass)[kept][:, kept]
     number, labels = connected_components(pattern, directed=False)
     order = np.argsort(labels, kind="stable")

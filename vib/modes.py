@@ -199,7 +199,8 @@ def find_modes(system: System, *, count: int | None = None, up_to: str | float |
     >>> find_modes(vib.System(mass=[[2.0]], damping=[[0.8]], stiffness=[[8.0]])).damping_ratios.round(12)
     array([0.1])
     """
-    limit = _limit(up_to)
+    limit_hz = _limit(up_to)
+    limit = None if limit_hz is None else 2 * np.pi * limit_hz
     if count is not None and (isinstance(count, bool) or int(count) != count or count < 1):
         raise ModelError(f"count: a whole number of modes from 1 is needed, got {count!r}.")
     found = converged_modes(system, None if count is None else int(count), limit)
@@ -228,7 +229,7 @@ def find_modes(system: System, *, count: int | None = None, up_to: str | float |
         condition=damped.condition,
         stable=not bool((damped.values.real > damped.movement).any()),
         rigid_body_count=damped.rigid,
-        complete_below_hz=None if damped.certified is None else damped.certified / (2 * np.pi),
+        complete_below_hz=_complete(damped.certified, limit, limit_hz),
         proportional=damped.proportional,
         participation=factors,
         effective_mass=None if factors is None else factors**2,
@@ -242,7 +243,7 @@ def find_modes(system: System, *, count: int | None = None, up_to: str | float |
 
 
 def _limit(up_to: str | float | None) -> float | None:
-    """The highest angular frequency asked for, rad/s."""
+    """The highest frequency asked for, Hz."""
     if up_to is None:
         return None
     if isinstance(up_to, str):
@@ -253,7 +254,16 @@ def _limit(up_to: str | float | None) -> float | None:
         value = float(up_to)
     if not np.isfinite(value) or value <= 0:
         raise ModelError(f"up_to: a positive frequency is needed, got {up_to!r}.")
-    return 2 * np.pi * value
+    return value
+
+
+def _complete(certified: float | None, limit: float | None, limit_hz: float | None) -> float | None:
+    """Hz; the limit itself, unrounded, where the modes are complete up to it."""
+    if certified is None:
+        return None
+    if limit is not None and limit_hz is not None and certified >= limit:
+        return max(certified / (2 * np.pi), limit_hz)
+    return certified / (2 * np.pi)
 
 
 def _after(shares: Mapping[str, Array] | None, rigid: int) -> Mapping[str, Array] | None:
