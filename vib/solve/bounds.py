@@ -32,7 +32,7 @@ class Found:
     """Approximations by ascending eigenvalue.
 
     ``order`` (m,) are their numbers in ``ritz``, ``values`` (m,) the eigenvalues, ``bounds`` (m,) bound the
-    error of each ``theta``, ``good`` (m,) tells whether it has converged; ``everything``: there are no others.
+    error of each ``theta``, ``good`` (m,) tells whether it has converged; ``everything``: these are all.
     """
 
     ritz: Ritz
@@ -102,6 +102,8 @@ def theta_bounds(ritz: Ritz) -> Array:
     low, high = theta - residuals, theta + residuals
     below = np.concatenate([[np.inf], theta[firsts[1:]] - np.maximum.reduceat(high, firsts)[:-1]])
     above = np.concatenate([np.minimum.reduceat(low, firsts)[1:] - theta[lasts[:-1]], [np.inf]])
+    # towards 0, where the spectrum of the operator gathers, others not seen yet may be as near as any
+    below[0] = np.inf if theta[0] < 0 else 0.0
     gap = np.minimum(below, above)
     with np.errstate(divide="ignore", invalid="ignore"):
         squared = np.where(gap > 0, whole**2 / gap, np.inf)[group]

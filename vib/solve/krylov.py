@@ -1,8 +1,8 @@
 """A block Krylov basis of inv(K - shift M) M, orthonormal in the mass inner product, bounded in memory.
 
 Block Lanczos with full reorthogonalisation (R. G. Grimes, J. G. Lewis, H. D. Simon, SIAM J. Matrix Anal.
-Appl. 15 (1994) 228-272) and thick restart (K. Wu, H. Simon, SIAM J. Matrix Anal. Appl. 22 (2000) 602-616). The
-projected matrix is kept whole, so blocks may shrink where columns depend on each other and grow where new
+Appl. 15 (1994) 228-272) and thick restart (K. Wu, H. Simon, SIAM J. Matrix Anal. Appl. 22 (2000) 602-616).
+The projected matrix is kept whole, so blocks may shrink where columns depend on each other and grow where new
 directions are added, and a restart needs no special case.
 """
 

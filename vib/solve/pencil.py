@@ -19,7 +19,7 @@ class Pencil:
 
     def __init__(self, mass: Matrix, stiffness: Matrix, backend: str | None = None) -> None:
         """Take symmetric sparse matrices (n, n); ``backend`` as in `vib.solve.backends.choice.factor`."""
-        self.mass, self.stiffness = _plain(mass), _plain(stiffness)
+        self.mass, self.stiffness = _plain(mass), sparse.csr_array(stiffness)
         self.size = int(self.mass.shape[0])
         both = _both(self.stiffness, self.mass)
         self._pattern = (both.indices, both.indptr)

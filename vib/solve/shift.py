@@ -17,8 +17,8 @@ from vib.solve.undamped import elastic_ratio, stores_nothing
 
 # First shift of a free structure, as a share of the highest eigenvalue: far above round-off in the stiffness,
 # below the elastic modes of most. It goes down by STEP_DOWN while it is beyond HIGHEST times the first
-# elastic eigenvalue (the search would be slow), and up to that where it is below LOWEST times it (digits would
-# be lost).
+# elastic eigenvalue, where the search would be slow, and up to that where it is below LOWEST times it, where
+# digits would get lost.
 FREE_SHIFT = 1e-7
 LOWEST, HIGHEST = 1e-6, 10.0
 STEP_DOWN = 1e-3

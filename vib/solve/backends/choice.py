@@ -8,13 +8,17 @@ import numpy as np
 import scipy.sparse as sparse
 
 from vib.solve.backends import pardiso
-from vib.solve.backends.interface import Factor, FactorError, Matrix
+from vib.solve.backends.fronts import Fronts
+from vib.solve.backends.interface import Factor, FactorError, Matrix, TooLargeError
 from vib.solve.backends.superlu import SuperLU
 
 # Below this many equations the quarter of a second that loading PARDISO takes is more than it saves.
 WORTH_LOADING = 6000
 
-BACKENDS = (pardiso.Pardiso.backend, SuperLU.backend)
+# Below this many SuperLU is as quick as our own dense blocks, which have to be laid out first.
+WORTH_DISSECTING = 4000
+
+BACKENDS = (pardiso.Pardiso.backend, Fronts.backend, SuperLU.backend)
 
 
 def factor(
@@ -38,7 +42,7 @@ def factor(
     upper_only
         ``matrix`` holds the upper triangle of a symmetric matrix, every diagonal entry stored.
     backend
-        "PARDISO" or "SuperLU" and no other; None for automatic choice.
+        One of `BACKENDS` and no other; None for automatic choice.
 
     Returns
     -------
@@ -48,7 +52,8 @@ def factor(
     Raises
     ------
     FactorError
-        No method gave solutions that satisfy the equations; the message lists what each said.
+        No method gave solutions that satisfy the equations (the message lists what each said), or the memory
+        does not suffice.
     """
     if backend not in (None, *BACKENDS):
         raise ValueError(f"backend: expected one of {', '.join(BACKENDS)}, got {backend!r}.")
@@ -60,6 +65,8 @@ def factor(
     for attempt in _attempts(given, symmetric=symmetric, definite=definite, backend=backend):
         try:
             return attempt()
+        except TooLargeError:
+            raise
         except FactorError as error:
             said.append(str(error))
     raise FactorError(" ".join(["The matrix could not be factorised.", *said]))
@@ -86,11 +93,15 @@ def _attempts(
     matrix: sparse.csr_array, *, symmetric: bool, definite: bool, backend: str | None
 ) -> Iterator[Callable[[], Factor]]:
     """Ways to factorise, best first."""
-    wanted = backend == pardiso.Pardiso.backend
-    if wanted or (backend is None and matrix.shape[0] >= WORTH_LOADING and pardiso.installed()):
+    size = matrix.shape[0]
+    if backend == pardiso.Pardiso.backend or (
+        backend is None and size >= WORTH_LOADING and pardiso.installed()
+    ):
         yield lambda: pardiso.Pardiso(matrix, symmetric=symmetric, definite=definite)
         if symmetric and not definite:
             yield lambda: pardiso.Pardiso(matrix, symmetric=True, matching=True)
+    if symmetric and (backend == Fronts.backend or (backend is None and size >= WORTH_DISSECTING)):
+        yield lambda: Fronts(matrix)
     if backend in (None, SuperLU.backend):
         yield lambda: SuperLU(matrix, symmetric=symmetric)
         if symmetric:

@@ -17,8 +17,8 @@ Matrix = Any
 EPS = float(np.finfo(float).eps)
 
 # Normwise backward error (N. J. Higham, Accuracy and Stability of Numerical Algorithms, 2nd ed., SIAM 2002,
-# theorem 7.1) of the two test solutions: above ENOUGH a step of iterative refinement is added to every solution, above
-# TOLERATED after MOST_REFINEMENTS steps the factorisation is refused.
+# theorem 7.1) of the two test solutions: above ENOUGH a step of iterative refinement is added to every
+# solution, above TOLERATED after MOST_REFINEMENTS steps the factorisation is refused.
 ENOUGH = 1e-13
 TOLERATED = 1e-11
 MOST_REFINEMENTS = 3
@@ -26,6 +26,25 @@ MOST_REFINEMENTS = 3
 
 class FactorError(AccuracyError):
     """A factorisation that failed, or whose solutions do not satisfy the equations."""
+
+
+class TooLargeError(FactorError):
+    """A factorisation that would not fit into the memory at hand; no other library would do with less."""
+
+
+def check_memory(backend: str, needed: float) -> None:
+    """Raise TooLargeError where ``needed`` bytes are more than the machine has free."""
+    try:
+        with open("/proc/meminfo", encoding="ascii") as listing:
+            told = dict(line.split(":", 1) for line in listing)
+        free = 1024.0 * float(told["MemAvailable"].split()[0])
+    except (OSError, KeyError):  # not told on this system
+        return
+    if needed > free:
+        raise TooLargeError(
+            f"{backend}: the factorisation needs about {needed / 1e9:.1f} GB of memory, {free / 1e9:.1f} GB "
+            "are free; use a coarser mesh or a machine with more memory."
+        )
 
 
 class Factor(ABC):
@@ -98,7 +117,7 @@ class Factor(ABC):
         solution = self._scaled_solve(wide)
         for _ in range(self.refinements):
             solution += self._scaled_solve(wide - self._product(solution))
-        return np.asarray(solution.reshape(columns.shape))
+        return np.asarray(solution).reshape(columns.shape)
 
     def __enter__(self) -> Self:
         return self
@@ -143,19 +162,19 @@ class Factor(ABC):
     def _scaled_solve(self, right: Array) -> Array:
         solution = self._solve(self._scale[:, None] * right)
         solution *= self._scale[:, None]
-        return solution
+        return np.asarray(solution)
 
     def _scaled_product(self, vectors: Array) -> Array:
-        product = self._matrix @ vectors
+        product = np.asarray(self._matrix @ vectors)
         if self.symmetric:
             product += self._matrix.T @ vectors - self._matrix.diagonal()[:, None] * vectors
-        return np.asarray(product)
+        return product
 
     def _product(self, vectors: Array) -> Array:
         return self._scaled_product(vectors / self._scale[:, None]) / self._scale[:, None]
 
     def _check(self) -> None:
-        """Solve for two right-hand sides, refine until they are right; refuse the factor if they stay wrong."""
+        """Solve for two right-hand sides, refine until they are right; refuse the factor if they stay off."""
         ramp = np.arange(self.size) / self.size
         right = np.stack([np.cos(1e3 * ramp) + 0.5, np.sin(7e5 * ramp**2)], axis=1)
         largest = abs(self._matrix).sum(axis=0).max() * (2 if self.symmetric else 1)

@@ -17,7 +17,7 @@ import numpy as np
 import scipy.sparse as sparse
 from numpy.typing import NDArray
 
-from vib.solve.backends.interface import Array, Factor, FactorError
+from vib.solve.backends.interface import Array, Factor, FactorError, check_memory
 
 SYMMETRIC, DEFINITE, GENERAL = -2, 2, 11
 ANALYSE, NUMBERS, SOLVE, RELEASE = 11, 22, 33, -1
@@ -98,6 +98,8 @@ class Pardiso(Factor):
         self._set_entries()
         self._alive = True
         self._call(ANALYSE)
+        at_start, to_stay, numbers = (1024.0 * int(kilobytes) for kilobytes in self._entries[14:17])
+        check_memory(self.backend, max(at_start, to_stay + numbers))
 
     def _numbers(self) -> None:
         if not self._alive:
