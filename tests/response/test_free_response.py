@@ -286,3 +286,23 @@ def test_massless_freedom_with_a_dashpot_lags():
     expected = (np.exp(np.outer(times, roots)) @ weights).real
     np.testing.assert_allclose(found.displacement_m[:, 0], expected, atol=1e-14)
     assert found.displacement_m[0, 1] == pytest.approx(0, abs=1e-15)
+
+
+@pytest.mark.parametrize(
+    ("stiffness", "remarked"),
+    [(1.0, False), (1e-20, True), (1e-30, False)],
+    ids=["ordinary", "eigenvalues just serve", "matrix exponential"],
+)
+def test_very_slow_motion(stiffness, remarked):
+    """A spring next to nothing: within 1 s only the first 1e-10 or 1e-15 of a period is seen."""
+    system = System(mass=[[1.0]], stiffness=[[stiffness]])
+    found = system.ring(impulse=1.0, at="1", duration=1.0)
+    assert any("nearly cancel" in remark for remark in found.remarks) == remarked
+    expected = np.sin(np.sqrt(stiffness)) / np.sqrt(stiffness)
+    assert found.displacement_m[-1, 0] == pytest.approx(expected, rel=1e-5 if remarked else 1e-13)
+
+
+def test_motion_lost_in_cancellation_is_an_error():
+    system = System(mass=[[1.0]], stiffness=[[1e-22]])
+    with pytest.raises(vib.errors.AccuracyError, match="cancel so far that rounding is"):
+        system.ring(impulse=1.0, at="1", duration=1e-3)

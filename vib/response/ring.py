@@ -14,11 +14,11 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 from numpy.typing import ArrayLike
 
-from vib.errors import ModelError
+from vib.errors import AccuracyError, ModelError
 from vib.response.assemble import QUANTITIES, assemble
-from vib.response.contributions import Contributions, contributions_of
+from vib.response.contributions import Contributions, Flags, contributions_of
 from vib.response.decay import FALLS, Fall, Peak, envelope_fall, peak_of, record_fall
-from vib.response.exponential import Array
+from vib.response.exponential import EPS, Array
 from vib.response.motion import Motion
 from vib.response.outputs import choose_outputs
 from vib.response.sampling import Sampling, sample, significant
@@ -28,6 +28,9 @@ from vib.system import System
 
 if TYPE_CHECKING:
     from vib.modes import Modes
+
+_WORTH_SAYING = 1e-8
+_NOTHING_LEFT = 1e-3
 
 
 @dataclass(frozen=True, kw_only=True, eq=False)
@@ -228,7 +231,7 @@ def ring(
     found = contributions_of(motion)
     sampling = sample(found, motion, rotational, length)
     record = sampling.times if asked is None else asked
-    state = _state_remarks(found)
+    state = (*_state_remarks(found), *_rounding_remarks(found, sampling, rotational))
     return Ring(
         system=divided,
         start=begun.words,
@@ -250,6 +253,23 @@ def ring(
         remarks=(*state, *assembled.remarks, *choice, *sampling.remarks, *notes),
         sampling=sampling,
     )
+
+
+def _rounding_remarks(found: Contributions, sampling: Sampling, rotational: Flags) -> tuple[str, ...]:
+    """What is lost where large parts cancel, as in the first instant of a very slow motion."""
+    times = np.linspace(0.0, float(sampling.times[-1]), 200)
+    peaks = np.abs(found.motion(times) - found.constant).max(axis=0)
+    moving = significant(peaks, rotational) & (peaks > 0)
+    parts = np.abs(np.where(found.clustered, 0.0, found.weights)).sum(axis=1)
+    lost = EPS * found.motion.parts.condition * float((parts[moving] / peaks[moving]).max(initial=0.0))
+    if lost > _NOTHING_LEFT:
+        raise AccuracyError(
+            f"ring: over {times[-1]:.3g} s the parts of the motion cancel so far that rounding is {lost:.1e} "
+            "of the peak; ask for a longer time, or leave out the stiffness that is next to nothing"
+        )
+    if lost > _WORTH_SAYING:
+        return (f"Parts of the motion nearly cancel; rounding may reach {lost:.0e} of the peaks.",)
+    return ()
 
 
 def _asked_times(times: ArrayLike | None, duration: Quantity | None) -> tuple[Array | None, float | None]:
