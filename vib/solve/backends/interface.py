@@ -165,9 +165,9 @@ class Factor(ABC):
         return np.asarray(solution)
 
     def _scaled_product(self, vectors: Array) -> Array:
-        product = np.asarray(self._matrix @ vectors)
+        product: Array = self._matrix @ vectors
         if self.symmetric:
-            product += self._matrix.T @ vectors - self._matrix.diagonal()[:, None] * vectors
+            product = product + self._matrix.T @ vectors - self._matrix.diagonal()[:, None] * vectors
         return product
 
     def _product(self, vectors: Array) -> Array:
