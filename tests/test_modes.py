@@ -420,6 +420,38 @@ def test_rotor_with_internal_damping(speed, slow, imaginary, fast):
     assert (modes.damping_ratios < -1e-6).any() == (speed > 300)
 
 
+@pytest.mark.parametrize("drag", [0.0, 0.1])
+def test_free_motion_of_an_unsymmetric_stiffness(drag):
+    """K (1, 1) = 0, K not symmetric: s^2 (s^2 + 2.5); with drag s (s + d) (s^2 + d s + 2.5)."""
+    modes = System(
+        mass=np.eye(2), damping=drag * np.eye(2), stiffness=[[1.0, -1], [-1.5, 1.5]], unsymmetric=True
+    ).modes()
+    exact = [0, *([-drag] if drag else []), -drag / 2 + 1j * np.sqrt(2.5 - drag**2 / 4)]
+    np.testing.assert_allclose(modes.eigenvalues, exact, rtol=1e-14, atol=1e-14)
+    assert modes.rigid_body_count == 1
+    assert modes.eigenvalues[0] == 0
+    assert modes.stable
+
+
+def test_overhung_disc():
+    """Den Hartog, Mechanical Vibrations (overhung disc) [ROT-OVH], rows of 200 and 500 rad/s."""
+    bending, length, inertia, polar = 206e9 * np.pi * 0.03**4 / 64, 0.5, 0.12, 0.24
+    plane = bending * np.array([[12 / length**3, -6 / length**2], [-6 / length**2, 4 / length]])
+    rows = {
+        200.0: [605.82963936, 94.103277828, 120.09810119, 979.83481599],
+        500.0: [459.36579215, 76.069092338, 137.32025821, 1398.1146263],
+    }
+    for speed, expected in rows.items():
+        gyroscopic = np.zeros((4, 4))
+        gyroscopic[1, 3], gyroscopic[3, 1] = polar * speed, -polar * speed
+        modes = System(
+            mass=np.diag([16, inertia, 16, inertia]),
+            gyroscopic=gyroscopic,
+            stiffness=np.kron(np.eye(2), plane),
+        ).modes()
+        np.testing.assert_allclose(modes.frequencies_hz * TAU, sorted(expected), rtol=1e-9)
+
+
 def test_buckled_stiffness_is_unstable():
     modes = System(mass=np.eye(2), stiffness=np.diag([4.0, -9.0])).modes()
     np.testing.assert_array_equal(np.sort(modes.eigenvalues.real), [-3, 0, 3])

@@ -22,6 +22,9 @@ from vib.solve.pairs import Pairs, Quadratic, damped_from_pairs, improve
 from vib.solve.shift_invert import Shifted, shifted
 from vib.solve.undamped import CANCELLATION, EPS, Array, Matrix, Undamped
 
+# Pivots of a stiffness scaled to a unit diagonal below this leave no digit of the slowest eigenvalues.
+SINGULAR = 1e-14
+
 
 def sparse_quadratic(
     mass: Matrix, linear: Matrix, stiffness: Matrix, undamped: Undamped, law: Array, count: int
@@ -119,6 +122,11 @@ class _Problem:
                 "The stiffness is singular although no rigid-body motion was found; "
                 "some entries are too far apart."
             ) from problem
+        if shift == 0 and factor.least_pivot < SINGULAR:
+            raise AccuracyError(
+                "The stiffness is singular or nearly so although its symmetric part is not; "
+                "a large system like this can't be solved yet."
+            )
         return _Problem(
             mass=mass,
             linear=linear,

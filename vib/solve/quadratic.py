@@ -47,7 +47,7 @@ def quadratic_modes(
     lagging = (twisted and light.shape[1] > 0) or acts_on(damping, light) or acts_on(damping.T, light)
     rates = 2 * law * undamped.angular
     shapes = undamped.shapes
-    if lagging or (twisted and undamped.rigid):
+    if lagging or (twisted and (undamped.rigid or _null(dense(stiffness))[0].shape[1])):
         held = mass @ shapes
         whole = Quadratic(
             mass=dense(mass),
@@ -147,15 +147,20 @@ def _null_motions(whole: Quadratic) -> tuple[Array, int]:
 
     A motion that velocities do not resist either makes two, at one position and at one steady speed.
     """
-    scale = root_scale(np.abs(whole.constant).max(axis=1))
-    left, sizes, right = scipy.linalg.svd(scale[:, None] * whole.constant * scale)
-    null = sizes <= CANCELLATION * EPS * sizes[0]
-    still, push = scale[:, None] * right[null].T, scale[:, None] * left[:, null]
-    if not null.any():
+    still, push = _null(whole.constant)
+    if not still.shape[1]:
         return still, 0
     resisted = push.T @ whole.linear @ still
     terms = np.abs(push).T @ np.abs(whole.linear) @ np.abs(still)
     coast = scipy.linalg.svdvals(resisted) <= CANCELLATION * EPS * max(
         float(terms.max()), np.finfo(float).tiny
     )
-    return still, int(null.sum() + coast.sum())
+    return still, int(still.shape[1] + coast.sum())
+
+
+def _null(stiffness: Array) -> tuple[Array, Array]:
+    """Motions that a perhaps unsymmetric stiffness does not resist, and those it can't push, (n, z) each."""
+    scale = root_scale(np.abs(stiffness).max(axis=1))
+    left, sizes, right = scipy.linalg.svd(scale[:, None] * stiffness * scale)
+    null = sizes <= CANCELLATION * EPS * sizes[0]
+    return scale[:, None] * right[null].T, scale[:, None] * left[:, null]
