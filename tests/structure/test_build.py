@@ -259,6 +259,12 @@ def test_a_structure_that_is_held_altogether(describe):
         study.system()
 
 
+def test_a_structure_without_mass(bars):
+    study = bars({"material": "light"}, materials={"light": {"like": "steel", "density": 0}})
+    with pytest.raises(ModelError, match="nothing that can move has a mass"):
+        study.system()
+
+
 def test_several_faults_come_together(bars):
     study = bars({"up": "x"}, points={**POINTS, "C": [2, 0, 0]})
     with pytest.raises(ModelError, match=r"(?s)no length.*up lies along"):

@@ -146,6 +146,7 @@ def test_sway_stiffness_of_a_portal(describe, cut, ratio, feet):
             {"name": "columns", "section": "column", "material": "m", "runs": [["A", "B"], ["D", "C"]]},
             {"name": "beam", "section": "beam", "material": "m", "runs": [["B", "C"]]},
         ],
+        bodies=[{"name": "deck", "mass": 1.0, "carried_by": "B"}],
         supports=[{"at": ["A", "D"], "hold": "all" if feet == "clamped" else ["x", "y", "z", "rx", "rz"]}],
     )
     system = cut(study, 2)

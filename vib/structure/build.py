@@ -84,13 +84,15 @@ def to_system(assembly: Assembly, remarks: tuple[str, ...] = ()) -> System:
     Raises
     ------
     ModelError
-        Supports hold every freedom.
+        Supports hold every freedom, or nothing that can move has a mass.
     """
     study, layout = assembly.layout.study, assembly.layout
     if not assembly.size:
         raise ModelError("supports: they hold everything, so that nothing can vibrate; hold fewer components")
     stiffnesses, masses = assembly.reduced(assembly.stiffness), assembly.reduced(assembly.mass)
     stiffness, mass = add_up(stiffnesses), add_up(masses)
+    if not mass.nnz:
+        raise ModelError("nothing that can move has a mass: give a material a density, or add [[bodies]]")
     dashpots = add_up(assembly.reduced(assembly.dashpot))
     parts = assembly.parts(stiffnesses, masses)
     rigid = assembly.rigid_motion()
