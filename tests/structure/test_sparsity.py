@@ -148,7 +148,8 @@ def test_rigid_motion_of_the_whole() -> None:
     assert shift @ (whole.mass @ shift) == pytest.approx(7850.0, rel=1e-13)
 
 
-def test_memory_is_that_of_the_matrices_and_little_more() -> None:
+def test_memory_is_that_of_the_matrices_and_of_one_chunk(monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr(sparsity, "_CHUNK_VALUES", 100_000)
     nodes, cells = box(16)
     groups = [Group(FAMILIES["hexahedron"], cells, STEEL)]
     tracemalloc.start()

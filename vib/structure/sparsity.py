@@ -22,8 +22,8 @@ Matrix = Any  # scipy.sparse csr_array; scipy has no types
 Ints = NDArray[np.integer[Any]]
 Progress = Callable[[int, int], None]
 
-# doubles in the block values of one chunk: about 4 MB, within the shared cache of usual machines
-_CHUNK_VALUES = 500_000
+# doubles in the element matrices of one chunk: about 8 MB, within the shared cache of usual machines
+_CHUNK_VALUES = 1_000_000
 # blocks mirrored at a time
 _BLOCKS = 100_000
 
@@ -102,7 +102,7 @@ def assemble(nodes_m: Array, groups: Sequence[Group], progress: Progress | None 
     mass = np.zeros((blocks, 1 if scalar else 9))
     total, done = sum(len(group.connectivity) for group in groups), 0
     for group in groups:
-        step = max(1, _CHUNK_VALUES // (9 * len(group.family.pairs[0])))
+        step = max(1, _CHUNK_VALUES // (group.family.nodes * group.family.freedoms) ** 2)
         for start in range(0, len(group.connectivity), step):
             chunk = slice(start, start + step)
             _add_chunk(pattern, group, chunk, nodes_m, stiffness, mass)

@@ -13,7 +13,7 @@ from typing import ClassVar
 
 import numpy as np
 
-from vib.structure.cells.family import Array, upper_blocks, whole
+from vib.structure.cells.family import Array, Properties, upper_blocks, whole
 from vib.structure.cells.polynomial import Nodal
 from vib.structure.cells.quadrature import Rule, cube
 from vib.structure.cells.solid import Solid
@@ -22,6 +22,7 @@ CORNERS = np.array(
     [[-1, -1, -1], [1, -1, -1], [1, 1, -1], [-1, 1, -1], [-1, -1, 1], [1, -1, 1], [1, 1, 1], [-1, 1, 1]],
     dtype=np.float64,
 )
+_OUTER = 24  # freedoms of the nodes; those of the internal modes come after
 _FUNCTIONS = Nodal(CORNERS, ((CORNERS + 1) / 2).astype(np.intp))
 
 
@@ -50,14 +51,15 @@ class Hexahedron(Solid):
         return -2 * points[:, :, None] * np.eye(3)
 
     def _condensed(self, blocks: Array) -> Array:
-        nodes = self.nodes + 3
         matrix = whole(blocks, self._all_pairs)
-        outer, inner = slice(0, 3 * self.nodes), slice(3 * self.nodes, 3 * nodes)
-        coupling = matrix[:, inner, outer]
-        reduced = matrix[:, outer, outer] - coupling.swapaxes(1, 2) @ np.linalg.solve(
-            matrix[:, inner, inner], coupling
-        )
+        reduced = matrix[:, :_OUTER, :_OUTER] + matrix[:, :_OUTER, _OUTER:] @ _following(matrix)
         return upper_blocks((reduced + reduced.swapaxes(1, 2)) / 2, self.pairs)
+
+    def _internal(self, coordinates: Array, properties: Properties, displacements: Array) -> Array:
+        """See `Solid._internal`."""
+        matrix = whole(self._full_blocks(coordinates, properties), self._all_pairs)
+        found: Array = (_following(matrix) @ displacements).reshape(len(matrix), 3, 3, -1)
+        return found
 
     @cached_property
     def stiffness_rule(self) -> Rule:
@@ -73,3 +75,8 @@ class Hexahedron(Solid):
     def stress_rule(self) -> Rule:
         """The centre, where the incompatible modes have no strain."""
         return cube(1)
+
+
+def _following(matrix: Array) -> Array:
+    """Motion of the internal modes per motion of the nodes, (e, 9, 24)."""
+    return np.asarray(-np.linalg.solve(matrix[:, _OUTER:, _OUTER:], matrix[:, _OUTER:, :_OUTER]))

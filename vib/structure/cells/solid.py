@@ -111,6 +111,10 @@ class Solid(Family):
 
     def stiffness_blocks(self, coordinates: Array, properties: Properties) -> Array:
         """See `Family.stiffness_blocks`."""
+        return self._condensed(self._full_blocks(coordinates, properties))
+
+    def _full_blocks(self, coordinates: Array, properties: Properties) -> Array:
+        """Blocks of all pairs, internal shape functions included."""
         blocks = np.empty((len(coordinates), len(self._all_pairs[0]), 3, 3))
         affine = self._is_affine(coordinates)
         for chosen, compute in ((affine, self._affine_blocks), (~affine, self._quadrature_blocks)):
@@ -119,7 +123,7 @@ class Solid(Family):
             elif chosen.any():
                 cells = np.flatnonzero(chosen)
                 blocks[cells] = compute(coordinates[cells], properties.of(cells))
-        return self._condensed(blocks)
+        return blocks
 
     def _condensed(self, blocks: Array) -> Array:
         """The blocks with internal freedoms eliminated; most families have none."""
@@ -138,15 +142,18 @@ class Solid(Family):
         found: Array = (density[:, None] * determinant) @ products
         return found
 
-    def stresses(self, coordinates: Array, properties: Properties, displacements: Array) -> Stresses:
-        """See `Family.stresses`."""
-        rule, count = self.stress_rule, len(coordinates)
+    def stresses(
+        self, coordinates: Array, properties: Properties, displacements: Array, rule: Rule | None = None
+    ) -> Stresses:
+        """See `Family.stresses`; at the points of ``rule`` if one is given."""
+        rule, count = rule or self.stress_rule, len(coordinates)
         lame, shear = properties.lame(count)
-        determinant, inverse = determinant_and_inverse(jacobians(self.gradients(rule.points), coordinates))
-        gradients = self.gradients(rule.points) @ inverse
-        fields = displacements.reshape(count, 1, self.nodes, 3, -1)
+        nodal, extra = self.gradients(rule.points), self.extra_gradients(rule.points)
+        determinant, gradients = self._mapped(nodal, extra, coordinates)
+        fields = displacements.reshape(count, self.nodes, 3, -1)
+        fields = np.concatenate([fields, self._internal(coordinates, properties, displacements)], axis=1)
         # slope[i, j] = d u_i / d x_j
-        slope = np.einsum("epaj,eqaim->epijm", gradients, fields, optimize=True)
+        slope = np.einsum("epaj,eaim->epijm", gradients, fields, optimize=True)
         strain = slope + slope.swapaxes(2, 3)
         values = shear[:, None, None, None, None] * strain
         pressure = lame[:, None, None] * np.einsum("epiim->epm", slope)
@@ -159,6 +166,23 @@ class Solid(Family):
             values=values[:, :, rows, columns],
             compliance=_compliance(properties, count),
         )
+
+    def _internal(self, coordinates: Array, properties: Properties, displacements: Array) -> Array:
+        """Displacements of the internal shape functions, (e, extra, 3, m); most families have none."""
+        return np.empty((len(coordinates), 0, 3, displacements.shape[-1]))
+
+    def _mapped(self, nodal: Array, extra: Array, coordinates: Array) -> tuple[Array, Array]:
+        """Jacobian determinants (e, p) and gradients (e, p, k + extra, 3) in space."""
+        determinant, inverse = determinant_and_inverse(jacobians(nodal, coordinates))
+        gradients = nodal @ inverse
+        if extra.shape[1]:
+            # R. L. Taylor, P. J. Beresford, E. L. Wilson, IJNME 10 (1976) 1211-1219: internal modes mapped by
+            # the Jacobian of the centre, so that a constant stress does no work on them
+            middle = jacobians(self.gradients(np.zeros((1, 3))), coordinates)
+            centre, inverse = determinant_and_inverse(middle)
+            ratio = (centre / determinant)[:, :, None, None]
+            gradients = np.concatenate([gradients, ratio * (extra @ inverse)], axis=2)
+        return determinant, gradients
 
     def faults(self, coordinates: Array) -> tuple[NDArray[np.bool_], NDArray[np.bool_]]:
         """See `Family.faults`; judged at all quadrature points."""
@@ -195,17 +219,7 @@ class Solid(Family):
     def _quadrature_blocks(self, coordinates: Array, properties: Properties) -> Array:
         count = len(coordinates)
         lame, shear = (value[:, None, None, None] for value in properties.lame(count))
-        nodal, extra = self._stiffness_gradients
-        determinant, inverse = determinant_and_inverse(jacobians(nodal, coordinates))
-        gradients = nodal @ inverse
-        if extra.shape[1]:
-            # R. L. Taylor, P. J. Beresford, E. L. Wilson, IJNME 10 (1976) 1211-1219: internal modes mapped by
-            # the Jacobian of the centre, so that a constant stress does no work on them
-            centre, inverse = determinant_and_inverse(
-                jacobians(self.gradients(np.zeros((1, 3))), coordinates)
-            )
-            ratio = (centre / determinant)[:, :, None, None]
-            gradients = np.concatenate([gradients, ratio * (extra @ inverse)], axis=2)
+        determinant, gradients = self._mapped(*self._stiffness_gradients, coordinates)
         gradients *= np.sqrt(determinant * self.stiffness_rule.weights)[:, :, None, None]
         flat = gradients.reshape(count, len(self.stiffness_rule.weights), -1)
         tensor = flat.swapaxes(1, 2) @ flat
