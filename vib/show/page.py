@@ -323,4 +323,7 @@ def _mass_sums(modes: Modes) -> str:
         return ""
     shares = modes.effective_mass[:, :3].sum(axis=0) / anatomy.rigid_mass[0, 0]
     told = [f"{100 * share:.1f} % along {axis}" for axis, share in zip("xyz", shares, strict=True)]
-    return f"the modes found hold {joined(told)} of the whole mass (all modes of a held structure: 100 %)"
+    rule = "all modes of a held structure: 100 %"
+    if not modes.proportional:
+        rule = "shapes are complex, so that the sum over all modes need not be exactly 100 %"
+    return f"the modes found hold {joined(told)} of the whole mass ({rule})"
