@@ -169,13 +169,16 @@ def portal_that_stretches(entry: Entry) -> Iterator[Check]:
     given = entry["inputs"]
     pieces, height, span = 24, given["h"], given["span"]
     corners = [(0, 0, 0), (0, 0, height), (span, 0, height), (span, 0, 0)]
-    points, runs, masses = {}, [], {}
+    points: dict[str, tuple[float, float, float]] = {}
+    runs: list[list[str]] = []
+    masses: dict[str, float] = {}
     for side, (start, end) in enumerate(pairwise(np.array(corners, float))):
         piece = float(np.linalg.norm(end - start)) / pieces
         names = [f"p{side * pieces + i}" for i in range(pieces + 1)]
         runs.append(names)
         for i, name in enumerate(names):
-            points[name] = tuple(start + (end - start) * i / pieces)
+            x, y, z = start + (end - start) * i / pieces
+            points[name] = (float(x), float(y), float(z))
             share_of_piece = 0.5 if i in (0, pieces) else 1.0
             masses[name] = masses.get(name, 0.0) + share_of_piece * piece * given["rho"] * given["A"]
     first, last = runs[0][0], runs[-1][-1]
@@ -185,7 +188,7 @@ def portal_that_stretches(entry: Entry) -> Iterator[Check]:
         if name not in (first, last)
     )
     text = frame_text(
-        {name: (float(x), float(y), float(z)) for name, (x, y, z) in points.items()},
+        points,
         {f"side {side}": ("s", run) for side, run in enumerate(runs)},
         {"s": section(given["A"], given["I"])},
         clamped=[first, last],

@@ -79,8 +79,8 @@ def two_mass_chain(entry: Entry) -> Iterator[Check]:
 
 def rayleigh_rows(alpha: float, beta: float) -> str:
     """Two points of the curve, as a study file states them."""
-    rows = [[f"{f} Hz", alpha / (4 * np.pi * f) + beta * np.pi * f] for f in (4.0, 9.0)]
-    return f"[damping]\nrayleigh = {[[f, float(ratio)] for f, ratio in rows]}"
+    rows = [[f"{f} Hz", float(alpha / (4 * np.pi * f) + beta * np.pi * f)] for f in (4.0, 9.0)]
+    return f"[damping]\nrayleigh = {rows}"
 
 
 def damped_two_masses() -> vib.System:

@@ -6,10 +6,8 @@ The beams are those of cases.json (see there for the sources); the accuracy aske
 import numpy as np
 import pytest
 
-from tests.references.beams import BENDING, beam_text, hz, rod_speeds, rod_text, solved, timoshenko_text
+from tests.references.beams import BENDING, ENDS, beam_text, hz, rod_speeds, rod_text, solved, timoshenko_text
 from tests.references.common import ENTRIES, MODEL_GAP, picked
-
-ENDS = {"C": ["z", "ry"], "P": ["z"], "F": [], "S": ["ry"]}
 
 
 def true_errors(modes, components, expected):
@@ -19,7 +17,7 @@ def true_errors(modes, components, expected):
     return modes.frequencies_hz[found] - np.array(expected), modes.errors_hz[found]
 
 
-@pytest.mark.parametrize("accuracy", [0.1, 0.02, 0.005, 0.001])
+@pytest.mark.parametrize("accuracy", [0.1, 0.02, 0.003])
 @pytest.mark.parametrize("ends", ["CF", "PP", "FF", "CS"])
 def test_bending(ends, accuracy):
     expected = np.array(hz(ENTRIES[f"BEAM-{ends}"]["expected"]["b"]))
