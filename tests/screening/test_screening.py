@@ -5,7 +5,7 @@ import json
 
 import numpy as np
 import pytest
-from hypothesis import assume, given
+from hypothesis import assume, given, settings
 from hypothesis import strategies as st
 
 from vib.errors import ModelError, UnitError
@@ -151,6 +151,7 @@ def off_the_edge(row):
     return np.abs(row.frequency_hz / edges - 1).min() > 1e-9
 
 
+@settings(deadline=None)
 @given(FREQUENCIES, SPEEDS, SPEEDS, BANDS, st.floats(0.25, 12.0), st.floats(1e-3, 1e3))
 def test_scaling_all_frequencies_together_changes_no_verdict(
     modes_at, excitation, f, one, other, band, order, scale
@@ -168,6 +169,7 @@ def test_scaling_all_frequencies_together_changes_no_verdict(
     assert judged(scale).separation == pytest.approx(row.separation, abs=1e-12)
 
 
+@settings(deadline=None)
 @given(FREQUENCIES, SPEEDS, BANDS, BANDS, st.floats(0, 5.0))
 def test_widening_the_band_never_turns_inside_into_clear(modes_at, excitation, f, speed, one, other, error):
     narrow, wide = (
@@ -177,6 +179,7 @@ def test_widening_the_band_never_turns_inside_into_clear(modes_at, excitation, f
     assert wide or not narrow
 
 
+@settings(deadline=None)
 @given(FREQUENCIES, st.floats(0.25, 12.0), st.floats(1e-6, 0.6), st.floats(0, 5.0), SPEEDS)
 def test_the_speeds_to_avoid_are_those_whose_band_holds_the_mode(
     modes_at, excitation, f, order, band, error, speed
@@ -194,6 +197,7 @@ def test_the_speeds_to_avoid_are_those_whose_band_holds_the_mode(
     assert not row_at(high * (1 + 1e-9)).inside
 
 
+@settings(deadline=None)
 @given(st.lists(st.tuples(st.floats(0, 100), st.floats(0, 20)).map(lambda pair: (pair[0], sum(pair)))))
 def test_merged_ranges_hold_the_same_points(ranges):
     found = merged(ranges)
