@@ -235,9 +235,9 @@ _VALIDATION = """# Validation
 This page is generated from the reference tests (`tests/references/`, `python docs/make_pages.py`). Each value
 of ours went the way a user's study goes: text of a study, system, modes or ring. Members are cut into pieces
 by the program itself. *From memory* means that the source was quoted from memory; the value itself was
-computed from the formula it names. The last column is the difference, relative to the reference unless it is
-marked *absolute*; numbers below about 1e-10 are round-off and vary from machine to machine, so only their
-decade bound is shown.
+computed from the formula it names. The error bar is the one that the program states for the value of ours; the
+tests hold it to cover the difference. The last column bounds the difference by a power of ten, relative to the
+reference unless it is marked *absolute*.
 
 Where a reference leaves out what our members always have (stretch, rotary inertia), the tests choose a member
 so slender that it matters less than 1e-5, and say so beside the case.
@@ -265,12 +265,12 @@ def _case(entry: dict[str, Any], checks: Any) -> str:
         "",
         f"Source{memory}: {entry['source']} [{entry['provenance']}]",
         "",
-        "| what | ours | reference | difference |",
-        "|---|---|---|---|",
+        "| what | ours | reference | error bar | difference |",
+        "|---|---|---|---|---|",
     ]
     lines += [
         f"| {check.what} | {_number(check.ours, check)} | {_number(check.reference, check)} "
-        f"| {_difference(check)} |"
+        f"| {'' if check.error_bar is None else format(check.error_bar, '.0e')} | {_difference(check)} |"
         for check in checks
     ]
     return "\n".join(lines) + "\n"
