@@ -57,6 +57,8 @@ KINDS = {
     "angular_acceleration": Kind("an angular acceleration", "rad/s^2", "rad/s^2", "rad/s^2"),
     "ratio": Kind("a ratio", "", "", ""),
 }
+# no quantity of a machine comes near; beyond it products of two would overflow on the way
+LARGEST = 1e60
 _CYCLIC = ("frequency", "speed")
 _NUMBER = re.compile(r"\s*([+-]?(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d+)?)\s*(.*?)\s*", re.DOTALL)
 _UNIT_TEXT = re.compile(r"[A-Za-zµμΩ°%_/*^·().\s\-²³⁴0-9]{1,60}")
@@ -126,8 +128,8 @@ def parse(value: object, kind: str, *, unit: str | None = None) -> float:
         )
     else:
         result = number * factor(text, kind)
-    if not math.isfinite(result):
-        raise UnitError(f"{_brief(value)} is too large to be a number in SI units")
+    if not abs(result) < LARGEST:
+        raise UnitError(f"{_brief(value)} is larger than anything that {wanted.words} can be; check its unit")
     return result
 
 

@@ -8,7 +8,7 @@ from typing import Any
 
 from vib.errors import Fault, UnitError, VibError
 from vib.study.machine import Matrices, MatrixEntry
-from vib.units import parse
+from vib.units import LARGEST, parse
 
 # kind of quantity whose unit scales each matrix
 _KINDS = {"mass": "mass", "stiffness": "stiffness", "damping": "damping", "gyroscopic": "damping"}
@@ -46,6 +46,8 @@ def load_matrices(
             continue
         try:
             found[name] = _load(entry, folder) * parse(1, kind, unit=entry.unit or units.get(kind))
+            if max(abs(found[name].max()), abs(found[name].min())) > LARGEST:
+                raise VibError(f"holds entries above {LARGEST:g} in SI units; check its numbers and its unit")
         except UnitError as error:
             message = str(error)
             if entry.unit is None and kind not in units:
@@ -100,8 +102,8 @@ def _load(entry: MatrixEntry, folder: Path) -> Any:
         raise VibError(
             f'"{entry.file}" cannot be read as a matrix: {str(error) or type(error).__name__}'
         ) from None
-    if matrix.ndim != 2:
-        raise VibError(f'"{entry.file}" holds an array of {matrix.ndim} dimensions, not a matrix')
+    if matrix.ndim != 2 or 0 in matrix.shape:
+        raise VibError(f'"{entry.file}" holds an array of shape {matrix.shape}, not a matrix')
     if np.iscomplexobj(matrix) or not np.issubdtype(matrix.dtype, np.number):
         raise VibError(f'"{entry.file}" holds {matrix.dtype} entries; wanted real numbers')
     return matrix.astype(float)

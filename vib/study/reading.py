@@ -52,6 +52,9 @@ def read(path: str | FilePath) -> Study:
     if study is None or findings:
         raise StudyError(str(path), _faults(findings, lines))
     study._file = file
+    if study.mesh is not None and not (file.parent / study.mesh.file).is_file():
+        missing = f'there is no file "{study.mesh.file}" beside the study'
+        raise StudyError(str(path), _faults([(("mesh", "file"), missing)], lines))
     if study.matrices is not None:
         loaded, faults = load_matrices(study.matrices, file.parent, units)
         if faults:
@@ -70,6 +73,8 @@ def _text_of(file: FilePath) -> str:
                 str(file), [Fault("", "is larger than 50 MiB; put large matrices into .mtx or .npz files")]
             )
         return file.read_bytes().decode("utf-8-sig")
+    except StudyError:
+        raise
     except FileNotFoundError:
         raise StudyError(str(file), [Fault("", "there is no such file")]) from None
     except UnicodeDecodeError as error:
@@ -121,7 +126,8 @@ def _with_names(raw: dict[str, Any]) -> dict[str, Any]:
 
 def _finding(detail: Any) -> Finding:
     """One of pydantic's errors in our words."""
-    path: Path = tuple(step for step in detail["loc"] if step != "[key]")
+    # steps in brackets are pydantic's own: "[key]", and the kinds of a point
+    path: Path = tuple(step for step in detail["loc"] if not str(step).startswith("["))
     kind = detail["type"]
     if kind == "extra_forbidden":
         known = _known_keys(path[:-1])
