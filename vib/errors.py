@@ -15,7 +15,9 @@ from dataclasses import dataclass
 
 
 class VibError(ValueError):
-    """Base of every error that vib raises; also a ValueError."""
+    """Base of every error that vib raises; also a ValueError. ``file`` is the study it is about, if known."""
+
+    file: str | None = None
 
 
 class UnitError(VibError):
@@ -43,7 +45,7 @@ class StudyError(VibError):
     """A study file with one or more faults, all of them listed."""
 
     def __init__(self, file: str, faults: list[Fault] | tuple[Fault, ...]) -> None:
-        self.file = file
+        self.file: str | None = file
         self.faults = tuple(faults)
         super().__init__("\n".join(f"{file}: {fault}" for fault in self.faults))
 

@@ -10,7 +10,7 @@ from dataclasses import dataclass, field
 from pathlib import Path
 from typing import TYPE_CHECKING, Any, TextIO
 
-from vib.errors import VibError
+from vib.errors import AccuracyError, MatrixError, ModelError, VibError
 
 if TYPE_CHECKING:
     from vib.show.blocks import Block
@@ -143,7 +143,8 @@ def _fault_lines(error: Exception | str) -> list[str]:
     if hasattr(error, "faults"):
         return [f"{error.file}: {fault}" for fault in error.faults]  # type: ignore[attr-defined]
     if isinstance(error, VibError):
-        return [line.strip() for line in str(error).splitlines() if line.strip()]
+        about = f"{error.file}: " if error.file else ""
+        return [about + line.strip() for line in str(error).splitlines() if line.strip()]
     if hasattr(error, "format_message"):  # the parser's usage errors, whichever package they live in
         return [" ".join(str(error.format_message()).split())]
     if isinstance(error, MemoryError):
@@ -168,8 +169,8 @@ def _colourful(stream: TextIO) -> bool:
 
 
 @contextmanager
-def warnings_as_remarks(wish: Wish) -> Iterator[None]:
-    """Warnings of the libraries below as remarks, in one line each."""
+def at_work_on(study: Path, wish: Wish) -> Iterator[None]:
+    """Warnings of the libraries below become remarks, and errors are told which study they are about."""
     import warnings
 
     def tell(message: Warning | str, category: type[Warning], *place: Any, **more: Any) -> None:
@@ -177,4 +178,8 @@ def warnings_as_remarks(wish: Wish) -> Iterator[None]:
 
     with warnings.catch_warnings():
         warnings.showwarning = tell
-        yield
+        try:
+            yield
+        except (ModelError, MatrixError, AccuracyError) as error:
+            error.file = str(study)
+            raise

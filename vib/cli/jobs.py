@@ -7,7 +7,7 @@ from functools import cache
 from pathlib import Path
 from typing import TYPE_CHECKING, Any, Literal
 
-from vib.cli.delivery import DONE, OBJECTION, Answer, Wish, deliver, put, warnings_as_remarks
+from vib.cli.delivery import DONE, OBJECTION, Answer, Wish, at_work_on, deliver, put
 
 if TYPE_CHECKING:
     from vib.cli.starts import StartOptions
@@ -43,7 +43,7 @@ def check_study(path: Path, units: Chosen, pictures: str, wish: Wish) -> int:
     from vib.show.tables.check import check_blocks, check_document
     from vib.structure.survey import survey as survey_of
 
-    with warnings_as_remarks(wish):
+    with at_work_on(path, wish):
         study = _read(path)
         survey = survey_of(study)
 
@@ -66,7 +66,7 @@ def show_modes(
     from vib.show.documents import modes_document
     from vib.show.tables.modes import modes_blocks
 
-    with warnings_as_remarks(wish):
+    with at_work_on(path, wish):
         study = _read(path)
         modes = _modes(study, count, up_to)
 
@@ -113,7 +113,7 @@ def show_ring(path: Path, options: StartOptions, units: Chosen, pictures: str, w
     from vib.cli.starts import start_arguments
     from vib.show.tables.ring import ring_blocks, ring_document, start_words
 
-    with warnings_as_remarks(wish):
+    with at_work_on(path, wish):
         study = _read(path)
         arguments = start_arguments(study, options)
         ring = study.system().ring(**arguments)
@@ -143,7 +143,7 @@ def show_screening(path: Path, band: str | None, pictures: str, wish: Wish) -> i
     from vib.screening import screen
     from vib.show.tables.screen import screening_blocks, screening_document
 
-    with warnings_as_remarks(wish):
+    with at_work_on(path, wish):
         study = _read(path)
         modes = screening_modes(study, band)
         screening = screen(modes, study.excitations, band=band)
@@ -189,7 +189,7 @@ def write_report(
     from vib.show.page import Findings, render_page
     from vib.structure.survey import survey as survey_of
 
-    with warnings_as_remarks(wish):
+    with at_work_on(path, wish):
         study = _read(path)
         survey = survey_of(study)
         modes = _report_modes(study, limits, band)
