@@ -227,3 +227,33 @@ def test_flat_and_folded_cells_are_named(family: Family) -> None:
         check_cells(family, cells, np.arange(100, 114))
     assert "cells 103, 104, 105" in str(caught.value)
     assert "112 and 1 more are turned inside out" in str(caught.value)
+
+
+def test_cells_without_a_place_are_named() -> None:
+    cells = np.repeat(distorted(FAMILIES["wedge"]), 2, axis=0)  # type: ignore[arg-type]
+    cells[3, 2, 1] = np.nan
+    with pytest.raises(ModelError, match="wedge cell 4 is at a position that is not a finite number"):
+        check_cells(FAMILIES["wedge"], cells)
+
+
+@pytest.mark.parametrize(
+    ("entry", "value"),
+    [
+        ("youngs_modulus", 0.0),
+        ("youngs_modulus", np.nan),
+        ("poissons_ratio", 0.5),
+        ("density", -1.0),
+        ("thickness", -0.1),
+        ("offset", np.inf),
+    ],
+)
+def test_impossible_properties_are_named(entry: str, value: float) -> None:
+    given = {"youngs_modulus": 1.0, "poissons_ratio": 0.3, "density": 1.0} | {entry: value}
+    with pytest.raises(ModelError, match=f"^{entry}: it must"):
+        Properties(**given)
+
+
+def test_properties_of_the_wrong_number_are_named() -> None:
+    cells = distorted(FAMILIES["tetra"])  # type: ignore[arg-type]
+    with pytest.raises(ModelError, match="density: one value or one for each of 2 cells"):
+        FAMILIES["tetra"].mass(cells, Properties(1.0, 0.3, np.ones(3)))

@@ -1,6 +1,9 @@
 """Cells of a mesh: one file per family, and this index of them by kind.
 
 Solids (three freedoms per node) and shells (six). Kinds and node numbering are those of meshio (and VTK).
+Rooms: `family` what each offers; `solid` all isoparametric solids, with `polynomial` and `quadrature` beneath
+them; `triangle` the shell facet, from `membrane`, `bending` and `facet`, and `split` the shells made of it;
+`checks` cells that can't be computed; `recovery` and `halving` the discretisation error of solids and shells.
 """
 
 from __future__ import annotations

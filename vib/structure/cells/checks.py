@@ -13,7 +13,7 @@ _NAMED = 10
 
 
 def check_cells(family: Family, coordinates: Array, numbers: NDArray[np.intp] | None = None) -> None:
-    """Stop if any cell is flat, turned inside out or folded.
+    """Stop if any cell is flat, turned inside out, folded, or has a node without a finite position.
 
     Parameters
     ----------
@@ -29,13 +29,18 @@ def check_cells(family: Family, coordinates: Array, numbers: NDArray[np.intp] | 
     ModelError
         Names the cells by number.
     """
+    nowhere = np.asarray(~np.isfinite(coordinates).all(axis=(1, 2)), dtype=np.bool_)
     flat = np.zeros(len(coordinates), dtype=bool)
     folded = np.zeros(len(coordinates), dtype=bool)
     for start in range(0, len(coordinates), _CHUNK):
         chunk = slice(start, start + _CHUNK)
-        flat[chunk], folded[chunk] = family.faults(coordinates[chunk])
+        known = np.where(nowhere[chunk, None, None], 0.0, coordinates[chunk])
+        flat[chunk], folded[chunk] = family.faults(known)
     called = np.arange(1, len(coordinates) + 1) if numbers is None else numbers
     messages = []
+    if nowhere.any():
+        messages.append(f"{_named(called[nowhere], family.kind)} at a position that is not a finite number")
+    flat &= ~nowhere
     if flat.any():
         size = "area" if family.dimension == 2 else "volume"
         messages.append(f"{_named(called[flat], family.kind)} flat, without {size}")

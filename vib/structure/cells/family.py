@@ -64,7 +64,7 @@ class Properties:
 
     def lame(self, count: int) -> tuple[Array, Array]:
         """Lame's two constants (Pa) of ``count`` cells, each (count,)."""
-        modulus, ratio = _spread(self.youngs_modulus, count), _spread(self.poissons_ratio, count)
+        modulus, ratio = self.spread("youngs_modulus", count), self.spread("poissons_ratio", count)
         return modulus * ratio / ((1 + ratio) * (1 - 2 * ratio)), modulus / (2 * (1 + ratio))
 
     def spread(self, name: str, count: int) -> Array:
@@ -72,7 +72,7 @@ class Properties:
         value = getattr(self, name)
         if value is None:
             raise ModelError(f"{name}: these cells need one; give each shell region its {name}.")
-        return _spread(value, count)
+        return _spread(name, value, count)
 
 
 @dataclass(frozen=True, eq=False)
@@ -167,5 +167,8 @@ def upper_blocks(matrix: Array, pairs: tuple[Numbers, Numbers]) -> Array:
     return apart[:, pairs[0], :, pairs[1], :].swapaxes(0, 1)
 
 
-def _spread(value: float | Array, count: int) -> Array:
-    return np.broadcast_to(np.asarray(value, dtype=np.float64), (count,))
+def _spread(name: str, value: float | Array, count: int) -> Array:
+    found = np.asarray(value, dtype=np.float64)
+    if found.ndim and found.shape != (count,):
+        raise ModelError(f"{name}: one value or one for each of {count} cells, got shape {found.shape}.")
+    return np.broadcast_to(found, (count,))

@@ -1,7 +1,9 @@
 """First-order triangle: three nodes, membrane with rotations about the normal, thin and thick plate bending.
 
 Membrane: optimal triangle of Felippa (2003), see `membrane`. Bending: discrete Kirchhoff-Mindlin triangle of
-I. Katili, IJNME 36 (1993) 1859-1883, see `bending`.
+I. Katili, IJNME 36 (1993) 1859-1883, see `bending`. A facet follows a curved surface by its nodes only: where
+a thin shell is doubly curved and bends without stretching, facets are too stiff until their size squared is
+about twice the radius times the thickness (deflection 7 % short there, 1 % at half that size; see the tests).
 """
 
 from __future__ import annotations
