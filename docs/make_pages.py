@@ -239,7 +239,7 @@ computed from the formula it names. The last column bounds the difference by a p
 reference unless it is marked *absolute*.
 
 The error bar is the one that the program states for its value; it covers the difference, but for what the
-reference leaves out that our members always have (shear, stretch, rotary inertia). The tests choose members so
+reference leaves out that our members always have (stretch, rotary inertia). The tests choose members so
 slender that this matters less than 1e-5; in FRAME-L, whose proportions are given, rotary inertia lowers the
 modes by up to 4e-4, and in FRAME-PORTAL-EX the mass is carried as points instead.
 """
