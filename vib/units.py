@@ -1,6 +1,7 @@
 """Quantities at the edges: text or number in, SI float out; SI float in, display text out.
 
-There is one pint registry and only this module touches it. Frequency, angular frequency and speed are
+There is one pint registry, of the units in ``units.txt``, and only this module touches it. Frequency, angular
+frequency and speed are
 three things that pint counts as one (an angle is 1 to it); they are told apart here and nowhere else:
 60 rpm = 1 Hz = 2 pi rad/s. Inside the package a frequency or a speed is in cycles per second.
 """
@@ -11,6 +12,7 @@ import math
 import re
 from dataclasses import dataclass
 from functools import cache
+from pathlib import Path
 from typing import TYPE_CHECKING, Literal
 
 from vib.errors import UnitError
@@ -19,6 +21,7 @@ if TYPE_CHECKING:
     import pint
 
 UnitSystem = Literal["si", "us"]
+_DEFINITIONS = Path(__file__).with_name("units.txt")
 
 
 @dataclass(frozen=True)
@@ -77,8 +80,8 @@ _USUAL_UNITS = (
 def _registry() -> pint.UnitRegistry[float]:
     import pint
 
-    registry: pint.UnitRegistry[float] = pint.UnitRegistry(autoconvert_offset_to_baseunit=False)
-    registry.define("@alias revolution = rev")
+    registry: pint.UnitRegistry[float] = pint.UnitRegistry(None)
+    registry.load_definitions(_DEFINITIONS.read_text(encoding="utf-8").splitlines())
     return registry
 
 

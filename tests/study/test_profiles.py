@@ -6,7 +6,7 @@ from dataclasses import fields
 from typing import Any
 
 import pytest
-from hypothesis import given, settings
+from hypothesis import example, given, settings
 from hypothesis import strategies as st
 
 from vib.errors import ModelError
@@ -299,6 +299,7 @@ def test_remarks_on_what_is_off():
 
 
 @settings(deadline=None)
+@example(height=0.5, slender=0.21875, web=0.125, flange=0.4375)  # the junction's fit is negative there
 @given(
     height=st.floats(0.05, 0.5), slender=st.floats(0.2, 2.0),
     web=st.floats(0.02, 0.9), flange=st.floats(0.02, 0.45),

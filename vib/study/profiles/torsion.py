@@ -25,7 +25,8 @@ def crossed_torsion(
 
     Rectangles, less what a free end of the web loses, and for each junction alpha D^4, D being the circle
     inscribed in it: I. A. El Darwish, B. G. Johnston, Torsion of structural shapes, J. Struct. Div. ASCE 91
-    (1965) 203-227 (from memory). A web of more than twice the flange is outside their fit; it then counts as
+    (1965) 203-227 (from memory). For a web much thinner than the flange their fit turns negative, and the
+    junction adds nothing. A web of more than twice the flange is outside their fit; it then counts as
     a whole rectangle with four (two) stubs, and the junctions add nothing.
     """
     if web > 2 * flange:
@@ -35,7 +36,7 @@ def crossed_torsion(
     t, w, r = flange, web, radius
     diameter = ((t + r) ** 2 + w * (r + w / 4)) / (2 * r + t)
     alpha = -0.042 + 0.2204 * w / t + 0.1355 * r / t - 0.0865 * w * r / t**2 - 0.0725 * (w / t) ** 2
-    return flanges * (rectangle_torsion(width, flange) + alpha * diameter**4) + max(clear, 0.0)
+    return flanges * (rectangle_torsion(width, flange) + max(alpha, 0.0) * diameter**4) + max(clear, 0.0)
 
 
 def channel_torsion(height: float, width: float, web: float, tip: float, root: float, radius: float) -> float:
