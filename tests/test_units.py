@@ -5,6 +5,7 @@ import math
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
+
 from vib.errors import UnitError
 from vib.units import KINDS, factor, parse, shown, shown_unit, text
 

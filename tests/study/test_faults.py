@@ -1,6 +1,7 @@
 """Malformed and hostile study files: every fault names its entry and how to mend it."""
 
 import pytest
+
 from vib.errors import StudyError
 from vib.study import read
 

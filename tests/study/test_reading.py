@@ -4,6 +4,7 @@ import numpy as np
 import pytest
 import scipy.io
 import scipy.sparse as sparse
+
 from vib.errors import StudyError
 from vib.study import Study, read
 from vib.study.lines import find_line, line_numbers
@@ -126,7 +127,8 @@ def test_faulty_matrices_are_named(tmp_path, old, new, message):
 
 
 def test_entries_are_found_in_the_text():
-    text = 'a = 1\n[t]\n"b c" = [\n  1,\n  "x = [2]", # ]\n]\nd = """\ne = 1\n"""\n[[l]]\nf = 1\n[[l]]\ng.h = 2\n'
+    text = 'a = 1\n[t]\n"b c" = [\n  1,\n  "x = [2]", # ]\n]\nd = """\ne = 1\n"""\n'
+    text += "[[l]]\nf = 1\n[[l]]\ng.h = 2\n"
     found = line_numbers(text)
     assert found == {
         ("a",): 1, ("t",): 2, ("t", "b c"): 3, ("t", "d"): 7, ("l", 0): 10, ("l", 0, "f"): 11, ("l", 1): 12,
