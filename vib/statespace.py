@@ -5,9 +5,11 @@ Made from a `System` by `state_space`, or built directly from arrays.
 
 from __future__ import annotations
 
+import os
 from collections.abc import Sequence
 from dataclasses import dataclass, field
-from typing import TYPE_CHECKING, Literal
+from pathlib import Path
+from typing import TYPE_CHECKING, Any, Literal
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
@@ -89,6 +91,42 @@ class StateSpace:
         from vib.response.transition import transition
 
         return transition(self.A, time_s)
+
+    def poles(self) -> NDArray[np.complex128]:
+        """The eigenvalues of A, (s,), 1/s, by size."""
+        from vib.response.exports import poles
+
+        return poles(self)
+
+    def zeros(self) -> NDArray[np.complex128]:
+        """The transmission zeros, (k,), 1/s, by size; see `vib.response.exports.zeros`."""
+        from vib.response.exports import zeros
+
+        return zeros(self)
+
+    def residues(self) -> tuple[NDArray[np.complex128], NDArray[np.complex128]]:
+        """Poles (s,) and residues (s, o, i); see `vib.response.exports.residues`."""
+        from vib.response.exports import residues
+
+        return residues(self)
+
+    def to_scipy(self) -> Any:
+        """As ``scipy.signal.StateSpace``."""
+        from vib.response.exports import to_scipy
+
+        return to_scipy(self)
+
+    def save(self, path: str | os.PathLike[str]) -> Path:
+        """A, B, C, D and the names as a .npz file; see `vib.response.exports.save`."""
+        from vib.response.exports import save
+
+        return save(self, path)
+
+    def simulate(self, inputs: Sequence[Any] = (), **arguments: Any) -> Array:
+        """The outputs over time under given inputs; see `vib.response.simulate.simulate`."""
+        from vib.response.simulate import simulate
+
+        return simulate(self, inputs, **arguments)
 
 
 def _array(name: str, value: ArrayLike) -> Array:
