@@ -14,6 +14,7 @@ from vib.errors import AccuracyError, MatrixError, ModelError, VibError
 
 if TYPE_CHECKING:
     from vib.show.blocks import Block
+    from vib.study import Study
 
 DONE, OBJECTION, FAILED, INTERRUPTED = 0, 1, 2, 130
 
@@ -169,9 +170,11 @@ def _colourful(stream: TextIO) -> bool:
 
 
 @contextmanager
-def at_work_on(study: Path, wish: Wish) -> Iterator[None]:
-    """Warnings of the libraries below become remarks, and errors are told which study they are about."""
+def at_work_on(path: Path, wish: Wish) -> Iterator[Study]:
+    """The study; warnings of the libraries become remarks, errors are told which study they are about."""
     import warnings
+
+    from vib.study import read
 
     def tell(message: Warning | str, category: type[Warning], *place: Any, **more: Any) -> None:
         wish.tell(f"remark: a library warns: {' '.join(str(message).split())} ({category.__name__})")
@@ -179,7 +182,18 @@ def at_work_on(study: Path, wish: Wish) -> Iterator[None]:
     with warnings.catch_warnings():
         warnings.showwarning = tell
         try:
-            yield
+            study = read(path)
+            _calm_threads(study)
+            yield study
         except (ModelError, MatrixError, AccuracyError) as error:
-            error.file = str(study)
+            error.file = str(path)
             raise
+
+
+def _calm_threads(study: Study) -> None:
+    """One BLAS thread for a frame: its matrices are small, and a second thread costs more than it brings."""
+    if study.matrices is None and study.mesh is None:
+        import scipy.linalg  # noqa: F401  (only a library that is loaded can be told)
+        from threadpoolctl import threadpool_limits
+
+        threadpool_limits(1, user_api="blas")

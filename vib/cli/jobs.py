@@ -40,11 +40,10 @@ def new_study(kind: str | None, out: Path | None, wish: Wish) -> int:
 
 def check_study(path: Path, units: Chosen, pictures: str, wish: Wish) -> int:
     """Read the study back."""
-    from vib.show.tables.check import check_blocks, check_document
-    from vib.structure.survey import survey as survey_of
+    with at_work_on(path, wish) as study:
+        from vib.show.tables.check import check_blocks, check_document
+        from vib.structure.survey import survey as survey_of
 
-    with at_work_on(path, wish):
-        study = _read(path)
         survey = survey_of(study)
 
         @cache
@@ -63,11 +62,10 @@ def show_modes(
     path: Path, count: int | None, up_to: str | None, units: Chosen, pictures: str, wish: Wish
 ) -> int:
     """Natural frequencies and shapes."""
-    from vib.show.documents import modes_document
-    from vib.show.tables.modes import modes_blocks
+    with at_work_on(path, wish) as study:
+        from vib.show.documents import modes_document
+        from vib.show.tables.modes import modes_blocks
 
-    with at_work_on(path, wish):
-        study = _read(path)
         modes = _modes(study, count, up_to)
 
         def files() -> dict[str, bytes]:
@@ -83,12 +81,6 @@ def show_modes(
             DONE if modes.stable else OBJECTION,
         )
         return deliver(answer, wish)
-
-
-def _read(path: Path) -> Study:
-    from vib.study import read
-
-    return read(path)
 
 
 def _units(study: Study, chosen: Chosen) -> UnitSystem:
@@ -110,11 +102,10 @@ def _modes(study: Study, count: int | None, up_to: str | None) -> Modes:
 
 def show_ring(path: Path, options: StartOptions, units: Chosen, pictures: str, wish: Wish) -> int:
     """The free response."""
-    from vib.cli.starts import start_arguments
-    from vib.show.tables.ring import ring_blocks, ring_document, start_words
+    with at_work_on(path, wish) as study:
+        from vib.cli.starts import start_arguments
+        from vib.show.tables.ring import ring_blocks, ring_document, start_words
 
-    with at_work_on(path, wish):
-        study = _read(path)
         arguments = start_arguments(study, options)
         ring = study.system().ring(**arguments)
         shown = _units(study, units)
@@ -140,11 +131,10 @@ def show_ring(path: Path, options: StartOptions, units: Chosen, pictures: str, w
 
 def show_screening(path: Path, band: str | None, pictures: str, wish: Wish) -> int:
     """Modes against what shakes the machine."""
-    from vib.screening import screen
-    from vib.show.tables.screen import screening_blocks, screening_document
+    with at_work_on(path, wish) as study:
+        from vib.screening import screen
+        from vib.show.tables.screen import screening_blocks, screening_document
 
-    with at_work_on(path, wish):
-        study = _read(path)
         modes = screening_modes(study, band)
         screening = screen(modes, study.excitations, band=band)
 
@@ -184,13 +174,12 @@ def write_report(
     wish: Wish,
 ) -> int:
     """The page; its path is the result."""
-    from vib.show.documents import to_json
-    from vib.show.files import write_files
-    from vib.show.page import Findings, render_page
-    from vib.structure.survey import survey as survey_of
+    with at_work_on(path, wish) as study:
+        from vib.show.documents import to_json
+        from vib.show.files import write_files
+        from vib.show.page import Findings, render_page
+        from vib.structure.survey import survey as survey_of
 
-    with at_work_on(path, wish):
-        study = _read(path)
         survey = survey_of(study)
         modes = _report_modes(study, limits, band)
         shown = _units(study, units)
