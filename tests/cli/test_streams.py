@@ -157,7 +157,7 @@ def test_nothing_ends_in_a_traceback(monkeypatch, vib, chain, raised, status, sa
     def fail(path):
         raise raised
 
-    monkeypatch.setattr("vib.cli.jobs._read", fail)
+    monkeypatch.setattr("vib.study.read", fail)
     monkeypatch.delenv("VIB_DEBUG", raising=False)
     done = vib("modes", chain)
     assert done.status == status
@@ -168,7 +168,7 @@ def test_nothing_ends_in_a_traceback(monkeypatch, vib, chain, raised, status, sa
 
 
 def test_a_fault_of_ours_can_be_looked_into(monkeypatch, vib, chain):
-    monkeypatch.setattr("vib.cli.jobs._read", lambda path: 1 // 0)
+    monkeypatch.setattr("vib.study.read", lambda path: 1 // 0)
     monkeypatch.setenv("VIB_DEBUG", "1")
     assert "Traceback" in vib("modes", chain).err
 
@@ -176,15 +176,15 @@ def test_a_fault_of_ours_can_be_looked_into(monkeypatch, vib, chain):
 def test_a_warning_of_a_library_becomes_a_remark(monkeypatch, vib, chain):
     import warnings
 
-    from vib.cli import jobs
+    from vib import study
 
-    read = jobs._read
+    read = study.read
 
     def warn(path):
         warnings.warn("something\nodd", RuntimeWarning, stacklevel=1)
         return read(path)
 
-    monkeypatch.setattr(jobs, "_read", warn)
+    monkeypatch.setattr(study, "read", warn)
     with warnings.catch_warnings():
         warnings.simplefilter("always")
         done = vib("modes", chain)
