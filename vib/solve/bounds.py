@@ -14,6 +14,8 @@ from vib.solve.krylov import Krylov, Ritz
 # of the shapes: they enter participation and energy shares, where six figures are plenty.
 VALUE_ACCURACY = 1e-11
 SHAPE_ACCURACY = 1e-7
+# Within a cluster that round-off smears the bound is the residual itself; this much of it is enough.
+CLUSTER_ACCURACY = 1e-10
 # A gap between two eigenvalues, relative to their distance from the shift, wide enough to count in it.
 GAP = 1e-5
 
@@ -55,7 +57,9 @@ class Found:
         order = np.concatenate([under[::-1], over[::-1]])
         size = np.abs(theta[order])
         bounds = theta_bounds(ritz)[order]
-        good = (bounds <= VALUE_ACCURACY * size) & (ritz.residuals[order] <= SHAPE_ACCURACY * size)
+        residuals = ritz.residuals[order]
+        sure = (bounds <= VALUE_ACCURACY * size) | (residuals <= CLUSTER_ACCURACY * size)
+        good = sure & (residuals <= SHAPE_ACCURACY * size)
         everything = about.krylov.spanned
         return cls(ritz, order, about.shift + 1 / theta[order], bounds, good, everything)
 
@@ -74,11 +78,7 @@ class Found:
             high = np.where(reach != 0, about.shift + 1 / reach, np.inf)
             low = about.shift + 1 / (theta + self.bounds)
         for place in range(wanted, len(theta)):
-            if (
-                not self.good[place - 1]
-                and place > wanted
-                and self.bounds[place - 1] > GAP * theta[place - 1]
-            ):
+            if not self.good[place - 1]:
                 return None
             if low[place] - high[place - 1] > GAP / abs(theta[place]):
                 return float((low[place] + high[place - 1]) / 2)

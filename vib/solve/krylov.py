@@ -14,12 +14,21 @@ import numpy as np
 import scipy.linalg
 from numpy.typing import NDArray
 
-from vib.solve.backends.interface import EPS, Array, Factor, Matrix
+from vib.solve.backends.interface import Array, Matrix
 from vib.solve.pencil import Pencil
+
+TINY = float(np.finfo(float).tiny)
 
 # Columns whose part outside the basis is below this share of what they were are taken as dependent: after
 # cancellation to that degree nothing but round-off would be left of them.
 DEPENDENT = 1e-10
+# Columns are freed of the basis until a pass subtracts no more than this share of what was left of them;
+# mostly twice is enough (B. N. Parlett, The Symmetric Eigenvalue Problem, SIAM 1998, section 6.9).
+SLIGHT = 1e-12
+MOST_PASSES = 4
+# The basis of a block whose columns are this far from depending on each other needs no second turn.
+SAFE = 1e-2
+CROWDED = 1e-5
 # Rows handled at a time where the basis is turned in place.
 CHUNK = 8192
 
@@ -39,16 +48,17 @@ class Ritz:
 class Krylov:
     """The basis V (n, k), its last block not yet multiplied by the operator, and V' M operator V."""
 
-    def __init__(self, pencil: Pencil, factor: Factor, *, block: int, capacity: int) -> None:
+    def __init__(self, pencil: Pencil, shift: float, *, block: int, capacity: int) -> None:
         """Start with ``block`` random directions, always the same, in a basis of ``capacity`` columns."""
-        self._pencil, self._factor, self._block = pencil, factor, block
+        self._pencil, self._shift = pencil, shift
         self._basis = np.empty((pencil.size, capacity), order="F")
         self._projected = np.zeros((capacity, capacity))
+        self._settled = np.zeros(capacity)
         self._random = np.random.default_rng(20240229)
         self.done = self.used = 0
         self._nothing_new = False
         self._waiting = np.zeros((pencil.size, 0))
-        self.add_random()
+        self.add_random(block)
 
     @property
     def basis(self) -> Array:
@@ -58,7 +68,7 @@ class Krylov:
     @property
     def full(self) -> bool:
         """Whether another step might find no room."""
-        return self.used + self.used - self.done + self._block > self._basis.shape[1]
+        return 2 * self.used - self.done > self._basis.shape[1]
 
     @property
     def exhausted(self) -> bool:
@@ -70,22 +80,27 @@ class Krylov:
         """Whether fresh directions were tried and the basis holds them all: there are no other modes."""
         return self.exhausted and self._nothing_new
 
-    def take_factor(self, factor: Factor) -> None:
-        """Go on with another factorisation of the same matrix."""
-        self._factor = factor
+    def begin_anew(self, ritz: Ritz, kept: NDArray[np.intp], columns: int) -> None:
+        """Keep converged approximations, with their residuals, and go on in ``columns`` fresh directions."""
+        self.restart(ritz, kept)
+        self._settled[: self.done] = ritz.residuals[kept]
+        self.used = self.done
+        self._projected[self.used :] = self._projected[:, self.used :] = 0.0
+        self._waiting = np.zeros((self._pencil.size, 0))
+        self.add_random(min(columns, (self._basis.shape[1] - self.used) // 2))
 
-    def add_random(self) -> None:
-        """Widen the waiting block by fresh directions that the basis does not hold."""
-        force = self._pencil.mass @ self._random.standard_normal((self._pencil.size, self._block))
+    def add_random(self, columns: int) -> None:
+        """Append fresh directions to the waiting block."""
+        force = self._pencil.mass @ self._random.standard_normal((self._pencil.size, columns))
         # one multiplication by the operator leaves no motion without mass in them
         before = self.used
-        self._append(self._factor.solve(force), known=before)
+        self._append(self._pencil.factorise(self._shift).solve(force), known=before)
         self._nothing_new = self.used == before
 
     def step(self) -> None:
         """Multiply the waiting block by the operator and take what is new in it as the next block."""
         first, last = self.done, self.used
-        image = self._factor.solve(self._waiting)
+        image = self._pencil.factorise(self._shift).solve(self._waiting)
         self.done = last
         self._waiting = np.zeros((self._pencil.size, 0))
         self._append(image, known=last, came_from=(first, last))
@@ -95,7 +110,8 @@ class Krylov:
         done = self.done
         theta, weights = scipy.linalg.eigh(self._projected[:done, :done])
         left = np.linalg.norm(self._projected[done : self.used, :done] @ weights, axis=0)
-        return Ritz(theta, weights, left)
+        settled = np.linalg.norm(self._settled[:done, None] * weights, axis=0)
+        return Ritz(theta, weights, np.hypot(left, settled))
 
     def vectors(self, ritz: Ritz, chosen: NDArray[np.intp]) -> Array:
         """The approximations of the given numbers (n, c), each multiplied by the operator once more for free.
@@ -117,6 +133,8 @@ class Krylov:
         wide = used - done
         self._basis[:, count : count + wide] = self._basis[:, done:used]
         link = self._projected[done:used, :done] @ weights
+        self._settled[:count] = np.linalg.norm(self._settled[:done, None] * weights, axis=0)
+        self._settled[count:] = 0.0
         self._projected[:] = 0.0
         self._projected[np.arange(count), np.arange(count)] = ritz.theta[kept]
         self._projected[count : count + wide, :count] = link
@@ -129,13 +147,16 @@ class Krylov:
         weighted = mass @ image
         before = np.einsum("ij,ij->j", image, weighted)
         shares = np.zeros((known, image.shape[1]))
-        for _ in range(
-            2
-        ):  # twice is enough (Parlett, The Symmetric Eigenvalue Problem, SIAM 1998, sect. 6.9)
+        left = before
+        for again in range(MOST_PASSES):
             share = basis.T @ weighted
-            image = image - basis @ share
-            weighted = mass @ image
+            image -= basis @ share
             shares += share
+            sizes = np.sqrt(np.maximum(left, np.maximum(DEPENDENT**2 * before, TINY)))
+            if again and np.abs(share / sizes).max(initial=0.0) <= SLIGHT:
+                break  # nothing but round-off was left to subtract: the product with the mass still holds
+            weighted = mass @ image
+            left = np.einsum("ij,ij->j", image, weighted)
         fresh, ready = _orthonormal(image, weighted, before, mass)
         last = known + fresh.shape[1]
         self._basis[:, known:last] = fresh
@@ -154,7 +175,7 @@ class Krylov:
 
 def _orthonormal(image: Array, weighted: Array, before: Array, mass: Matrix) -> tuple[Array, Array]:
     """Mass-orthonormal columns that span ``image`` (n, b), and their product with the mass matrix."""
-    for sweep in range(3):
+    for _ in range(3):
         if image.shape[1] == 0:
             break
         gram = image.T @ weighted
@@ -167,7 +188,9 @@ def _orthonormal(image: Array, weighted: Array, before: Array, mass: Matrix) -> 
         turn = scale[:, None] * vectors[:, independent] / np.sqrt(values[independent])
         image, weighted = image[:, kept] @ turn, weighted[:, kept] @ turn
         before = np.ones(image.shape[1])
-        if image.shape[1] == 0 or (sweep and values[independent].min() > 1 - 1e3 * EPS):
+        smallest = values[independent].min(initial=1.0)
+        if smallest > SAFE:
             break
-        weighted = mass @ image
+        if smallest < CROWDED:  # the turn has magnified what round-off left between the two
+            weighted = mass @ image
     return image, weighted

@@ -19,12 +19,12 @@ from vib.solve.clock import Clock, Progress
 from vib.solve.krylov import Ritz
 from vib.solve.pencil import Pencil
 from vib.solve.shift import Start
-from vib.solve.undamped import Undamped, elastic_ratio, round_off, stores_nothing
+from vib.solve.undamped import Undamped, round_off
 
 BLOCK = 8
 BASIS_BYTES = 4e9
 STEPS_AT_LEAST, STEPS_PER_BLOCK = 60, 30
-MOST_WIDENINGS = 8
+MOST_WIDENINGS, STEPS_BETWEEN_WIDENINGS = 5, 12
 # An eigenvalue this close to the place of an inertia count, relative to it, may be counted on either side.
 PLACE_SLACK = 1e-9
 # Eigenvalues whose distances from the shift agree to this degree have their shapes turned together.
@@ -122,7 +122,7 @@ class _Search:
         about = self._begin(wanted)
         found = self._converge(about, wanted)
         while (gap := found.gap_above(about, wanted)) is None and not found.everything:
-            self._advance(about, found, wanted)
+            self._advance(about, wanted)
             found = self._converge(about, wanted)
         if gap is None:
             return results(
@@ -137,7 +137,7 @@ class _Search:
     def _agree(self, about: About, found: Found, counted: int, place: float) -> Found:
         """Search on in new directions until as many eigenvalues below ``place`` are found as were counted."""
         slack = PLACE_SLACK * abs(place)
-        for _ in range(MOST_WIDENINGS):
+        for widened in range(1, MOST_WIDENINGS + 2):
             if (found.values < place - slack).sum() > counted:
                 raise AccuracyError(
                     f"The inertia count finds {counted} modes where the search found more; neither can be "
@@ -145,11 +145,19 @@ class _Search:
                     partial=self.partial(),
                 )
             if (found.values < place + slack).sum() >= counted:
-                return found
-            about.krylov.take_factor(self.clock.time_factor(self.pencil, about.shift))
-            self._make_room(about, found, counted)
-            about.krylov.add_random()
-            found = self._converge(about, counted)
+                # Approximations lie above the eigenvalues that they stand for (Cauchy's interlacing): these
+                # are all that there are, but one that has not converged may belong further down.
+                return self._converge(about, counted)
+            if widened > MOST_WIDENINGS:
+                break
+            self.clock.time_factor(self.pencil, about.shift)
+            columns = widened * self.start.block  # wider each time: there may be that many equal eigenvalues
+            about.krylov.begin_anew(found.ritz, np.sort(found.order[found.good]), columns)
+            for _ in range(STEPS_BETWEEN_WIDENINGS):
+                self._advance(about, counted)
+                found = self._look(about)
+                if found.everything or (found.values < place + slack).sum() >= counted:
+                    break
         missing = counted - int((found.values < place).sum())
         raise AccuracyError(f"{missing} of {counted} modes could not be found.", partial=self.partial())
 
@@ -161,26 +169,26 @@ class _Search:
             if found.everything or (len(found.order) >= wanted and found.good[:wanted].all()):
                 return found
             self.clock.tell(found.slowest(wanted), wanted / self.start.block)
-            self._advance(about, found, wanted)
-        raise AccuracyError(
-            f"The search for {wanted} modes did not converge in {most} steps.", self.partial()
-        )
+            self._advance(about, wanted)
+        unfinished = f"The search for {wanted} modes did not converge in {most} steps."
+        raise AccuracyError(unfinished, partial=self.partial())
 
     def _look(self, about: About) -> Found:
         return Found.of(about.krylov.ritz(), about)
 
-    def _advance(self, about: About, found: Found, wanted: int) -> None:
+    def _advance(self, about: About, wanted: int) -> None:
         """One step, after a restart where the basis is full."""
         krylov = about.krylov
-        self._make_room(about, found, wanted)
+        self._make_room(about, wanted)
         if krylov.exhausted:
-            krylov.add_random()
+            krylov.add_random(self.start.block)
         if not krylov.exhausted:
             self.clock.time_step(krylov)
 
-    def _make_room(self, about: About, found: Found, wanted: int) -> None:
+    def _make_room(self, about: About, wanted: int) -> None:
         krylov = about.krylov
         if krylov.full:
+            found = self._look(about)
             spare = max(self.start.block, (krylov.done - wanted) // 3)
             krylov.restart(found.ritz, np.sort(found.order[: wanted + spare]))
 
@@ -203,12 +211,13 @@ def results(
         stiff = shapes[:, group].T @ with_stiffness[:, group]
         heavy = shapes[:, group].T @ with_mass[:, group]
         _, turn = scipy.linalg.eigh((stiff + stiff.T) / 2, (heavy + heavy.T) / 2)
-        shapes[:, group] = shapes[:, group] @ turn
-    energy, terms = elastic_ratio(pencil.stiffness, shapes)
-    rigid = stores_nothing(energy, terms)
+        for columns in (shapes, with_stiffness):
+            columns[:, group] = columns[:, group] @ turn
+    energy = np.einsum("ij,ij->j", shapes, with_stiffness)
+    terms, mass_terms = pencil.energy_terms(shapes)
+    rigid = pencil.rigid(shapes, energy)
     values = np.where(rigid, 0.0, energy)
     angular = np.sqrt(np.abs(values))
-    _, mass_terms = elastic_ratio(pencil.mass, shapes)
     far = np.where(rigid, 1.0, 2 * angular)
     errors = np.where(rigid, 0.0, bounds / theta**2 / far + round_off(terms, mass_terms, angular))
     order = np.lexsort((values, ~rigid))

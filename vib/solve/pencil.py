@@ -7,7 +7,8 @@ import scipy.sparse as sparse
 from numpy.typing import NDArray
 
 from vib.solve.backends.choice import factor, upper_triangle
-from vib.solve.backends.interface import Factor, Matrix
+from vib.solve.backends.interface import Array, Factor, Matrix
+from vib.solve.undamped import elastic_ratio, stores_nothing
 
 
 class Pencil:
@@ -26,6 +27,7 @@ class Pencil:
         self._stiff, self._massive = both.data.real.copy(), both.data.imag.copy()
         self._backend = backend
         self._factor: Factor | None = None
+        self._row_sums: Array | None = None
         self.shift = np.nan
 
     def __enter__(self) -> Pencil:
@@ -67,11 +69,34 @@ class Pencil:
         self.shift = shift
         return self._factor
 
+    def energy_terms(self, shapes: Array) -> tuple[Array, Array]:
+        """Bounds of |x|' |K| |x| and |x|' |M| |x| (m,), the terms that cancel in energies of shapes (n, m).
+
+        By |x_i x_j| <= (x_i^2 + x_j^2) / 2 they are at most the squares weighted with sums of the rows.
+        """
+        if self._row_sums is None:
+            self._row_sums = np.stack([_row_sums(self.stiffness), _row_sums(self.mass)])
+        stiff, massive = self._row_sums @ shapes**2
+        return stiff, massive
+
+    def rigid(self, shapes: Array, energy: Array) -> NDArray[np.bool_]:
+        """Which shapes (n, m), of elastic energies x' K x (m,), are rigid-body motions."""
+        found = stores_nothing(energy, self.energy_terms(shapes)[0])
+        if found.any():  # a closer look, which costs more
+            found[found] = stores_nothing(*elastic_ratio(self.stiffness, shapes[:, found]))
+        return found
+
     def highest_ratio(self) -> float:
         """Largest ratio of diagonal stiffness to diagonal mass: about the highest eigenvalue there is."""
         mass, stiffness = self.mass.diagonal(), np.abs(self.stiffness.diagonal())
         moving = mass > 0
         return float((stiffness[moving] / mass[moving]).max()) if moving.any() else 0.0
+
+
+def _row_sums(matrix: sparse.csr_array) -> Array:
+    """Sums of the magnitudes of each row."""
+    sizes = sparse.csr_array((np.abs(matrix.data), matrix.indices, matrix.indptr), shape=matrix.shape)
+    return np.asarray(sizes @ np.ones(matrix.shape[1]))
 
 
 def _plain(matrix: Matrix) -> sparse.csr_array:

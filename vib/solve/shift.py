@@ -13,7 +13,6 @@ from vib.solve.bounds import About
 from vib.solve.clock import Clock
 from vib.solve.krylov import Krylov
 from vib.solve.pencil import Pencil
-from vib.solve.undamped import elastic_ratio, stores_nothing
 
 # First shift of a free structure, as a share of the highest eigenvalue: far above round-off in the stiffness,
 # below the elastic modes of most. It goes down by STEP_DOWN while it is beyond HIGHEST times the first
@@ -75,16 +74,18 @@ class Start:
 
     def _begin(self, pencil: Pencil, shift: float, capacity: int, clock: Clock) -> About:
         factor = clock.time_factor(pencil, shift)
-        krylov = Krylov(pencil, factor, block=self.block, capacity=capacity)
+        krylov = Krylov(pencil, shift, block=self.block, capacity=capacity)
         return About(krylov, shift, factor.negative or 0)
 
 
 def _trial(krylov: Krylov, pencil: Pencil) -> tuple[bool, float | None]:
     """Whether the basis so far holds a rigid-body motion, and the lowest eigenvalue of the others in it."""
     basis = krylov.basis
-    projected = basis.T @ (pencil.stiffness @ basis)
+    with_stiffness = pencil.stiffness @ basis
+    projected = basis.T @ with_stiffness
     _, turn = scipy.linalg.eigh((projected + projected.T) / 2)
-    energy, terms = elastic_ratio(pencil.stiffness, basis @ turn)
-    rigid = stores_nothing(energy, terms)
+    shapes = basis @ turn
+    energy = np.einsum("ij,ij->j", shapes, with_stiffness @ turn)
+    rigid = pencil.rigid(shapes, energy)
     elastic = np.abs(energy[~rigid])
     return bool(rigid.any()), float(elastic.min()) if elastic.size else None

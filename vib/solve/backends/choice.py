@@ -100,9 +100,12 @@ def _attempts(
         yield lambda: pardiso.Pardiso(matrix, symmetric=symmetric, definite=definite)
         if symmetric and not definite:
             yield lambda: pardiso.Pardiso(matrix, symmetric=True, matching=True)
-    if symmetric and (backend == Fronts.backend or (backend is None and size >= WORTH_DISSECTING)):
-        yield lambda: Fronts(matrix)
+    ours = [lambda: Fronts(matrix)] if symmetric and backend in (None, Fronts.backend) else []
+    if size >= WORTH_DISSECTING:
+        yield from ours
     if backend in (None, SuperLU.backend):
         yield lambda: SuperLU(matrix, symmetric=symmetric)
-        if symmetric:
-            yield lambda: SuperLU(matrix, symmetric=True, pivoting=True)
+    if size < WORTH_DISSECTING:  # it may leave the diagonal inside a block, so it is also the safer one
+        yield from ours
+    if symmetric and backend in (None, SuperLU.backend):
+        yield lambda: SuperLU(matrix, symmetric=True, pivoting=True)

@@ -3,7 +3,8 @@
 A. George, SIAM J. Numer. Anal. 10 (1973) 345-363. The graph is laid out in space by its own distances
 (D. Harel, Y. Koren, J. Graph Algorithms Appl. 8 (2004) 195-214) and halved across its longest direction
 (inertial bisection, H. D. Simon, Comput. Syst. Eng. 2 (1991) 135-148); the cut edges give the smallest
-separator that covers them (D. Koenig's theorem; A. Pothen, C.-J. Fan, ACM Trans. Math. Softw. 16 (1990) 303-324).
+separator that covers them (D. Koenig's theorem; A. Pothen, C.-J. Fan, ACM Trans. Math. Softw. 16 (1990)
+303-324).
 """
 
 from __future__ import annotations
