@@ -5,7 +5,7 @@ from __future__ import annotations
 from itertools import pairwise
 from typing import Annotated, Any
 
-from pydantic import BeforeValidator, Field, ValidationInfo, field_validator, model_validator
+from pydantic import BeforeValidator, Field, ValidationInfo, WithJsonSchema, field_validator, model_validator
 
 from vib.study.geometry import Table
 from vib.study.quantities import Along, Axis, Name, Names, Number, Quantity, Vector, positive, read_quantity
@@ -243,10 +243,14 @@ class Excitation(Table):
         return (self.speed,) if self.speed is not None else tuple((speed, speed) for speed in self.speeds)
 
 
+# a quantity whose kind depends on the direction (a force or a moment, ...): read where both are known
+_Size = Annotated[Any, WithJsonSchema({"type": ["string", "number"]})]
+
+
 class Pulse(Table):
     """A half-sine pulse."""
 
-    peak: str | float
+    peak: _Size = Field(description="the greatest force (a moment for a turn)")
     duration: Annotated[float, positive("time")]
 
 
@@ -263,13 +267,13 @@ class Impact(Table):
 
     at: Name
     along: Along | None = None
-    impulse: float | None = Field(None, description="a blow so short that nothing moves meanwhile")
+    impulse: _Size | None = Field(None, description="a blow so short that nothing moves meanwhile")
     pulse: Pulse | None = Field(None, description="a half-sine pulse {peak, duration}")
-    pull: float | None = Field(None, description="a steady force, let go at once")
-    displacement: float | None = Field(
+    pull: _Size | None = Field(None, description="a steady force, let go at once")
+    displacement: _Size | None = Field(
         None, description="pulled steadily until the place has moved so far, then let go"
     )
-    velocity: float | None = Field(None, description="the place starts with this velocity, all else at rest")
+    velocity: _Size | None = Field(None, description="the place starts with this velocity, all else at rest")
     duration: Annotated[float, positive("time")] | None = Field(
         None, description="default: until it has died away"
     )
