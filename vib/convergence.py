@@ -41,12 +41,17 @@ def converged_modes(system: System, count: int | None, limit: float | None) -> C
 
     The coarser division spans a subspace of the finer one, so that undamped frequencies fall from one to
     the next and never below the true ones (R. Courant, D. Hilbert, Methods of Mathematical Physics I,
-    chapter VI): real modes are compared by number, complex ones with the nearest eigenvalue.
+    chapter VI): real modes are compared by number (`_fall`), complex ones with the nearest eigenvalue.
     """
     division = _division(system)
     if division is None:
         solution = solve_system(system, count, limit)
-        return Converged(system, solution, np.zeros(len(solution.damped.values)), ())
+        damped = solution.damped
+        if system.anatomy is None or system.anatomy.discretisation is None:
+            return Converged(system, solution, np.zeros(len(damped.values)), ())
+        size = np.where(np.arange(len(damped.values)) < damped.rigid, 0.0, np.abs(damped.values))
+        errors, remarks = system.anatomy.discretisation.errors(damped.shapes, size)
+        return Converged(system, solution, errors, remarks)
     if count is None and limit is None:
         return _every_mode(system, division)
     solution = solve_system(system, count, limit)
@@ -107,11 +112,23 @@ def _errors(fine: Damped, coarse: System) -> Array:
         (fine.values.imag[fine.rigid :] > 0).all() and (found.values.imag[found.rigid :] > 0).all()
     ):
         known = min(number, len(found.values))
-        errors[:known] = np.abs(size[:known] - np.abs(found.values[:known]))
+        errors[:known] = _fall(size[:known], np.abs(found.values[:known]))
     elif len(found.values):
         errors = np.abs(fine.values[:, None] - found.values).min(axis=1)
     errors[: fine.rigid] = 0.0
     return np.where(errors > LARGE * size, errors, FRACTION * errors)
+
+
+def _fall(fine: Array, coarse: Array) -> Array:
+    """How far each frequency may have fallen from the coarser division, both in ascending order.
+
+    By number, except where modes may have changed places on the way: modes whose falls overlap are taken
+    together, and each may have come from the highest of them.
+    """
+    reach = np.maximum.accumulate(np.maximum(coarse, fine))
+    last = np.append(fine[1:] > reach[:-1], True)
+    top = np.minimum.accumulate(np.where(last, reach, np.inf)[::-1])[::-1]
+    return np.asarray(top - fine)
 
 
 def _every_mode(system: System, division: Division) -> Converged:

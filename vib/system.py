@@ -56,12 +56,12 @@ class Place:
 class Part:
     """A group of members, a spring set or a body: its share of the matrices, for energy shares.
 
-    ``stiffness`` and ``mass`` are sparse (n, n) or None where the part has none; ``damping_ratio`` is
-    the material's own (None: not given).
+    ``stiffness`` and ``mass`` are sparse (n, n), or can at least multiply shapes (n, m), or None where the
+    part has none; ``damping_ratio`` is the material's own (None: not given).
     """
 
     name: str
-    kind: str  # "members", "springs" or "body"
+    kind: str  # "members", "springs", "body" or "cells"
     stiffness: Matrix | None
     mass: Matrix | None
     damping_ratio: float | None = None
@@ -78,6 +78,32 @@ class Wireframe:
     nodes_m: Array
     motion: Matrix
     lines: tuple[tuple[str, tuple[int, ...]], ...]
+
+
+@dataclass(frozen=True, eq=False)
+class MeshView:
+    """The cells of a mesh, to draw and to write to files.
+
+    ``nodes_m`` (k, 3) all nodes of the file; ``motion`` sparse (3 k, n) as in `Wireframe`; ``cells`` kind,
+    part and node numbers (e, c) of each group of cells; ``faces`` part and corners (f, 3 or 4) of the faces
+    that are seen from outside, solids' turned outwards; ``used`` the nodes that have cells.
+    """
+
+    nodes_m: Array
+    motion: Matrix
+    cells: tuple[tuple[str, str, NDArray[np.intp]], ...]
+    faces: tuple[tuple[str, NDArray[np.intp]], ...]
+    used: NDArray[np.intp]
+
+
+class Discretisation(Protocol):
+    """How far the frequencies are off because a structure is divided into cells that can't be divided again."""
+
+    accuracy: float
+
+    def errors(self, shapes: NDArray[Any], angular: Array) -> tuple[Array, tuple[str, ...]]:
+        """Error of each angular frequency (m,), rad/s, from the shapes (n, m), and remarks."""
+        ...
 
 
 class Division(Protocol):
@@ -104,7 +130,8 @@ class Anatomy:
 
     ``carried`` (n, 6): T' M R, the inertia force on the freedoms per unit rigid acceleration of the
     ground along x, y, z and about the axes through the origin; ``rigid_mass`` (6, 6): R' M R of the
-    whole structure, held parts included. ``remarks`` are the assumptions made, in words.
+    whole structure, held parts included. ``remarks`` are the assumptions made, in words. A structure with a
+    ``mesh`` has a ``discretisation`` in the place of a ``division``.
     """
 
     places: Mapping[str, Place]
@@ -114,6 +141,8 @@ class Anatomy:
     rigid_mass: Array
     remarks: tuple[str, ...] = ()
     division: Division | None = None
+    mesh: MeshView | None = None
+    discretisation: Discretisation | None = None
 
 
 @dataclass(frozen=True)
@@ -179,12 +208,14 @@ class System:
     stiffness: Matrix
     damping: Matrix | None = None
     gyroscopic: Matrix | None = None
-    freedoms: tuple[Freedom, ...] = ()
+    freedoms: Sequence[Freedom] = ()
     unsymmetric: bool = False
     damping_law: DampingLaw = field(default_factory=DampingLaw)
     anatomy: Anatomy | None = None
 
     def __post_init__(self) -> None:
+        if self.anatomy is not None and self.anatomy.mesh is not None:
+            return  # assembled cell by cell: symmetric and regular by construction, and large
         mass = as_matrix("mass", self.mass, None)
         size = mass.shape[0]
         given = {"mass": mass, "stiffness": as_matrix("stiffness", self.stiffness, size)}
@@ -240,7 +271,12 @@ class System:
                 raise ModelError(f"{at}: say along which component, one of {', '.join(COMPONENTS)}.")
             moved = np.asarray(weights @ place.motion, dtype=np.float64).ravel()
             if not moved.any():
-                raise ModelError(f"{at}: it is held along {_in_words(along)} and can't move there.")
+                raise ModelError(
+                    f"{at}: it is held along {_in_words(along)} and can't move there (nodes of solids have no "
+                    "rotations)."
+                    if self.anatomy and self.anatomy.mesh
+                    else f"{at}: it is held along {_in_words(along)} and can't move there."
+                )
             return moved
         vector = self._freedom_direction(at, along, weights)
         if vector is None:

@@ -15,6 +15,7 @@ from vib.solve.damped import Damped, proportional_modes
 from vib.solve.damping import ModalDamping, modal_damping
 from vib.solve.dense import condensed_modes
 from vib.solve.factor import negative_count
+from vib.solve.lanczos import lowest_modes
 from vib.solve.quadratic import quadratic_modes
 from vib.solve.shift_invert import count_below, sparse_undamped
 from vib.solve.undamped import CANCELLATION, EPS, Array, Matrix, Undamped
@@ -25,6 +26,7 @@ ARRAY_SIZE = 400  # dense arrays are treated as such up to here whatever is aske
 THIN = 0.25  # and beyond as sparse where no more than this part of their entries is not zero
 LAW_MODES = 8  # undamped modes beyond those asked for that a damping law acts on beside dashpots
 FIRST_GUESS = 24  # modes looked for first where those below a frequency could not be counted
+LARGE = 2000  # sparse systems from here on are searched by blocks, with the fastest factorisation at hand
 LARGEST_DENSE = 5000  # (n, n) arrays beyond this fill the memory of an ordinary machine
 
 
@@ -59,6 +61,10 @@ def solve_system(system: System, count: int | None, limit: float | None, *, cert
     small = size <= LARGEST_DENSE
     if everything or size <= (DENSE_SIZE if sparse.issparse(system.stiffness) else ARRAY_SIZE):
         return _dense(problem, ask)
+    if _goes_by_blocks(problem) and (count is None or 4 * count < size):
+        found = _blocks(problem, ask)
+        if found is not None:
+            return found
     below = None if limit is None else count_below(problem.mass, problem.straight, limit)
     most = FIRST_GUESS if below is None else below
     wanted = count if limit is None and count is not None else most if count is None else min(count, most)
@@ -92,10 +98,31 @@ class _Problem:
         self.real_shapes = not (self.twisted or self.spinning or lopsided)
 
 
+def _goes_by_blocks(problem: _Problem) -> bool:
+    """Whether the undamped shapes of a large sparse system are those of the damped one, as far as is known."""
+    large = sparse.issparse(problem.stiffness) and problem.system.size >= LARGE
+    return large and problem.real_shapes
+
+
+def _blocks(problem: _Problem, ask: _Ask) -> Solution | None:
+    """The lowest modes of a large system by block Lanczos; None where damping turns the shapes."""
+    spare = LAW_MODES if problem.system.damping is not None and _law(problem.system) else 0
+    number = None if ask.number is None else ask.number + spare
+    undamped = lowest_modes(problem.mass, problem.straight, count=number, below=ask.limit)
+    damping = modal_damping(problem.system, undamped)
+    if not damping.proportional:
+        return None
+    found = proportional_modes(damping, np.zeros((problem.system.size, 0)))
+    kept = cut(found, ask.number, ask.limit)
+    return Solution(kept, damping, undamped.certified is not None, _law_remark(damping))
+
+
 def _thin(system: System) -> bool:
     """Whether dense arrays hold few enough entries to be worth the sparse solvers."""
+    if sparse.issparse(system.stiffness):
+        return False
     filled = max(np.count_nonzero(dense(matrix)) for matrix in (system.mass, system.stiffness))
-    return not sparse.issparse(system.stiffness) and bool(filled <= THIN * system.size**2)
+    return bool(filled <= THIN * system.size**2)
 
 
 def _dense(problem: _Problem, ask: _Ask) -> Solution:

@@ -3,7 +3,9 @@
 from __future__ import annotations
 
 from collections import Counter
+from collections.abc import Sequence
 from dataclasses import dataclass
+from typing import TYPE_CHECKING
 
 import numpy as np
 import scipy.sparse as sparse
@@ -16,7 +18,10 @@ from vib.structure.members import material_of, pieces_of
 from vib.structure.rigid import arms
 from vib.structure.springs import GROUND
 from vib.structure.stacks import components_of, reduce_stack, scatter, unstack
-from vib.system import Array, Matrix, Part
+from vib.system import Array, Freedom, Matrix, Part
+
+if TYPE_CHECKING:
+    from vib.structure.mesh.weaving import Woven
 
 Indices = NDArray[np.intp]
 
@@ -27,7 +32,8 @@ class Assembly:
 
     The matrices are stacks (see `stacks`), one of ``stiffness`` for each member group and then each spring
     table, one of ``mass`` for each member group and then each body, one of ``dashpot`` for each spring
-    table. ``names`` of all parts: member groups, spring tables, bodies.
+    table. ``names`` of all parts: member groups, spring tables, bodies, regions of a mesh. ``woven`` is the
+    mesh, assembled and joined to the rest; None without one. The stacks do not hold it.
     """
 
     layout: Layout
@@ -37,11 +43,21 @@ class Assembly:
     stiffness: Matrix
     mass: Matrix
     dashpot: Matrix
+    woven: Woven | None = None
 
     @property
     def size(self) -> int:
         """How many freedoms."""
-        return len(self.nodes.freedoms)
+        return len(self.nodes.freedoms) if self.woven is None else self.woven.size
+
+    @property
+    def freedoms(self) -> Sequence[Freedom]:
+        """The names of the freedoms."""
+        if self.woven is None:
+            return self.nodes.freedoms
+        from vib.structure.mesh.weaving import MeshFreedoms
+
+        return MeshFreedoms(self.nodes.freedoms, self.woven)
 
     def group_name(self, i: int) -> str:
         """The name of a member group."""
@@ -56,19 +72,27 @@ class Assembly:
         return self.names[len(self.layout.study.members) + len(self.layout.study.springs) + i]
 
     def reduced(self, stack: Matrix) -> Matrix:
-        """A stack on the freedoms, each matrix symmetric to the last bit."""
+        """A stack on the freedoms of the frame, each matrix symmetric to the last bit."""
         return reduce_stack(stack, self.nodes.transform)
 
     def parts(self, stiffness: Matrix, mass: Matrix) -> tuple[Part, ...]:
-        """Every part, from stacks of the shape of ``stiffness`` and ``mass``; None for what a part lacks."""
+        """Every part but those of a mesh, from stacks of the shape of ``stiffness`` and ``mass``.
+
+        None for what a part lacks.
+        """
         study = self.layout.study
         groups, springs, bodies = (len(table) for table in (study.members, study.springs, study.bodies))
-        stiff = [matrix if matrix.nnz else None for matrix in unstack(stiffness)] + [None] * bodies
-        heavy: list[Matrix | None] = [matrix if matrix.nnz else None for matrix in unstack(mass)]
+        stiff = [matrix if matrix.nnz else None for matrix in unstack(stiffness, groups + springs)] + [
+            None
+        ] * bodies
+        heavy: list[Matrix | None] = [
+            matrix if matrix.nnz else None for matrix in unstack(mass, groups + bodies)
+        ]
         heavy[groups:groups] = [None] * springs
         kinds = ["members"] * groups + ["springs"] * springs + ["body"] * bodies
         ratios = [material_of(study, i)[2] for i in range(groups)] + [None] * (springs + bodies)
-        return tuple(Part(*row) for row in zip(self.names, kinds, stiff, heavy, ratios, strict=True))
+        names = self.names[: len(kinds)]
+        return tuple(Part(*row) for row in zip(names, kinds, stiff, heavy, ratios, strict=True))
 
     def rigid_motion(self) -> Array:
         """Components of every node when everything moves as one body, about the origin; no twists."""
@@ -101,7 +125,17 @@ def assemble(layout: Layout, counts: Indices) -> Assembly:
         sparse.vstack([stiffness, springs], format="csr"),
         sparse.vstack([mass, heavy], format="csr"),
         dashpots,
+        _woven(layout, nodes),
     )
+
+
+def _woven(layout: Layout, nodes: Nodes) -> Woven | None:
+    if layout.mesh is None or not layout.mesh.groups:
+        return None
+    from vib.structure.mesh.weaving import weave
+
+    points = {name: i for i, name in enumerate(layout.point_names)}
+    return weave(layout.mesh, points, nodes.transform)
 
 
 def _part_names(layout: Layout) -> tuple[str, ...]:
@@ -109,6 +143,7 @@ def _part_names(layout: Layout) -> tuple[str, ...]:
     study = layout.study
     tables = (("members", study.members), ("springs", study.springs), ("body", study.bodies))
     named = [(row.name, word) for word, table in tables for row in table]
+    named += [(region, "cells") for region in (layout.mesh.regions if layout.mesh else ())]
     times = Counter(name for name, _ in named)
     return tuple(f"{name} ({word})" if times[name] > 1 else name for name, word in named)
 

@@ -7,6 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from vib.structure.members import coordinates_of
 from vib.study import Study
 from vib.system import Array
 
@@ -40,8 +41,10 @@ class Bodies:
 def read_bodies(study: Study, points: dict[str, int]) -> Bodies:
     """Arrays of the study's bodies."""
     carriers = tuple(tuple(points[name] for name in body.carried_by) for body in study.bodies)
+    coordinates = coordinates_of(study)
     centres = [
-        body.centre if body.centre is not None else study.points[body.carried_by[0]] for body in study.bodies
+        body.centre if body.centre is not None else coordinates[points[body.carried_by[0]]]
+        for body in study.bodies
     ]
     mass = np.zeros((len(study.bodies), 6, 6))
     for i, body in enumerate(study.bodies):

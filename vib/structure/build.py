@@ -91,26 +91,40 @@ def to_system(assembly: Assembly, remarks: tuple[str, ...] = ()) -> System:
         raise ModelError("supports: they hold everything, so that nothing can vibrate; hold fewer components")
     stiffnesses, masses = assembly.reduced(assembly.stiffness), assembly.reduced(assembly.mass)
     stiffness, mass = add_up(stiffnesses), add_up(masses)
-    if not mass.nnz:
-        raise ModelError("nothing that can move has a mass: give a material a density, or add [[bodies]]")
     dashpots = add_up(assembly.reduced(assembly.dashpot))
     parts = assembly.parts(stiffnesses, masses)
     rigid = assembly.rigid_motion()
     pushed = add_up(assembly.mass) @ rigid
+    carried, rigid_mass = assembly.nodes.transform.T @ pushed, rigid.T @ pushed
+    mesh, discretisation = None, None
+    if assembly.woven is not None:
+        from vib.structure.mesh import whole
+
+        woven = assembly.woven
+        parts = whole.parts(assembly, woven, parts)
+        stiffness, mass = whole.summed(woven.stiffness, stiffness), whole.summed(woven.mass, mass)
+        dashpots = whole.enlarged(dashpots, woven.size)
+        carried = whole.carried(woven, carried)
+        rigid_mass = rigid_mass + woven.rigid_motion().T @ woven.pushed
+        mesh, discretisation = whole.view(woven), whole.discretisation(assembly, woven, parts)
+    if not mass.nnz:
+        raise ModelError("nothing that can move has a mass: give a material a density, or add [[bodies]]")
     anatomy = Anatomy(
         places=find_places(assembly),
         parts=parts,
-        wireframe=draw(assembly),
-        carried=assembly.nodes.transform.T @ pushed,
-        rigid_mass=rigid.T @ pushed,
+        wireframe=draw(assembly, mesh),
+        carried=carried,
+        rigid_mass=rigid_mass,
         remarks=remarks,
-        division=PieceDivision(layout, assembly.counts, study.accuracy, remarks),
+        division=None if mesh else PieceDivision(layout, assembly.counts, study.accuracy, remarks),
+        mesh=mesh,
+        discretisation=discretisation,
     )
     return System(
         mass=mass,
         stiffness=stiffness,
         damping=_damping(study, mass, stiffness, [dashpots] if dashpots.nnz else []),
-        freedoms=assembly.nodes.freedoms,
+        freedoms=assembly.freedoms,
         damping_law=_law(study, parts),
         anatomy=anatomy,
     )

@@ -2,8 +2,9 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cached_property
+from typing import TYPE_CHECKING
 
 import numpy as np
 from numpy.typing import NDArray
@@ -11,12 +12,15 @@ from numpy.typing import NDArray
 from vib.errors import ModelError
 from vib.structure.beam import local_mass, local_stiffness, to_global
 from vib.structure.bodies import Bodies, read_bodies
-from vib.structure.members import Stretches, pieces_of, read_stretches
+from vib.structure.members import Stretches, coordinates_of, pieces_of, read_stretches
 from vib.structure.springs import Springs, read_springs
 from vib.structure.ties import Ties, tie
 from vib.study import Study
 from vib.study.quantities import COMPONENTS
 from vib.system import Array
+
+if TYPE_CHECKING:
+    from vib.structure.mesh import MeshModel
 
 _FARTHEST = 1e9  # m; beyond it, squares and cubes of lengths leave the range of numbers
 
@@ -25,7 +29,8 @@ _FARTHEST = 1e9  # m; beyond it, squares and cubes of lengths leave the range of
 class Layout:
     """The structure before it is cut: points, stretches of members, springs, bodies and what ties them.
 
-    ``coordinates_m`` (p, 3); ``held`` (p, 6) by supports.
+    ``study`` has plain points only: those found in a mesh are resolved. ``coordinates_m`` (p, 3); ``held``
+    (p, 6) by supports; ``mesh`` the cells of a mesh, None without one.
     """
 
     study: Study
@@ -36,13 +41,13 @@ class Layout:
     springs: Springs
     bodies: Bodies
     ties: Ties
+    mesh: MeshModel | None = None
 
     @cached_property
     def extent_m(self) -> float:
         """The largest side of the box around everything; 1 m for a single place."""
-        places = np.concatenate(
-            [self.coordinates_m, self.bodies.centres_m, self.stretches.tips_m.reshape(-1, 3)]
-        )
+        parts = [self.coordinates_m, self.bodies.centres_m, self.stretches.tips_m.reshape(-1, 3)]
+        places = np.concatenate(parts if self.mesh is None else [*parts, self.mesh.nodes_m])
         return float(np.ptp(places, axis=0).max()) or 1.0
 
     def piece_matrices(self, counts: NDArray[np.intp]) -> tuple[Array, Array]:
@@ -76,23 +81,39 @@ def read_layout(study: Study) -> Layout:
     ModelError
         The structure cannot be built as described; every fault that was found, each naming its entry.
     """
+    mesh = None
+    if study.mesh is not None:
+        # loaded where there is one: a frame shall not wait for what it does not need
+        from vib.structure.mesh import read_mesh_study
+        from vib.structure.mesh.parts import check_parts, components_in_cells
+
+        study, mesh = read_mesh_study(study)
     points = {name: i for i, name in enumerate(study.points)}
+    coordinates = coordinates_of(study)
     faults = [
-        f"points.{name}: lies {max(map(abs, place)):.3g} m away; check its unit"
-        for name, place in study.points.items()
-        if max(map(abs, place)) > _FARTHEST
+        f"points.{name}: lies {np.abs(place).max():.3g} m away; check its unit"
+        for name, place in zip(points, coordinates, strict=True)
+        if np.abs(place).max() > _FARTHEST
     ]
+    if mesh is not None and np.abs(mesh.nodes_m).max() > _FARTHEST:
+        faults.append(f"mesh: it reaches {np.abs(mesh.nodes_m).max():.3g} m away; check its length unit")
     if faults:
         raise ModelError("\n".join(faults))
     stretches = read_stretches(study, points, faults)
     springs = read_springs(study, points, faults)
+    if mesh is not None and len(mesh.shares) == len(springs.owner):
+        share = np.array(mesh.shares).reshape(-1, 1)
+        springs = replace(springs, stiffness=share * springs.stiffness, dashpot=share * springs.dashpot)
     bodies = read_bodies(study, points)
-    coordinates = np.array(list(study.points.values()), dtype=float).reshape(-1, 3)
     held = np.zeros((len(points), 6), dtype=bool)
     for support in study.supports:
         for name in support.at:
             held[points[name], [COMPONENTS.index(component) for component in support.hold]] = True
-    ties = tie(tuple(points), coordinates, held, stretches, springs, bodies, faults)
+    in_cells = None if mesh is None else components_in_cells(mesh, points)
+    ties = tie(tuple(points), coordinates, held, stretches, springs, bodies, faults, in_cells)
     if faults:
         raise ModelError("\n".join(faults))
-    return Layout(study, tuple(points), coordinates, held, stretches, springs, bodies, ties)
+    layout = Layout(study, tuple(points), coordinates, held, stretches, springs, bodies, ties, mesh)
+    if mesh is not None:
+        check_parts(mesh, points, held, stretches, springs, bodies)
+    return layout

@@ -66,7 +66,7 @@ class Stretches:
 
 def read_stretches(study: Study, points: dict[str, int], faults: list[str]) -> Stretches:
     """Arrays of the study's members; faults are appended in words, each naming its entry."""
-    coordinates = np.array([study.points[name] for name in points], dtype=float).reshape(-1, 3)
+    coordinates = coordinates_of(study)
     rows = [
         (i, entry, run, k)
         for i, members in enumerate(study.members)
@@ -109,6 +109,12 @@ def read_stretches(study: Study, points: dict[str, int], faults: list[str]) -> S
     return Stretches(
         ends, tips, reach, released, drawn, axes.turn_about_x(drawn, angle), bars, group, entries, labels
     )  # fmt: skip
+
+
+def coordinates_of(study: Study) -> NDArray[np.float64]:
+    """Coordinates (p, 3) of the points of a plain study, m, none of which is still to be found in a mesh."""
+    places = list(study.points.values())
+    return np.array(places, dtype=float).reshape(-1, 3)
 
 
 def pieces_of(bars: Bars, counts: Indices) -> Bars:

@@ -8,11 +8,10 @@ from collections.abc import Iterator
 import numpy as np
 
 from vib.structure.layout import Layout
-from vib.system import Array
+from vib.structure.nearby import SKEW, pairs_at_one_place
 
 _SAME = 1e-6  # of the structure's extent
 _CHUNK = 2_000_000
-_SKEW = np.array([0.5377, 0.6180, 0.5736])  # a direction that no structure has any reason to share
 
 
 def oddities(layout: Layout) -> Iterator[str]:
@@ -21,7 +20,7 @@ def oddities(layout: Layout) -> Iterator[str]:
     unused = [names[i] for i in np.flatnonzero(layout.ties.unused)]
     for name in unused:
         yield f"point {name} is used by no member, body or spring"
-    for a, b in _pairs_at_one_place(layout.coordinates_m, _SAME * layout.extent_m):
+    for a, b in pairs_at_one_place(layout.coordinates_m, _SAME * layout.extent_m):
         yield f"points {names[a]} and {names[b]} are at the same place but not joined by it"
     for s, point in _points_on_stretches(layout):
         yield (
@@ -34,27 +33,14 @@ def oddities(layout: Layout) -> Iterator[str]:
         yield f"{ends[pair]} members run side by side between points {both}"
 
 
-def _pairs_at_one_place(places: Array, tolerance: float) -> Iterator[tuple[int, int]]:
-    """Sorted along a skew line, neighbours in space are neighbours in order."""
-    shadow = places @ _SKEW
-    order = np.argsort(shadow, kind="stable")
-    for step in range(1, len(order)):
-        a, b = order[:-step], order[step:]
-        near = shadow[b] - shadow[a] <= tolerance
-        if not near.any():
-            return
-        same = near & (np.abs(places[a] - places[b]).max(axis=1) <= tolerance)
-        yield from ((int(min(i, j)), int(max(i, j))) for i, j in zip(a[same], b[same], strict=True))
-
-
 def _points_on_stretches(layout: Layout) -> Iterator[tuple[int, int]]:
     """(stretch, point) where a point lies between the ends of a stretch that does not join it."""
     stretches, points = layout.stretches, layout.coordinates_m
     tolerance = _SAME * layout.extent_m
-    order = np.argsort(points @ _SKEW, kind="stable")
-    shadow = points[order] @ _SKEW
+    order = np.argsort(points @ SKEW, kind="stable")
+    shadow = points[order] @ SKEW
     # only points whose shadow falls into that of the stretch can lie on it
-    ends = np.sort(stretches.tips_m @ _SKEW, axis=1) + 2 * tolerance * np.array([-1, 1])
+    ends = np.sort(stretches.tips_m @ SKEW, axis=1) + 2 * tolerance * np.array([-1, 1])
     first, last = np.searchsorted(shadow, ends[:, 0]), np.searchsorted(shadow, ends[:, 1])
     block = max(1, _CHUNK // max(1, len(points)))
     for start in range(0, len(stretches.labels), block):

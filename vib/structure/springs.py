@@ -7,6 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from vib.structure.members import coordinates_of
 from vib.structure.rigid import arms, turned
 from vib.study import Study
 from vib.study.machine import Spring
@@ -43,7 +44,7 @@ class Springs:
 
 def read_springs(study: Study, points: dict[str, int], faults: list[str]) -> Springs:
     """Arrays of the study's springs; faults are appended in words, each naming its entry."""
-    coordinates = np.array([study.points[name] for name in points], dtype=float).reshape(-1, 3)
+    coordinates = coordinates_of(study)
     pairs, owner, labels, turns, stiffness, dashpot = [], [], [], [], [], []
     for i, spring in enumerate(study.springs):
         axes = _axes(spring, i, faults)

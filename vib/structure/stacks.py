@@ -41,11 +41,11 @@ def scatter(blocks: Array, index: Indices, size: int, part: Indices | None = Non
     return sparse.coo_array((values[some], (rows[some], columns[some])), shape=(parts * size, size)).tocsr()
 
 
-def unstack(stack: Matrix) -> list[Matrix]:
-    """The square matrices of a stack (p n, n), as csr_array that share its memory."""
+def unstack(stack: Matrix, count: int) -> list[Matrix]:
+    """The ``count`` square matrices of a stack (p n, n), as csr_array that share its memory."""
     size = stack.shape[1]
     found = []
-    for first in range(0, stack.shape[0], size):
+    for first in range(0, count * size, size) if size else [0] * count:
         ends = stack.indptr[first : first + size + 1]
         span = slice(ends[0], ends[-1])
         part = (stack.data[span], stack.indices[span], ends - ends[0])

@@ -47,25 +47,32 @@ def tie(
     springs: Springs,
     bodies: Bodies,
     faults: list[str],
+    in_cells: NDArray[np.intp] | None = None,
 ) -> Ties:
-    """Work out the ties; a translation with neither mass nor stiffness is appended to the faults."""
+    """Work out the ties; a translation with neither mass nor stiffness is appended to the faults.
+
+    ``in_cells`` (points,): how many components the cells of a mesh resist at each point: 0, 3 or 6.
+    """
     count = len(names)
     places = np.concatenate([coordinates, bodies.centres_m])
     leads = np.concatenate([bodies.lead_of_point, bodies.lead])
     hub = np.where(leads >= 0, count + leads, np.arange(len(places)))
     rigid = arms(places - places[hub])
-    size = float(np.ptp(np.concatenate([places, stretches.tips_m.reshape(-1, 3)]), axis=0).max()) or 1.0
+    everywhere = np.concatenate([places, stretches.tips_m.reshape(-1, 3)])
+    size = float(np.ptp(everywhere, axis=0).max()) or 1.0 if len(everywhere) else 1.0
+    in_cells = np.zeros(count, dtype=np.intp) if in_cells is None else in_cells
     kept = np.zeros((len(places), 6), dtype=bool)
     kept[np.unique(hub)] = True
     expansion = np.broadcast_to(np.eye(6), (len(places), 6, 6)).copy()
     _hold(hub, rigid, held, size, kept, expansion)
-    touch = _touch(hub, rigid, size, stretches, springs, bodies)
+    touch = _touch(hub, rigid, size, stretches, springs, bodies, in_cells)
     surely = np.zeros(len(places), dtype=bool)
     surely[hub[stretches.ends[~stretches.released.any(axis=2)]]] = True
+    surely[hub[:count][in_cells == 6]] = True
     left_out = {}
     unused = np.ones(count, dtype=bool)
     unused[stretches.ends.reshape(-1)] = unused[springs.ends[springs.ends != GROUND]] = False
-    unused &= bodies.lead_of_point < 0
+    unused &= (bodies.lead_of_point < 0) & (in_cells == 0)
     kept[:count] &= ~unused[:, None]
     for place in np.flatnonzero(kept.any(axis=1) & ~surely):
         name = names[place] if place < count else bodies.names[place - count]
@@ -90,7 +97,13 @@ def _hold(
 
 
 def _touch(
-    hub: NDArray[np.intp], rigid: Array, size: float, stretches: Stretches, springs: Springs, bodies: Bodies
+    hub: NDArray[np.intp],
+    rigid: Array,
+    size: float,
+    stretches: Stretches,
+    springs: Springs,
+    bodies: Bodies,
+    in_cells: NDArray[np.intp],
 ) -> Array:
     """(h, 6, 6) positive semidefinite, of entries about one: zero for a motion of a hub that nothing notices.
 
@@ -115,6 +128,8 @@ def _touch(
         rows[i, :3, :3] = np.eye(3)
         rows[i, 3:, 3:] = (values > 1e-12 * max(values[2], 0.0))[:, None] * vectors.T
     add(np.arange(len(hub) - len(bodies.names), len(hub)), rows)
+    celled = np.flatnonzero(in_cells)
+    add(celled, np.eye(6) * (np.arange(6) < in_cells[celled, None])[:, :, None])
     return found
 
 

@@ -26,6 +26,8 @@ def check_names(raw: Mapping[str, Any]) -> Iterator[Finding]:
     if "ground" in points:
         yield ("points", "ground"), '"ground" is the fixed ground; give the point another name'
     yield from _check_members(raw, points)
+    yield from _check_regions(raw)
+    yield from _check_sets(raw)
     for i, body in _rows(raw, "bodies"):
         yield from _unknown("point", points, _listed(body.get("carried_by"), ("bodies", i, "carried_by")))
     for i, support in _rows(raw, "supports"):
@@ -80,6 +82,52 @@ def _check_members(raw: Mapping[str, Any], points: list[str]) -> Iterator[Findin
             yield from _unknown("point", points, _listed(run, path) if isinstance(run, list) else [])
             if isinstance(run, list) and any(a == b for a, b in pairwise(run)):
                 yield path, "a run joins a point to itself"
+
+
+def _check_regions(raw: Mapping[str, Any]) -> Iterator[Finding]:
+    """Materials and sections of the regions of the mesh."""
+    from vib.study.materials import MATERIALS
+
+    mesh = raw.get("mesh")
+    regions = mesh.get("regions") if isinstance(mesh, Mapping) else None
+    materials = [*_keys(raw.get("materials")), *(material.name for material in MATERIALS)]
+    for name, region in regions.items() if isinstance(regions, Mapping) else ():
+        if isinstance(region, Mapping):
+            path: Path = ("mesh", "regions", name)
+            yield from _unknown("material", materials, _listed(region.get("material"), (*path, "material")))
+            sections = _keys(raw.get("sections"))
+            yield from _unknown("section", sections, _listed(region.get("section"), (*path, "section")))
+
+
+def _check_sets(raw: Mapping[str, Any]) -> Iterator[Finding]:
+    """Sets of points of a mesh where one single point is needed."""
+    points = raw.get("points")
+    sets = [
+        name
+        for name, point in (points.items() if isinstance(points, Mapping) else ())
+        if isinstance(point, Mapping) and ("box" in point or "set" in point)
+    ]
+    for i, member in _rows(raw, "members"):
+        runs = member.get("runs")
+        for j, run in enumerate(runs if isinstance(runs, list) else []):
+            for name in run if isinstance(run, list) else []:
+                if name in sets:
+                    yield ("members", i, "runs", j), f'"{name}" is a set of points; a run joins single points'
+    for i, spring in _rows(raw, "springs"):
+        between = spring.get("between")
+        for pair in between if isinstance(between, list) else []:
+            ends = between if isinstance(pair, str) else pair
+            if isinstance(ends, list) and "ground" not in ends and any(name in sets for name in ends):
+                yield (
+                    ("springs", i, "between"),
+                    "a set of points takes springs to the ground only; let a body be carried by the set and "
+                    "name one of its points",
+                )
+                break
+    for i, body in _rows(raw, "bodies"):
+        carried = _listed(body.get("carried_by"), ())
+        if "centre" not in body and any(name in sets for _, name in carried):
+            yield ("bodies", i, "centre"), "is needed where a set of points carries a body"
 
 
 def _check_spring(spring: Mapping[str, Any], path: Path, points: list[str]) -> Iterator[Finding]:

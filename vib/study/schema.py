@@ -9,7 +9,8 @@ from pydantic import Field, PrivateAttr, create_model, field_validator, model_va
 
 from vib.study.geometry import Material, Members, Section, Support, Table
 from vib.study.machine import Body, Damping, Excitation, Impact, Matrices, Spring
-from vib.study.quantities import Name, Quantity, Vector
+from vib.study.mesh import Finder, Mesh, Point
+from vib.study.quantities import Name, Quantity
 from vib.units import KINDS, UnitSystem, factor
 
 if TYPE_CHECKING:
@@ -68,7 +69,8 @@ class Study(Table):
     )
     materials: dict[Name, Material] = {}
     sections: dict[Name, Section] = {}
-    points: dict[Name, Vector] = {}
+    mesh: Mesh | None = None
+    points: dict[Name, Point] = {}
     members: tuple[Members, ...] = ()
     bodies: tuple[Body, ...] = ()
     supports: tuple[Support, ...] = ()
@@ -92,14 +94,19 @@ class Study(Table):
     def _one_way(self) -> Study:
         if self.matrices is not None:
             built = [
-                name for name in ("points", "members", "bodies", "supports", "springs") if getattr(self, name)
+                name
+                for name in ("mesh", "points", "members", "bodies", "supports", "springs")
+                if getattr(self, name)
             ]
             if built:
                 raise ValueError(
                     f"a study has [matrices] or a structure, not both: remove {', '.join(built)}"
                 )
-        elif not (self.members or self.bodies):
-            raise ValueError("nothing to study: give [[members]], [[bodies]] or [matrices]")
+        elif not (self.members or self.bodies or self.mesh):
+            raise ValueError("nothing to study: give [[members]], [[bodies]], [mesh] or [matrices]")
+        found = [name for name, point in self.points.items() if isinstance(point, Finder)]
+        if found and self.mesh is None:
+            raise ValueError(f"points.{found[0]} is to be found in a mesh, and there is no [mesh]")
         return self
 
     @property
