@@ -53,7 +53,6 @@ class Krylov:
         self._pencil, self._shift = pencil, shift
         self._basis = np.empty((pencil.size, capacity), order="F")
         self._projected = np.zeros((capacity, capacity))
-        self._settled = np.zeros(capacity)
         self._random = np.random.default_rng(20240229)
         self.done = self.used = 0
         self._nothing_new = False
@@ -81,13 +80,14 @@ class Krylov:
         return self.exhausted and self._nothing_new
 
     def begin_anew(self, ritz: Ritz, kept: NDArray[np.intp], columns: int) -> None:
-        """Keep converged approximations, with their residuals, and go on in ``columns`` fresh directions."""
-        self.restart(ritz, kept)
-        self._settled[: self.done] = ritz.residuals[kept]
-        self.used = self.done
-        self._projected[self.used :] = self._projected[:, self.used :] = 0.0
-        self._waiting = np.zeros((self._pencil.size, 0))
-        self.add_random(min(columns, (self._basis.shape[1] - self.used) // 2))
+        """Start over from the approximations of the given numbers and about ``columns`` fresh directions."""
+        half = self._basis.shape[1] // 2
+        columns = min(columns, half // 2)
+        self.restart(ritz, kept[: half - columns])
+        self.used, self.done = self.done, 0
+        self._projected[:] = 0.0
+        self._waiting = self._pencil.mass @ self.basis
+        self.add_random(columns)
 
     def add_random(self, columns: int) -> None:
         """Append fresh directions to the waiting block."""
@@ -110,8 +110,7 @@ class Krylov:
         done = self.done
         theta, weights = scipy.linalg.eigh(self._projected[:done, :done])
         left = np.linalg.norm(self._projected[done : self.used, :done] @ weights, axis=0)
-        settled = np.linalg.norm(self._settled[:done, None] * weights, axis=0)
-        return Ritz(theta, weights, np.hypot(left, settled))
+        return Ritz(theta, weights, left)
 
     def vectors(self, ritz: Ritz, chosen: NDArray[np.intp]) -> Array:
         """The approximations of the given numbers (n, c), each multiplied by the operator once more for free.
@@ -133,8 +132,6 @@ class Krylov:
         wide = used - done
         self._basis[:, count : count + wide] = self._basis[:, done:used]
         link = self._projected[done:used, :done] @ weights
-        self._settled[:count] = np.linalg.norm(self._settled[:done, None] * weights, axis=0)
-        self._settled[count:] = 0.0
         self._projected[:] = 0.0
         self._projected[np.arange(count), np.arange(count)] = ritz.theta[kept]
         self._projected[count : count + wide, :count] = link

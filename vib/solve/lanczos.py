@@ -152,7 +152,7 @@ class _Search:
                 break
             self.clock.time_factor(self.pencil, about.shift)
             columns = widened * self.start.block  # wider each time: there may be that many equal eigenvalues
-            about.krylov.begin_anew(found.ritz, np.sort(found.order[found.good]), columns)
+            about.krylov.begin_anew(found.ritz, found.order[found.good], columns)
             for _ in range(STEPS_BETWEEN_WIDENINGS):
                 self._advance(about, counted)
                 found = self._look(about)

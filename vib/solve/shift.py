@@ -64,7 +64,7 @@ class Start:
     def _capacity(self, size: int, wanted: int) -> int:
         """Columns of the basis: enough not to restart, if the memory allows it."""
         most = int(self.basis_bytes / (8 * size))
-        least = wanted + 4 * self.block
+        least = 2 * wanted + 4 * self.block
         if most < least:
             raise AccuracyError(
                 f"{wanted} modes of {size} freedoms need a basis of {least * 8 * size / 1e9:.1f} GB, but "
