@@ -12,6 +12,7 @@ import numpy as np
 import pytest
 import scipy.sparse as sparse
 
+from vib.convergence import _fall
 from vib.errors import ShapeError
 from vib.system import Anatomy, DampingLaw, Freedom, Part, Place, System, Wireframe
 
@@ -330,3 +331,9 @@ def test_whole_and_mechanism_together():
     )
     modal = modes.shapes.T @ system.mass @ modes.shapes
     np.testing.assert_allclose(modal, np.eye(6), atol=1e-12)
+
+
+def test_modes_that_change_places_share_their_error():
+    """A fast-converging mode between the two values of a slow one must not hide how far that one fell."""
+    fine, coarse = np.array([50.0, 101.0, 102.0, 200.0]), np.array([51.0, 102.1, 105.0, 203.0])
+    np.testing.assert_allclose(_fall(fine, coarse), [1.0, 4.0, 3.0, 3.0], rtol=1e-12)
