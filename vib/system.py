@@ -21,6 +21,8 @@ from vib.errors import ModelError, ShapeError
 
 if TYPE_CHECKING:
     from vib.modes import Modes
+    from vib.response.frequency import FrequencyResponse
+    from vib.response.respond import Response
     from vib.response.ring import Ring
     from vib.statespace import StateSpace
 
@@ -317,6 +319,18 @@ class System:
         from vib.response.ring import ring
 
         return ring(self, **arguments)
+
+    def respond(self, **arguments: Any) -> Response:
+        """The response to loads over time; see `vib.response.respond.respond` for the arguments."""
+        from vib.response.respond import respond
+
+        return respond(self, **arguments)
+
+    def frequency_response(self, **arguments: Any) -> FrequencyResponse:
+        """Receptance, mobility, accelerance; see `vib.response.frequency.frequency_response`."""
+        from vib.response.frequency import frequency_response
+
+        return frequency_response(self, **arguments)
 
     def state_space(self, **arguments: Any) -> StateSpace:
         """The first-order model A, B, C, D; see `vib.statespace.state_space` for the arguments."""

@@ -8,4 +8,11 @@ small systems, cut to the lower modes with static corrections for large ones), `
 pull, initial state), `outputs` (what is recorded), `assemble` (all of these together), `sampling` (how long
 and how finely), `decay` (decrement, times to fall, peaks), `shares` (the table of modes), `ring` (the noun)
 and `as_dict` (for JSON).
+
+Forced response: `signals` (inputs as functions of time), `instep` (what they do within a step), `pieces`
+(signals cut at the steps), `blocks` and `record` (long records by the semigroup law), `simulate` (of a state
+space, in memory or to a file), `loads` (forces at places, a moving ground), `forced` (the model they act on),
+`respond` (the noun `Response`). Frequency response: `residue_sum` (sum over modes, dashpots put back, bound of
+what is left out), `receptance` (which way suits the system), `frequency` (the noun `FrequencyResponse`). For
+control work: `zeros` and `exports`.
 """

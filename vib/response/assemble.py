@@ -44,14 +44,15 @@ def assemble(system: System, start: Start, outputs: Sequence[Output]) -> Assembl
     VibError
         An impossible start, or matrices that don't determine the motion.
     """
-    if system.unsymmetric or system.size <= FULL_SIZE or _uncoupled(system):
+    if system.unsymmetric or system.size <= FULL_SIZE or is_uncoupled(system):
         model = full_model(system)
         motion, remarks = _motion(model, start, outputs)
         return Assembled(motion, f"complete first-order model, {len(model.matrix)} states", remarks)
     return _reduced(system, start, outputs)
 
 
-def _uncoupled(system: System) -> bool:
+def is_uncoupled(system: System) -> bool:
+    """Whether damping leaves the modes of a system of moderate size uncoupled."""
     if system.size > UNCOUPLED_SIZE or system.gyroscopic is not None:
         return False
     return modal_damping(system, dense_undamped(system.mass, system.stiffness)).proportional

@@ -86,7 +86,7 @@ def full_model(system: System) -> RingModel:
     )
     if system.unsymmetric or damped:
         return _direct_model(system, light)
-    return modal_model(system, dense_undamped(system.mass, system.stiffness), _flexibility(system, light))
+    return modal_model(system, dense_undamped(system.mass, system.stiffness), flexibility(system, light))
 
 
 def modal_model(system: System, undamped: Undamped, direct: Array | None = None) -> RingModel:
@@ -128,7 +128,7 @@ def _modal_damping(system: System, damping: ModalDamping) -> Array:
     return total
 
 
-def _flexibility(system: System, light: Array) -> Array | None:
+def flexibility(system: System, light: Array) -> Array | None:
     """How massless motions without dashpots give way by themselves to a force, (n, n)."""
     if not light.shape[1]:
         return None

@@ -47,14 +47,15 @@ class Driven:
     def record(self, step_s: float, count: int, sink: Sink | None = None) -> Array:
         """The outputs at 0, h, ..., (count - 1) h: (count, q); handed piece by piece to ``sink`` if given.
 
-        Then the result is empty. A blow at time t shows from t on.
+        Then the result is empty. A blow at time t shows from t on, but not itself
+        where an output feels the input directly.
 
         Raises
         ------
         AccuracyError
             The motion grows past the largest number.
         ModelError
-            A blow acts where there is no mass.
+            The step is not positive.
         """
         found = np.empty((0 if sink else count, len(self.rows)))
         for first, values in self._chunks(step_s, count):
@@ -67,7 +68,6 @@ class Driven:
     def _chunks(self, step_s: float, count: int) -> Iterator[tuple[int, Array]]:
         if not (np.isfinite(step_s) and step_s > 0 and count >= 1):
             raise ModelError(f"record: a positive step and at least one time are needed, got {step_s:g} s")
-        self._check_blows()
         refine = max([signal.refinement(step_s) for _, signal in self.signals], default=1)
         plan = _Plan(self, step_s, count, refine)
         with np.errstate(over="ignore", invalid="ignore", under="ignore"):
@@ -84,13 +84,6 @@ class Driven:
                         "unstable; ask for a shorter duration"
                     )
                 yield first, values
-
-    def _check_blows(self) -> None:
-        for column, signal in self.signals:
-            if signal.blows and any(matrix[:, column].any() for matrix in self.feed[:1]):
-                raise ModelError(
-                    "impulse: it acts where there is no mass and would throw it infinitely far; use a pulse"
-                )
 
     def contributions(self, step_s: float, moments: Sequence[int]) -> Array:
         """What each part of the model adds to each output at chosen steps: (moments, q, parts).

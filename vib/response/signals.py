@@ -173,6 +173,31 @@ class Samples(Points):
         return np.asarray(guess - (self.times_s[guess] > times), dtype=np.intp)
 
 
+@dataclass(frozen=True, eq=False)
+class Steps(_Plain):
+    """``levels`` (k,) that hold from each of the ascending ``times_s`` (k + 1,) to the next."""
+
+    times_s: Array
+    levels: Array
+
+    @property
+    def corners(self) -> Array:
+        """See `Signal`."""
+        return self.times_s
+
+    def value(self, times: Array, order: int = 0) -> Array:
+        """See `Signal`."""
+        if order:
+            return np.zeros(times.shape)
+        place = np.clip(np.searchsorted(self.times_s, times, side="right") - 1, 0, self.levels.size - 1)
+        inside = _within(times, float(self.times_s[0]), float(self.times_s[-1]))
+        return np.where(inside, self.levels[place], 0.0)
+
+    def expand(self, begins: Array, lengths: Array) -> Expansion:
+        """See `Signal`."""
+        return [(Power(0), self.value(begins + lengths / 2))]
+
+
 @dataclass(frozen=True)
 class Impulse(_Plain):
     """A blow of this ``size`` (its time integral) at ``time_s``, so short that nothing moves meanwhile."""
