@@ -99,12 +99,23 @@ class MeshView:
 
 
 class Discretisation(Protocol):
-    """How far the frequencies are off because a structure is divided into cells that can't be divided again."""
+    """How far frequencies are off because a structure consists of cells that can't be divided again."""
 
-    accuracy: float
+    @property
+    def accuracy(self) -> float:
+        """What is asked of every frequency."""
+        ...
+
+    def finer(self) -> System | None:
+        """The same structure with every cell divided, where comparing with it tells the error best."""
+        ...
 
     def errors(self, shapes: NDArray[Any], angular: Array) -> tuple[Array, tuple[str, ...]]:
-        """Error of each angular frequency (m,), rad/s, from the shapes (n, m), and remarks."""
+        """Error of each angular frequency (m,), rad/s, from the stresses of the shapes (n, m), and remarks."""
+        ...
+
+    def member_errors(self, shapes: NDArray[Any], angular: Array) -> Array:
+        """What the pieces of members beside the cells add to the error (m,), rad/s."""
         ...
 
 
@@ -273,12 +284,8 @@ class System:
                 raise ModelError(f"{at}: say along which component, one of {', '.join(COMPONENTS)}.")
             moved = np.asarray(weights @ place.motion, dtype=np.float64).ravel()
             if not moved.any():
-                raise ModelError(
-                    f"{at}: it is held along {_in_words(along)} and can't move there (nodes of solids have no "
-                    "rotations)."
-                    if self.anatomy and self.anatomy.mesh
-                    else f"{at}: it is held along {_in_words(along)} and can't move there."
-                )
+                solid = " (nodes of solids have no rotations)" if self.anatomy and self.anatomy.mesh else ""
+                raise ModelError(f"{at}: it is held along {_in_words(along)} and can't move there{solid}.")
             return moved
         vector = self._freedom_direction(at, along, weights)
         if vector is None:

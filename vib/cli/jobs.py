@@ -13,6 +13,7 @@ if TYPE_CHECKING:
     from vib.cli.starts import StartOptions
     from vib.modes import Modes
     from vib.response.ring import Ring
+    from vib.structure.survey import Survey
     from vib.study import Study
     from vib.units import UnitSystem
 
@@ -42,9 +43,8 @@ def check_study(path: Path, units: Chosen, pictures: str, wish: Wish) -> int:
     """Read the study back."""
     with at_work_on(path, wish) as study:
         from vib.show.tables.check import check_blocks, check_document
-        from vib.structure.survey import survey as survey_of
 
-        survey = survey_of(study)
+        survey = _survey(study)
 
         @cache
         def document() -> dict[str, Any]:
@@ -81,6 +81,17 @@ def show_modes(
             DONE if modes.stable else OBJECTION,
         )
         return deliver(answer, wish)
+
+
+def _survey(study: Study) -> Survey:
+    """The study read back; of a mesh with the factorisations that its modes are found with."""
+    from vib.structure.survey import survey
+
+    if study.mesh is None:
+        return survey(study)
+    from vib.solve.static import static_solver
+
+    return survey(study, static_solver)
 
 
 def _units(study: Study, chosen: Chosen) -> UnitSystem:
@@ -178,9 +189,8 @@ def write_report(
         from vib.show.documents import to_json
         from vib.show.files import write_files
         from vib.show.page import Findings, render_page
-        from vib.structure.survey import survey as survey_of
 
-        survey = survey_of(study)
+        survey = _survey(study)
         modes = _report_modes(study, limits, band)
         shown = _units(study, units)
         ring, start = _report_ring(study, modes, shown)

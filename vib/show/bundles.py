@@ -35,25 +35,38 @@ def check_files(study: Study, survey: Survey, document: dict[str, Any], pictures
 
 
 def modes_files(modes: Modes, title: str, pictures: str, up: str) -> dict[str, bytes]:
-    """modes.json, modes.csv, shapes.npz and one picture per mode."""
+    """modes.json, modes.csv, shapes.npz, of a structure shapes.vtu, and one picture per mode."""
     from vib.show.figures.shapes import shape_picture
 
     document = modes_document(modes, title)
     found = {
         "modes.json": to_json(document).encode(),
         "modes.csv": csv_bytes(document["modes"]),
-        "shapes.npz": npz_bytes(
-            {
-                "frequencies_hz": modes.frequencies_hz,
-                "damping_ratios": modes.damping_ratios,
-                "eigenvalues_per_s": modes.eigenvalues,
-                "shapes": modes.shapes,
-                "freedoms": [str(freedom) for freedom in modes.system.freedoms],
-            }
-        ),
+        "shapes.npz": npz_bytes(_shape_arrays(modes)),
     }
+    if modes.system.anatomy is not None:
+        from vib.show.viewer import vtu_bytes
+
+        found["shapes.vtu"] = vtu_bytes(modes)
     drawn = (shape_picture(modes, index, up) for index in range(modes.count))
     return found | _drawn(drawn, pictures)
+
+
+def _shape_arrays(modes: Modes) -> dict[str, Any]:
+    """Shapes by freedom; of a mesh by node, as its freedoms are too many to be named one by one."""
+    import numpy as np
+
+    found = {
+        "frequencies_hz": modes.frequencies_hz,
+        "damping_ratios": modes.damping_ratios,
+        "eigenvalues_per_s": modes.eigenvalues,
+        "shapes": modes.shapes,
+    }
+    mesh = modes.system.anatomy.mesh if modes.system.anatomy is not None else None
+    if mesh is None:
+        return found | {"freedoms": [str(freedom) for freedom in modes.system.freedoms]}
+    moved = np.asarray(mesh.motion @ modes.shapes).reshape(len(mesh.nodes_m), 3, -1)
+    return found | {"nodes_m": mesh.nodes_m, "displacements": moved}
 
 
 def ring_files(ring: Ring, document: dict[str, Any], units: UnitSystem, pictures: str) -> dict[str, bytes]:

@@ -104,7 +104,7 @@ def to_system(assembly: Assembly, remarks: tuple[str, ...] = ()) -> System:
         parts = whole.parts(assembly, woven, parts)
         stiffness, mass = whole.summed(woven.stiffness, stiffness), whole.summed(woven.mass, mass)
         dashpots = whole.enlarged(dashpots, woven.size)
-        carried = whole.carried(woven, carried)
+        carried = whole.carried(woven, carried, woven.pushed)
         rigid_mass = rigid_mass + woven.rigid_motion().T @ woven.pushed
         mesh, discretisation = whole.view(woven), whole.discretisation(assembly, woven, parts)
     if not mass.nnz:

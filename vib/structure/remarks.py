@@ -19,6 +19,7 @@ def assumptions(layout: Layout) -> tuple[str, ...]:
     """Everything that was taken as rigid, massless, undamped or not modelled, and what looks odd."""
     return (
         *oddities(layout),
+        *_of_mesh(layout),
         *_of_members(layout),
         *_of_bodies(layout),
         *_of_springs(layout),
@@ -26,6 +27,13 @@ def assumptions(layout: Layout) -> tuple[str, ...]:
         *_of_damping(layout),
         "small movements about the unloaded shape: weight, preload and running speed change no stiffness",
     )
+
+
+def _of_mesh(layout: Layout) -> Iterator[str]:
+    if layout.mesh is not None:
+        from vib.structure.mesh.remarks import mesh_remarks
+
+        yield from mesh_remarks(layout, layout.mesh)
 
 
 def listing(names: Iterable[str]) -> str:
@@ -97,12 +105,14 @@ def _of_springs(layout: Layout) -> Iterator[str]:
 
 
 def _of_freedoms(layout: Layout) -> Iterator[str]:
-    if not layout.held.any() and not (layout.springs.ends[:, 1] == GROUND).any():
+    held_mesh = layout.mesh is not None and layout.mesh.held
+    if not (layout.held.any() or held_mesh or (layout.springs.ends[:, 1] == GROUND).any()):
         yield "nothing holds the structure: it is free in space"
     names = (*layout.point_names, *layout.bodies.names)
     by_rotations: dict[tuple[str, ...], list[str]] = {}
     for hub, rotations in layout.ties.left_out.items():
-        by_rotations.setdefault(rotations, []).append(names[hub])
+        if layout.mesh is None or names[hub] not in layout.mesh.node_of_point:  # nodes of solids have none
+            by_rotations.setdefault(rotations, []).append(names[hub])
     for rotations, places in by_rotations.items():
         yield (
             f"rotations that nothing resists and that move no mass are left out: "
@@ -114,6 +124,8 @@ def _of_damping(layout: Layout) -> Iterator[str]:
     damping = layout.study.damping
     stated = damping.ratio or any(ratio for *_, ratio in damping.ranges) or damping.rayleigh is not None
     used = {members.material for members in layout.study.members}
+    if layout.study.mesh is not None:
+        used |= {region.material or "" for region in layout.study.mesh.regions.values()}
     own = any(layout.study.materials[name].damping_ratio for name in used & set(layout.study.materials))
     if not (stated or own or layout.springs.dashpot.any()):
         yield "no damping is given: everything is undamped"

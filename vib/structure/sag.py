@@ -3,8 +3,9 @@
 from __future__ import annotations
 
 import warnings
-from collections.abc import Callable, Mapping
-from dataclasses import dataclass
+from collections.abc import Callable, Iterator, Mapping
+from dataclasses import dataclass, replace
+from typing import TYPE_CHECKING
 
 import numpy as np
 import scipy.sparse as sparse
@@ -13,7 +14,11 @@ from numpy.typing import NDArray
 from vib.structure.assembly import Assembly
 from vib.structure.springs import GROUND
 from vib.structure.stacks import add_up
+from vib.study.quantities import COMPONENTS
 from vib.system import Array, Matrix
+
+if TYPE_CHECKING:
+    from vib.structure.mesh.weaving import Woven
 
 STANDARD_GRAVITY = (
     9.80665  # m/s^2, exact by definition (3rd General Conference on Weights and Measures, 1901)
@@ -24,6 +29,7 @@ _RESIDUAL = 1e-6
 
 Triple = tuple[float, float, float]
 Solve = Callable[[Array], Array]
+Factorise = Callable[[Matrix], Solve | None]
 
 
 @dataclass(frozen=True)
@@ -42,7 +48,7 @@ class Sag:
 
     ``displacement_m`` of every point and body by name; ``greatest_m`` the greatest anywhere along the
     structure, ``greatest_at`` where that is, in words, ``greatest_place_m`` and as coordinates;
-    ``motion_m`` (k, 3) of the wireframe's nodes; ``reactions`` together carry the weight.
+    ``motion_m`` (k, 3) of the nodes of the frame; ``reactions`` together carry the weight.
     """
 
     displacement_m: Mapping[str, Triple]
@@ -53,7 +59,9 @@ class Sag:
     reactions: tuple[Reaction, ...]
 
 
-def find_sag(assembly: Assembly, up: Array) -> tuple[Sag | None, tuple[str, ...]]:
+def find_sag(
+    assembly: Assembly, up: Array, factorise: Factorise | None = None
+) -> tuple[Sag | None, tuple[str, ...]]:
     """The sag and remarks; None where the structure is free or a mechanism.
 
     Parameters
@@ -62,24 +70,91 @@ def find_sag(assembly: Assembly, up: Array) -> tuple[Sag | None, tuple[str, ...]
         The structure, cut into pieces.
     up
         (3,) unit vector; gravity pulls the other way.
+    factorise
+        What factorises the stiffness; SuperLU if not given, which is slow for a large mesh.
     """
     raw_stiffness = add_up(assembly.stiffness)
     load = add_up(assembly.mass) @ (assembly.rigid_motion()[:, :3] @ (-STANDARD_GRAVITY * up))
-    transform = assembly.nodes.transform
+    transform, woven = assembly.nodes.transform, assembly.woven
     stiffness = assembly.reduced(raw_stiffness)
     pull = transform.T @ load
-    moved = _solve(stiffness, pull)
+    if woven is not None:
+        from vib.structure.mesh.whole import carried, summed
+
+        pulled = woven.pushed[:, :3] @ (-STANDARD_GRAVITY * up)
+        stiffness, pull = summed(woven.stiffness, stiffness), carried(woven, pull, pulled)
+    moved = _solve(stiffness, pull, factorise or _factor)
     if moved is None:
         return None, (
             "no sag: the structure is free to move somewhere, as a whole or as a mechanism, so that gravity "
             "has no static answer; vib modes names the free movements",
         )
-    motion = transform @ moved
+    motion = transform @ moved[: transform.shape[1]]
     residual = raw_stiffness @ motion - load
-    return _describe(assembly, motion, _reactions(assembly, motion, residual)), ()
+    if woven is None:
+        return _describe(assembly, motion, _reactions(assembly, motion, residual)), ()
+    on_mesh = woven.transform @ moved
+    at_edge = woven.edge_stiffness @ on_mesh - pulled[woven.edge]
+    residual = residual + _from_mesh(assembly, woven, at_edge)
+    reactions = (*_reactions(assembly, motion, residual), *_held_by_mesh(woven, at_edge))
+    return _with_mesh(assembly, woven, _describe(assembly, motion, reactions), moved), ()
 
 
-def _solve(stiffness: Matrix, pull: Array) -> Array | None:
+def _from_mesh(assembly: Assembly, woven: Woven, at_edge: Array) -> Array:
+    """(6 k + t,) forces that the mesh leaves unbalanced at nodes that are points."""
+    found = np.zeros(assembly.nodes.transform.shape[0])
+    number = {name: i for i, name in enumerate(assembly.layout.point_names)}
+    for name, node in woven.model.node_of_point.items():
+        rows = woven.rows_of(node)
+        found[6 * number[name] + np.arange(len(rows))] += at_edge[np.searchsorted(woven.edge, rows)]
+    return found
+
+
+def _held_by_mesh(woven: Woven, at_edge: Array) -> Iterator[Reaction]:
+    """Forces of the supports that hold nodes of the mesh, with their moment about the middle of the nodes."""
+    taken = set(woven.model.node_of_point.values())
+    for name, members, components in woven.model.held:
+        nodes = np.array([node for node in members.tolist() if node not in taken], dtype=np.intp)
+        if not len(nodes):
+            continue
+        taken |= set(nodes.tolist())
+        first, count = woven.pattern.first[nodes], 3 * np.diff(woven.pattern.first)[nodes]
+        at_nodes = np.zeros((len(nodes), 6))
+        for component in (COMPONENTS.index(name) for name in components):
+            has = np.flatnonzero(component < count)
+            rows = np.searchsorted(woven.edge, 3 * first[has] + component)
+            at_nodes[has, component] = at_edge[rows]
+        places = woven.model.nodes_m[nodes]
+        forces, moments = at_nodes[:, :3], at_nodes[:, 3:]
+        moment = np.cross(places - places.mean(axis=0), forces).sum(axis=0) + moments.sum(axis=0)
+        yield Reaction(f"support of {name}", name, _triple(forces.sum(axis=0)), _triple(moment))
+
+
+def _with_mesh(assembly: Assembly, woven: Woven, frame: Sag, moved: Array) -> Sag:
+    """The named places of a mesh too, and the greatest sag anywhere."""
+    from vib.structure.picture import find_places
+
+    places = {
+        name: _triple(np.asarray(place.motion @ moved)[:3]) for name, place in find_places(assembly).items()
+    }
+    shifts = np.asarray(woven.translations @ moved).reshape(-1, 3)
+    size = np.linalg.norm(shifts, axis=1)
+    node = int(np.argmax(size))
+    if size[node] <= frame.greatest_m:
+        return replace(frame, displacement_m=places)
+    named = next(
+        (name for name, at in woven.model.named.items() if at == node), f"node {node + 1} of the mesh"
+    )
+    return replace(
+        frame,
+        displacement_m=places,
+        greatest_m=float(size[node]),
+        greatest_at=named,
+        greatest_place_m=_triple(woven.model.nodes_m[node]),
+    )
+
+
+def _solve(stiffness: Matrix, pull: Array, factorise: Factorise) -> Array | None:
     """The displacements, or None where the stiffness is singular to round-off."""
     diagonal = stiffness.diagonal()
     if (diagonal <= 0).any():
@@ -88,7 +163,7 @@ def _solve(stiffness: Matrix, pull: Array) -> Array | None:
         return pull
     scale = 1 / np.sqrt(diagonal)
     scaled = sparse.csc_array(sparse.diags_array(scale) @ stiffness @ sparse.diags_array(scale))
-    solve = _factor(scaled)
+    solve = factorise(scaled)
     if solve is None or _smallest_eigenvalue(solve, len(diagonal)) < _SINGULAR:
         return None
     right = scale * pull
@@ -176,6 +251,8 @@ def _describe(assembly: Assembly, motion: Array, reactions: tuple[Reaction, ...]
     size = np.linalg.norm(shifts, axis=1)
     # a place with a name wins over an end of a member that moves as much
     greatest = int(np.argmax(size > size.max(initial=0.0) * (1 - 1e-9))) if size.any() else 0
+    if not len(size):
+        return Sag({}, 0.0, "", (0.0, 0.0, 0.0), shifts, reactions)
     words = list(names)
     separate = np.nonzero(layout.stretches.separate)
     words += [

@@ -145,7 +145,8 @@ def _svg(figure: Figure, prefix: str, words: str) -> str:
     Tree.register_namespace("", "http://www.w3.org/2000/svg")
     Tree.register_namespace("xlink", "http://www.w3.org/1999/xlink")
     space = "{http://www.w3.org/2000/svg}"
-    root = Tree.fromstring(_saved(figure, "svg"))
+    # the dots are those of painted surfaces; all else is drawn as lines
+    root = Tree.fromstring(_saved(figure, "svg", dpi=200))
     tag = re.sub(r"[^A-Za-z0-9_-]", "-", prefix)
     for element in root.iter():
         for name, value in element.attrib.items():

@@ -9,13 +9,14 @@ import numpy as np
 
 from vib.show.figures.canvas import COLOURS, FAINT, INK, Picture, sheet, short, style
 from vib.show.figures.space import Array, bare_axes, draw_at_rest, draw_triad, extent, moved, on_paper, smooth
+from vib.show.figures.surface import outline, paint
 from vib.show.numbers import significant
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
 
     from vib.modes import Modes
-    from vib.system import Anatomy
+    from vib.system import Anatomy, MeshView
 
 _SIZE = 0.13  # largest displacement drawn, as a share of the longest diagonal
 _MOST_BARS = 40
@@ -35,7 +36,7 @@ def shape_picture(modes: Modes, index: int, up: str = "z") -> Picture:
         figure = sheet(3.4, 2.7 if anatomy is not None else 2.2)
         axes = figure.add_subplot()
         axes.set_title(f"Mode {number}: {frequency}")
-        if anatomy is not None and len(anatomy.wireframe.nodes_m):
+        if anatomy is not None and (len(anatomy.wireframe.nodes_m) or anatomy.mesh is not None):
             _draw_structure(axes, anatomy, np.real(shape), up)
         else:
             _draw_bars(axes, modes, shape)
@@ -58,6 +59,8 @@ def _draw_structure(axes: Axes, anatomy: Anatomy, shape: Array, up: str) -> None
         amplitude = amplitude / largest
     bare_axes(axes)
     draw_at_rest(axes, wireframe, up)
+    if anatomy.mesh is not None:
+        _draw_surface(axes, anatomy.mesh, shape, largest, extent(wireframe.nodes_m), up)
     away = wireframe.nodes_m + shift
     members = {part.name for part in anatomy.parts if part.kind == "members"}
     strokes: dict[int, list[Array]] = {}
@@ -78,6 +81,16 @@ def _draw_structure(axes: Axes, anatomy: Anatomy, shape: Array, up: str) -> None
     _draw_bodies(axes, anatomy, shape, largest, up)
     axes.autoscale_view()
     draw_triad(axes, up, 0.09)
+
+
+def _draw_surface(axes: Axes, mesh: MeshView, shape: Array, largest: float, size: float, up: str) -> None:
+    outline(axes, mesh, up, FAINT)
+    shift = np.asarray(mesh.motion @ shape, dtype=np.float64).reshape(-1, 3)
+    level = np.zeros(len(shift))
+    if largest > 0:
+        level = np.clip(np.linalg.norm(shift, axis=1) / largest, 0.0, 1.0)
+        shift = shift * (_SIZE * size / largest)
+    paint(axes, mesh, up, shift=shift if largest > 0 else None, colours=_motion_colours(), level=level)
 
 
 def _collect(strokes: dict[int, list[Array]], paper: Array, sizes: Array) -> None:

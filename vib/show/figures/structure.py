@@ -9,6 +9,9 @@ import numpy as np
 
 from vib.show.figures.canvas import COLOURS, DASHES, FAINT, INK, Picture, legend, sheet, short, style
 from vib.show.figures.space import Array, bare_axes, draw_triad, extent, on_paper, sheet_height
+from vib.show.figures.surface import paint
+
+Places = dict[str, tuple[float, float, float]]
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -18,6 +21,8 @@ if TYPE_CHECKING:
 
 _MOST_LABELS = 40
 _MEMBERS = tuple(colour for colour in COLOURS if colour != COLOURS[3])  # springs have that one
+# paler than lines, so that what is drawn on the faces stands out
+_TINTS = ("#b9d3e6", "#f2cfb0", "#b7dccb", "#e6c6d8", "#f0dfb4", "#d7d7d7")
 _COIL = 0.035  # length of a spring to ground, as a share of the longest diagonal
 
 
@@ -40,12 +45,13 @@ def structure_picture(study: Study, system: System, frames: Iterable[tuple[Array
         figure = sheet(7.0, 1.1 + sheet_height(places, up, 6.2, 1.5, 4.4))
         axes = figure.add_subplot()
         bare_axes(axes)
-        handles = _draw_members(axes, anatomy, up)
+        handles = _draw_mesh(axes, anatomy, up) + _draw_members(axes, anatomy, up)
         drawn_frames = _draw_frames(axes, frames, size, up)
         handles += _draw_bodies(axes, study, anatomy, up)
-        handles += _draw_springs(axes, study, size, up)
-        handles += _draw_supports(axes, study, up)
-        _name_points(axes, study, up)
+        at = _places(study, anatomy)
+        handles += _draw_springs(axes, study, at, size, up)
+        handles += _draw_supports(axes, study, at, up)
+        _name_points(axes, at, up)
         # a study of one place only is not blown up to fill the sheet
         middle = on_paper(places.mean(axis=0), up)
         axes.update_datalim(middle + 0.12 * size * np.array([[-1.0, -1.0], [1.0, 1.0]]))
@@ -65,8 +71,31 @@ def structure_picture(study: Study, system: System, frames: Iterable[tuple[Array
 
 def _all_places(study: Study, anatomy: Anatomy) -> Array:
     nodes = np.asarray(anatomy.wireframe.nodes_m, dtype=np.float64).reshape(-1, 3)
-    points = np.array(list(study.points.values()), dtype=np.float64).reshape(-1, 3)
-    return np.concatenate([nodes, points])
+    named = list(_places(study, anatomy).values())
+    return np.concatenate([nodes, np.array(named, dtype=np.float64).reshape(-1, 3)])
+
+
+def _places(study: Study, anatomy: Anatomy) -> dict[str, tuple[float, float, float]]:
+    """Where each point of the study is; those found in a mesh are known to the structure only."""
+    found = {}
+    for name, point in study.points.items():
+        if isinstance(point, tuple):
+            found[name] = point
+        elif name in anatomy.places:
+            found[name] = anatomy.places[name].position_m
+    return found
+
+
+def _draw_mesh(axes: Axes, anatomy: Anatomy, up: str) -> list[tuple[Any, str]]:
+    """The outer faces of a mesh, a tint for each region."""
+    from matplotlib.patches import Patch
+
+    if anatomy.mesh is None:
+        return []
+    names = [part.name for part in anatomy.parts if part.kind == "cells"]
+    tints = {name: _TINTS[number % len(_TINTS)] for number, name in enumerate(names)}
+    paint(axes, anatomy.mesh, up, by_part=tints)
+    return [(Patch(facecolor=tint, edgecolor=INK, lw=0.4), name) for name, tint in tints.items()]
 
 
 def _draw_members(axes: Axes, anatomy: Anatomy, up: str) -> list[tuple[Any, str]]:
@@ -88,28 +117,28 @@ def _draw_members(axes: Axes, anatomy: Anatomy, up: str) -> list[tuple[Any, str]
 
 
 def _draw_bodies(axes: Axes, study: Study, anatomy: Anatomy, up: str) -> list[tuple[Any, str]]:
-    handle = None
+    handle, at = None, _places(study, anatomy)
     for body in study.bodies:
         place = anatomy.places.get(body.name)
         if place is None:
             continue
         (centre,) = on_paper(np.array(place.position_m), up)
         for carrier in body.carried_by:
-            (foot,) = on_paper(np.array(study.points[carrier]), up)
+            (foot,) = on_paper(np.array(at[carrier]), up)
             axes.plot(*np.stack([centre, foot]).T, color=INK, lw=0.7, ls=(0, (1.5, 1.5)), zorder=2)
         (handle,) = axes.plot(*centre, marker="o", ms=9, mfc=INK, mec="white", ls="none", zorder=5)
         _label(axes, centre, body.name, bold=True)
     return [(handle, "body (rigid), at its centre of mass")] if handle is not None else []
 
 
-def _draw_springs(axes: Axes, study: Study, size: float, up: str) -> list[tuple[Any, str]]:
+def _draw_springs(axes: Axes, study: Study, at: Places, size: float, up: str) -> list[tuple[Any, str]]:
     """A zigzag between two points, or from a point to the ground: below it, beside it where a support is."""
     handle = None
     held = {name for support in study.supports for name in support.at}
     for spring in study.springs:
         for pair in spring.between:
             points = [name for name in pair if name != "ground"]
-            paper = on_paper(np.array([study.points[name] for name in points]), up)
+            paper = on_paper(np.array([at[name] for name in points]), up)
             if len(points) == 1:
                 aside = points[0] in held
                 reach = np.array([-1.6, 0.0] if aside else [0.0, -1.0]) * _COIL * size
@@ -143,7 +172,7 @@ def _hatch(axes: Axes, place: Array, width: float, *, upright: bool) -> None:
         axes.plot(*np.stack([foot, foot + behind]).T, color=INK, lw=0.6, zorder=4)
 
 
-def _draw_supports(axes: Axes, study: Study, up: str) -> list[tuple[Any, str]]:
+def _draw_supports(axes: Axes, study: Study, at: Places, up: str) -> list[tuple[Any, str]]:
     """A filled foot where all six components are held, a hollow one where some are free."""
     held: dict[str, set[str]] = {}
     for support in study.supports:
@@ -154,14 +183,14 @@ def _draw_supports(axes: Axes, study: Study, up: str) -> list[tuple[Any, str]]:
     handles: list[tuple[Any, str]] = []
     for names, inside, words in ((full, INK, "support, all held"), (some, "white", "support, partly held")):
         if names:
-            paper = on_paper(np.array([study.points[name] for name in names]), up)
+            paper = on_paper(np.array([at[name] for name in names]), up)
             (handle,) = axes.plot(*paper.T, marker=_FOOT, ms=11, mfc=inside, mec=INK, ls="none", zorder=3)
             handles.append((handle, words))
     for name in some if len(some) <= _MOST_LABELS else ():
         told = " ".join(
             component for component in ("x", "y", "z", "rx", "ry", "rz") if component in held[name]
         )
-        (place,) = on_paper(np.array(study.points[name]), up)
+        (place,) = on_paper(np.array(at[name]), up)
         axes.annotate(
             f"holds {told}",
             tuple(place),
@@ -178,11 +207,11 @@ def _draw_supports(axes: Axes, study: Study, up: str) -> list[tuple[Any, str]]:
 _FOOT = ((0.0, 0.0), (-0.6, -1.0), (0.6, -1.0), (0.0, 0.0))
 
 
-def _name_points(axes: Axes, study: Study, up: str) -> None:
-    paper = on_paper(np.array(list(study.points.values())), up)
+def _name_points(axes: Axes, at: Places, up: str) -> None:
+    paper = on_paper(np.array(list(at.values())), up)
     axes.plot(*paper.T, ls="none", marker="o", ms=2.6, color=INK, zorder=4)
-    if len(study.points) <= _MOST_LABELS:
-        for name, place in zip(study.points, paper, strict=True):
+    if len(at) <= _MOST_LABELS:
+        for name, place in zip(at, paper, strict=True):
             _label(axes, place, name)
 
 

@@ -15,13 +15,14 @@ if TYPE_CHECKING:
     from vib.study import Study
 
 _MOST_ROWS = 30
-_KINDS = {"members": "members", "springs": "springs", "body": "rigid body"}
+_KINDS = {"members": "members", "springs": "springs", "body": "rigid body", "cells": "cells of the mesh"}
 
 
 def check_blocks(study: Study, survey: Survey, units: UnitSystem) -> list[Block]:
     """All that the ``check`` command shows."""
     blocks: list[Block] = [Heading(study.title), facts(study, survey, units)]
     for table in (
+        region_table(survey),
         part_table(survey, units),
         support_table(survey),
         sag_table(survey, units),
@@ -50,7 +51,7 @@ def facts(study: Study, survey: Survey, units: UnitSystem) -> Facts:
     if survey.sag is not None:
         greatest = text(survey.sag.greatest_m, "length", units, digits=3)
         rows.append(("greatest sag", f"{greatest} at {survey.sag.greatest_at}"))
-    rows.append(("freedoms", f"{survey.freedoms} (members are cut finer where accuracy asks for it)"))
+    rows.append(("freedoms", _freedoms(study, survey)))
     if study.matrices is not None:
         given = [
             name for name in ("mass", "stiffness", "damping", "gyroscopic") if getattr(study.matrices, name)
@@ -58,6 +59,25 @@ def facts(study: Study, survey: Survey, units: UnitSystem) -> Facts:
         rows = [("matrices", joined(given)), ("freedoms", str(survey.freedoms))]
     rows.append(("accuracy asked", f"{100 * study.accuracy:.3g} % of each frequency"))
     return Facts(tuple(rows))
+
+
+def _freedoms(study: Study, survey: Survey) -> str:
+    if study.mesh is not None:
+        return str(survey.freedoms)
+    return f"{survey.freedoms} (members are cut finer where accuracy asks for it)"
+
+
+def region_table(survey: Survey) -> Table | None:
+    """The regions of the mesh file, and what the study makes of each."""
+    if not survey.regions:
+        return None
+    rows = [
+        (region.name, kind, str(count), region.use or "not yet assigned")
+        for region in survey.regions
+        for kind, count in region.cells.items()
+    ]
+    columns = (text_column("region"), text_column("kind of cell"), Column("cells"), text_column("use"))
+    return Table("Regions of the mesh", columns, _first(rows, 4))
 
 
 def part_table(survey: Survey, units: UnitSystem) -> Table | None:
@@ -85,7 +105,14 @@ def part_table(survey: Survey, units: UnitSystem) -> Table | None:
 
 def support_table(survey: Survey) -> Table | None:
     """Where the structure is held, and by what it stands on the ground."""
-    rows = [(supported.point, "support", _held(supported.components)) for supported in survey.supports]
+    rows = [
+        (
+            supported.point if supported.nodes == 1 else f"{supported.point} ({supported.nodes} nodes)",
+            "support",
+            _held(supported.components),
+        )
+        for supported in survey.supports
+    ]
     rows += [(label, "spring or dashpot to ground", "") for label in survey.grounded]
     if not rows:
         return None
@@ -169,7 +196,12 @@ def check_document(study: Study, survey: Survey) -> dict[str, Any]:
             for part in survey.parts
         ],
         "supports": [
-            {"point": supported.point, "held": list(supported.components)} for supported in survey.supports
+            {"point": supported.point, "held": list(supported.components), "nodes": supported.nodes}
+            for supported in survey.supports
+        ],
+        "regions": [
+            {"name": region.name, "cells": dict(region.cells), "use": region.use or None}
+            for region in survey.regions
         ],
         "springs_to_ground": list(survey.grounded),
         "sag": None

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -10,11 +10,15 @@ from numpy.typing import NDArray
 
 from vib.errors import AccuracyError
 from vib.structure.cells.recovery import energy_errors
+from vib.structure.division import expected_error
+from vib.structure.mesh.finer import count_of, divided, only_shells
 from vib.structure.mesh.weaving import Woven
-from vib.system import Array, Part
+from vib.system import Array, Part, System
 
 if TYPE_CHECKING:
     from vib.structure.layout import Layout
+
+MOST_COMPARED = 400_000  # freedoms of the divided mesh
 
 
 @dataclass(frozen=True, eq=False)
@@ -31,6 +35,20 @@ class CellErrors:
         """What the study asks."""
         return self.layout.study.accuracy
 
+    def finer(self) -> System | None:
+        """Shells divided in four, as far as memory and time allow; None where stresses have to do.
+
+        The errors of shells are not of one sign, as these are no pure displacement elements, so that their
+        stresses overstate them severalfold; solids need no such comparison.
+        """
+        model = self.woven.model
+        if not only_shells(model) or count_of(model) > MOST_COMPARED:
+            return None
+        from vib.structure.assembly import assemble
+        from vib.structure.build import to_system
+
+        return to_system(assemble(replace(self.layout, mesh=divided(model)), self.counts))
+
     def errors(self, shapes: NDArray[Any], angular: Array) -> tuple[Array, tuple[str, ...]]:
         """Error of each angular frequency (m,), rad/s, and remarks.
 
@@ -43,9 +61,28 @@ class CellErrors:
         if not elastic.any():
             return found, ()
         real = np.ascontiguousarray(np.real(shapes[:, elastic]))
-        share, unknown = self._share(real)
+        share, remarks = self._share(real)
         found[elastic] = angular[elastic] * np.where(np.isfinite(share), share / 2, 1.0)
-        return found, (*self._remarks(found, angular, elastic), *unknown)
+        return found, remarks
+
+    def member_errors(self, shapes: NDArray[Any], angular: Array) -> Array:
+        """Error (m,), rad/s, that the pieces of members add, by their length and share of the energy."""
+        found = np.zeros(len(angular))
+        members = [part for part in self.parts if part.kind == "members" and part.stiffness is not None]
+        stretches = self.layout.stretches
+        if not members:
+            return found
+        real = np.real(shapes)
+        piece = stretches.bars.length / self.counts
+        for mode in np.flatnonzero(angular > 0):
+            shape = real[:, mode]
+            held = sum(
+                float(shape @ (part.stiffness @ shape)) for part in members if part.stiffness is not None
+            )
+            whole = max(float(shape @ (self.woven.stiffness @ shape)) + held, np.finfo(float).tiny)
+            error = expected_error(stretches, piece, float(angular[mode]) / (2 * np.pi)).max()
+            found[mode] = angular[mode] * min(1.0, error) * held / whole
+        return found
 
     def _share(self, shapes: Array) -> tuple[Array, tuple[str, ...]]:
         """Share of the error in the energy of each mode (m,)."""
@@ -59,16 +96,3 @@ class CellErrors:
                 f"The error of the frequencies is not known, and stands as 100 %: {error}",
             )
         return share, ()
-
-    def _remarks(self, errors: Array, angular: Array, elastic: NDArray[np.bool_]) -> tuple[str, ...]:
-        relative = errors[elastic] / angular[elastic]
-        worst = float(relative.max())
-        told = f"by the stresses of the modes, their frequencies are within {100 * worst:.2g} %"
-        if worst <= self.accuracy:
-            return (f"The mesh is used as it is ({self.woven.size} freedoms); {told}.",)
-        beyond = int((relative > self.accuracy).sum())
-        return (
-            f"The mesh is too coarse for {beyond} of {len(relative)} modes to be within "
-            f"{100 * self.accuracy:.2g} %: their error bars reach {100 * worst:.2g} %. A mesh is not refined by "
-            "itself; use smaller cells, or cells of second order.",
-        )

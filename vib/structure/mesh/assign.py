@@ -100,8 +100,9 @@ def check_assigned(study: Study, regions: tuple[RegionFound, ...], raw: RawMesh)
     if any(not region.use for region in regions):
         listed = "; ".join(str(region) for region in regions)
         faults.append(
-            f"mesh.regions: not every region of {raw.file} is assigned. Found: {listed}. Give each of them a "
-            '[mesh.regions.NAME] with its material (shells also a thickness, lines a section), or use = "ignore"'
+            f"mesh.regions: not every region of {raw.file} is assigned. Found: {listed}. Give each of them "
+            "a [mesh.regions.NAME] with its material (shells also a thickness, lines a section), or "
+            'use = "ignore"'
         )
     if faults:
         raise ModelError("\n".join(faults))

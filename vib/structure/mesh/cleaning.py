@@ -106,8 +106,8 @@ def _alike(
         if offsets.get(region):
             raise ModelError(
                 f"mesh: the normals of the shells of region {region} point to both sides (for instance "
-                f"{listed('cell', numbers[wrong], 4)}), so that its offset has no meaning; give all its cells "
-                "the same sense of rotation"
+                f"{listed('cell', numbers[wrong], 4)}), so that its offset has no meaning; give all its "
+                "cells the same sense of rotation"
             )
         if twisted.any():
             remarks.append(f"mesh: the surface of region {region} has only one side (a twisted band)")
@@ -156,7 +156,7 @@ def _other_side(patches: list[Patch]) -> tuple[NDArray[np.bool_], NDArray[np.boo
     graph = sparse.coo_array((np.ones(len(rows), dtype=bool), (rows, columns)), shape=(2 * start, 2 * start))
     label = connected_components(graph, directed=False)[1].reshape(-1, 2)
     twisted = label[:, 0] == label[:, 1]
-    # the two sides of a surface are two labels; the lower one is its name, the column the side each cell is on
+    # the two sides of a surface are two labels; the lower one is its name, and its column the side of a cell
     surface, side = label.min(axis=1), label.argmin(axis=1)
     on_second = np.bincount(surface, weights=side, minlength=label.max() + 1)
     total = np.bincount(surface, minlength=label.max() + 1)

@@ -107,8 +107,8 @@ def _one(name: str, point: Finder, nodes: _Nodes, remarks: list[str]) -> int:
     if distance > TOO_FAR * size:
         place = ", ".join(f"{1000 * x:.6g}" for x in nodes.nodes_m[node])
         raise ModelError(
-            f"the nearest node, {node + 1} at [{place}] mm, is {1000 * distance:.4g} mm away, more than half of "
-            f"the {1000 * size:.4g} mm of the cells there; check its coordinates and the mesh's length unit"
+            f"the nearest node, {node + 1} at [{place}] mm, is {1000 * distance:.4g} mm away, more than half "
+            f"of the {1000 * size:.4g} mm of the cells; check the coordinates and the mesh's length unit"
         )
     if distance > AT_NODE * size:
         remarks.append(
@@ -119,8 +119,8 @@ def _one(name: str, point: Finder, nodes: _Nodes, remarks: list[str]) -> int:
 
 def _set(point: Finder, raw: RawMesh, nodes: _Nodes) -> Numbers:
     if point.set is not None:
-        chosen = _named_set(point.set, raw)
-        found: Numbers = chosen[nodes.used[chosen]]
+        named = _named_set(point.set, raw)
+        found: Numbers = named[nodes.used[named]]
         if not len(found):
             raise ModelError(f'no node of "{point.set}" belongs to a cell that is computed')
         return found
@@ -133,7 +133,8 @@ def _set(point: Finder, raw: RawMesh, nodes: _Nodes) -> Numbers:
             ", ".join(f"{1000 * x:.6g}" for x in ends(nodes.places, axis=0)) for ends in (np.min, np.max)
         )
         raise ModelError(f"no node of the mesh is in the box; the mesh lies between [{low}] and [{high}] mm")
-    return nodes.numbers[inside]
+    chosen: Numbers = nodes.numbers[inside]
+    return chosen
 
 
 def _named_set(name: str, raw: RawMesh) -> Numbers:

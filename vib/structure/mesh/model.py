@@ -33,8 +33,9 @@ class MeshModel:
     ``nodes_m`` (k, 3), numbered as in the file; ``groups`` of shells and solids, ``part`` the region of each,
     ``numbers`` what their cells are called; ``ratios`` the damping ratio of each region's material;
     ``asked`` the names that the study gives to points; ``node_of_point`` the node of each point of the plain
-    study that is one; ``named`` the node of each point of the study that is one; ``sets`` the nodes of each set; ``held`` components by node and by the name that
-    holds them; ``shares`` the part of a spring table's constants that each of its pairs has.
+    study that is one; ``named`` the node of each point of the study that is one; ``sets`` the nodes of each
+    set; ``held`` components by node and by the name that holds them; ``shares`` the part of a spring table's
+    constants that each of its pairs has.
     """
 
     nodes_m: Array
@@ -127,8 +128,8 @@ def _check_collapsed(patches: tuple[Patch, ...]) -> None:
         wrong = (ordered[:, 1:] == ordered[:, :-1]).any(axis=1)
         if wrong.any():
             raise ModelError(
-                f"mesh.join_within: it would join nodes of the same cell ({listed('cell', patch.numbers[wrong])}); "
-                "give a smaller distance"
+                "mesh.join_within: it would join nodes of the same cell "
+                f"({listed('cell', patch.numbers[wrong])}); give a smaller distance"
             )
 
 
@@ -249,8 +250,8 @@ class _Resolving:
             ]
             yield Members.model_construct(
                 name=region,
-                section=table.section,
-                material=table.material,
+                section=table.section or "",
+                material=table.material or "",
                 runs=tuple(runs),
                 up=table.up,
                 turn=table.turn,
@@ -288,5 +289,6 @@ def held_flags(model: MeshModel) -> Flags:
     """(k, 6) components of nodes that supports hold."""
     flags = np.zeros((len(model.nodes_m), 6), dtype=bool)
     for _, nodes, components in model.held:
-        flags[np.ix_(nodes, [COMPONENTS.index(component) for component in components])] = True
+        columns = np.array([COMPONENTS.index(component) for component in components])
+        flags[np.ix_(nodes, columns)] = True
     return flags

@@ -12,6 +12,7 @@ from vib.structure.bodies import Bodies
 from vib.structure.members import Stretches
 from vib.structure.mesh.model import MeshModel, held_flags
 from vib.structure.mesh.reading import listed
+from vib.structure.sparsity import Group
 from vib.structure.springs import GROUND, Springs
 
 Numbers = NDArray[np.intp]
@@ -72,14 +73,14 @@ def check_parts(
         for group, mine, numbers in _cells_of(mesh, label, part)
     ]
     raise ModelError(
-        f"mesh: it falls into {len(parts)} parts that nothing joins, and {len(loose)} of them hang on nothing: "
-        f"{'; '.join(told)}. Join their nodes ([mesh] join_within), or tie the parts by [[springs]], "
+        f"mesh: it falls into {len(parts)} parts that nothing joins, and {len(loose)} of them hang on "
+        f"nothing: {'; '.join(told)}. Join their nodes ([mesh] join_within), or tie them by [[springs]], "
         "[[members]], [[bodies]] or [[supports]]"
     )
 
 
-def _cells_of(mesh: MeshModel, label: Numbers, part: int) -> list[tuple[object, Numbers, Numbers]]:
-    found = []
+def _cells_of(mesh: MeshModel, label: Numbers, part: int) -> list[tuple[Group, Numbers, Numbers]]:
+    found: list[tuple[Group, Numbers, Numbers]] = []
     for group, numbers in zip(mesh.groups, mesh.numbers, strict=True):
         mine = np.flatnonzero(label[group.connectivity[:, 0]] == part)
         if len(mine):

@@ -123,7 +123,8 @@ def _through_meshio(path: Path) -> Any:
         known = sorted(meshio.extension_to_filetypes)
         if path.suffix.lower() not in known:
             raise ModelError(
-                f'mesh.file: "{path.name}" is of no known kind of mesh file (known endings: {", ".join(known)})'
+                f'mesh.file: "{path.name}" is of no known kind of mesh file '
+                f"(known endings: {', '.join(known)})"
             ) from None
         reason = "" if isinstance(error, SystemExit) else str(error) or type(error).__name__
         reason = " ".join((reason or said.getvalue()).split())[:200]

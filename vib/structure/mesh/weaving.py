@@ -216,7 +216,7 @@ def _own_parts(stiffness: Matrix, mass: Matrix, own: NDArray[np.bool_]) -> tuple
 def _with_frame(
     whole: Matrix, inner: Matrix, own: NDArray[np.bool_], joined: Numbers, follow: Matrix
 ) -> Matrix:
-    """The cells' share in the matrix of the whole: what is joined goes to the freedoms of the frame, first."""
+    """The cells' share in the matrix of the whole: what is joined goes to the freedoms of the frame."""
     frame = follow.shape[1]
     rows = whole[joined]
     corner = follow.T @ (rows[:, joined] @ follow)

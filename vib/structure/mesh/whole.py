@@ -52,9 +52,9 @@ def parts(assembly: Assembly, woven: Woven, frame: tuple[Part, ...]) -> tuple[Pa
     return tuple(found)
 
 
-def carried(woven: Woven, frame: Array) -> Array:
-    """T' M R (n, 6) of the whole, from that of the frame (f, 6)."""
-    found: Array = woven.transform.T @ woven.pushed
+def carried(woven: Woven, frame: Array, cells: Array) -> Array:
+    """Forces (n, ...) on all freedoms, from those on the freedoms of the frame and on rows of the mesh."""
+    found: Array = woven.transform.T @ cells
     found[: len(frame)] += frame
     return found
 
