@@ -21,13 +21,21 @@ from vib.solve.factor import Factor, SingularFactorError, factorise
 from vib.solve.pairs import Pairs, Quadratic, damped_from_pairs, improve
 from vib.solve.shift_invert import Shifted, shifted
 from vib.solve.undamped import CANCELLATION, EPS, Array, Matrix, Undamped
+from vib.solve.winding import Determinant, MissingError, affordable, missing_within, widest_gap
 
 # Pivots of a stiffness scaled to a unit diagonal below this leave no digit of the slowest eigenvalues.
 SINGULAR = 1e-14
 
 
 def sparse_quadratic(
-    mass: Matrix, linear: Matrix, stiffness: Matrix, undamped: Undamped, law: Array, count: int
+    mass: Matrix,
+    linear: Matrix,
+    stiffness: Matrix,
+    undamped: Undamped,
+    law: Array,
+    count: int,
+    *,
+    circle: float | None = None,
 ) -> Damped:
     """The ``count`` eigenvalues of least magnitude of a large sparse system, one of each conjugate pair.
 
@@ -39,9 +47,14 @@ def sparse_quadratic(
         The lowest modes of the mass and the symmetric part of the stiffness, rigid-body modes all there.
     law
         Damping ratio to be added in each of them.
+    circle
+        Prove that none is missing within a circle about zero of this radius at least, rad/s, where that is
+        affordable; None: no proof.
 
     Raises
     ------
+    MissingError
+        The proof finds eigenvalues missing.
     AccuracyError
         The factorisation or the iteration failed, or the stiffness is unsymmetric and singular.
     """
@@ -56,30 +69,59 @@ def sparse_quadratic(
     base = shifted(mass, (stiffness + stiffness.T) / 2)
     whole = Quadratic(
         mass=mass,
-        linear=_LowRank(linear, problem.held, problem.rates),
+        linear=LowRank(linear, problem.held, problem.rates),
         constant=stiffness,
         slack=np.zeros(mass.shape[0]),
         norm=lambda x: _energy(mass, stiffness, base, x),
         dual_norm=lambda force: _dual_energy(base, force),
     )
-    passive = problem.symmetric_stiffness and _passive(mass, linear, undamped)
+    passive = problem.symmetric_stiffness and is_passive(linear, undamped)
     pairs = improve(whole, Pairs.found(values, shapes, duals), passive=passive)
-    return damped_from_pairs(pairs, problem.still, mass, complete=False)
+    certified = None if circle is None else _proof(problem, stiffness, pairs.values, count, circle)
+    return damped_from_pairs(pairs, problem.still, mass, complete=False, certified=certified)
+
+
+def _proof(problem: _Problem, stiffness: Matrix, values: Complex, count: int, circle: float) -> float | None:
+    """Magnitude below which no eigenvalue is missing, by the argument principle; None if not shown."""
+    sizes = np.sort(np.abs(values))
+    first = max(count - problem.still.shape[1], int((sizes <= circle).sum()))
+    radius = widest_gap(sizes, first, circle)
+    if radius is None:
+        return None
+    determinant = Determinant(problem.mass, problem.linear, stiffness, problem.held, problem.rates)
+    if not affordable(determinant, radius):
+        return None
+    zeros = np.zeros(problem.still.shape[1] + problem.coasting.shape[1])
+    known = np.concatenate([values, values[values.imag > 0].conj(), zeros])
+    missing = missing_within(determinant.logarithm, known, radius)
+    if missing:
+        raise MissingError(missing)
+    return None if missing is None else radius
 
 
 @dataclass(frozen=True, eq=False)
-class _LowRank:
+class LowRank:
     """A sparse matrix plus ``held`` diag(``rates``) ``held``', with just the operations that are needed."""
 
     matrix: Matrix
     held: Array
     rates: Array
 
+    @staticmethod
+    def of(linear: Matrix, mass: Matrix, undamped: Undamped, law: Array) -> LowRank:
+        """``linear`` and the damping ratios ``law`` (m,) of undamped modes."""
+        rates = 2 * law * undamped.angular
+        return LowRank(linear, mass @ undamped.shapes[:, rates > 0], rates[rates > 0])
+
+    def diagonal(self) -> Array:
+        """Its diagonal (n,)."""
+        return np.asarray(self.matrix.diagonal() + (self.held**2) @ self.rates)
+
     def __matmul__(self, motion: Complex) -> Complex:
         return np.asarray(self.matrix @ motion + self.held @ (self.rates[:, None] * (self.held.T @ motion)))
 
-    def __abs__(self) -> _LowRank:
-        return _LowRank(abs(self.matrix), np.abs(self.held), np.abs(self.rates))
+    def __abs__(self) -> LowRank:
+        return LowRank(abs(self.matrix), np.abs(self.held), np.abs(self.rates))
 
 
 @dataclass(frozen=True, eq=False)
@@ -115,6 +157,12 @@ class _Problem:
         speed = float(elastic[len(elastic) // 2]) if len(elastic) else 1.0
         shift = -0.1 * float(elastic[0]) if undamped.rigid and len(elastic) else 0.0
         coasting, dragged = _split(linear, still)
+        drag = scipy.linalg.svdvals(dragged.T @ (linear @ dragged))
+        if drag.size and drag[-1] <= 1e-12 * drag[0]:
+            raise AccuracyError(
+                "A large free system whose rigid-body motions are turned by gyroscopic forces alone can't be "
+                "solved yet; hold it by soft springs, or reduce it below 400 freedoms."
+            )
         try:
             factor = factorise(shift**2 * mass + shift * linear + stiffness, symmetric=False)
         except SingularFactorError as problem:
@@ -241,7 +289,7 @@ def _dual_energy(base: Shifted, force: Complex) -> Array:
     return np.asarray(np.abs(both))
 
 
-def _passive(mass: Matrix, linear: Matrix, undamped: Undamped) -> bool:
+def is_passive(linear: Matrix, undamped: Undamped) -> bool:
     """Whether the damping takes energy out of any motion and the stiffness stores it in any."""
     if undamped.values.min(initial=0.0) < 0:
         return False

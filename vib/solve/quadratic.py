@@ -66,7 +66,7 @@ def quadratic_modes(
     rigid = 0 if twisted else undamped.rigid
     still = np.abs(shapes[:, :rigid])
     terms = max(float((abs(matrix) @ still).max(initial=0.0)) for matrix in (damping, damping.T))
-    pairs = _modal_pairs(modal, rigid, terms * float(np.abs(shapes).max(initial=0.0)))
+    pairs = modal_pairs(modal, rigid, terms * float(np.abs(shapes).max(initial=0.0)))
     return _judged(modal, pairs, np.eye(len(rates))[:, :rigid], shapes, dense(mass), undamped)
 
 
@@ -86,8 +86,12 @@ def _judged(
     return damped_from_pairs(lifted, lift @ still, mass, complete=True)
 
 
-def _modal_pairs(modal: Quadratic, rigid: int, terms: float) -> Pairs:
-    """Modal coordinates: displacements of rigid bodies are known eigenvectors at zero and left out."""
+def modal_pairs(modal: Quadratic, rigid: int, terms: float) -> Pairs:
+    """Modal coordinates: displacements of rigid bodies are known eigenvectors at zero and left out.
+
+    ``modal`` has unit mass and the squares of the angular frequencies, ``rigid`` zeros first, on the diagonal
+    of ``constant``; ``terms`` is the size of what cancels where no velocity term touches a motion.
+    """
     size = len(modal.linear)
     turn, free = _undamped_first(modal.linear, rigid, terms)
     linear = turn.T @ modal.linear @ turn
@@ -103,6 +107,10 @@ def _modal_pairs(modal: Quadratic, rigid: int, terms: float) -> Pairs:
         return Pairs.none(size)
     values, left, right = scipy.linalg.eig(state, left=True, right=True)
     upright = values.imag >= 0
+    # a steady speed that gyroscopic forces answer with a steady offset: once more the eigenvalue at zero
+    drag = scipy.linalg.svdvals(linear[free:rigid, free:rigid])
+    steady = int((drag <= CANCELLATION * EPS * max(terms, np.finfo(float).tiny)).sum())
+    upright[np.argsort(np.abs(values), kind="stable")[:steady]] = False
     shapes = np.zeros((size, int(upright.sum())), dtype=np.complex128)
     duals = shapes.copy()
     shapes[moving], duals[moving] = right[len(elastic) :, upright], left[len(elastic) :, upright]

@@ -10,15 +10,19 @@ import scipy.sparse as sparse
 
 from vib.errors import AccuracyError, MatrixError
 from vib.massless import condense, dense, split_mass
-from vib.solve.arnoldi import sparse_quadratic
+from vib.solve.arnoldi import LowRank, is_passive, sparse_quadratic
 from vib.solve.damped import Damped, proportional_modes
 from vib.solve.damping import ModalDamping, modal_damping
 from vib.solve.dense import condensed_modes
 from vib.solve.factor import negative_count
 from vib.solve.lanczos import lowest_modes
+from vib.solve.localised import Localised, localise
+from vib.solve.pairs import Quadratic
 from vib.solve.quadratic import quadratic_modes
+from vib.solve.reduced import Reduction, UnsuitedError, reduced_quadratic
 from vib.solve.shift_invert import count_below, sparse_undamped
 from vib.solve.undamped import CANCELLATION, EPS, Array, Matrix, Undamped
+from vib.solve.winding import MissingError
 from vib.system import System
 
 DENSE_SIZE = 100  # up to here all modes cost less than the set-up of the sparse solvers
@@ -26,6 +30,8 @@ ARRAY_SIZE = 400  # dense arrays are treated as such up to here whatever is aske
 THIN = 0.25  # and beyond as sparse where no more than this part of their entries is not zero
 LAW_MODES = 8  # undamped modes beyond those asked for that a damping law acts on beside dashpots
 FIRST_GUESS = 24  # modes looked for first where those below a frequency could not be counted
+MOST_SEARCHES = 6
+MOST_COUNTS = 3  # times that a count may find modes missing before the search is given up
 LARGE = 2000  # sparse systems from here on are searched by blocks, with the fastest factorisation at hand
 LARGEST_DENSE = 5000  # (n, n) arrays beyond this fill the memory of an ordinary machine
 
@@ -94,6 +100,9 @@ class _Problem:
         damping, gyroscopic = system.damping, system.gyroscopic
         terms = [matrix for matrix in (damping, gyroscopic) if matrix is not None]
         self.linear: Matrix = sum(terms[1:], terms[0]) if terms else self.mass * 0.0
+        if sparse.issparse(self.mass):
+            self.linear = sparse.csr_array(self.linear)
+        self.velocity = bool(self.twisted or abs(self.linear).max() > 0)
         lopsided = bool(system.unsymmetric and damping is not None and abs(damping - damping.T).max() > 0)
         self.real_shapes = not (self.twisted or self.spinning or lopsided)
 
@@ -180,9 +189,57 @@ def _count_agrees(mass: Matrix, stiffness: Matrix, undamped: Undamped, kept: int
 
 def _sparse(problem: _Problem, ask: _Ask, wanted: int, below: int | None) -> Solution:
     """Look for ``wanted`` modes, and for more until those asked for are among them."""
+    if problem.velocity:
+        term = localise(problem.mass, problem.linear, problem.stiffness)
+        if term is not None and term.rank:
+            try:
+                found = _localised(problem, ask, wanted, term)
+            except UnsuitedError:
+                found = None
+            if found is not None:
+                return found
+    return _general(problem, ask, wanted, below)
+
+
+def _localised(problem: _Problem, ask: _Ask, wanted: int, term: Localised) -> Solution | None:
+    """Through the Krylov space of few dashpots or spinning bodies; None where the shapes stay as they are."""
+    system, mass, straight = problem.system, problem.mass, problem.straight
+    count = wanted if ask.number is None or ask.limit is not None else ask.number
+    with Reduction(mass, straight, term) as reduction:
+        for _ in range(MOST_COUNTS):
+            undamped = reduction.undamped(count + LAW_MODES)
+            damping = modal_damping(system, undamped)
+            if problem.real_shapes and damping.proportional:
+                return None
+            whole = Quadratic(
+                mass=mass,
+                linear=LowRank.of(problem.linear, mass, damping.undamped, damping.law),
+                constant=problem.stiffness,
+                slack=np.zeros(mass.shape[0]),
+            )
+            try:
+                found = reduced_quadratic(
+                    reduction,
+                    damping.undamped,
+                    damping.law,
+                    count,
+                    limit=ask.limit,
+                    whole=whole,
+                    passive=not problem.twisted and is_passive(problem.linear, undamped),
+                    certify=ask.certify,
+                )
+            except MissingError:
+                reduction.widen()
+                continue
+            kept = cut(found, ask.number, ask.limit)
+            return Solution(kept, damping, found.certified is not None, _law_remark(damping))
+    raise AccuracyError("Modes are missing, also after the search was repeated with fresh directions.")
+
+
+def _general(problem: _Problem, ask: _Ask, wanted: int, below: int | None) -> Solution:
     system, mass, straight = problem.system, problem.mass, problem.straight
     spare = LAW_MODES if not problem.real_shapes or (system.damping is not None and _law(system)) else 0
-    for _ in range(6):
+    for _ in range(MOST_SEARCHES):
         undamped = sparse_undamped(mass, straight, wanted + spare, certify=ask.certify)
         inside = None if ask.limit is None else int((undamped.angular <= ask.limit).sum())
         if ask.limit is not None and undamped.certified is not None and inside == below:
@@ -194,19 +251,40 @@ def _sparse(problem: _Problem, ask: _Ask, wanted: int, below: int | None) -> Sol
         elif undamped.rigid == len(undamped.values):
             found, enough = None, False  # all rigid-body motions must be known before they can be set aside
         else:
-            linear, stiffness = problem.linear, problem.stiffness
-            found = sparse_quadratic(mass, linear, stiffness, damping.undamped, damping.law, wanted)
-            enough = ask.limit is None
+            found, enough = _quadratic(problem, ask, damping, wanted)
         if found is not None:
             enough = enough or bool(np.abs(found.values[-1:]).max(initial=0.0) > (ask.limit or 0.0))
             if enough and (ask.number is None or ask.limit is not None or len(found.values) >= ask.number):
                 kept = cut(found, ask.number, ask.limit)
-                counted = found.proportional and undamped.certified is not None
+                counted = (
+                    undamped.certified is not None if found.proportional else found.certified is not None
+                )
                 return Solution(kept, damping, counted, _law_remark(damping))
         wanted = 2 * wanted + 4
         if 2 * wanted > system.size:
             return _dense(problem, ask)
     raise AccuracyError("The search for modes below the highest frequency did not come to an end.")
+
+
+def _quadratic(
+    problem: _Problem, ask: _Ask, damping: ModalDamping, wanted: int
+) -> tuple[Damped | None, bool]:
+    """Complex modes by the Arnoldi process; None where a count finds some missing, to search again."""
+    try:
+        found = sparse_quadratic(
+            problem.mass,
+            problem.linear,
+            problem.stiffness,
+            damping.undamped,
+            damping.law,
+            wanted,
+            circle=(ask.limit or 0.0) if ask.certify else None,
+        )
+    except MissingError as fault:
+        if fault.number < 0:
+            raise
+        return None, False
+    return found, ask.limit is None
 
 
 def _law(system: System) -> bool:
