@@ -16,6 +16,10 @@ VALUE_ACCURACY = 1e-11
 SHAPE_ACCURACY = 1e-7
 # Within a cluster that round-off smears the bound is the residual itself; this much of it is enough.
 CLUSTER_ACCURACY = 1e-10
+# Eigenvalues this near to 0, relative to the shift of a free structure, may be rigid-body motions: what their
+# shapes hold of others must be round-off, so that its elastic energy does not hide that they have none.
+NEAR_ZERO = 1e-6
+RIGID_ACCURACY = 1e-12
 # A gap between two eigenvalues, relative to their distance from the shift, wide enough to count in it.
 GAP = 1e-5
 
@@ -59,9 +63,10 @@ class Found:
         bounds = theta_bounds(ritz)[order]
         residuals = ritz.residuals[order]
         sure = (bounds <= VALUE_ACCURACY * size) | (residuals <= CLUSTER_ACCURACY * size)
-        good = sure & (residuals <= SHAPE_ACCURACY * size)
-        everything = about.krylov.spanned
-        return cls(ritz, order, about.shift + 1 / theta[order], bounds, good, everything)
+        values = about.shift + 1 / theta[order]
+        near_zero = np.abs(values) <= NEAR_ZERO * abs(about.shift)
+        good = sure & (residuals <= np.where(near_zero, RIGID_ACCURACY, SHAPE_ACCURACY) * size)
+        return cls(ritz, order, values, bounds, good, about.krylov.spanned)
 
     def slowest(self, wanted: int) -> float | None:
         """Largest residual of the wanted ones over what is asked of it; None while there are too few."""

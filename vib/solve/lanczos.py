@@ -38,6 +38,7 @@ def lowest_modes(
     count: int | None = None,
     below: float | None = None,
     free: bool = False,
+    certify: bool = True,
     backend: str | None = None,
     block: int = BLOCK,
     basis_bytes: float = BASIS_BYTES,
@@ -55,6 +56,8 @@ def lowest_modes(
         Every mode below this angular frequency, rad/s; with ``count`` at most that many of them.
     free
         The structure is known to have rigid-body motions: saves trying to factorise the stiffness itself.
+    certify
+        Prove by an inertia count that none is missing; costs one more factorisation.
     backend
         Library that factorises, see `vib.solve.backends.choice.factor`; None for automatic choice.
     block
@@ -73,7 +76,7 @@ def lowest_modes(
     if count is None and below is None:
         raise ValueError("lowest_modes: give count, below or both.")
     with Pencil(mass, stiffness, backend) as pencil:
-        search = _Search(pencil, Start(block, basis_bytes), Clock(progress), free=free)
+        search = _Search(pencil, Start(block, basis_bytes), Clock(progress), free=free, certify=certify)
         try:
             return search.run(count, below)
         except KeyboardInterrupt:
@@ -85,8 +88,9 @@ def lowest_modes(
 class _Search:
     """One search: the basis about a shift, what is wanted of it, and the proof."""
 
-    def __init__(self, pencil: Pencil, start: Start, clock: Clock, *, free: bool) -> None:
-        self.pencil, self.start, self.clock, self.free = pencil, start, clock, free
+    def __init__(self, pencil: Pencil, start: Start, clock: Clock, *, free: bool, certify: bool) -> None:
+        self.pencil, self.start, self.clock = pencil, start, clock
+        self.free, self.certify = free, certify
         self.about: About | None = None
 
     def run(self, count: int | None, below: float | None) -> Undamped:
@@ -121,6 +125,8 @@ class _Search:
         """Converge, then count the eigenvalues just above the last mode."""
         about = self._begin(wanted)
         found = self._converge(about, wanted)
+        if not self.certify:
+            return results(self.pencil, about, found.order[:wanted], found.ritz)
         while (gap := found.gap_above(about, wanted)) is None and not found.everything:
             self._advance(about, wanted)
             found = self._converge(about, wanted)
@@ -132,7 +138,8 @@ class _Search:
         if counted is not None:
             found = self._agree(about, found, counted, gap)
         certified = float(np.sqrt(gap)) if counted is not None and gap > 0 else None
-        return results(self.pencil, about, found.order[:wanted], found.ritz, certified=certified)
+        inside = found.order[: int((found.values < gap).sum())]
+        return results(self.pencil, about, inside, found.ritz, certified=certified).first(wanted)
 
     def _agree(self, about: About, found: Found, counted: int, place: float) -> Found:
         """Search on in new directions until as many eigenvalues below ``place`` are found as were counted."""

@@ -8,7 +8,7 @@ from numpy.typing import NDArray
 
 from vib.solve.backends.choice import factor, upper_triangle
 from vib.solve.backends.interface import Array, Factor, Matrix
-from vib.solve.undamped import elastic_ratio, stores_nothing
+from vib.solve.undamped import CANCELLATION, EPS, elastic_ratio, stores_nothing
 
 
 class Pencil:
@@ -84,7 +84,9 @@ class Pencil:
         found = stores_nothing(energy, self.energy_terms(shapes)[0])
         if found.any():  # a closer look, which costs more
             found[found] = stores_nothing(*elastic_ratio(self.stiffness, shapes[:, found]))
-        return found
+        # Shapes are mixed with each other by round-off; energy of that order is none of their own.
+        mixed = (CANCELLATION * EPS) ** 2 * self.highest_ratio()
+        return np.asarray(found | (np.abs(energy) <= mixed))
 
     def highest_ratio(self) -> float:
         """Largest ratio of diagonal stiffness to diagonal mass: about the highest eigenvalue there is."""
