@@ -105,12 +105,12 @@ def _of_cells(system: System, solution: Solution, cells: Discretisation) -> Conv
     relative = errors[elastic] / size[elastic]
     worst, asked = 100 * float(relative.max(initial=0.0)), 100 * cells.accuracy
     if worst <= asked:
-        remark = f"The mesh is used as it is ({system.size} freedoms); {told}, frequencies are within {worst:.2g} %."
+        remark = f"The mesh is used as it is ({system.size} freedoms); {told}, it is within {worst:.2g} %."
     else:
         remark = (
             f"The mesh is too coarse for {int((relative > cells.accuracy).sum())} of {len(relative)} modes "
-            f"to be within {asked:.2g} %: {told}, their error bars reach {worst:.2g} %. A mesh is not refined "
-            "by itself; use smaller cells, or cells of second order."
+            f"to be within {asked:.2g} %: {told}, their error bars reach {worst:.2g} %. A mesh is not "
+            "refined by itself; use smaller cells, or cells of second order."
         )
     return Converged(system, solution, errors, (remark, *remarks))
 

@@ -9,11 +9,12 @@ import numpy as np
 from numpy.typing import NDArray
 
 from vib.solve.damping import ModalDamping
-from vib.system import Anatomy, System
+from vib.system import Anatomy, MeshView, System
 
 Array = NDArray[np.float64]
 AXES = "xyz"
 MOSTLY = 0.6  # a rigid motion of the whole is named where it explains this part of the squared displacements
+_LOOKED_AT = 40  # nodes of each region of a mesh, to tell how it moves as one
 ALONG = 0.75  # and an axis where it holds this part of the squared direction
 
 
@@ -139,6 +140,8 @@ def name_rigid(system: System, shapes: Array) -> tuple[tuple[str, ...], Array]:
     if not count:
         return (), np.zeros((0, 0))
     anatomy = system.anatomy
+    if anatomy is not None and anatomy.mesh is not None:
+        return _named(*_seen_of_mesh(anatomy, anatomy.mesh, shapes))
     places = list(anatomy.places.values()) if anatomy else []
     felt = np.vstack([np.asarray(place.motion @ shapes) for place in places] or [np.zeros((1, count))])
     if np.linalg.matrix_rank(felt) < count:  # bare matrices, or a motion that no named place takes part in
@@ -147,11 +150,54 @@ def name_rigid(system: System, shapes: Array) -> tuple[tuple[str, ...], Array]:
         names = tuple(f"{_list(_moving(labels, shapes @ column))} can move freely" for column in basis.T)
         return names, basis
     arms = np.array([place.position_m for place in places])
+    return _named([place.name for place in places], arms, felt, np.ones(len(places), dtype=bool))
+
+
+def _seen_of_mesh(
+    anatomy: Anatomy, mesh: MeshView, shapes: Array
+) -> tuple[list[str], Array, Array, NDArray[np.bool_]]:
+    """Bodies, and nodes here and there in every region: names, positions, six components, which can turn."""
+    names: list[str] = []
+    arms: list[tuple[float, float, float]] = []
+    felt: list[NDArray[Any]] = []
+    nodes_seen: list[int] = []
+    for body in anatomy.parts:
+        if body.name in anatomy.places and body.kind == "body":
+            place = anatomy.places[body.name]
+            names.append(body.name)
+            arms.append(place.position_m)
+            felt.append(np.asarray(place.motion @ shapes))
+    for part in dict.fromkeys(part for _, part, _ in mesh.cells):
+        nodes = np.unique(np.concatenate([cells.ravel() for _, name, cells in mesh.cells if name == part]))
+        for node in nodes[np.linspace(0, len(nodes) - 1, min(len(nodes), _LOOKED_AT)).astype(int)].tolist():
+            nodes_seen.append(len(names))
+            names.append(part)
+            x, y, z = mesh.nodes_m[node].tolist()
+            arms.append((x, y, z))
+            moved = np.asarray(mesh.motion[3 * node : 3 * node + 3] @ shapes)
+            felt.append(np.vstack([moved, np.zeros_like(moved)]))
+    for name, place in anatomy.places.items():  # ends of members that are no nodes of the mesh
+        if name not in names and place.motion[3:].nnz:
+            names.append(name)
+            arms.append(place.position_m)
+            felt.append(np.asarray(place.motion @ shapes))
+    turning = np.ones(len(names), dtype=bool)
+    turning[nodes_seen] = False
+    return names, np.array(arms), np.vstack(felt), turning
+
+
+def _named(
+    names: list[str], arms: Array, felt: Array, turning: NDArray[np.bool_]
+) -> tuple[tuple[str, ...], Array]:
+    """See `name_rigid`; from six components of each place (6 p, z), those that turn by ``turning`` (p,)."""
+    count = felt.shape[1]
     length = float(np.ptp(arms, axis=0).max()) or 1.0
+    turns = np.repeat(turning, 6)
     felt[np.arange(len(felt)) % 6 >= 3] *= length  # rotations in the same unit as translations
     sentences: list[str] = []
-    columns: list[Array] = []
+    columns: list[NDArray[Any]] = []
     for sentence, motion in _whole_motions(arms, length):
+        motion[~turns & (np.arange(len(motion)) % 6 >= 3)] = 0.0  # places without rotations
         if len(columns) == count:
             break
         coefficients = np.linalg.lstsq(felt, motion, rcond=None)[0]
@@ -166,7 +212,7 @@ def name_rigid(system: System, shapes: Array) -> tuple[tuple[str, ...], Array]:
             columns
         ):
             columns.append(local[:, index])
-            sentences.append(_sentence([place.name for place in places], felt @ local[:, index]))
+            sentences.append(_sentence(names, felt @ local[:, index]))
     return tuple(sentences), np.array(columns).T
 
 
@@ -205,7 +251,7 @@ def _moving(names: Sequence[str], motion: Array) -> list[str]:
 
 def _sentence(names: Sequence[str], motion: Array) -> str:
     components = motion.reshape(-1, 6)
-    moving = _moving(names, np.abs(components).max(axis=1))
+    moving = list(dict.fromkeys(_moving(names, np.abs(components).max(axis=1))))
     turning = np.abs(components[:, 3:]).max(axis=1)
     if turning.max() > 1e-3 * np.abs(components).max():
         axis = _axis(components[int(np.argmax(turning)), 3:])

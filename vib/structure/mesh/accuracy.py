@@ -12,7 +12,10 @@ from vib.errors import AccuracyError
 from vib.structure.cells.recovery import energy_errors
 from vib.structure.division import expected_error
 from vib.structure.mesh.finer import count_of, divided, only_shells
+from vib.structure.mesh.operators import CellOperator
+from vib.structure.mesh.plate_errors import plate_energies
 from vib.structure.mesh.weaving import Woven
+from vib.structure.sparsity import Group
 from vib.system import Array, Part, System
 
 if TYPE_CHECKING:
@@ -85,14 +88,34 @@ class CellErrors:
         return found
 
     def _share(self, shapes: Array) -> tuple[Array, tuple[str, ...]]:
-        """Share of the error in the energy of each mode (m,)."""
+        """Share of the error in the energy of each mode (m,); infinite where it can't be told."""
         moved = self.woven.transform @ shapes
-        model = self.woven.model
-        groups = model.groups
+        model, pattern = self.woven.model, self.woven.pattern
+        solids = tuple(group for group in model.groups if group.family.dimension == 3)
+        shells = tuple(group for group in model.groups if group.family.dimension == 2)
+        whole = self._energy(shapes)
+        error = np.zeros(shapes.shape[1])
         try:
-            share = energy_errors(model.nodes_m, groups, self.woven.pattern, moved)
-        except AccuracyError as error:
+            if solids:
+                held = whole if len(self.parts) == 1 else self._held(solids, moved)
+                error += energy_errors(model.nodes_m, solids, pattern, moved) * held
+        except AccuracyError as problem:
             return np.full(shapes.shape[1], np.inf), (
-                f"The error of the frequencies is not known, and stands as 100 %: {error}",
+                f"The error of the frequencies is not known, and stands as 100 %: {problem}",
             )
-        return share, ()
+        if shells:
+            error += plate_energies(model.nodes_m, shells, pattern, moved)[0]
+        return error / np.maximum(whole, np.finfo(float).tiny), ()
+
+    def _energy(self, shapes: Array) -> Array:
+        """Twice the strain energy of the whole in each mode (m,)."""
+        found = np.einsum("ij,ij->j", shapes, self.woven.stiffness @ shapes)
+        for part in self.parts:
+            if part.kind != "cells" and part.stiffness is not None:
+                found += np.einsum("ij,ij->j", shapes, part.stiffness @ shapes)
+        return np.asarray(found)
+
+    def _held(self, groups: tuple[Group, ...], moved: Array) -> Array:
+        """Twice the strain energy (m,) that some cells hold."""
+        pushed = CellOperator(self.woven, groups, "stiffness").on_rows(moved)
+        return np.asarray(np.einsum("ij,ij->j", moved, pushed))
