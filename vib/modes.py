@@ -295,10 +295,13 @@ def _remarks(system: System, found: Converged) -> tuple[str, ...]:
         remarks.append(
             "It was not checked whether a mode is missing: that cannot be counted for this damping."
         )
-    elif found.solution.counted:
+    elif found.solution.counted and damped.proportional:
         remarks.append("The number of modes was confirmed by an inertia count (Sylvester).")
-    if (damped.undamped < 0).any():
+    elif found.solution.counted:
+        remarks.append("The number of modes was confirmed by the argument principle.")
+    if ((damped.values.real > damped.movement) & (damped.values.imag == 0)).any():
         remarks.append(
-            "The stiffness is not positive: the structure is buckled or a spring has the wrong sign."
+            "A motion grows without swinging: the stiffness is not positive there, because the structure is "
+            "buckled or a spring has the wrong sign."
         )
     return tuple(remarks)

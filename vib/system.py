@@ -119,6 +119,30 @@ class Discretisation(Protocol):
         ...
 
 
+class Spinning(NamedTuple):
+    """A body that spins with a shaft: its name, unit axis in the sense of its turning, polar moment."""
+
+    name: str
+    axis: tuple[float, float, float]
+    polar_kg_m2: float
+
+
+@dataclass(frozen=True, eq=False)
+class Rotation:
+    """What grows with the speed of one shaft; the matrices of a system hold it at ``speed_hz``.
+
+    ``speed_hz`` and ``slowest_hz`` rev/s: the fastest and the slowest that the shaft runs; ``gyroscopic``
+    and ``circulatory`` (n, n) or None, per rad/s of the shaft.
+    """
+
+    shaft: str
+    speed_hz: float
+    slowest_hz: float
+    gyroscopic: Matrix | None
+    circulatory: Matrix | None
+    bodies: tuple[Spinning, ...] = ()
+
+
 class Division(Protocol):
     """How finely the members of a structure are cut into pieces, and how to cut them otherwise."""
 
@@ -201,6 +225,8 @@ class System:
         Declares that the stiffness (and damping) may be unsymmetric (circulatory forces).
     damping_law, anatomy
         Damping stated per mode, and what a structure knows beyond matrices; see the classes.
+    rotations
+        What of the gyroscopic matrix and of the stiffness grows with the speed of which shaft.
 
     Raises
     ------
@@ -225,6 +251,7 @@ class System:
     unsymmetric: bool = False
     damping_law: DampingLaw = field(default_factory=DampingLaw)
     anatomy: Anatomy | None = None
+    rotations: tuple[Rotation, ...] = ()
 
     def __post_init__(self) -> None:
         if self.anatomy is not None and self.anatomy.mesh is not None:

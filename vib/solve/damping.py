@@ -6,6 +6,7 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 import scipy.linalg
+import scipy.sparse as sparse
 from numpy.typing import NDArray
 
 from vib.checks import entries
@@ -87,6 +88,8 @@ def _law_limit(system: System) -> float:
 
 def rayleigh_parts(mass: Matrix, damping: Matrix, stiffness: Matrix) -> tuple[float, float] | None:
     """(a, b) where damping = a mass + b stiffness in every entry to round-off, else None."""
+    if _filled(damping) < min(_filled(mass), _filled(stiffness)) / 2:
+        return None  # has too few entries for that
     scale = root_scale(np.asarray(stiffness.diagonal()))
     scale = np.where(np.asarray(stiffness.diagonal()) != 0, scale, root_scale(np.asarray(mass.diagonal())))
     pattern = abs(mass) + abs(stiffness) + abs(damping)
@@ -103,6 +106,10 @@ def rayleigh_parts(mass: Matrix, damping: Matrix, stiffness: Matrix) -> tuple[fl
     rest = abs(damping - mass_part * mass - stiffness_part * stiffness)
     allowed = 1e-11 * (abs(damping) + abs(mass_part) * abs(mass) + abs(stiffness_part) * abs(stiffness))
     return (float(mass_part), float(stiffness_part)) if (rest - allowed).max() <= 0 else None
+
+
+def _filled(matrix: Matrix) -> int:
+    return int(matrix.count_nonzero() if sparse.issparse(matrix) else np.count_nonzero(matrix))
 
 
 def _turned(undamped: Undamped, damping: Matrix) -> Undamped:

@@ -34,7 +34,7 @@ class Coordinates:
     @property
     def residuals(self) -> Array:
         """Energy norm of inv(S) M y - theta y, (k,)."""
-        return np.linalg.norm(self.beyond, axis=0)
+        return np.asarray(np.linalg.norm(self.beyond, axis=0))
 
 
 class EnergySpace:

@@ -230,7 +230,8 @@ def projected_pairs(problem: Projected, rigid: int) -> tuple[Complex, Complex, C
     size = len(theta)
     twisted = bool(problem.term.constant.any())
     inverse = np.eye(size) + problem.constant()
-    linear, heavy = problem.linear(), np.diag(root)
+    linear: Array = problem.linear()
+    heavy: Array = np.diag(root)
     if twisted:
         linear, heavy = np.linalg.solve(inverse, linear), np.linalg.solve(inverse, heavy)
     state = np.zeros((2 * size, 2 * size))
@@ -333,7 +334,7 @@ def _project(reduction: Reduction, held: Array, rates: Array) -> Projected:
 
 def _norm(reduction: Reduction) -> Callable[[Complex], Array]:
     def norm(motion: Complex) -> Array:
-        return np.abs(np.einsum("ij,ij->j", motion.conj(), reduction.regular @ motion))
+        return np.asarray(np.abs(np.einsum("ij,ij->j", motion.conj(), reduction.regular @ motion)))
 
     return norm
 
@@ -342,7 +343,7 @@ def _dual_norm(reduction: Reduction) -> Callable[[Complex], Array]:
     def norm(force: Complex) -> Array:
         both = np.hstack([force.real, force.imag])
         work = np.einsum("ij,ij->j", both, reduction.factor.solve(both))
-        return np.abs(work[: force.shape[1]] + work[force.shape[1] :])
+        return np.asarray(np.abs(work[: force.shape[1]] + work[force.shape[1] :]))
 
     return norm
 

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass, replace
+from functools import cached_property
 from typing import NamedTuple
 
 import numpy as np
@@ -106,11 +107,19 @@ class _Problem:
         lopsided = bool(system.unsymmetric and damping is not None and abs(damping - damping.T).max() > 0)
         self.real_shapes = not (self.twisted or self.spinning or lopsided)
 
+    @cached_property
+    def term(self) -> Localised | None:
+        """The velocity and circulatory terms where they touch few freedoms; None where not, or for none."""
+        if not (self.velocity and sparse.issparse(self.stiffness)):
+            return None
+        found = localise(self.mass, self.linear, self.stiffness)
+        return found if found is not None and found.rank else None
+
 
 def _goes_by_blocks(problem: _Problem) -> bool:
-    """Whether the undamped shapes of a large sparse system are those of the damped one, as far as is known."""
+    """Whether undamped shapes of a large sparse system are those of the damped one, as far as is known."""
     large = sparse.issparse(problem.stiffness) and problem.system.size >= LARGE
-    return large and problem.real_shapes
+    return large and problem.real_shapes and problem.term is None
 
 
 def _blocks(problem: _Problem, ask: _Ask) -> Solution | None:
@@ -189,15 +198,13 @@ def _count_agrees(mass: Matrix, stiffness: Matrix, undamped: Undamped, kept: int
 
 def _sparse(problem: _Problem, ask: _Ask, wanted: int, below: int | None) -> Solution:
     """Look for ``wanted`` modes, and for more until those asked for are among them."""
-    if problem.velocity:
-        term = localise(problem.mass, problem.linear, problem.stiffness)
-        if term is not None and term.rank:
-            try:
-                found = _localised(problem, ask, wanted, term)
-            except UnsuitedError:
-                found = None
-            if found is not None:
-                return found
+    if problem.term is not None:
+        try:
+            found = _localised(problem, ask, wanted, problem.term)
+        except UnsuitedError:
+            found = None
+        if found is not None:
+            return found
     return _general(problem, ask, wanted, below)
 
 
@@ -210,7 +217,7 @@ def _localised(problem: _Problem, ask: _Ask, wanted: int, term: Localised) -> So
             undamped = reduction.undamped(count + LAW_MODES)
             damping = modal_damping(system, undamped)
             if problem.real_shapes and damping.proportional:
-                return None
+                return _blocks(problem, ask) if system.size >= LARGE else None
             whole = Quadratic(
                 mass=mass,
                 linear=LowRank.of(problem.linear, mass, damping.undamped, damping.law),

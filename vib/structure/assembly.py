@@ -15,6 +15,7 @@ from vib.structure.beam import twist_between
 from vib.structure.freedoms import Nodes, number_nodes
 from vib.structure.layout import Layout
 from vib.structure.members import material_of, pieces_of
+from vib.structure.preload import twisting
 from vib.structure.rigid import arms
 from vib.structure.springs import GROUND
 from vib.structure.stacks import components_of, reduce_stack, scatter, unstack
@@ -171,6 +172,7 @@ def _twists(layout: Layout, counts: Indices, stretch: Indices) -> tuple[Array, A
     """Stiffness and mass (pieces, 7, 7) of the twist between nodes with the turns of both nodes."""
     bars = pieces_of(layout.stretches.bars, counts)
     stiff, own, shared = (values[stretch] for values in twist_between(bars))
+    stiff = stiff + (16 / 3 * twisting(bars, layout.stretches.pull) / bars.length)[stretch]
     stiffness, mass = np.zeros((2, len(stretch), 7, 7))
     stiffness[:, 0, 0], mass[:, 0, 0] = stiff, own
     link = np.tile(shared[:, None] * layout.stretches.axes[stretch, 0], 2)
@@ -184,8 +186,8 @@ def _springs(layout: Layout, size: int) -> tuple[Matrix, Matrix]:
     grounded = springs.ends[:, 1] == GROUND
     # a grounded spring has no second node: its blocks there are zero and fall away
     rows = components_of(np.where(grounded[:, None], springs.ends[:, :1], springs.ends))
+    blocks = (springs.matrices(springs.stiffness) + springs.pulled, springs.matrices(springs.dashpot))
     stiffness, dashpots = (
-        scatter(springs.matrices(constants), rows, size, springs.owner, len(layout.study.springs))
-        for constants in (springs.stiffness, springs.dashpot)
+        scatter(block, rows, size, springs.owner, len(layout.study.springs)) for block in blocks
     )
     return stiffness, dashpots

@@ -74,11 +74,11 @@ def local_stiffness(bars: Bars) -> Array:
     """Stiffness in the principal axes of each bar, (e, 12, 12): x, y, z, rx, ry, rz of start, then of end."""
     length = bars.length
     found = np.zeros((len(length), 12, 12))
-    _add_pair(found, 0, bars.youngs_modulus * bars.area / length, 1.0, -1.0)
-    _add_pair(found, 3, bars.shear_modulus * bars.torsion_constant / length, 1.0, -1.0)
+    add_pair(found, 0, bars.youngs_modulus * bars.area / length, 1.0, -1.0)
+    add_pair(found, 3, bars.shear_modulus * bars.torsion_constant / length, 1.0, -1.0)
     about_z = _bending_stiffness(bars.youngs_modulus * bars.second_moment_z, bars.shear_ratio_z(), length)
     about_y = _bending_stiffness(bars.youngs_modulus * bars.second_moment_y, bars.shear_ratio_y(), length)
-    _add_planes(found, about_z, about_y)
+    add_planes(found, about_z, about_y)
     return found
 
 
@@ -87,12 +87,12 @@ def local_mass(bars: Bars) -> Array:
     length, density = bars.length, bars.density
     line = density * bars.area
     found = np.zeros((len(length), 12, 12))
-    _add_pair(found, 0, line * length / 6.0, 2.0, 1.0)
+    add_pair(found, 0, line * length / 6.0, 2.0, 1.0)
     polar = density * (bars.second_moment_y + bars.second_moment_z)
-    _add_pair(found, 3, polar * length / 6.0, 2.0, 1.0)
+    add_pair(found, 3, polar * length / 6.0, 2.0, 1.0)
     about_z = _bending_mass(line, density * bars.second_moment_z, bars.shear_ratio_z(), length)
     about_y = _bending_mass(line, density * bars.second_moment_y, bars.shear_ratio_y(), length)
-    _add_planes(found, about_z, about_y)
+    add_planes(found, about_z, about_y)
     return found
 
 
@@ -116,18 +116,19 @@ def to_global(local: Array, axes: Array) -> Array:
     return 0.5 * (found + np.swapaxes(found, 1, 2))
 
 
-def _add_pair(found: Array, component: int, size: Array, same: float, other: float) -> None:
-    """A two-by-two block between one component of the start and the same of the end."""
+def add_pair(found: Array, component: int, size: Array, same: float, other: float) -> None:
+    """Add a two-by-two block between one component of the start and the same of the end."""
     for first, second, factor in ((0, 0, same), (6, 6, same), (0, 6, other), (6, 0, other)):
         found[:, component + first, component + second] = size * factor
 
 
-def _add_planes(found: Array, about_z: Array, about_y: Array) -> None:
+def add_planes(found: Array, about_z: Array, about_y: Array) -> None:
+    """Add blocks (e, 4, 4) of the two planes of bending: bending about z, and about y."""
     found[:, _PLANE_XY[:, None], _PLANE_XY] = about_z
     found[:, _PLANE_XZ[:, None], _PLANE_XZ] = about_y * np.outer(_SIGNS_XZ, _SIGNS_XZ)
 
 
-def _symmetric(entries: dict[tuple[int, int], Array], count: int) -> Array:
+def symmetric(entries: dict[tuple[int, int], Array], count: int) -> Array:
     """(count, 4, 4) from the entries that the symmetry of the bar does not give."""
     found = np.zeros((count, 4, 4))
     for (i, j), value in entries.items():
@@ -148,7 +149,7 @@ def _bending_stiffness(bending: Array, shear: Array, length: Array) -> Array:
         (1, 1): (4.0 + shear) * size * length**2,
         (1, 3): (2.0 - shear) * size * length**2,
     }
-    return _symmetric(entries, len(length))
+    return symmetric(entries, len(length))
 
 
 def _bending_mass(line: Array, rotary: Array, shear: Array, length: Array) -> Array:
@@ -164,4 +165,4 @@ def _bending_mass(line: Array, rotary: Array, shear: Array, length: Array) -> Ar
         (1, 1): (m * (1 / 105 + p / 60 + p**2 / 120) + r * (2 / 15 + p / 6 + p**2 / 3)) * length**2,
         (1, 3): (-m * (1 / 140 + p / 60 + p**2 / 120) + r * (-1 / 30 - p / 6 + p**2 / 6)) * length**2,
     }
-    return _symmetric(entries, len(length))
+    return symmetric(entries, len(length))

@@ -8,16 +8,18 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from vib.checks import as_matrix, check_finite, check_symmetric
 from vib.errors import MatrixError, ModelError
 from vib.structure.assembly import Assembly, assemble
 from vib.structure.division import counts_for, first_counts
 from vib.structure.layout import Layout, read_layout
 from vib.structure.picture import draw, find_places
 from vib.structure.remarks import assumptions
+from vib.structure.spin import rotations
 from vib.structure.stacks import add_up
 from vib.study import Study
 from vib.study.machine import rayleigh_constants
-from vib.system import Anatomy, DampingLaw, Freedom, Matrix, Part, System
+from vib.system import Anatomy, DampingLaw, Freedom, Matrix, Part, Rotation, System
 
 
 def build_system(study: Study, frequency_hz: float | None = None) -> System:
@@ -120,13 +122,16 @@ def to_system(assembly: Assembly, remarks: tuple[str, ...] = ()) -> System:
         mesh=mesh,
         discretisation=discretisation,
     )
+    turning = rotations(assembly, mass.shape[0])
     return System(
         mass=mass,
         stiffness=stiffness,
         damping=_damping(study, mass, stiffness, [dashpots] if dashpots.nnz else []),
+        gyroscopic=_gyroscopic(turning),
         freedoms=assembly.freedoms,
         damping_law=_law(study, parts),
         anatomy=anatomy,
+        rotations=turning,
     )
 
 
@@ -135,6 +140,11 @@ def _damping(study: Study, mass: Matrix, stiffness: Matrix, dashpots: list[Matri
     if study.damping.rayleigh is not None:
         alpha, beta = rayleigh_constants(study.damping.rayleigh)
         terms += [alpha * mass, beta * stiffness]
+    return sum(terms[1:], terms[0]) if terms else None
+
+
+def _gyroscopic(turning: tuple[Rotation, ...]) -> Matrix | None:
+    terms = [2 * math.pi * row.speed_hz * row.gyroscopic for row in turning if row.gyroscopic is not None]
     return sum(terms[1:], terms[0]) if terms else None
 
 
@@ -153,15 +163,41 @@ def _from_matrices(study: Study) -> System:
             "[matrices]: read the study from its file with vib.read, so that the matrices are loaded"
         )
     terms = [] if loaded.damping is None else [loaded.damping]
+    circulatory = _circulatory(loaded.circulatory, table.freedoms)
     try:
         return System(
             mass=loaded.mass,
-            stiffness=loaded.stiffness,
+            stiffness=loaded.stiffness if loaded.circulatory is None else loaded.stiffness + circulatory,
             damping=_damping(study, loaded.mass, loaded.stiffness, terms),
             gyroscopic=loaded.gyroscopic,
             freedoms=tuple(Freedom(name, "") for name in table.freedoms),
-            unsymmetric=table.unsymmetric,
+            unsymmetric=table.unsymmetric or loaded.circulatory is not None,
             damping_law=_law(study, ()),
+            rotations=_matrix_rotation(table.speed, loaded.gyroscopic, circulatory),
         )
     except MatrixError as error:
         raise MatrixError(f"matrices.{error}") from None
+
+
+def _circulatory(given: Matrix | None, freedoms: tuple[str, ...]) -> Matrix | None:
+    """The circulatory matrix, checked to be skew-symmetric."""
+    if given is None:
+        return None
+    names = freedoms or tuple(str(number) for number in range(1, given.shape[0] + 1))
+    try:
+        matrix = as_matrix("circulatory", given, None)
+        check_finite("circulatory", matrix, names)
+        check_symmetric("circulatory", matrix, names, skew=True)
+    except MatrixError as error:
+        raise MatrixError(f"matrices.{error}") from None
+    return matrix
+
+
+def _matrix_rotation(
+    speed_hz: float | None, gyroscopic: Matrix | None, circulatory: Matrix | None
+) -> tuple[Rotation, ...]:
+    if speed_hz is None:
+        return ()
+    unit = 2 * math.pi * speed_hz
+    turning, following = (None if part is None else part / unit for part in (gyroscopic, circulatory))
+    return (Rotation("shaft", speed_hz, speed_hz, turning, following),)

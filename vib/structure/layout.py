@@ -13,6 +13,7 @@ from vib.errors import ModelError
 from vib.structure.beam import local_mass, local_stiffness, to_global
 from vib.structure.bodies import Bodies, read_bodies
 from vib.structure.members import Stretches, coordinates_of, pieces_of, read_stretches
+from vib.structure.preload import geometric_stiffness
 from vib.structure.springs import Springs, read_springs
 from vib.structure.ties import Ties, tie
 from vib.study import Study
@@ -62,6 +63,7 @@ class Layout:
         turn = self.stretches.principal_axes
         with np.errstate(all="ignore"):
             stiffness, mass = local_stiffness(bars), local_mass(bars)
+            pulled = geometric_stiffness(bars, self.stretches.pull)
             own = np.diagonal(stiffness, axis1=1, axis2=2).min(axis=1)
             fine = np.isfinite(stiffness + mass).all(axis=(1, 2)) & (own > np.finfo(float).tiny)
         if not fine.all():
@@ -70,7 +72,7 @@ class Layout:
                 f"{entry}: its length, section and material give a stiffness or mass beyond all numbers; "
                 "check their units"
             )
-        return to_global(stiffness, turn), to_global(mass, turn)
+        return to_global(stiffness + pulled, turn), to_global(mass, turn)
 
 
 def read_layout(study: Study) -> Layout:

@@ -29,7 +29,8 @@ class Stretches:
     ``ends`` (s, 2) point numbers; ``tips_m`` (s, 2, 3) where the member really begins and ends, rigid
     offsets included; ``reach_m`` (s, 2, 3) from point to tip; ``released`` (s, 2, 6) in member axes;
     ``axes`` (s, 3, 3) drawn axes as rows; ``bars`` of full length with ``principal_axes`` (s, 3, 3);
-    ``group`` (s,) number of the member table; ``entries`` and ``labels`` name each stretch.
+    ``group`` (s,) number of the member table; ``entries`` and ``labels`` name each stretch; ``pull`` (s,)
+    the steady axial force, N.
     """
 
     ends: Indices
@@ -42,6 +43,7 @@ class Stretches:
     group: Indices
     entries: tuple[str, ...]
     labels: tuple[str, ...]
+    pull: NDArray[np.float64]
 
     @property
     def separate(self) -> Flags:
@@ -106,8 +108,10 @@ def read_stretches(study: Study, points: dict[str, int], faults: list[str]) -> S
             f"{entries[s]}: its releases let it move freely and it has no mass, so its movement is "
             "undetermined; hold a component at one end, or give its material a density"
         )
+    pull = np.array([members.tension for members in study.members])[group] if count else np.zeros(0)
     return Stretches(
-        ends, tips, reach, released, drawn, axes.turn_about_x(drawn, angle), bars, group, entries, labels
+        ends, tips, reach, released, drawn, axes.turn_about_x(drawn, angle), bars, group, entries, labels,
+        pull,
     )  # fmt: skip
 
 

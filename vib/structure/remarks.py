@@ -25,7 +25,7 @@ def assumptions(layout: Layout) -> tuple[str, ...]:
         *_of_springs(layout),
         *_of_freedoms(layout),
         *_of_damping(layout),
-        "small movements about the unloaded shape: weight, preload and running speed change no stiffness",
+        *_of_preload(layout),
     )
 
 
@@ -34,6 +34,25 @@ def _of_mesh(layout: Layout) -> Iterator[str]:
         from vib.structure.mesh.remarks import mesh_remarks
 
         yield from mesh_remarks(layout, layout.mesh)
+
+
+def _of_preload(layout: Layout) -> Iterator[str]:
+    study = layout.study
+    pulled = [row.name for row in study.members if row.tension]
+    pulled += [row.name for row in study.springs if row.tension]
+    if pulled:
+        yield (
+            f"the pull or push stated for {listing(pulled)} changes the stiffness across it and stays the "
+            "same while things move; no equilibrium of the pulls is checked"
+        )
+    spinning = [body.name for body in study.bodies if body.spin is not None]
+    if spinning:
+        yield (
+            f"{listing(spinning)}: spinning with gyroscopic forces; round about the axis, without unbalance "
+            "or internal friction"
+        )
+    others = "" if pulled else " and preload"
+    yield f"small movements about the unloaded shape: weight{others} and running speed change no stiffness"
 
 
 def listing(names: Iterable[str]) -> str:

@@ -8,6 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from vib.structure.members import coordinates_of
+from vib.structure.preload import belt_stiffness
 from vib.structure.rigid import arms, turned
 from vib.study import Study
 from vib.study.machine import Spring
@@ -24,7 +25,8 @@ class Springs:
     ``ends`` (q, 2) point numbers, `GROUND` second; ``follow`` (q, 6, 12): stretch along the spring's axes
     from the twelve components of its ends; ``stiffness`` and ``dashpot`` (q, 6); ``owner`` (q,) number of
     the spring table; ``labels`` name each;
-    ``arms_m`` (q,) length of the rigid arms, zero where both ends are at one place.
+    ``arms_m`` (q,) length of the rigid arms, zero where both ends are at one place; ``pulled`` (q, 12, 12)
+    geometric stiffness of a steady pull.
     """
 
     ends: NDArray[np.intp]
@@ -34,6 +36,7 @@ class Springs:
     owner: NDArray[np.intp]
     labels: tuple[str, ...]
     arms_m: Array
+    pulled: Array
 
     def matrices(self, constants: Array) -> Array:
         """(q, 12, 12) for constants (q, 6) along the springs' axes: follow' diag(constants) follow."""
@@ -46,6 +49,7 @@ def read_springs(study: Study, points: dict[str, int], faults: list[str]) -> Spr
     """Arrays of the study's springs; faults are appended in words, each naming its entry."""
     coordinates = coordinates_of(study)
     pairs, owner, labels, turns, stiffness, dashpot = [], [], [], [], [], []
+    pulls: list[float] = []
     for i, spring in enumerate(study.springs):
         axes = _axes(spring, i, faults)
         for a, b in spring.between:
@@ -57,6 +61,12 @@ def read_springs(study: Study, points: dict[str, int], faults: list[str]) -> Spr
             pairs.append((points[a], GROUND if b == "ground" else points[b]))
             labels.append(f"{spring.name} {a}-{b}")
             owner.append(i)
+            pulls.append(spring.tension)
+            if spring.tension and (b == "ground" or study.points[a] == study.points[b]):
+                faults.append(
+                    f'springs[{i}].tension ("{spring.name}"): a pull needs two points that lie apart, and '
+                    f'"{a}" and "{b}" do not; pull towards a point that is held by a support'
+                )
             turns.append(axes)
             stiffness.append([getattr(spring.stiffness, name) for name in COMPONENTS])
             dashpot.append([getattr(spring.dashpot, name) for name in COMPONENTS])
@@ -81,6 +91,7 @@ def read_springs(study: Study, points: dict[str, int], faults: list[str]) -> Spr
         np.array(owner, dtype=np.intp),
         tuple(labels),
         np.linalg.norm(half, axis=1),
+        belt_stiffness(2 * half, np.array(pulls, dtype=float)),
     )
 
 

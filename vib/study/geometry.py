@@ -215,6 +215,9 @@ class Members(Table):
     turn: Annotated[float, Quantity("angle")] = Field(
         0.0, description="turn of the section about the member, after up"
     )
+    tension: Annotated[float, Quantity("force")] = Field(
+        0.0, description="steady pull along every run; a push is negative"
+    )
     releases: Releases = Releases()
     offset_start: Vector = Field(
         (0.0, 0.0, 0.0), description="rigid arm from the start point to the member's end"

@@ -13,6 +13,26 @@ from vib.study.quantities import Along, Axis, Name, Names, Number, Quantity, Vec
 _Inertia = Annotated[float, Quantity("inertia")]
 
 
+class Spin(Table):
+    """A body that spins: about which axis, and how fast or with which shaft."""
+
+    axis: Axis = Field(description="axis of rotation, the direction of the thumb of the right hand")
+    speed: Annotated[float, positive("speed")] | None = Field(None, description="running speed")
+    shaft: Name | None = Field(None, description="the excitation whose running speed it follows")
+    ratio: Number = Field(1.0, description="its speed over that of the shaft; negative turns the other way")
+    inertia: Annotated[float, positive("inertia")] | None = Field(
+        None, description="polar moment of what spins; default: that of the whole body about the axis"
+    )
+
+    @model_validator(mode="after")
+    def _whole(self) -> Spin:
+        if (self.speed is None) == (self.shaft is None):
+            raise ValueError("needs either speed, or shaft: the name of an excitation")
+        if self.ratio == 0 or (self.shaft is None and self.ratio != 1):
+            raise ValueError("ratio goes with shaft and is not zero")
+        return self
+
+
 class Body(Table):
     """A rigid machine part, carried by points that move with it."""
 
@@ -29,6 +49,7 @@ class Body(Table):
         (0.0, 0.0, 0.0), description="products of inertia Ixy, Iyz, Izx, each the integral of + x y dm"
     )
     carried_by: Names
+    spin: Spin | None = Field(None, description="it spins and so resists tilting across (gyroscopic)")
 
     @model_validator(mode="after")
     def _possible(self) -> Body:
@@ -40,6 +61,8 @@ class Body(Table):
         minors = (ixx * iyy - ixy**2, iyy * izz - iyz**2, izz * ixx - izx**2)
         whole = ixx * (iyy * izz - iyz**2) - ixy * (ixy * izz + iyz * izx) - izx * (ixy * iyz + iyy * izx)
         scale = max(ixx, iyy, izz, 0.0)
+        if self.spin is not None and self.spin.inertia is None and not max(ixx, iyy, izz):
+            raise ValueError("spin needs the polar moment: give inertia of the body, or spin.inertia")
         if min(ixx, iyy, izz) < 0 or min(minors) < slack * scale or whole < slack * scale**2:
             raise ValueError("inertia and products are not those of a body: a principal moment is negative")
         return self
@@ -96,6 +119,9 @@ class Spring(Table):
         None, description="direction of the spring's x axis; default: the global axes"
     )
     y_axis: Axis | None = Field(None, description="direction near the spring's y axis; needs x_axis")
+    tension: Annotated[float, Quantity("force")] = Field(
+        0.0, description="steady pull between two points, as of a belt: holds them across with pull / length"
+    )
 
     @model_validator(mode="after")
     def _whole(self) -> Spring:
@@ -351,7 +377,17 @@ class Matrices(Table):
     stiffness: _Entry
     damping: _Entry | None = None
     gyroscopic: _Entry | None = None
+    circulatory: _Entry | None = Field(None, description="skew-symmetric part of the stiffness (N/m)")
+    speed: Annotated[float, positive("speed")] | None = Field(
+        None, description="the speed that gyroscopic and circulatory are given for; both grow with it"
+    )
     freedoms: tuple[Name, ...] = Field((), description="a name per row; default: numbered from 1")
     unsymmetric: bool = Field(
         False, description="declares that the stiffness may be unsymmetric (circulatory forces)"
     )
+
+    @model_validator(mode="after")
+    def _turning(self) -> Matrices:
+        if self.speed is not None and self.gyroscopic is None and self.circulatory is None:
+            raise ValueError("speed goes with gyroscopic or circulatory; there is neither")
+        return self

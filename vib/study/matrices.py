@@ -11,7 +11,13 @@ from vib.study.machine import Matrices, MatrixEntry
 from vib.units import LARGEST, parse
 
 # kind of quantity whose unit scales each matrix
-_KINDS = {"mass": "mass", "stiffness": "stiffness", "damping": "damping", "gyroscopic": "damping"}
+_KINDS = {
+    "mass": "mass",
+    "stiffness": "stiffness",
+    "damping": "damping",
+    "gyroscopic": "damping",
+    "circulatory": "stiffness",
+}
 _MOST_BYTES = 8 * 10**9
 
 
@@ -23,6 +29,7 @@ class LoadedMatrices:
     stiffness: Any
     damping: Any | None
     gyroscopic: Any | None
+    circulatory: Any | None = None
 
 
 def load_matrices(

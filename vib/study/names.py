@@ -30,6 +30,7 @@ def check_names(raw: Mapping[str, Any]) -> Iterator[Finding]:
     yield from _check_sets(raw)
     for i, body in _rows(raw, "bodies"):
         yield from _unknown("point", points, _listed(body.get("carried_by"), ("bodies", i, "carried_by")))
+        yield from _check_spin(raw, body, ("bodies", i, "spin", "shaft"))
     for i, support in _rows(raw, "supports"):
         yield from _unknown("point", points, _listed(support.get("at"), ("supports", i, "at")))
     for i, spring in _rows(raw, "springs"):
@@ -39,10 +40,23 @@ def check_names(raw: Mapping[str, Any]) -> Iterator[Finding]:
         return
     for i, excitation in _rows(raw, "excitations"):
         yield from _unknown("point or body", places, _listed(excitation.get("at"), ("excitations", i, "at")))
+    for i, load in _rows(raw, "loads"):
+        yield from _unknown("point or body", places, _listed(load.get("at"), ("loads", i, "at")))
     impact = raw.get("impact")
     if isinstance(impact, Mapping):
         for key in ("at", "watch"):
             yield from _unknown("point or body", places, _listed(impact.get(key), ("impact", key)))
+    response = raw.get("response")
+    if isinstance(response, Mapping):
+        watched = _listed(response.get("watch"), ("response", "watch"))
+        yield from _unknown("point or body", places, [(path, _place(name, places)) for path, name in watched])
+
+
+def _place(text: str, places: list[str]) -> str:
+    """The place that "motor" or "motor y" watches."""
+    name, _, component = text.rpartition(" ")
+    known = component.lstrip("+-") in ("x", "y", "z", "rx", "ry", "rz")
+    return name if text not in places and name and known else text
 
 
 def did_you_mean(name: str, known: Iterable[str]) -> str:
@@ -53,7 +67,7 @@ def did_you_mean(name: str, known: Iterable[str]) -> str:
 
 
 def _double_names(raw: Mapping[str, Any], points: list[str]) -> Iterator[Finding]:
-    for table in ("members", "bodies", "springs", "excitations"):
+    for table in ("members", "bodies", "springs", "excitations", "loads"):
         seen: dict[str, int] = {}
         for i, row in _rows(raw, table):
             name = row.get("name")
@@ -128,6 +142,19 @@ def _check_sets(raw: Mapping[str, Any]) -> Iterator[Finding]:
         carried = _listed(body.get("carried_by"), ())
         if "centre" not in body and any(name in sets for _, name in carried):
             yield ("bodies", i, "centre"), "is needed where a set of points carries a body"
+
+
+def _check_spin(raw: Mapping[str, Any], body: Mapping[str, Any], path: Path) -> Iterator[Finding]:
+    """The shaft of a spin is an excitation with a running speed."""
+    spin = body.get("spin")
+    shaft = spin.get("shaft") if isinstance(spin, Mapping) else None
+    if not isinstance(shaft, str):
+        return
+    rows = {row.get("name", f"excitation {i + 1}"): row for i, row in _rows(raw, "excitations")}
+    known = [name for name in rows if isinstance(name, str)]
+    yield from _unknown("excitation", known, [(path, shaft)])
+    if shaft in rows and "speed" not in rows[shaft] and "speeds" not in rows[shaft]:
+        yield path, f'the excitation "{shaft}" has no running speed that a body could follow'
 
 
 def _check_spring(spring: Mapping[str, Any], path: Path, points: list[str]) -> Iterator[Finding]:
