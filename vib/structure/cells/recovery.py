@@ -178,9 +178,16 @@ def _energy(values: Array, compliance: Array, weights: Array) -> Array:
 
 
 def _monomials(places: Array, powers: NDArray[np.intp]) -> Array:
-    found = np.ones((*places.shape[:2], len(powers)))
-    for axis in range(3):
-        found *= places[:, :, axis, None] ** powers[:, axis]
+    # products of columns; raising arrays to powers takes ten times as long
+    columns: dict[tuple[int, ...], Array] = {(0, 0, 0): np.ones(places.shape[:2])}
+    found = np.empty((*places.shape[:2], len(powers)))
+    for index in np.argsort(powers.sum(axis=1), kind="stable").tolist():
+        power = tuple(powers[index].tolist())
+        if power not in columns:
+            axis = next(axis for axis in range(3) if power[axis])
+            lower = tuple(exponent - (place == axis) for place, exponent in enumerate(power))
+            columns[power] = columns[lower] * places[:, :, axis]
+        found[:, :, index] = columns[power]
     return found
 
 
