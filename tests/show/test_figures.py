@@ -9,7 +9,7 @@ import numpy as np
 import pytest
 
 from vib.show.figures.canvas import Picture, sheet, style
-from vib.show.figures.ringing import _thinned, ring_pictures
+from vib.show.figures.ringing import ring_pictures, thinned
 from vib.show.figures.shapes import shape_picture
 from vib.show.figures.space import moved, on_paper, smooth, view
 from vib.show.figures.speeds import speed_pictures
@@ -142,7 +142,7 @@ def test_a_thinned_record_keeps_its_peaks():
     times = np.linspace(0, 1, 50001)
     values = np.sin(2 * np.pi * 50 * times)
     values[31234] = 7.0
-    at, kept = _thinned(times, values)
+    at, kept = thinned(times, values)
     assert len(kept) < 3000
     assert kept.max() == 7.0
     assert kept.min() == values.min()

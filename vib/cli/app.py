@@ -11,7 +11,8 @@ from vib.cli.delivery import Wish
 
 _HELP = """Natural frequencies, ring-down and resonance screening of machine frames.
 
-A study is one TOML file with units. In the order of work: new, check, modes, ring, screen, report.
+A study is one TOML file with units. In the order of work: new, check, modes, ring, respond, screen,
+report.
 
 \b
 Example:
@@ -198,6 +199,52 @@ def ring(
 
     options = StartOptions(impulse, pulse, pull, displacement, velocity, at, along, duration, watch or [])
     return show_ring(study, options, units, pictures, Wish(json, out, quiet))
+
+
+@app.command(short_help="Forced response over time and frequency.")
+def respond(
+    study: StudyFile,
+    duration: Annotated[str | None, typer.Option(metavar="TIME", help='How long, such as "2 s".')] = None,
+    step: Annotated[
+        str | None, typer.Option(metavar="TIME", help='Step of the record, such as "1 ms".')
+    ] = None,
+    frequencies: Annotated[
+        tuple[str, str] | None,
+        typer.Option(metavar="FROM TO", help='Frequency response, such as "1 Hz" "100 Hz".'),
+    ] = None,
+    lines: Annotated[
+        int | None,
+        typer.Option(metavar="NUMBER", min=2, help="How many lines the frequency response has."),
+    ] = None,
+    at: Annotated[
+        str | None, typer.Option(metavar="PLACE", help="Where the force of the frequency response acts.")
+    ] = None,
+    along: Annotated[
+        str | None, typer.Option(metavar="DIRECTION", help='x, y, z, rx, ry, rz, -x, ... or "1, 1, 0".')
+    ] = None,
+    watch: Annotated[
+        list[str] | None,
+        typer.Option(metavar="PLACE", help='Place to show, such as "motor" or "motor x"; may be repeated.'),
+    ] = None,
+    json: AsJson = False,
+    out: Out = None,
+    quiet: Quiet = False,
+    units: Units = None,
+    pictures: Pictures = "svg",
+) -> int:
+    """Forced response: to loads and motions of the ground over time, and over frequency.
+
+    What acts is [[loads]] and [base_motion] of the study, what is recorded [response]; the options stand in
+    for its entries. Exit status 1 if the system is unstable.
+
+    \b
+    Example:
+      vib respond frame.toml --frequencies "1 Hz" "100 Hz" --at motor --along x
+    """
+    from vib.cli.responses import RespondOptions, show_responses
+
+    options = RespondOptions(duration, step, frequencies, lines, at, along, watch or [])
+    return show_responses(study, options, units, pictures, Wish(json, out, quiet))
 
 
 @app.command(short_help="Resonance screening at running speed.")

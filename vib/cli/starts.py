@@ -62,7 +62,7 @@ def start_arguments(study: Study, options: StartOptions) -> dict[str, Any]:
     if at is None:
         raise ModelError(f"--{given[0]} needs --at: the point, body or freedom that is struck")
     along = (
-        _direction(options.along) if options.along else (impact.along if impact and not options.at else None)
+        direction(options.along) if options.along else (impact.along if impact and not options.at else None)
     )
     if options.along is None and options.at is not None and impact is not None:
         along = impact.along
@@ -111,7 +111,7 @@ def read_option(study: Study, option: str, text: str, kind: str) -> float:
         raise UnitError(f"--{option}: {error}") from None
 
 
-def _direction(text: str) -> Along:
+def direction(text: str) -> Along:
     """A component by its name, or three numbers."""
     name = text.strip()
     if name.lstrip("+-") in COMPONENTS:

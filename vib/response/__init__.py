@@ -11,8 +11,8 @@ and `as_dict` (for JSON).
 
 Forced response: `signals` (inputs as functions of time), `instep` (what they do within a step), `pieces`
 (signals cut at the steps), `blocks` and `record` (long records by the semigroup law), `simulate` (of a state
-space, in memory or to a file), `loads` (forces at places, a moving ground), `forced` (the model they act on),
-`respond` (the noun `Response`). Frequency response: `residue_sum` (sum over modes, dashpots put back, bound of
-what is left out), `receptance` (which way suits the system), `frequency` (the noun `FrequencyResponse`). For
-control work: `zeros` and `exports`.
+space, in memory or to a file), `loads` (forces at places, a moving ground), `from_study` (those of a study),
+`forced` (the model they act on), `respond` (the noun `Response`). Frequency response: `residue_sum` (sum over
+modes, dashpots put back, bound of what is left out), `receptance` (which way suits the system), `frequency`
+(the noun `FrequencyResponse`). For control work: `zeros` and `exports`.
 """

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator, Sequence
 
 import numpy as np
+import scipy.linalg
 from numpy.typing import NDArray
 
 from vib.response.exponential import Array, Numbers
@@ -57,8 +58,8 @@ class Group:
                 effect = effects(self.values, np.array([self.step_s]), shape)[0]
                 found[:, number] = effect * self.inputs[:, column]
             else:
-                gain = self.inputs[:, column : column + 1]
-                found[:, number] = block_effects(self.block, gain, self.step_s, shape)[:, 0]
+                gain, one = self.inputs[:, column], np.array([self.step_s])
+                found[:, number] = block_effects(self.block, gain, one, shape)[0]
         return found
 
     def _seen(self, outputs: Numbers) -> Numbers:
@@ -131,10 +132,10 @@ class Group:
         if self.diagonal:
             moved = np.exp(np.outer(rest, self.values)) * effects(self.values, lengths, bit.shape)
             return np.asarray(bit.amplitude[:, None] * moved * gain)
+        acted = block_effects(self.block, gain, lengths, bit.shape)
         found = np.zeros((len(rest), self.size), np.complex128)
-        for number, (lasts, late, size) in enumerate(zip(lengths, rest, bit.amplitude, strict=True)):
-            acted = block_effects(self.block, gain[:, None], float(lasts), bit.shape)
-            found[number] = size * (Propagator(self.block)(late) @ acted)[:, 0]
+        for number, (late, size) in enumerate(zip(rest, bit.amplitude, strict=True)):
+            found[number] = size * (scipy.linalg.expm(self.block * late) @ acted[number])
         return found
 
     def blow(self, blow: Blow) -> Numbers:
@@ -143,7 +144,7 @@ class Group:
         rest = self.step_s - blow.offset
         if self.diagonal:
             return np.asarray(np.exp(self.values * rest) * struck)
-        return np.asarray(Propagator(self.block)(rest) @ struck)
+        return np.asarray(scipy.linalg.expm(self.block * rest) @ struck)
 
     def by_part(self, state: Numbers) -> Iterator[tuple[int, Array]]:
         """(number of the part, what it adds to the outputs (q,))."""

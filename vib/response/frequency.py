@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
-from typing import Literal
+from typing import TYPE_CHECKING, Literal
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
@@ -14,6 +14,9 @@ from vib.response.exponential import EPS, Array
 from vib.response.receptance import Receptance, receptance
 from vib.response.residue_sum import Complex
 from vib.system import COMPONENTS, System
+
+if TYPE_CHECKING:
+    from vib.modes import Modes
 
 Along = str | Sequence[float] | None
 Channel = str | tuple[str, Along]
@@ -104,6 +107,7 @@ def frequency_response(
     inputs: Sequence[Channel] | None = None,
     outputs: Sequence[Channel] | None = None,
     ground: Sequence[str] | None = None,
+    modes: Modes | None = None,
 ) -> FrequencyResponse:
     """The steady answer to harmonic forces, or to a harmonic motion of the ground.
 
@@ -118,6 +122,8 @@ def frequency_response(
     ground
         Instead of inputs: axes ``"x"``, ``"y"``, ``"z"`` (or turns about the origin) along which the ground
         moves. Outputs are then absolute motions per motion of the ground. Needs a structure.
+    modes
+        Modes up to the highest line found before for this system: their division of the structure is used.
 
     Returns
     -------
@@ -146,7 +152,7 @@ def frequency_response(
     lines = _lines(lines_hz)
     if ground is not None and inputs is not None:
         raise ModelError("frequency response: inputs and ground contradict each other; give one of them")
-    used, notes = _divided(system, float(lines.max()))
+    used, notes = _divided(system, float(lines.max()), modes)
     watched = channels(used, outputs)
     if ground is None:
         forced = channels(used, inputs)
@@ -307,11 +313,11 @@ def _lines(lines_hz: ArrayLike) -> Array:
     return lines
 
 
-def _divided(system: System, highest_hz: float) -> tuple[System, tuple[str, ...]]:
+def _divided(system: System, highest_hz: float, modes: Modes | None) -> tuple[System, tuple[str, ...]]:
     """A structure in the division whose modes up to the highest line are accurate."""
     if system.anatomy is None or system.anatomy.division is None or highest_hz <= 0:
         return system, ()
-    modes = system.modes(up_to=highest_hz)
+    modes = modes if modes is not None else system.modes(up_to=highest_hz)
     elastic = modes.frequencies_hz > 0
     if not elastic.any():
         return modes.system, ()

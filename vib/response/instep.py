@@ -7,6 +7,7 @@ one, so that nothing is lost however long the step is.
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 from typing import Any
 
@@ -20,6 +21,7 @@ Numbers = NDArray[Any]
 _NODES, _WEIGHTS = np.polynomial.legendre.leggauss(40)
 # 40 Gauss points integrate exp(z s) s^n over (0, 1) to rounding up to here; beyond, recursion loses nothing
 _QUADRATURE_REACH = 24.0
+_SERIES_TERMS = 17  # 1 / 19! is below rounding
 
 
 @dataclass(frozen=True)
@@ -55,29 +57,39 @@ def effects(values: Numbers, lengths: Array, shape: Shape) -> Numbers:
     return np.asarray((up - down) / 2j if shape.sine else (up + down) / 2)
 
 
-def block_effects(block: Numbers, gains: Numbers, length: float, shape: Shape) -> Numbers:
-    """The same for a matrix block (s, s) and the directions ``gains`` (s, c): (s, c)."""
-    size, columns = gains.shape
+def block_effects(block: Numbers, gain: Numbers, lengths: Array, shape: Shape) -> Numbers:
+    """The same for a matrix block (s, s) and one direction ``gain`` (s,), k lengths: (k, s)."""
+    size = len(gain)
     steps = shape.degree + 1 if isinstance(shape, Power) else 2
-    whole = np.zeros((size + steps, size + steps), np.result_type(block, gains, np.float64))
-    whole[:size, :size] = block * length
+    whole = np.zeros((len(lengths), size + steps, size + steps), np.result_type(block, gain, np.float64))
+    whole[:, :size, :size] = block * lengths[:, None, None]
     if isinstance(shape, Power):  # the powers of s / h follow from each other: n' = n times the one before
-        whole[size:, size:] = np.diag(np.arange(1.0, steps), -1)
+        whole[:, size:, size:] = np.diag(np.arange(1.0, steps), -1)
         driven, first = size + shape.degree, size
     else:
-        turn = shape.omega * length
-        whole[size:, size:] = [[0.0, turn], [-turn, 0.0]]  # sine, cosine
+        turn = shape.omega * lengths  # sine, cosine
+        whole[:, size, size + 1], whole[:, size + 1, size] = turn, -turn
         driven, first = size + (0 if shape.sine else 1), size + 1
-    found = np.zeros((size, columns), whole.dtype)
-    for column in range(columns):
-        whole[:size, driven] = gains[:, column]
-        found[:, column] = length * scipy.linalg.expm(whole)[:size, first]
-    return found
+    whole[:, :size, driven] = gain
+    moved = np.stack([scipy.linalg.expm(one) for one in whole]) if len(whole) else whole
+    return np.asarray(lengths[:, None] * moved[:, :size, first])
 
 
 def _moments(z: Numbers, degree: int) -> Numbers:
     """The integral of exp(z (1 - s)) s^n over s from 0 to 1, n! phi_(n+1)(z)."""
     found = np.zeros(z.shape, np.complex128)
+    if degree <= 1:  # constant and linear inputs, by far the most frequent: cheaper without the quadrature
+        near = np.abs(z) < 1
+        inner = z[near]
+        kept = np.zeros(inner.shape, np.complex128)
+        for term in range(_SERIES_TERMS, -1, -1):
+            kept = kept * inner + 1 / math.factorial(term + degree + 1)
+        found[near] = kept
+        far = z[~near]
+        found[~near] = (np.exp(far) - 1) / far
+        if degree == 1:
+            found[~near] = (found[~near] - 1) / far
+        return found
     near = np.abs(z) < max(_QUADRATURE_REACH, 2.0 * degree)
     place = (_NODES + 1) / 2
     if near.any():

@@ -46,20 +46,27 @@ class GroundMotion:
 
 
 def harmonic_ground(
-    amplitude: float, frequency_hz: float, along: str, *, quantity: GroundQuantity = "acceleration"
+    amplitude: float,
+    frequency_hz: float,
+    along: str,
+    *,
+    quantity: GroundQuantity = "acceleration",
+    phase_rad: float = 0.0,
 ) -> GroundMotion:
-    """A ground that moves harmonically for ever; ``amplitude`` in m/s^2, m/s or m by ``quantity``.
+    """A ground that moves for ever as amplitude sin(2 pi f t + phase), in m/s^2, m/s or m by ``quantity``.
 
-    Its displacement is a sine about 0; its velocity at time 0 is that of the sine.
+    Its displacement swings about 0, and at time 0 it has the displacement and velocity of that motion.
     """
     omega = 2 * np.pi * frequency_hz
-    travel = amplitude / omega ** {"acceleration": 2, "velocity": 1, "displacement": 0}[quantity]
+    order = {"acceleration": 2, "velocity": 1, "displacement": 0}[quantity]
+    travel, phase = amplitude / omega**order, phase_rad - order * np.pi / 2
     return GroundMotion(
-        Harmonic(-travel * omega**2, frequency_hz),
+        Harmonic(-travel * omega**2, frequency_hz, phase),
         along,
-        0.0,
-        travel * omega,
-        words=f"harmonic, {travel:.4g} m at {frequency_hz:.4g} Hz",
+        float(travel * np.sin(phase)),
+        float(travel * omega * np.cos(phase)),
+        words=f"harmonic, {abs(travel):.4g} m at {frequency_hz:.4g} Hz",
+        remarks=("The system begins at rest against the moving ground.",),
     )
 
 

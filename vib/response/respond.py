@@ -258,7 +258,7 @@ def _step(
         elif isinstance(signal, Sweep):
             periods.append(1 / max(signal.from_hz, signal.to_hz))
         elif signal.corners.size > 2:
-            grids.append(float(np.diff(signal.corners).min()))
+            grids.append(_record_step(signal.corners))
     wanted = min(periods, default=math.inf) / SAMPLES_PER_PERIOD
     words = f"{SAMPLES_PER_PERIOD} to the shortest period that matters"
     if grids:
@@ -267,6 +267,13 @@ def _step(
     if not math.isfinite(wanted):
         raise ModelError("step: nothing here swings, so a step can't be chosen; give one")
     return wanted, words
+
+
+def _record_step(times: Array) -> float:
+    """The step of evenly spaced times, not touched by the rounding of each; else the smallest gap."""
+    even = float((times[-1] - times[0]) / (times.size - 1))
+    off = np.abs(times - (times[0] + even * np.arange(times.size)))
+    return even if off.max() < 1e-6 * even else float(np.diff(times).min())
 
 
 def _duration(

@@ -16,7 +16,13 @@ from vib.study.names import Finding, check_names, did_you_mean
 from vib.study.schema import Study, Units
 
 _LARGEST_FILE = 50 * 2**20
-_NAMED = {"members": "members", "springs": "spring", "bodies": "body", "excitations": "excitation"}
+_NAMED = {
+    "members": "members",
+    "springs": "spring",
+    "bodies": "body",
+    "excitations": "excitation",
+    "loads": "load",
+}
 
 
 def read(path: str | FilePath) -> Study:
@@ -61,7 +67,26 @@ def read(path: str | FilePath) -> Study:
             placed = [Fault(f.entry, f.message, find_line(tuple(f.entry.split(".")), lines)) for f in faults]
             raise StudyError(str(path), placed)
         study._loaded = loaded
+    study._records = _records(study, file, lines, str(path))
     return study
+
+
+def _records(study: Study, file: FilePath, lines: Any, shown: str) -> dict[str, Any]:
+    if not study.loads and study.base_motion is None:
+        return {}
+    from vib.study.records import load_records
+
+    records, faults = load_records(study, file.parent)
+    if faults:
+        placed = [Fault(f.entry, f.message, find_line(_path_of(f.entry), lines)) for f in faults]
+        raise StudyError(shown, placed)
+    return records
+
+
+def _path_of(entry: str) -> Path:
+    """The path of an entry such as ``loads[0].file``."""
+    steps = entry.replace("[", ".").replace("]", "").split(".")
+    return tuple(int(step) if step.isdigit() else step for step in steps)
 
 
 def _text_of(file: FilePath) -> str:

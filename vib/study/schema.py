@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING, Annotated, Any, Literal
 from pydantic import Field, PrivateAttr, create_model, field_validator, model_validator
 
 from vib.study.geometry import Material, Members, Section, Support, Table
+from vib.study.loads import AppliedLoad, BaseMotion, Respond
 from vib.study.machine import Body, Damping, Excitation, Impact, Matrices, Spring
 from vib.study.mesh import Finder, Mesh, Point
 from vib.study.quantities import Name, Quantity
@@ -15,6 +16,7 @@ from vib.units import KINDS, UnitSystem, factor
 
 if TYPE_CHECKING:
     from vib.study.matrices import LoadedMatrices
+    from vib.study.records import Record
     from vib.system import System
 
 
@@ -78,10 +80,14 @@ class Study(Table):
     damping: Damping = Damping()
     excitations: tuple[Excitation, ...] = ()
     impact: Impact | None = None
+    loads: tuple[AppliedLoad, ...] = ()
+    base_motion: BaseMotion | None = None
+    response: Respond = Respond()
     matrices: Matrices | None = None
 
     _file: Path | None = PrivateAttr(None)
     _loaded: Any = PrivateAttr(None)
+    _records: Any = PrivateAttr(None)
 
     @field_validator("accuracy")
     @classmethod
@@ -107,6 +113,8 @@ class Study(Table):
         found = [name for name, point in self.points.items() if isinstance(point, Finder)]
         if found and self.mesh is None:
             raise ValueError(f"points.{found[0]} is to be found in a mesh, and there is no [mesh]")
+        if self.base_motion is not None and self.matrices is not None:
+            raise ValueError("base_motion needs a structure: bare matrices don't say what they stand on")
         return self
 
     @property
@@ -124,6 +132,11 @@ class Study(Table):
         """The matrices of [matrices] in SI units; None for a structure."""
         loaded: LoadedMatrices | None = self._loaded
         return loaded
+
+    @property
+    def records(self) -> dict[str, Record]:
+        """The records of loads and of the moving ground, SI, by entry such as ``"loads[0]"``."""
+        return dict(self._records or {})
 
     def system(self, *, up_to: str | float | None = None) -> System:
         """The second-order system of this study, SI units inside.

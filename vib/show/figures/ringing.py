@@ -44,11 +44,11 @@ def history_picture(ring: Ring, output: int, units: UnitSystem) -> Picture:
         axes.set_title(short(name))
         rest = float(ring.contributions.constant[output]) * scale
         envelope = ring.envelope_m[:, output] * scale
-        high = _thinned(ring.time_s, envelope)
+        high = thinned(ring.time_s, envelope)
         shade = axes.fill_between(high[0], rest - high[1], rest + high[1], color=COLOURS[5], alpha=0.22, lw=0)
         for sign in (1, -1):
             axes.plot(high[0], rest + sign * high[1], color=COLOURS[0], lw=0.7, ls=(0, (4, 2)))
-        times, moves = _thinned(ring.time_s, ring.displacement_m[:, output] * scale)
+        times, moves = thinned(ring.time_s, ring.displacement_m[:, output] * scale)
         (line,) = axes.plot(times, moves, color=INK, lw=0.9)
         handles = [(line, "motion"), (shade, "envelope")]
         handles += _mark(axes, ring, output, scale, unit)
@@ -126,7 +126,7 @@ def share_picture(ring: Ring) -> Picture:
     return Picture("ring_shares", figure, "Share of each mode in the peak displacements")
 
 
-def _thinned(times: Array, values: Array) -> tuple[Array, Array]:
+def thinned(times: Array, values: Array) -> tuple[Array, Array]:
     """A record that draws the same: the smallest and largest value of each narrow stripe of time."""
     order = np.argsort(times, kind="stable")
     times, values = times[order], values[order]
