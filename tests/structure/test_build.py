@@ -211,10 +211,10 @@ ERRORS: dict[str, Any] = {
         {"releases": {"end": "all"}},
         r"points\.C: nothing resists a movement along x and y and z",
     ),
-    "numbers too large": (
+    "numbers too small": (
         {
-            "materials": {"hard": {"like": "steel", "youngs_modulus": 1e59}},
-            "points": {**POINTS, "B": [1e-110, 0, 0]},
+            "materials": {"hard": {"like": "steel", "youngs_modulus": 1e-305}},
+            "points": POINTS,
         },
         {"material": "hard"},
         r'members\[0\]\.runs\[0\] \("bars"\): its length, section and material give .* check their units',
