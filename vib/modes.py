@@ -43,6 +43,8 @@ class Modes:
         (m,) numerical error bar of each frequency.
     condition
         (m,) condition number of each eigenvalue: 1 for undamped ones, large near a defective one.
+    backward_errors
+        (m,) least relative change of the matrices for which each pair would be exact.
     stable
         False if any eigenvalue found grows.
     rigid_body_count
@@ -75,6 +77,7 @@ class Modes:
     shapes: Numbers
     errors_hz: Array
     condition: Array
+    backward_errors: Array
     stable: bool
     rigid_body_count: int
     complete_below_hz: float | None
@@ -227,6 +230,7 @@ def find_modes(system: System, *, count: int | None = None, up_to: str | float |
         shapes=shapes,
         errors_hz=(damped.errors + found.errors) / (2 * np.pi),
         condition=damped.condition,
+        backward_errors=found.solution.backward,
         stable=not bool((damped.values.real > damped.movement).any()),
         rigid_body_count=damped.rigid,
         complete_below_hz=_complete(damped.certified, limit, limit_hz),

@@ -65,6 +65,7 @@ def _mode(modes: Modes, index: int) -> dict[str, Any]:
         "error_hz": modes.errors_hz[index],
         "eigenvalue": {"real_per_s": eigenvalue.real, "imag_rad_per_s": eigenvalue.imag},
         "condition": modes.condition[index],
+        "backward_error": modes.backward_errors[index],
         "description": modes.descriptions[index],
     }
     if modes.effective_mass is not None:

@@ -15,6 +15,7 @@ import scipy.linalg
 
 from vib.errors import AccuracyError
 from vib.massless import Matrix, acts_on, dense, first_order, root_scale, split_mass
+from vib.solve.backward import refined
 from vib.solve.damped import Damped
 from vib.solve.pairs import Pairs, Quadratic, damped_from_pairs, improve
 from vib.solve.undamped import CANCELLATION, EPS, Array, Undamped
@@ -82,6 +83,8 @@ def _judged(
         and float(scipy.linalg.eigvalsh(symmetric)[0]) >= floor
     )
     improved = improve(quadratic, pairs, passive=passive)
+    shapes = refined(quadratic.mass, quadratic.linear, quadratic.constant, improved.values, improved.shapes)
+    improved = replace(improved, shapes=shapes)
     lifted = replace(improved, shapes=lift @ improved.shapes, duals=lift @ improved.duals)
     return damped_from_pairs(lifted, lift @ still, mass, complete=True)
 

@@ -230,8 +230,8 @@ def projected_pairs(problem: Projected, rigid: int) -> tuple[Complex, Complex, C
     size = len(theta)
     twisted = bool(problem.term.constant.any())
     inverse = np.eye(size) + problem.constant()
-    linear: Array = problem.linear()
-    heavy: Array = np.diag(root)
+    linear: Array = np.asarray(problem.linear(), dtype=np.float64)
+    heavy: Array = np.asarray(np.diag(root), dtype=np.float64)
     if twisted:
         linear, heavy = np.linalg.solve(inverse, linear), np.linalg.solve(inverse, heavy)
     state = np.zeros((2 * size, 2 * size))

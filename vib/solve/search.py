@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, field, replace
 from functools import cached_property
 from typing import NamedTuple
 
@@ -12,6 +12,7 @@ import scipy.sparse as sparse
 from vib.errors import AccuracyError, MatrixError
 from vib.massless import condense, dense, split_mass
 from vib.solve.arnoldi import LowRank, is_passive, sparse_quadratic
+from vib.solve.backward import backward_errors
 from vib.solve.damped import Damped, proportional_modes
 from vib.solve.damping import ModalDamping, modal_damping
 from vib.solve.dense import condensed_modes
@@ -43,8 +44,9 @@ class Solution:
 
     damped: Damped
     damping: ModalDamping
-    counted: bool  # an inertia count agreed with what was found
+    counted: bool  # an inertia count or the argument principle agreed with what was found
     remarks: tuple[str, ...] = ()
+    backward: Array = field(default_factory=lambda: np.zeros(0))  # backward error of each pair (m,)
 
 
 def solve_system(system: System, count: int | None, limit: float | None, *, certify: bool = True) -> Solution:
@@ -57,14 +59,24 @@ def solve_system(system: System, count: int | None, limit: float | None, *, cert
     MatrixError
         A motion has neither mass, damping nor stiffness.
     """
-    size, ask = system.size, _Ask(count, limit, certify)
+    problem = _Problem(system)
+    found = _solve(problem, _Ask(count, limit, certify))
+    if not certify:
+        return found
+    linear, stiffness = problem.linear, problem.stiffness
+    backward = backward_errors(problem.mass, linear, stiffness, found.damping, found.damped)
+    return replace(found, backward=backward)
+
+
+def _solve(problem: _Problem, ask: _Ask) -> Solution:
+    system, count, limit = problem.system, ask.number, ask.limit
+    size = system.size
     everything = count is None and limit is None
     if everything and size > LARGEST_DENSE:
         raise AccuracyError(
             f"All modes of {size} freedoms are too many to compute at once; "
             "ask for a count or a highest frequency."
         )
-    problem = _Problem(system)
     small = size <= LARGEST_DENSE
     if everything or size <= (DENSE_SIZE if sparse.issparse(system.stiffness) else ARRAY_SIZE):
         return _dense(problem, ask)
