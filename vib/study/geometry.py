@@ -131,8 +131,10 @@ class Section(Table):
             wanted, what = _GENERAL, "a section without a shape"
         elif self.shape in SHAPES:
             wanted, what = SHAPES[self.shape][1], f'the shape "{self.shape}"'
+        elif given:
+            wanted, what = "", self._not_a_shape()
         else:
-            wanted, what = "", f'the designation "{self.shape}"'
+            wanted, what = "", ""  # a designation, which is looked up below
         required = {name for name in wanted.split() if not name.endswith("?")}
         allowed = {name.rstrip("?") for name in wanted.split()}
         if lacking := sorted(required - given):
@@ -144,6 +146,13 @@ class Section(Table):
             raise ValueError(f"{what} does not take {', '.join(extra)}")
         _ = self.profile  # dimensions that do not make a section are faults of the file
         return self
+
+    def _not_a_shape(self) -> str:
+        """What a name with dimensions may have meant; a designation has none."""
+        from vib.study.names import did_you_mean
+
+        near = did_you_mean(str(self.shape), SHAPES)
+        return f'"{self.shape}" is no shape{near}; the shapes are {", ".join(SHAPES)}; a designation'
 
     def _given(self) -> dict[str, float]:
         return {name: value for name, value in self if name != "shape" and value is not None}
@@ -191,6 +200,12 @@ def _route(value: object) -> object:
     return value
 
 
+def _list_of_runs(value: object) -> object:
+    if isinstance(value, list) and value and all(isinstance(name, str) for name in value):
+        raise ValueError('expected a list of runs, such as [["A", "B"]]: brackets around each run')
+    return value
+
+
 class Releases(Table):
     """Components, in the member's own axes, that are free at the two ends of every run (hinges, sliders)."""
 
@@ -204,8 +219,9 @@ class Members(Table):
     name: Name = Field("", description='default: numbered, such as "members 1"')
     section: Name
     material: Name = Field(description="a name of [materials] or of the built-in table")
-    runs: tuple[
-        Annotated[tuple[Name, ...], BeforeValidator(_route, json_schema_input_type=list[str])], ...
+    runs: Annotated[
+        tuple[Annotated[tuple[Name, ...], BeforeValidator(_route, json_schema_input_type=list[str])], ...],
+        BeforeValidator(_list_of_runs, json_schema_input_type=list[list[str]]),
     ] = Field(min_length=1, description="each run joins two or more points in a row")
     up: Axis | None = Field(
         None,

@@ -227,6 +227,9 @@ def _speed(value: object, info: ValidationInfo) -> object:
     return speed, speed
 
 
+_HIGHEST_ORDER = 1e6  # far above any count of teeth, bars or blades
+
+
 class Excitation(Table):
     """What shakes the machine: orders of a running speed, fixed frequencies, or both."""
 
@@ -237,7 +240,9 @@ class Excitation(Table):
     speeds: tuple[Annotated[float, positive("speed")], ...] = Field(
         (), description="a list of running speeds"
     )
-    orders: tuple[Number, ...] = Field((1.0,), description="multiples of the running speed, whole or not")
+    orders: tuple[Number, ...] = Field(
+        (1.0,), min_length=1, description="multiples of the running speed, whole or not"
+    )
     frequencies: tuple[Annotated[float, positive("frequency")], ...] = Field(
         (), description="fixed frequencies"
     )
@@ -255,8 +260,12 @@ class Excitation(Table):
             raise ValueError("needs a speed, speeds or frequencies")
         if self.speed is not None and self.speeds:
             raise ValueError("takes speed or speeds, not both")
-        if min(self.orders, default=0) <= 0:
+        if min(self.orders) <= 0:
             raise ValueError("orders must be greater than zero")
+        if max(self.orders) > _HIGHEST_ORDER:
+            raise ValueError(
+                f"orders: {max(self.orders):g} is larger than any order; write e.g. orders = [1, 2]"
+            )
         if self.along is not None and self.at is None:
             raise ValueError("along needs at: the point or body where it acts")
         if self.band is not None and self.band >= 1:

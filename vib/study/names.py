@@ -19,6 +19,8 @@ Finding = tuple[Path, str]
 
 def check_names(raw: Mapping[str, Any]) -> Iterator[Finding]:
     """Every dangling or doubly used name, as (path in the file, message)."""
+    if any(not isinstance(raw.get(table, {}), Mapping) for table in ("points", "sections", "materials")):
+        return  # the table itself is at fault, which the schema reports; every name in it would follow
     points = _keys(raw.get("points"))
     bodies = [body.get("name") for _, body in _rows(raw, "bodies")]
     places = [*points, *(name for name in bodies if isinstance(name, str))]
@@ -177,7 +179,7 @@ def _unknown(what: str, known: list[str], used: Iterable[tuple[Path, str]]) -> I
         if name not in known:
             yield path, f'no {what} is named "{name}"{did_you_mean(name, known)}'
     for name, times in Counter(name for _, name in used).items():
-        if times > 1 and name != "ground" and used[0][0][0] in ("bodies", "supports"):
+        if times > 1 and name != "ground" and used[0][0][0] in ("bodies", "supports", "impact"):
             yield used[0][0][:-1], f'"{name}" stands there {times} times'
 
 

@@ -14,6 +14,7 @@ from vib.study.lines import Path, find_line, line_numbers
 from vib.study.matrices import load_matrices
 from vib.study.names import Finding, check_names, did_you_mean
 from vib.study.schema import Study, Units
+from vib.units import KINDS
 
 _LARGEST_FILE = 50 * 2**20
 _NAMED = {
@@ -124,7 +125,8 @@ def _parse(text: str, file: FilePath) -> dict[str, Any]:
 
 
 def _units(raw: dict[str, Any]) -> dict[str, str]:
-    """The declared units; entries of [units] that are wrong are left out here and reported by the schema."""
+    """The declared units. The schema reports entries that are wrong; here SI stands in for them, so that
+    the bare numbers that they are for are not reported as well."""
     table = raw.get("units")
     good: dict[str, Any] = {}
     for kind, unit in table.items() if isinstance(table, dict) else ():
@@ -132,7 +134,8 @@ def _units(raw: dict[str, Any]) -> dict[str, str]:
             Units.model_validate({kind: unit})
             good[kind] = unit
         except ValidationError:
-            continue
+            if kind in KINDS and KINDS[kind].si:
+                good[kind] = KINDS[kind].si
     return Units.model_validate(good).declared()
 
 
@@ -166,6 +169,11 @@ def _finding(detail: Any) -> Finding:
         return path, "expected a table"
     if kind in ("tuple_type", "list_type"):
         return path, "expected a list" + (" of tables ([[...]])" if len(path) == 1 else "")
+    if kind in ("too_long", "too_short"):
+        got = detail["ctx"]["actual_length"]
+        if kind == "too_short":
+            return path, f"expected at least {detail['ctx']['min_length']} in the list, got {got}"
+        return path, f"expected a list of {detail['ctx']['max_length']}, got {got}"
     message = str(detail["msg"])
     return path, message[0].lower() + message[1:]
 
