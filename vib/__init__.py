@@ -12,17 +12,39 @@ from typing import TYPE_CHECKING, Any
 if TYPE_CHECKING:
     from vib.errors import VibError
     from vib.modes import Modes
+    from vib.response.frequency import FrequencyResponse
+    from vib.response.loads import Load
+    from vib.response.respond import Response
     from vib.response.ring import Ring
+    from vib.response.simulate import simulate, simulate_to
     from vib.screening import Screening, screen
     from vib.statespace import StateSpace
     from vib.study import Study, read
     from vib.system import System
 
 __version__ = "0.1.0"
-__all__ = ["Modes", "Ring", "Screening", "StateSpace", "Study", "System", "VibError", "read", "screen"]
+__all__ = [
+    "FrequencyResponse",
+    "Load",
+    "Modes",
+    "Response",
+    "Ring",
+    "Screening",
+    "StateSpace",
+    "Study",
+    "System",
+    "VibError",
+    "read",
+    "screen",
+    "simulate",
+    "simulate_to",
+]
 
 _HOME = {
+    "FrequencyResponse": "vib.response.frequency",
+    "Load": "vib.response.loads",
     "Modes": "vib.modes",
+    "Response": "vib.response.respond",
     "Ring": "vib.response.ring",
     "Screening": "vib.screening",
     "StateSpace": "vib.statespace",
@@ -31,6 +53,8 @@ _HOME = {
     "VibError": "vib.errors",
     "read": "vib.study",
     "screen": "vib.screening",
+    "simulate": "vib.response.simulate",
+    "simulate_to": "vib.response.simulate",
 }
 
 

@@ -92,9 +92,10 @@ class Cutter:
         self, signal: Signal, first: int, last: int
     ) -> tuple[Indices, tuple[Indices, Array, Array] | None]:
         """The steps with a corner inside, and the pieces they are cut into: step, begin, end."""
-        places = signal.corners / self.step_s
-        chosen = (places > first) & (places < last) & ~_on_grid(places)
-        inside = places[chosen]
+        corners = signal.corners
+        near = np.searchsorted(corners, [first * self.step_s, last * self.step_s], side="right")
+        places = corners[near[0] : near[1]] / self.step_s
+        inside = places[(places > first) & (places < last) & ~_on_grid(places)]
         if not inside.size:
             return np.zeros(0, np.intp), None
         steps = np.unique(np.floor(inside).astype(np.intp))

@@ -352,10 +352,11 @@ def _steady(
     for frequency, acting in sorted(waves.items()):
         forces = np.stack([direction for direction, _ in acting], axis=1)
         answer = receptance(system, np.array([2 * np.pi * frequency]), watched.directions, forces)
+        if not np.isfinite(answer.values).all():
+            continue
         sizes = np.array([turned for _, turned in acting])
         amplitude = answer.values[0] @ sizes + ride.get(frequency, 0.0)
-        if np.isfinite(amplitude).all():
-            found.append(Steady(frequency, amplitude, answer.error[0] @ np.abs(sizes)))
+        found.append(Steady(frequency, amplitude, answer.error[0] @ np.abs(sizes)))
     missing = len(waves) - len(found)
     remark = "A load is exactly at the natural frequency of an undamped mode: that part never becomes steady."
     return tuple(found), (remark,) if missing else ()

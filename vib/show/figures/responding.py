@@ -80,6 +80,7 @@ def amplitude_picture(lines: FrequencyResponse, given: int, kind: str) -> Pictur
             rows[1].plot(lines.lines_hz, np.degrees(np.angle(found)), **look)
             handles.append(line)
         rows[0].set_yscale("log")
+        _plain_ticks(rows[0].yaxis)
         _across(lines, rows)
         unit = response_unit(lines, 0, given, kind)
         rows[0].set_ylabel(f"{word}{', ' + unit if unit else ''}")
@@ -141,6 +142,15 @@ def _across(lines: FrequencyResponse, rows: Any) -> None:
     low, high = float(lines.lines_hz.min()), float(lines.lines_hz.max())
     if low > 0 and high > 30 * low:
         rows[1].set_xscale("log")
+        _plain_ticks(rows[1].xaxis)
     if high > low:
         rows[1].set_xlim(low, high)
     rows[1].set_xlabel("frequency, Hz")
+
+
+def _plain_ticks(axis: Any) -> None:
+    """Powers of ten as numbers: our style writes text as it is, so "$10^3$" would stand there."""
+    from matplotlib.ticker import FuncFormatter, NullFormatter
+
+    axis.set_major_formatter(FuncFormatter(lambda value, _: f"{value:g}"))
+    axis.set_minor_formatter(NullFormatter())
