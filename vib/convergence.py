@@ -19,9 +19,6 @@ Array = NDArray[np.float64]
 # itself is above LARGE the orders do not hold yet and the whole of it is taken.
 FRACTION = 0.5
 LARGE = 0.02
-# Cells half as large leave a quarter of the error of plates (order h^2, tests/structure/cells), so that the
-# difference is three quarters of it.
-QUARTERED = 4 / 3
 ROUNDS = 6
 LARGEST = 60_000  # freedoms beyond which members are not cut any finer
 
@@ -94,12 +91,12 @@ def _of_cells(system: System, solution: Solution, cells: Discretisation) -> Conv
         errors, remarks = cells.errors(damped.shapes, size)
         told = "by the stresses of the modes"
     else:
-        compared = np.abs(solve_system(finer, number, None, certify=False).damped.values)
+        compared = np.abs(solve_system(finer.system, number, None, certify=False).damped.values)
         errors = size.copy()
         known = min(number, len(compared))
-        errors[:known] = QUARTERED * np.abs(size[:known] - compared[:known])
+        errors[:known] = finer.factor * np.abs(size[:known] - compared[:known])
         errors[: damped.rigid] = 0.0
-        told = "by comparison with every cell divided in four"
+        told = finer.words
     errors = errors + cells.member_errors(damped.shapes, size)
     elastic = size > 0
     relative = errors[elastic] / size[elastic]

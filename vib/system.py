@@ -98,6 +98,14 @@ class MeshView:
     used: NDArray[np.intp]
 
 
+class Comparison(NamedTuple):
+    """A structure of better cells; ``factor`` times the difference of a frequency is its error."""
+
+    system: System
+    factor: float
+    words: str
+
+
 class Discretisation(Protocol):
     """How far frequencies are off because a structure consists of cells that can't be divided again."""
 
@@ -106,12 +114,12 @@ class Discretisation(Protocol):
         """What is asked of every frequency."""
         ...
 
-    def finer(self) -> System | None:
-        """The same structure with every cell divided, where comparing with it tells the error best."""
+    def finer(self) -> Comparison | None:
+        """The same structure of better cells, where comparing with it tells the error best."""
         ...
 
     def errors(self, shapes: NDArray[Any], angular: Array) -> tuple[Array, tuple[str, ...]]:
-        """Error of each angular frequency (m,), rad/s, from the stresses of the shapes (n, m), and remarks."""
+        """Error of each angular frequency (m,), rad/s, by the stresses of the shapes (n, m), and remarks."""
         ...
 
     def member_errors(self, shapes: NDArray[Any], angular: Array) -> Array:
@@ -120,11 +128,12 @@ class Discretisation(Protocol):
 
 
 class Spinning(NamedTuple):
-    """A body that spins with a shaft: its name, unit axis in the sense of its turning, polar moment."""
+    """A body that spins with a shaft; ``axis`` is the unit axis in the sense of its turning."""
 
     name: str
     axis: tuple[float, float, float]
     polar_kg_m2: float
+    mass_kg: float
 
 
 @dataclass(frozen=True, eq=False)
