@@ -17,7 +17,7 @@ from vib.solve.backends.superlu import SuperLU
 # (measured with solids: 0.3 s saved of 0.9 s at 6,600 equations, as much at 10,900).
 WORTH_LOADING = 10_000
 
-# Below this many SuperLU is as quick as our own dense blocks, which have to be laid out first (measured: solids
+# Below this many SuperLU is as quick as our own blocks, which have to be laid out first (measured: solids
 # of 3,900 equations 3 times as fast by blocks, slender frames of 5,400 a third slower).
 WORTH_DISSECTING = 3000
 
