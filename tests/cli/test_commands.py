@@ -156,6 +156,10 @@ def test_ring_tables_keep_angles_apart_and_use_the_units_asked_for(vib, block):
         (["--along", "upwards", "--pull", "1 N"], "--along: expected one of x"),
         (["--pulse", "1 N", "1 m"], "--pulse: "),
         (["--duration", "-1 s"], "duration"),
+        (["--along", "0, 0, 0", "--pull", "1 N"], "--along: expected one of x"),
+        (["--along", "nan, 0, 0", "--pull", "1 N"], "--along: expected one of x"),
+        (["--along", "", "--pull", "1 N"], "--along: expected one of x"),
+        (["--at", "", "--pull", "1 N"], "there is no such place"),
     ],
 )
 def test_wrong_ring_options_are_named(vib, chain, options, said):
@@ -164,6 +168,14 @@ def test_wrong_ring_options_are_named(vib, chain, options, said):
     assert done.out == ""
     assert done.err.startswith("error: ")
     assert said in done.err
+
+
+def test_ring_of_a_structure_without_a_direction_names_the_entry(vib, block):
+    without = block.with_name("without.toml")
+    without.write_text(block.read_text().replace('along = "z"\n', ""))
+    assert "impact.along is missing" in vib("ring", without).err
+    assert "--along is missing" in vib("ring", without, "--pull", "3 N").err
+    assert vib("ring", without, "--along", "x").status == 0
 
 
 def test_ring_without_a_start_says_how_to_give_one(vib, beam):

@@ -87,6 +87,7 @@ def test_wrong_usage_exits_with_2_and_one_error(vib, arguments, said):
     assert done.err.startswith("error: ")
     assert said in done.err
     assert "Traceback" not in done.err
+    assert "Value error" not in done.err
 
 
 class Terminal(io.StringIO):

@@ -147,7 +147,7 @@ def _fault_lines(error: Exception | str) -> list[str]:
         about = f"{error.file}: " if error.file else ""
         return [about + line.strip() for line in str(error).splitlines() if line.strip()]
     if hasattr(error, "format_message"):  # the parser's usage errors, whichever package they live in
-        return [" ".join(str(error.format_message()).split())]
+        return [" ".join(str(error.format_message()).replace("Value error, ", "").split())]
     if isinstance(error, MemoryError):
         return ["not enough memory for this; ask for fewer modes (--count, --up-to) or use a larger machine"]
     name = type(error).__name__

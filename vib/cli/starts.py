@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Sequence
 from dataclasses import dataclass, field
 from typing import TYPE_CHECKING, Any
@@ -58,14 +59,15 @@ def start_arguments(study: Study, options: StartOptions) -> dict[str, Any]:
             "nothing sets it ringing: add [impact] to the study, or say for example "
             '--impulse "12 N s" --at PLACE --along x'
         )
-    at = options.at or (impact.at if impact else None)
+    at = options.at if options.at is not None else (impact.at if impact else None)
     if at is None:
         raise ModelError(f"--{given[0]} needs --at: the point, body or freedom that is struck")
-    along = (
-        direction(options.along) if options.along else (impact.along if impact and not options.at else None)
-    )
-    if options.along is None and options.at is not None and impact is not None:
-        along = impact.along
+    along = impact.along if impact else None
+    if options.along is not None:
+        along = direction(options.along)
+    if along is None and study.matrices is None:
+        where = "impact.along is missing" if impact and not given else "--along is missing"
+        raise ModelError(f"{where}: the direction that {at} is struck in, one of {', '.join(COMPONENTS)}")
     arguments: dict[str, Any] = {"at": at, "along": along}
     arguments |= _start(study, options, given, along)
     if options.duration is not None:
@@ -120,10 +122,10 @@ def direction(text: str) -> Along:
         numbers = [float(part) for part in name.strip("[]()").replace(",", " ").split()]
     except ValueError:
         numbers = []
-    if len(numbers) != 3:
+    if len(numbers) != 3 or not 0 < math.hypot(*numbers) < math.inf:
         raise VibError(
             f'--along: expected one of {", ".join(COMPONENTS)} (with "-" for the other way) or three numbers '
-            f'such as "1, 1, 0", got "{text}"'
+            f'(not all zero) such as "1, 1, 0", got "{text}"'
         )
     return numbers
 
