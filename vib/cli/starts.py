@@ -62,7 +62,7 @@ def start_arguments(study: Study, options: StartOptions) -> dict[str, Any]:
     at = options.at if options.at is not None else (impact.at if impact else None)
     if at is None:
         raise ModelError(f"--{given[0]} needs --at: the point, body or freedom that is struck")
-    along = impact.along if impact else None
+    along: Along = impact.along if impact else None
     if options.along is not None:
         along = direction(options.along)
     if along is None and study.matrices is None:
