@@ -231,7 +231,7 @@ def find_modes(system: System, *, count: int | None = None, up_to: str | float |
         errors_hz=(damped.errors + found.errors) / (2 * np.pi),
         condition=damped.condition,
         backward_errors=found.solution.backward,
-        stable=not bool((damped.values.real > damped.movement).any()),
+        stable=damped.growing is None and not bool((damped.values.real > damped.movement).any()),
         rigid_body_count=damped.rigid,
         complete_below_hz=_complete(damped.certified, limit, limit_hz),
         proportional=damped.proportional,
@@ -303,6 +303,15 @@ def _remarks(system: System, found: Converged) -> tuple[str, ...]:
         remarks.append("The number of modes was confirmed by an inertia count (Sylvester).")
     elif found.solution.counted:
         remarks.append("The number of modes was confirmed by the argument principle.")
+    if damped.growing is not None:
+        remarks.append(
+            f"A motion of {abs(damped.growing) / (2 * np.pi):.4g} Hz, beyond the modes asked for, grows: "
+            "ask for more modes to see it."
+        )
+    elif found.solution.watch:
+        remarks.append(
+            "Forces that can feed energy in: whether motions beyond the modes listed grow was not proved."
+        )
     if ((damped.values.real > damped.movement) & (damped.values.imag == 0)).any():
         remarks.append(
             "A motion grows without swinging: the stiffness is not positive there, because the structure is "

@@ -13,6 +13,7 @@ if TYPE_CHECKING:
     from vib.cli.starts import StartOptions
     from vib.modes import Modes
     from vib.response.ring import Ring
+    from vib.speeds import SpeedCurves
     from vib.structure.survey import Survey
     from vib.study import Study
     from vib.units import UnitSystem
@@ -67,20 +68,34 @@ def show_modes(
         from vib.show.tables.modes import modes_blocks
 
         modes = _modes(study, count, up_to)
+        curves = _curves(study, modes)
 
         def files() -> dict[str, bytes]:
             from vib.show.bundles import modes_files
 
-            return modes_files(modes, study.title, pictures, study.up)
+            return modes_files(modes, study.title, pictures, study.up, curves)
 
         answer = Answer(
-            modes_blocks(modes, study.title),
-            lambda: modes_document(modes, study.title),
+            modes_blocks(modes, study.title, curves),
+            lambda: modes_document(modes, study.title, curves),
             modes.remarks,
             files,
             DONE if modes.stable else OBJECTION,
         )
         return deliver(answer, wish)
+
+
+def _curves(study: Study, modes: Modes) -> tuple[SpeedCurves, ...]:
+    """The modes against the speed of each shaft that something spins with."""
+    if not modes.system.rotations:
+        return ()
+    from vib.speeds import speed_curves
+
+    orders = {row.name: row.orders for row in study.excitations if row.speed_ranges}
+    return tuple(
+        speed_curves(modes.system, row.shaft, count=modes.count, orders=orders.get(row.shaft, (1.0,)))
+        for row in modes.system.rotations
+    )
 
 
 def _survey(study: Study) -> Survey:
@@ -148,6 +163,7 @@ def show_screening(path: Path, band: str | None, pictures: str, wish: Wish) -> i
 
         modes = screening_modes(study, band)
         screening = screen(modes, study.excitations, band=band)
+        curves = _curves(study, modes)
 
         @cache
         def document() -> dict[str, Any]:
@@ -156,7 +172,7 @@ def show_screening(path: Path, band: str | None, pictures: str, wish: Wish) -> i
         def files() -> dict[str, bytes]:
             from vib.show.bundles import screening_files
 
-            return screening_files(screening, modes, document(), pictures)
+            return screening_files(screening, modes, document(), pictures, curves)
 
         answer = Answer(
             screening_blocks(screening, study.title),

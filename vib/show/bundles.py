@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+from collections.abc import Iterable, Sequence
 from typing import TYPE_CHECKING, Any
 
 from vib.show.documents import modes_document, to_json
@@ -13,6 +13,7 @@ if TYPE_CHECKING:
     from vib.response.ring import Ring
     from vib.screening import Screening
     from vib.show.figures.canvas import Picture
+    from vib.speeds import SpeedCurves
     from vib.structure.survey import Survey
     from vib.study import Study
     from vib.units import UnitSystem
@@ -34,11 +35,14 @@ def check_files(study: Study, survey: Survey, document: dict[str, Any], pictures
     return found | _drawn([structure_picture(study, study.system(), frames)], pictures)
 
 
-def modes_files(modes: Modes, title: str, pictures: str, up: str) -> dict[str, bytes]:
-    """modes.json, modes.csv, shapes.npz, of a structure shapes.vtu, and one picture per mode."""
+def modes_files(
+    modes: Modes, title: str, pictures: str, up: str, curves: Sequence[SpeedCurves] = ()
+) -> dict[str, bytes]:
+    """modes.json, modes.csv, shapes.npz, of a structure shapes.vtu, and one picture per mode and shaft."""
+    from vib.show.figures.curves import curve_picture
     from vib.show.figures.shapes import shape_picture
 
-    document = modes_document(modes, title)
+    document = modes_document(modes, title, curves)
     found = {
         "modes.json": to_json(document).encode(),
         "modes.csv": csv_bytes(document["modes"]),
@@ -48,8 +52,11 @@ def modes_files(modes: Modes, title: str, pictures: str, up: str) -> dict[str, b
         from vib.show.viewer import vtu_bytes
 
         found["shapes.vtu"] = vtu_bytes(modes)
-    drawn = (shape_picture(modes, index, up) for index in range(modes.count))
-    return found | _drawn(drawn, pictures)
+    shapes = [shape_picture(modes, index, up) for index in range(modes.count)]
+    against = [
+        curve_picture(shaft, f"against_speed_{number:02d}") for number, shaft in enumerate(curves, start=1)
+    ]
+    return found | _drawn(shapes + against, pictures)
 
 
 def _shape_arrays(modes: Modes) -> dict[str, Any]:
@@ -94,7 +101,11 @@ def ring_files(ring: Ring, document: dict[str, Any], units: UnitSystem, pictures
 
 
 def screening_files(
-    screening: Screening, modes: Modes, document: dict[str, Any], pictures: str
+    screening: Screening,
+    modes: Modes,
+    document: dict[str, Any],
+    pictures: str,
+    curves: Sequence[SpeedCurves] = (),
 ) -> dict[str, bytes]:
     """screening.json, screening.csv and one speed-frequency diagram per excitation."""
     from vib.show.figures.speeds import speed_pictures
@@ -103,7 +114,7 @@ def screening_files(
         "screening.json": to_json(document).encode(),
         "screening.csv": csv_bytes(document["rows"]),
     }
-    return found | _drawn(speed_pictures(screening, modes), pictures)
+    return found | _drawn(speed_pictures(screening, modes, curves), pictures)
 
 
 def _drawn(pictures: Iterable[Picture], kind: str) -> dict[str, bytes]:

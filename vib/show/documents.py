@@ -4,13 +4,14 @@ from __future__ import annotations
 
 import json
 import math
-from collections.abc import Iterable, Mapping
+from collections.abc import Iterable, Mapping, Sequence
 from typing import TYPE_CHECKING, Any
 
 from vib.show.words import CAUTION
 
 if TYPE_CHECKING:
     from vib.modes import Modes
+    from vib.speeds import SpeedCurves
 
 _DIRECTIONS = ("x", "y", "z", "rx", "ry", "rz")
 _MASS_UNITS = ("kg", "kg", "kg", "kg_m2", "kg_m2", "kg_m2")
@@ -38,8 +39,9 @@ def clean(value: Any) -> Any:
     return str(value)
 
 
-def modes_document(modes: Modes, title: str) -> dict[str, Any]:
-    """What ``vib modes --json`` prints."""
+def modes_document(modes: Modes, title: str, curves: Sequence[SpeedCurves] = ()) -> dict[str, Any]:
+    """What ``vib modes --json`` prints; ``curves`` are the modes against the speed of each shaft."""
+    against = {"against_speed": [shaft.to_dict() for shaft in curves]} if curves else {}
     return {
         "title": title,
         "modes": [_mode(modes, index) for index in range(modes.count)],
@@ -49,6 +51,7 @@ def modes_document(modes: Modes, title: str) -> dict[str, Any]:
         "complete_below_hz": modes.complete_below_hz,
         "proportional_damping": modes.proportional,
         "damping_note": modes.damping_note,
+        **against,
         "remarks": list(modes.remarks),
         "caution": CAUTION,
     }

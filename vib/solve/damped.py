@@ -22,7 +22,7 @@ class Damped:
     ``values`` (m,) complex, 1/s; ``shapes`` (n, m), real where ``proportional``; ``errors`` (m,) bound the
     error of abs(value), ``movement`` (m,) that of the value itself, 1/s; ``condition`` (m,); ``undamped``
     (m,) angular frequency without damping, NaN for a lag without mass; ``certified`` as in
-    `Undamped`, in 1/s.
+    `Undamped`, in 1/s; ``growing``: an eigenvalue beyond these that grows, where one was met.
     """
 
     values: Complex
@@ -35,6 +35,7 @@ class Damped:
     proportional: bool
     complete: bool
     certified: float | None = None
+    growing: complex | None = None
 
 
 def order_modes(values: Complex, rigid: NDArray[np.bool_]) -> NDArray[np.intp]:

@@ -17,6 +17,7 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 import scipy.linalg
+from numpy.typing import NDArray
 
 from vib.errors import AccuracyError
 from vib.solve.backends.choice import factor as factorise
@@ -230,13 +231,9 @@ def projected_pairs(problem: Projected, rigid: int) -> tuple[Complex, Complex, C
     size = len(theta)
     twisted = bool(problem.term.constant.any())
     inverse = np.eye(size) + problem.constant()
-    linear: Array = np.asarray(problem.linear(), dtype=np.float64)
-    heavy: Array = np.asarray(np.diag(root), dtype=np.float64)
-    if twisted:
-        linear, heavy = np.linalg.solve(inverse, linear), np.linalg.solve(inverse, heavy)
+    both = np.hstack([problem.linear(), np.diag(root)])
     state = np.zeros((2 * size, 2 * size))
-    state[:size, :size] = -linear
-    state[:size, size:] = -heavy
+    state[:size] = -np.linalg.solve(inverse, both) if twisted else -both
     state[size:, :size] = np.diag(root)
     times, left, right = scipy.linalg.eig(state, left=True, right=True)
     kept = (np.abs(times) > 1e-12 * np.abs(times).max()) & (times.imag <= 0)
@@ -322,7 +319,17 @@ def reduced_quadratic(
     with_norms = replace(whole, norm=_norm(reduction), dual_norm=_dual_norm(reduction))
     pairs = improve(with_norms, pairs, passive=passive)
     certified = _proof(reduction, problem, undamped, pairs.values, count, limit) if certify else None
-    return damped_from_pairs(pairs, still, reduction.mass, complete=False, certified=certified)
+    damped = damped_from_pairs(pairs, still, reduction.mass, complete=False, certified=certified)
+    return damped if passive else replace(damped, growing=_growing(problem, values, weights, order[wanted:]))
+
+
+def _growing(
+    problem: Projected, values: Complex, weights: Complex, others: NDArray[np.intp]
+) -> complex | None:
+    """The fastest growing eigenvalue among those not asked for, as far as the space shows it."""
+    off = problem.residual(values[others], weights[:, others])
+    certain = others[(off < 1e-3) & (values[others].real > 2 * off * np.abs(values[others]))]
+    return complex(values[certain[np.argmax(values[certain].real)]]) if len(certain) else None
 
 
 def _project(reduction: Reduction, held: Array, rates: Array) -> Projected:

@@ -46,6 +46,7 @@ class Solution:
     damping: ModalDamping
     counted: bool  # an inertia count or the argument principle agreed with what was found
     remarks: tuple[str, ...] = ()
+    watch: bool = False  # energy can be fed in, and not every mode was computed
     backward: Array = field(default_factory=lambda: np.zeros(0))  # backward error of each pair (m,)
 
 
@@ -64,6 +65,8 @@ def solve_system(system: System, count: int | None, limit: float | None, *, cert
     if not certify:
         return found
     linear, stiffness = problem.linear, problem.stiffness
+    feeds = problem.twisted or not is_passive(linear, found.damping.undamped)
+    found = replace(found, watch=feeds and not found.damped.complete)
     backward = backward_errors(problem.mass, linear, stiffness, found.damping, found.damped)
     return replace(found, backward=backward)
 

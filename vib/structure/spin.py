@@ -53,7 +53,7 @@ def _rotation(assembly: Assembly, size: int, shaft: str, numbers: list[int]) -> 
         part = turning.T @ sparse.csr_array(-polar * body.spin.ratio * cross_matrix(axis)) @ turning
         whole = whole + (part - part.T) / 2
         direction = axis * np.sign(body.spin.ratio)
-        spinning.append(Spinning(body.name, tuple(direction.tolist()), polar))
+        spinning.append(Spinning(body.name, tuple(direction.tolist()), polar, body.mass))
     whole.resize((size, size))  # the freedoms of a mesh come after those of points
     low, high = shaft_speed(study, study.bodies[numbers[0]])
     return Rotation(shaft, high, low, whole, None, tuple(spinning))

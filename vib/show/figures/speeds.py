@@ -2,11 +2,13 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
 from vib.show.figures.canvas import BAD, COLOURS, DASHES, FAINT, INK, Picture, legend, sheet, short, style
+from vib.show.figures.curves import draw_curves
 from vib.show.numbers import significant
 
 if TYPE_CHECKING:
@@ -15,21 +17,29 @@ if TYPE_CHECKING:
     from vib.modes import Modes
     from vib.screening import Screening
     from vib.screening.screening import SpeedDiagram
+    from vib.speeds import SpeedCurves
 
 _MOST_LABELS = 14
 _ORDERS = tuple(colour for colour in COLOURS if colour not in (BAD, COLOURS[4], INK))
 
 
-def speed_pictures(screening: Screening, modes: Modes) -> list[Picture]:
-    """One diagram per excitation."""
+def speed_pictures(screening: Screening, modes: Modes, curves: Sequence[SpeedCurves] = ()) -> list[Picture]:
+    """One diagram per excitation; modes that change with its speed as curves."""
+    turning = {shaft.shaft: shaft for shaft in curves}
     return [
-        speed_picture(screening, diagram, modes, f"speeds_{number:02d}")
+        speed_picture(screening, diagram, modes, f"speeds_{number:02d}", turning.get(diagram.excitation))
         for number, diagram in enumerate(screening.diagrams, start=1)
     ]
 
 
-def speed_picture(screening: Screening, diagram: SpeedDiagram, modes: Modes, name: str) -> Picture:
-    """Modes as level lines, orders with their bands as wedges, running speeds shaded, meetings marked."""
+def speed_picture(
+    screening: Screening,
+    diagram: SpeedDiagram,
+    modes: Modes,
+    name: str,
+    curves: SpeedCurves | None = None,
+) -> Picture:
+    """Modes as lines or curves, orders with their bands as wedges, running speeds shaded, meetings marked."""
     with style():
         figure = sheet(7.2, 4.0)
         axes = figure.add_subplot()
@@ -38,7 +48,10 @@ def speed_picture(screening: Screening, diagram: SpeedDiagram, modes: Modes, nam
         handles = _draw_orders(axes, diagram) if diagram.orders else []
         handles += _draw_fixed(axes, diagram)
         handles += _draw_running(axes, diagram)
-        handles += _draw_modes(axes, screening, diagram, modes)
+        if curves is None:
+            handles += _draw_modes(axes, screening, diagram, modes)
+        else:
+            handles += draw_curves(axes, curves)
         axes.set_xlim(0.0, top_speed or 1.0)
         axes.set_ylim(0.0, diagram.frequency_to_hz)
         axes.set_ylabel("frequency, Hz")

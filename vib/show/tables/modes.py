@@ -2,26 +2,30 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from typing import TYPE_CHECKING
 
 import numpy as np
 
 from vib.show.blocks import Block, Column, Heading, Sentence, Table, Tone, text_column
 from vib.show.numbers import error_bar, percent, significant, whole_percent
+from vib.show.tables.speeds import speed_blocks
 from vib.show.words import caution, completeness, rigid_motion, stability
 
 if TYPE_CHECKING:
     from vib.modes import Array, Modes
+    from vib.speeds import SpeedCurves
 
 
 NONE_FOUND = Sentence("No mode was found in the range asked for.", "careful")
 
 
-def modes_blocks(modes: Modes, title: str) -> list[Block]:
-    """All that the ``modes`` command shows."""
-    blocks: list[Block] = [Heading(title), frequency_table(modes) if modes.count else NONE_FOUND]
-    blocks += [stability(modes), *rigid_motion(modes), completeness(modes)]
+def modes_blocks(modes: Modes, title: str, curves: Sequence[SpeedCurves] = ()) -> list[Block]:
+    """All that the ``modes`` command shows; a system that is not stable says so before all else."""
+    table = frequency_table(modes) if modes.count else NONE_FOUND
+    blocks: list[Block] = [Heading(title), *([] if modes.stable else [stability(modes)]), table]
+    blocks += [*([stability(modes)] if modes.stable else []), *rigid_motion(modes), completeness(modes)]
+    blocks += speed_blocks(curves)
     blocks.append(Sentence(f"Damping: {modes.damping_note}"))
     masses = mass_table(modes)
     if masses is not None:
