@@ -38,7 +38,7 @@ def transmission_zeros(a: Array, b: Array, c: Array, d: Array) -> NDArray[np.com
     References
     ----------
     A. Emami-Naeini, P. Van Dooren, Automatica 18 (1982) 415-430, doi:10.1016/0005-1098(82)90070-X, the
-    reduction in two passes.
+    reduction (its second pass is for systems that are not square).
     """
     if b.shape[1] != c.shape[0]:
         raise ModelError(
@@ -75,21 +75,15 @@ def _same(found: Zeros, again: Zeros, size: float) -> bool:
 def _finite_zeros(a: Array, b: Array, c: Array, d: Array) -> Zeros:
     slack = _SLACK * EPS * len(a)
     a, b, c, d = _reduce(a, b, c, d, slack)
-    # the same on the transposed system splits off what the first pass can't see
-    at, bt, ct, dt = _reduce(a.T, c.T, b.T, d.T, slack)
-    a, b, c, d = at.T, ct.T, bt.T, dt.T
-    if c.shape[0] != b.shape[1]:
+    if c.shape[0] != b.shape[1]:  # the rows left are as many as the transfer matrix has rank
         raise AccuracyError("zeros: the outputs do not depend on each input by itself, so every s is a zero")
     if not len(a):
         return np.zeros(0, np.complex128)
-    if not b.shape[1]:
-        found = scipy.linalg.eigvals(a)
-    else:
-        size = len(a)
-        # columns turned so that [C D] becomes [0 R]: what is left is a pencil of the size of A
-        turned = scipy.linalg.qr(np.hstack([c, d]).T[::-1], mode="full")[0][::-1, ::-1]
-        kernel = turned[:, :size]
-        found = scipy.linalg.eigvals(np.hstack([a, b]) @ kernel, kernel[:size])
+    size = len(a)
+    # columns turned so that [C D] becomes [0 R]: what is left is a pencil of the size of A
+    turned = scipy.linalg.qr(np.hstack([c, d]).T[::-1], mode="full")[0][::-1, ::-1]
+    kernel = turned[:, :size]
+    found = scipy.linalg.eigvals(np.hstack([a, b]) @ kernel, kernel[:size])
     found = np.asarray(found, np.complex128)
     found = found[np.isfinite(found)]
     return np.asarray(found[np.lexsort((found.imag, np.abs(found)))])
