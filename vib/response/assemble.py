@@ -7,6 +7,7 @@ from dataclasses import dataclass, field
 
 import numpy as np
 
+from vib.response.every_mode import every_mode
 from vib.response.first_order import RingModel, full_model
 from vib.response.groups import take_apart
 from vib.response.motion import HalfSine, Motion
@@ -14,7 +15,6 @@ from vib.response.outputs import Output
 from vib.response.reduced import LowestModes, corrections, first_motion, reduced_model
 from vib.response.starts import Start
 from vib.solve.damping import modal_damping
-from vib.solve.dense import dense_undamped
 from vib.system import System
 
 FULL_SIZE = 100  # freedoms up to which the whole first-order model is used, whatever the damping
@@ -55,7 +55,7 @@ def is_uncoupled(system: System) -> bool:
     """Whether damping leaves the modes of a system of moderate size uncoupled."""
     if system.size > UNCOUPLED_SIZE or system.gyroscopic is not None:
         return False
-    return modal_damping(system, dense_undamped(system.mass, system.stiffness)).proportional
+    return modal_damping(system, every_mode(system)).proportional
 
 
 def _motion(model: RingModel, start: Start, outputs: Sequence[Output]) -> tuple[Motion, tuple[str, ...]]:

@@ -14,9 +14,9 @@ import numpy as np
 
 from vib.errors import MatrixError, ModelError
 from vib.massless import dense, first_order, root_scale, split_mass
+from vib.response.every_mode import every_mode
 from vib.response.exponential import EPS, Array
 from vib.solve.damping import ModalDamping, modal_damping
-from vib.solve.dense import dense_undamped
 from vib.solve.undamped import Undamped
 from vib.system import DampingLaw, System
 
@@ -86,7 +86,7 @@ def full_model(system: System) -> RingModel:
     )
     if system.unsymmetric or damped:
         return _direct_model(system, light)
-    return modal_model(system, dense_undamped(system.mass, system.stiffness), flexibility(system, light))
+    return modal_model(system, every_mode(system), flexibility(system, light))
 
 
 def modal_model(system: System, undamped: Undamped, direct: Array | None = None) -> RingModel:

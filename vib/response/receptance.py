@@ -10,6 +10,7 @@ import scipy.sparse as sparse
 from vib.errors import AccuracyError
 from vib.massless import acts_on, dense, split_mass
 from vib.modes import find_modes
+from vib.response.every_mode import every_mode
 from vib.response.exponential import EPS, Array
 from vib.response.first_order import RingModel, flexibility, full_model
 from vib.response.groups import Part, take_apart
@@ -22,7 +23,6 @@ from vib.response.residue_sum import (
     remainder,
 )
 from vib.solve.damping import ModalDamping, modal_damping
-from vib.solve.dense import dense_undamped
 from vib.solve.localised import Localised, localise
 from vib.solve.undamped import Undamped
 from vib.system import System
@@ -79,7 +79,7 @@ def _symmetric_part(system: System) -> System:
 def _modes(system: System, omega: Array) -> tuple[Undamped, ModalDamping]:
     """All undamped modes of a system of moderate size, else those well beyond the highest line."""
     if system.size <= ALL_MODES:
-        undamped = dense_undamped(system.mass, system.stiffness)
+        undamped = every_mode(system)
     else:
         bare = System(mass=system.mass, stiffness=system.stiffness)
         modes = find_modes(bare, up_to=max(BEYOND * float(omega.max()) / (2 * np.pi), 1e-6))

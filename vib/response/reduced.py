@@ -15,9 +15,9 @@ import scipy.linalg
 import scipy.sparse as sparse
 
 from vib.modes import find_modes
+from vib.response.every_mode import every_mode
 from vib.response.exponential import Array
 from vib.response.first_order import RingModel, modal_model
-from vib.solve.dense import dense_undamped
 from vib.solve.factor import SingularFactorError, factorise
 from vib.solve.undamped import Undamped, elastic_ratio, stores_nothing
 from vib.system import Matrix, System
@@ -32,7 +32,6 @@ class LowestModes:
 
     def __init__(self, system: System) -> None:
         self.system = system
-        self._all: Undamped | None = None
 
     def __call__(self, count: int) -> Undamped:
         """The lowest ``count`` modes.
@@ -44,8 +43,7 @@ class LowestModes:
         """
         system = self.system
         if system.size <= ALL_AT_ONCE or not sparse.issparse(system.stiffness) or 4 * count > system.size:
-            self._all = self._all or dense_undamped(system.mass, system.stiffness)
-            return self._all.first(count)
+            return every_mode(system).first(count)
         modes = find_modes(System(mass=system.mass, stiffness=system.stiffness), count=count)
         squares = (2 * np.pi * modes.frequencies_hz) ** 2
         return Undamped(
