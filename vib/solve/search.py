@@ -334,8 +334,12 @@ def cut(found: Damped, count: int | None, limit: float | None) -> Damped:
         certified = max(certified, limit) if limit is not None else certified
     if number < len(size) and certified is not None:
         certified = min(certified, float(size[number] - found.errors[number]))
+    left = found.values[number:]
+    grows = left[left.real > found.movement[number:]]
+    growing = found.growing if not len(grows) else complex(grows[grows.real.argmax()])
     return replace(
         found,
+        growing=growing,
         values=found.values[:number],
         shapes=found.shapes[:, :number],
         errors=found.errors[:number],
