@@ -75,7 +75,7 @@ def test_euler_load():
 
 
 @settings(max_examples=30, deadline=None)
-@given(st.floats(0.1, 10), st.floats(0.0, 20.0), st.floats(-1e4, 1e4))
+@given(st.floats(0.1, 10), st.sampled_from([0.0, 1e-6, 0.03, 1.0, 20.0]), st.floats(-1e4, 1e4))
 def test_work_of_the_pull(length, shear, pull):
     """x' K x = P times the integral of the squared slope of the shape functions, by quadrature."""
     bar = bars(length, shear)
@@ -101,7 +101,7 @@ def test_work_of_the_pull(length, shear, pull):
 
 def bars(length, shear):
     one = np.ones(1)
-    area = np.inf if shear == 0 else 12 * 1.0 / (1.0 * shear * length**2)
+    area = np.inf if shear == 0 else 12 / (shear * length**2)
     return Bars(length * one, one, one, one, one, area * one, area * one, one, one, one)
 
 

@@ -56,13 +56,13 @@ def localise(mass: Matrix, linear: Matrix, stiffness: Matrix) -> Localised | Non
     straight = (stiffness + stiffness.T) / 2
     skew = _cleaned((stiffness - stiffness.T) / 2, abs(stiffness) + abs(stiffness).T)
     rest, parts = linear, (0.0, 0.0)
-    if _rows(rest).size > MOST_TOUCHED:
+    if _rows(rest).size > MOST_RANK:
         found = _spread(mass, linear, straight)
-        if found is None:
-            return None
-        parts = found
-        taken = parts[0] * mass + parts[1] * straight
-        rest = _cleaned(linear - taken, abs(linear) + abs(taken))
+        if found is not None:
+            taken = found[0] * mass + found[1] * straight
+            beside = _cleaned(linear - taken, abs(linear) + abs(taken))
+            if _rows(beside).size < _rows(rest).size:
+                rest, parts = beside, found
     touched = np.union1d(_rows(rest), _rows(skew))
     if touched.size > MOST_TOUCHED:
         return None

@@ -33,6 +33,7 @@ THIN = 0.25  # and beyond as sparse where no more than this part of their entrie
 LAW_MODES = 8  # undamped modes beyond those asked for that a damping law acts on beside dashpots
 FIRST_GUESS = 24  # modes looked for first where those below a frequency could not be counted
 MOST_SEARCHES = 6
+UNSUITED_DENSE = 800  # up to here all modes are computed where the fast search for few is not suited
 MOST_COUNTS = 3  # times that a count may find modes missing before the search is given up
 LARGE = 2000  # sparse systems from here on are searched by blocks, with the fastest factorisation at hand
 LARGEST_DENSE = 5000  # (n, n) arrays beyond this fill the memory of an ordinary machine
@@ -217,6 +218,8 @@ def _sparse(problem: _Problem, ask: _Ask, wanted: int, below: int | None) -> Sol
         try:
             found = _localised(problem, ask, wanted, problem.term)
         except UnsuitedError:
+            if problem.system.size <= UNSUITED_DENSE:
+                return _dense(problem, ask)
             found = None
         if found is not None:
             return found
