@@ -28,8 +28,9 @@ from vib.structure.sparsity import Group, Pattern
 
 _BLENDING: dict[int, Solid] = {4: Tetra(), 5: Pyramid(), 6: Wedge(), 8: Hexahedron()}
 _CHUNK = 500
-# a fit whose normal equations are worse than this rests on too few or ill-placed points
-_WORST_CONDITION = 1e9
+# A fit whose normal equations are worse than this rests on too few or ill-placed points: two by two points a
+# layer can't tell a square from a constant, and on distorted cells only just.
+_WORST_CONDITION = 1e4
 _COMPONENTS = 6
 
 
