@@ -52,6 +52,8 @@ _TABLES = {
 }
 _INTRODUCTION = """# The study file
 
+Results support, and do not replace, review by a licensed engineer under the local code.
+
 This page is generated from the schema that reads the file (`python docs/make_pages.py`); `vib schema` prints
 the same as a JSON Schema, with which an editor completes and checks entries.
 
@@ -231,6 +233,8 @@ def _shapes_part() -> str:
 
 
 _VALIDATION = """# Validation
+
+Results support, and do not replace, review by a licensed engineer under the local code.
 
 This page is generated from the reference tests (`tests/references/`, `python docs/make_pages.py`). Each value
 of ours went the way a user's study goes: text of a study, system, modes or ring. Members are cut into pieces

@@ -73,6 +73,12 @@ def test_links_lead_somewhere(page):
         assert (folder / target).exists(), f"{page}: {target}"
 
 
+@pytest.mark.parametrize("page", [page for page in PAGES if page != "DEVELOPERS.md"])
+def test_every_page_for_users_carries_the_caution(page):
+    caution = "Results support, and do not replace, review by a licensed engineer under the local code."
+    assert caution in " ".join((TOP / page).read_text("utf-8").split())
+
+
 def test_the_study_file_page_is_up_to_date():
     """If this fails: python docs/make_pages.py."""
     assert (TOP / "docs/study-file.md").read_text("utf-8") == generator().study_file_page()
