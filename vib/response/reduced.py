@@ -19,6 +19,9 @@ from vib.response.every_mode import every_mode
 from vib.response.exponential import Array
 from vib.response.first_order import RingModel, modal_model
 from vib.solve.factor import SingularFactorError, factorise
+from vib.solve.lanczos import lowest_modes
+from vib.solve.search import LARGE
+from vib.solve.static import static_solver
 from vib.solve.undamped import Undamped, elastic_ratio, stores_nothing
 from vib.system import Matrix, System
 
@@ -44,6 +47,8 @@ class LowestModes:
         system = self.system
         if system.size <= ALL_AT_ONCE or not sparse.issparse(system.stiffness) or 4 * count > system.size:
             return every_mode(system).first(count)
+        if system.size >= LARGE:
+            return lowest_modes(system.mass, system.stiffness, count=count)
         modes = find_modes(System(mass=system.mass, stiffness=system.stiffness), count=count)
         squares = (2 * np.pi * modes.frequencies_hz) ** 2
         return Undamped(
@@ -73,15 +78,55 @@ def corrections(system: System, modes: Undamped, vectors: Array) -> Array:
     if modes.rigid:
         elastic = modes.values[modes.rigid :]
         stiffness = stiffness + (float(elastic[0]) if elastic.size else 1.0) * system.mass
-    return factorise(stiffness).solve(together)
+    return _solved(stiffness, together)
 
 
 def first_motion(system: System, force: Array) -> Array:
     """The acceleration (n, 1) a force starts with, M^-1 force; no column where the mass is singular."""
     try:
+        if system.size >= LARGE and sparse.issparse(system.mass):
+            return _by_mass(system.mass, force)[:, None]
         return factorise(system.mass).solve(force)[:, None]
     except SingularFactorError:
         return np.zeros((system.size, 0))
+
+
+def _by_mass(mass: Matrix, force: Array) -> Array:
+    """The acceleration of a large mass by conjugate gradients.
+
+    Scaled to a diagonal of ones, consistent masses have condition numbers of some tens (A. J. Wathen, IMA J.
+    Numer. Anal. 7 (1987) 449-457), so that a few dozen steps do.
+
+    Raises
+    ------
+    SingularFactorError
+        A freedom has no mass, or the steps do not converge.
+    """
+    from scipy.sparse.linalg import cg
+
+    diagonal = np.asarray(mass.diagonal())
+    if (diagonal <= 0).any():
+        raise SingularFactorError("A freedom has no mass.")
+    found, failed = cg(mass, force, rtol=1e-12, maxiter=1000, M=sparse.diags_array(1 / diagonal))
+    if failed:
+        raise SingularFactorError("The mass matrix is singular to working precision.")
+    return np.asarray(found)
+
+
+def _solved(matrix: Matrix, right: Array) -> Array:
+    """Solutions by the factorisation that suits the size.
+
+    Raises
+    ------
+    SingularFactorError
+        No inverse to working precision.
+    """
+    if matrix.shape[0] < LARGE or not sparse.issparse(matrix):
+        return factorise(matrix).solve(right)
+    solve = static_solver(matrix)
+    if solve is None:
+        raise SingularFactorError("A matrix is singular to working precision and could not be factored.")
+    return solve(right)
 
 
 def reduced_model(system: System, modes: Undamped, extra: Array) -> RingModel:
