@@ -46,7 +46,9 @@ class Modes:
     backward_errors
         (m,) least relative change of the matrices for which each pair would be exact.
     stable
-        False if any eigenvalue found grows.
+        False if any eigenvalue grows, as far as it is known.
+    stability_known
+        False where forces can feed energy in and only the modes listed were looked at.
     rigid_body_count
         How many modes are at 0 Hz; they come first.
     complete_below_hz
@@ -79,6 +81,7 @@ class Modes:
     condition: Array
     backward_errors: Array
     stable: bool
+    stability_known: bool
     rigid_body_count: int
     complete_below_hz: float | None
     proportional: bool
@@ -232,6 +235,7 @@ def find_modes(system: System, *, count: int | None = None, up_to: str | float |
         condition=damped.condition,
         backward_errors=found.solution.backward,
         stable=damped.growing is None and not bool((damped.values.real > damped.movement).any()),
+        stability_known=not found.solution.watch,
         rigid_body_count=damped.rigid,
         complete_below_hz=_complete(damped.certified, limit, limit_hz),
         proportional=damped.proportional,

@@ -48,6 +48,7 @@ def modes_document(modes: Modes, title: str, curves: Sequence[SpeedCurves] = ())
         "rigid_body_modes": modes.rigid_body_count,
         "rigid_body_motions": list(modes.rigid_descriptions),
         "stable": modes.stable,
+        "stability_known": modes.stability_known,
         "complete_below_hz": modes.complete_below_hz,
         "proportional_damping": modes.proportional,
         "damping_note": modes.damping_note,

@@ -24,6 +24,12 @@ def stability(modes: Modes) -> Sentence:
     if not modes.stable:
         which = f": {numbered(growing)} of the table" if growing else ""
         return Sentence(f"The system is UNSTABLE: motion once started grows by itself{which}.", "bad")
+    if not modes.stability_known:
+        return Sentence(
+            "No mode of the table grows, but forces can feed energy in: "
+            "whether a faster one grows is not known.",
+            "careful",
+        )
     return Sentence("The system is stable: no motion grows by itself.", "good")
 
 

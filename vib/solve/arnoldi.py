@@ -12,15 +12,15 @@ from dataclasses import dataclass
 
 import numpy as np
 import scipy.linalg
-import scipy.sparse as sparse
 import scipy.sparse.linalg as sparse_linalg
 
 from vib.errors import AccuracyError
 from vib.massless import root_scale
 from vib.solve.damped import Complex, Damped
-from vib.solve.factor import Factor, SingularFactorError, factorise, negative_count
+from vib.solve.factor import Factor, SingularFactorError, factorise
 from vib.solve.pairs import Pairs, Quadratic, damped_from_pairs, improve
 from vib.solve.shift_invert import Shifted, shifted
+from vib.solve.stability import is_passive
 from vib.solve.undamped import CANCELLATION, EPS, Array, Matrix, Undamped
 from vib.solve.winding import Determinant, MissingError, affordable, missing_within, widest_gap
 
@@ -289,25 +289,3 @@ def _dual_energy(base: Shifted, force: Complex) -> Array:
     real, imaginary = base.factor.solve(force.real), base.factor.solve(force.imag)
     both = np.einsum("ij,ij->j", force.real, real) + np.einsum("ij,ij->j", force.imag, imaginary)
     return np.asarray(np.abs(both))
-
-
-def is_passive(linear: Matrix, undamped: Undamped) -> bool:
-    """Whether the damping takes energy out of any motion and the stiffness stores it in any.
-
-    A diagonally dominant damping matrix does; of others the negative eigenvalues are counted, those of
-    round-off left aside. Where they can't be counted the answer is no.
-    """
-    if undamped.values.min(initial=0.0) < 0:
-        return False
-    half = (linear + linear.T) / 2
-    diagonal = np.asarray(half.diagonal())
-    rest = np.asarray(abs(half).sum(axis=1)).ravel() - np.abs(diagonal)
-    if (diagonal >= rest * (1 - 1e-12)).all():
-        return True
-    if (diagonal < 0).any() or (diagonal[rest > 0] == 0).any():
-        return False
-    touched = np.flatnonzero(diagonal > 0)
-    root = 1 / np.sqrt(diagonal[touched])
-    scaled = sparse.csr_array(half)[touched][:, touched].multiply(root[:, None]).multiply(root[None, :])
-    raised = sparse.csc_array(scaled) + _NEXT_TO_NOTHING * sparse.eye_array(len(touched))
-    return negative_count(raised) == 0

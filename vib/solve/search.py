@@ -11,7 +11,7 @@ import scipy.sparse as sparse
 
 from vib.errors import AccuracyError, MatrixError
 from vib.massless import condense, dense, split_mass
-from vib.solve.arnoldi import LowRank, is_passive, sparse_quadratic
+from vib.solve.arnoldi import LowRank, sparse_quadratic
 from vib.solve.backward import backward_errors
 from vib.solve.damped import Damped, proportional_modes
 from vib.solve.damping import ModalDamping, modal_damping
@@ -23,6 +23,7 @@ from vib.solve.pairs import Quadratic
 from vib.solve.quadratic import quadratic_modes
 from vib.solve.reduced import Reduction, UnsuitedError, reduced_quadratic
 from vib.solve.shift_invert import count_below, sparse_undamped
+from vib.solve.stability import is_passive, watched
 from vib.solve.undamped import CANCELLATION, EPS, Array, Matrix, Undamped
 from vib.solve.winding import MissingError
 from vib.system import System
@@ -33,6 +34,7 @@ THIN = 0.25  # and beyond as sparse where no more than this part of their entrie
 LAW_MODES = 8  # undamped modes beyond those asked for that a damping law acts on beside dashpots
 FIRST_GUESS = 24  # modes looked for first where those below a frequency could not be counted
 MOST_SEARCHES = 6
+GRADED = 1e10  # ratio of squared frequencies of single freedoms
 UNSUITED_DENSE = 800  # up to here all modes are computed where the fast search for few is not suited
 MOST_COUNTS = 3  # times that a count may find modes missing before the search is given up
 LARGE = 2000  # sparse systems from here on are searched by blocks, with the fastest factorisation at hand
@@ -47,7 +49,7 @@ class Solution:
     damping: ModalDamping
     counted: bool  # an inertia count or the argument principle agreed with what was found
     remarks: tuple[str, ...] = ()
-    watch: bool = False  # energy can be fed in, and not every mode was computed
+    watch: bool = False  # energy can be fed in, and not every mode could be looked at
     backward: Array = field(default_factory=lambda: np.zeros(0))  # backward error of each pair (m,)
 
 
@@ -66,8 +68,11 @@ def solve_system(system: System, count: int | None, limit: float | None, *, cert
     if not certify:
         return found
     linear, stiffness = problem.linear, problem.stiffness
-    feeds = problem.twisted or not is_passive(linear, found.damping.undamped)
-    found = replace(found, watch=feeds and not found.damped.complete)
+    some = count is not None or limit is not None
+    if some and (problem.twisted or not is_passive(linear, found.damping.undamped)):
+        names = tuple(str(freedom) for freedom in system.freedoms)
+        damped, known = watched(problem.mass, linear, stiffness, found.damping, found.damped, names)
+        found = replace(found, damped=damped, watch=not known)
     backward = backward_errors(problem.mass, linear, stiffness, found.damping, found.damped)
     return replace(found, backward=backward)
 
@@ -83,6 +88,8 @@ def _solve(problem: _Problem, ask: _Ask) -> Solution:
         )
     small = size <= LARGEST_DENSE
     if everything or size <= (DENSE_SIZE if sparse.issparse(system.stiffness) else ARRAY_SIZE):
+        return _dense(problem, ask)
+    if size <= UNSUITED_DENSE and _graded(problem):
         return _dense(problem, ask)
     if _goes_by_blocks(problem) and (count is None or 4 * count < size):
         found = _blocks(problem, ask)
@@ -130,6 +137,14 @@ class _Problem:
             return None
         found = localise(self.mass, self.linear, self.stiffness)
         return found if found is not None and found.rank else None
+
+
+def _graded(problem: _Problem) -> bool:
+    """Whether soft and stiff lie so far apart that factorisations lose the soft motions."""
+    heavy, stiff = (np.abs(np.asarray(part.diagonal())) for part in (problem.mass, problem.straight))
+    both = (heavy > 0) & (stiff > 0)
+    squares = stiff[both] / heavy[both]
+    return bool(len(squares) and squares.max() > GRADED * squares.min())
 
 
 def _goes_by_blocks(problem: _Problem) -> bool:

@@ -1,0 +1,82 @@
+"""Whether anything grows beyond the modes that were asked for.
+
+Where the damping only takes energy out and the stiffness is positive nothing can (Kelvin, Tait and Chetaev;
+P. Lancaster, Lambda-matrices and Vibrating Systems, 1966, chapter 7). Otherwise all eigenvalues are computed
+where that is affordable; beyond, stability is not claimed.
+"""
+
+from __future__ import annotations
+
+from dataclasses import replace
+
+import numpy as np
+import scipy.linalg
+import scipy.sparse as sparse
+
+from vib.massless import Matrix, dense, first_order, root_scale
+from vib.solve.damped import Complex, Damped
+from vib.solve.damping import ModalDamping
+from vib.solve.factor import negative_count
+from vib.solve.undamped import Array, Undamped
+
+MOST_FREEDOMS = 800  # all eigenvalues of a first-order matrix of twice that size take some seconds
+# Real parts that round-off of an eigenvalue computation leaves: of the eigenvalue, and of the largest one.
+SLACK = 1e-12  # of a damping matrix of unit diagonal: an eigenvalue above minus this much is none below zero
+DENSE_ROWS = 300  # rows of damping up to which its eigenvalues are computed
+OWN, LARGEST = 1e-8, 1e-12
+
+
+def is_passive(linear: Matrix, undamped: Undamped) -> bool:
+    """Whether the damping takes energy out of any motion, or none, and the stiffness stores it in any."""
+    if undamped.values.min(initial=0.0) < 0:
+        return False
+    half = (linear + linear.T) / 2
+    diagonal = np.asarray(half.diagonal())
+    rest = np.asarray(abs(half).sum(axis=1)).ravel() - np.abs(diagonal)
+    if (diagonal >= rest * (1 - SLACK)).all():  # diagonally dominant: enough, not necessary
+        return True
+    touched = np.flatnonzero(rest + np.abs(diagonal))
+    if (diagonal[touched] <= 0).any():
+        return False
+    scale: Array = root_scale(diagonal[touched])
+    if len(touched) <= DENSE_ROWS:
+        inner = half[touched][:, touched] if sparse.issparse(half) else half[np.ix_(touched, touched)]
+        scaled = scale[:, None] * dense(inner) * scale
+        return bool(scipy.linalg.eigvalsh(scaled)[0] >= -SLACK * len(touched))
+    lifted = sparse.csr_array(half)[touched][:, touched] + sparse.diags_array(
+        SLACK * len(touched) * diagonal[touched]
+    )
+    return negative_count(sparse.csr_array(lifted)) == 0
+
+
+def watched(
+    mass: Matrix,
+    linear: Matrix,
+    stiffness: Matrix,
+    damping: ModalDamping,
+    found: Damped,
+    names: tuple[str, ...],
+) -> tuple[Damped, bool]:
+    """The modes with a growing eigenvalue beyond them noted, and whether stability is now known.
+
+    For systems that can feed energy in; ``found`` are the modes asked for.
+    """
+    if found.growing is not None or bool((found.values.real > found.movement).any()):
+        return found, True
+    if found.proportional and damping.undamped.values.min(initial=0.0) < 0:
+        fastest = float(np.sqrt(-damping.undamped.values.min()))
+        return replace(found, growing=complex(fastest)), True
+    if found.complete and found.certified is None:
+        return found, True
+    if mass.shape[0] > MOST_FREEDOMS:
+        return found, False
+    rates = 2 * damping.law * damping.undamped.angular
+    held = mass @ damping.undamped.shapes[:, rates > 0]
+    whole = dense(linear) + (held * rates[rates > 0]) @ held.T
+    values: Complex = scipy.linalg.eigvals(first_order(mass, whole, stiffness, names).rate)
+    size = np.abs(values)
+    growing = values[values.real > OWN * size + LARGEST * size.max(initial=0.0)]
+    if not len(growing):
+        return found, True
+    fastest_one = growing[int(np.argmax(growing.real))]
+    return replace(found, growing=complex(fastest_one.real, abs(fastest_one.imag))), True
