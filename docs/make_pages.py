@@ -21,6 +21,13 @@ _WORDS = {
     ("Impact", "displacement"): "a length (`m`), along a rotation an angle (`rad`)",
     ("Impact", "velocity"): "a velocity (`m/s`), along a rotation an angular velocity (`rad/s`)",
     ("Pulse", "peak"): "a force (`N`), along a rotation a moment (`N m`)",
+    ("Wave", "amplitude"): "a force (`N`), a moment (`N m`); of the ground an acceleration (`m/s^2`)",
+    ("SweptSine", "amplitude"): "a force (`N`), a moment (`N m`); of the ground an acceleration (`m/s^2`)",
+    ("SweptSine", "frequencies"): "two frequencies (`Hz`)",
+    ("AppliedLoad", "constant"): "a force (`N`), along a rotation a moment (`N m`)",
+    ("AppliedLoad", "impulse"): "an impulse (`N s`), along a rotation an angular impulse (`N m s`)",
+    ("AppliedLoad", "along"): "a component or three numbers",
+    ("Respond", "frequencies"): "two frequencies (`Hz`)",
     ("Excitation", "speed"): "a running speed (`rpm`), or a list of two",
     ("Excitation", "along"): "a component or three numbers",
     ("Impact", "along"): "a component or three numbers",
@@ -48,6 +55,9 @@ _TABLES = {
     "damping": "[damping]",
     "excitations": "[[excitations]]",
     "impact": "[impact]",
+    "loads": "[[loads]]",
+    "base_motion": "[base_motion]",
+    "response": "[response]",
     "matrices": "[matrices]",
 }
 _INTRODUCTION = """# The study file
@@ -170,7 +180,9 @@ def _parts_of(table: dict[str, Any]) -> list[str]:
 def _sub_part(key: str, name: str, table: dict[str, Any]) -> str:
     where = {
         "Releases": "releases",
-        "Pulse": "pulse",
+        "Pulse": "pulse" if key == "impact" else "half_sine",
+        "Wave": "harmonic",
+        "SweptSine": "sweep",
         "SixStiffnesses": "stiffness",
         "SixDashpots": "dashpot",
     }
