@@ -32,6 +32,8 @@ _WORDS = {
     ("Excitation", "along"): "a component or three numbers",
     ("Impact", "along"): "a component or three numbers",
     ("Members", "up"): "an axis or three numbers",
+    ("MeshRegion", "up"): "an axis or three numbers",
+    ("Mesh", "regions"): "tables",
     ("Spring", "x_axis"): "an axis or three numbers",
     ("Spring", "y_axis"): "an axis or three numbers",
     ("Support", "hold"): "components",
@@ -47,6 +49,7 @@ _WORDS = {
 _TABLES = {
     "materials": "[materials.NAME]",
     "sections": "[sections.NAME]",
+    "mesh": "[mesh]",
     "points": "[points]",
     "members": "[[members]]",
     "bodies": "[[bodies]]",
@@ -94,9 +97,10 @@ def study_file_page() -> str:
     for key, heading in _TABLES.items():
         entry = schema["properties"][key]
         named = _reference(entry)
-        if named is None:
-            value = _value(entry["additionalProperties"])
+        if key == "points" or named is None:
+            value = "a list of three lengths (`m`), or a table that finds it in the mesh"
             parts.append(f"## {heading}\n\nEach key is the name of a point, its value {value}.\n")
+            parts.append(_sub_part(key, "Finder", schema["$defs"]["Finder"]))
             continue
         table = schema["$defs"][named]
         parts.append(f"## {heading}\n\n{_plain(table['description'])}\n\n{_rows_of(named, table)}")
@@ -187,7 +191,12 @@ def _sub_part(key: str, name: str, table: dict[str, Any]) -> str:
         "SixDashpots": "dashpot",
     }
     shown = where.get(name, "a matrix as a table")
-    title = f"`{shown}` of `{key}`" if name in where else f"{shown[0].upper()}{shown[1:]}"
+    if name == "MeshRegion":
+        title = "[mesh.regions.NAME]"
+    elif name == "Finder":
+        title = "A point found in the mesh"
+    else:
+        title = f"`{shown}` of `{key}`" if name in where else f"{shown[0].upper()}{shown[1:]}"
     return f"### {title}\n\n{_plain(table['description'])}\n\n{_rows_of(name, table)}"
 
 
