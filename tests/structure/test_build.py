@@ -119,6 +119,14 @@ def test_a_run_given_twice_is_two_members(bars):
     )
 
 
+@pytest.mark.parametrize(("inertia", "told"), [([1, 2, 3], False), ([1, 2, 3.1], True), ([0, 0, 0], False)])
+def test_inertia_that_no_body_has_is_told(bars, inertia, told):
+    """Ixx + Iyy = Izz + 2 int z^2 dm: no principal moment of a body exceeds the other two together."""
+    body = {"name": "motor", "mass": 20, "inertia": inertia, "carried_by": "C"}
+    remarks = bars(bodies=[body]).system().anatomy.remarks
+    assert any("no body has such moments of inertia as motor" in remark for remark in remarks) is told
+
+
 BALL = {"name": "b", "mass": 1, "inertia": [1, 1, 1], "carried_by": "E"}
 CHANNEL = {
     "shape": "channel",

@@ -15,7 +15,8 @@ _CHUNK = 2_000_000
 
 
 def oddities(layout: Layout) -> Iterator[str]:
-    """Points used by nothing, at one place, or on a member without being joined; members given twice."""
+    """Points used by nothing, at one place, or on a member without being joined; members given twice;
+    inertia that no body has."""
     names = layout.point_names
     unused = [names[i] for i in np.flatnonzero(layout.ties.unused)]
     for name in unused:
@@ -27,6 +28,13 @@ def oddities(layout: Layout) -> Iterator[str]:
             f"point {names[point]} lies on {layout.stretches.labels[s]} but is not joined to it; "
             "to join them, name the point in the run"
         )
+    moments = np.linalg.eigvalsh(layout.bodies.mass[:, 3:, 3:])
+    for name, (low, middle, high) in zip(layout.bodies.names, moments.tolist(), strict=True):
+        if high > (low + middle) * (1 + 1e-9):
+            yield (
+                f"no body has such moments of inertia as {name}: the greatest, {high:.4g} kg m^2 about its axis, "
+                f"is more than the other two together ({low:.4g} and {middle:.4g}); they are used as given"
+            )
     ends = Counter(frozenset(pair) for pair in layout.stretches.ends.tolist())
     for pair in (pair for pair, times in ends.items() if times > 1):
         both = " and ".join(names[point] for point in sorted(pair))
