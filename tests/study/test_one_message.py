@@ -33,6 +33,7 @@ CASES = [
     ('speed = "1480 rpm"', 'speed = "1480 rpm"\norders = []', "excitations[0].orders", "at least 1"),
     ('speed = "1480 rpm"', 'speed = "1480 rpm"\norders = [1e300]', "excitations[0]", "larger than any order"),
     ('impulse = "12 N s"', 'impulse = "12 N s"\nwatch = ["B", "B"]', "impact.watch", "stands there 2 times"),
+    ("[impact]", '[[loads]]\nat = "B"\nconstant = "1 N"\n[impact]', "loads[0].along", "is missing"),
 ]
 
 

@@ -44,6 +44,8 @@ def check_names(raw: Mapping[str, Any]) -> Iterator[Finding]:
         yield from _unknown("point or body", places, _listed(excitation.get("at"), ("excitations", i, "at")))
     for i, load in _rows(raw, "loads"):
         yield from _unknown("point or body", places, _listed(load.get("at"), ("loads", i, "at")))
+        if "along" not in load:
+            yield ("loads", i, "along"), 'is missing: the direction in which the load acts, such as "x"'
     impact = raw.get("impact")
     if isinstance(impact, Mapping):
         for key in ("at", "watch"):
