@@ -32,8 +32,8 @@ def oddities(layout: Layout) -> Iterator[str]:
     for name, (low, middle, high) in zip(layout.bodies.names, moments.tolist(), strict=True):
         if high > (low + middle) * (1 + 1e-9):
             yield (
-                f"no body has such moments of inertia as {name}: the greatest, {high:.4g} kg m^2, is more than "
-                f"the other two together ({low:.4g} and {middle:.4g}); they are used as given"
+                f"no body has such moments of inertia as {name}: the greatest, {high:.4g} kg m^2, is more "
+                f"than the other two together ({low:.4g} and {middle:.4g}); they are used as given"
             )
     ends = Counter(frozenset(pair) for pair in layout.stretches.ends.tolist())
     for pair in (pair for pair, times in ends.items() if times > 1):
