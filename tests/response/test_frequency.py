@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from typing import Any
+
 import numpy as np
 import pytest
 import scipy.sparse as sparse
@@ -142,7 +144,11 @@ def test_what_is_left_out_is_within_its_bound(monkeypatch, held, kind, law):
     if kind == "dashpots":
         damping = dashpots(size, (2, 70, 71))
     system = chain(size, held, damping, law)
-    arguments = {"lines_hz": np.linspace(0.5, 3.0, 60), "inputs": ["1", "60"], "outputs": ["1", "60", "149"]}
+    arguments: dict[str, Any] = {
+        "lines_hz": np.linspace(0.5, 3.0, 60),
+        "inputs": ["1", "60"],
+        "outputs": ["1", "60", "149"],
+    }
     whole = frequency_response(system, **arguments)
     monkeypatch.setattr(receiving, "ALL_MODES", 50)
     cut = frequency_response(system, **arguments)
@@ -169,7 +175,7 @@ def test_the_estimate_where_no_bound_is_known(monkeypatch):
     size = 120
     damping = np.diag(np.random.default_rng(1).uniform(1, 5, size))
     monkeypatch.setattr(receiving, "localise", lambda *_: None)
-    arguments = {"lines_hz": np.linspace(0.5, 2.0, 20), "inputs": ["1"], "outputs": ["60"]}
+    arguments: dict[str, Any] = {"lines_hz": np.linspace(0.5, 2.0, 20), "inputs": ["1"], "outputs": ["60"]}
     found = frequency_response(chain(size, damping=damping), **arguments)
     wanted = solved(chain(size, damping=damping), arguments["lines_hz"])[:, 59, 0]
     gap = np.abs(found.receptance[:, 0, 0] - wanted)

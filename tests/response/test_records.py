@@ -2,7 +2,9 @@
 
 from __future__ import annotations
 
+import os
 from itertools import pairwise
+from typing import Any
 
 import numpy as np
 import pytest
@@ -13,18 +15,18 @@ from scipy.integrate import solve_ivp
 import vib
 from vib.errors import AccuracyError, ModelError, ShapeError
 from vib.response import simulate as simulating
-from vib.response.signals import Constant, Harmonic, Impulse, Points, Samples, Steps, Sweep, half_sine
+from vib.response.signals import Constant, Harmonic, Impulse, Points, Samples, Signal, Steps, Sweep, half_sine
 from vib.response.simulate import simulate, simulate_to
 from vib.response.transition import constant_input
 
-MATRICES = {
+MATRICES: dict[str, Any] = {
     "damped": [[0, 1, 0, 0], [-400, -2, 150, 1], [0, 0, 0, 1], [150, 1, -300, -3]],
     "rigid body": [[0, 1], [0, 0]],
     "three times the same": [[-2, 1, 0], [0, -2, 1], [0, 0, -2]],
     "critical beside slow": [[0, 1, 0], [-25, -10, 0], [0, 0, -0.1]],
     "spiral out": [[0, 1], [-90, 0.5]],
 }
-SIGNALS = {
+SIGNALS: dict[str, Signal] = {
     "constant": Constant(2.0, 0.1034, 0.73),
     "points": Points(np.array([0.05, 0.2031, 0.61, 0.7]), np.array([0.0, 3, -1, 2])),
     "steps": Steps(np.array([0.05, 0.2, 0.61]), np.array([2.0, -1.0])),
@@ -111,7 +113,8 @@ def test_inputs_add_up(first, second, name):
     one, other = ([SIGNALS[key]] for key in (first, second))
     model = space(name)
     both = simulate(model, [one + other], step_s=0.03, count=60)
-    apart = sum(simulate(model, [each], step_s=0.03, count=60) for each in (one, other))
+    alone = [simulate(model, [each], step_s=0.03, count=60) for each in (one, other)]
+    apart = alone[0] + alone[1]
     np.testing.assert_allclose(both, apart, atol=1e-11 * np.abs(both).max())
 
 
@@ -130,7 +133,7 @@ def test_samples_are_linear_between_them():
     values = np.random.default_rng(3).normal(size=401)
     model = space("damped")
     sampled = simulate(model, [values], step_s=0.01, count=401)
-    pointed = simulate(model, [Points(0.01 * np.arange(401), values)], step_s=0.01, count=401)
+    pointed = simulate(model, [Points(np.linspace(0.0, 4.0, 401), values)], step_s=0.01, count=401)
     np.testing.assert_allclose(sampled, pointed, atol=1e-12 * np.abs(sampled).max())
 
 
@@ -153,7 +156,8 @@ def test_contributions_add_up_to_the_record():
     from vib.response.simulate import driven
 
     model = space("critical beside slow")
-    task = driven(model, [[Harmonic(1.0, 2.0), Impulse(1.0, 0.31)]], step_s=0.01, count=900, start=None)
+    acting: list[Signal] = [Harmonic(1.0, 2.0), Impulse(1.0, 0.31)]
+    task = driven(model, [acting], step_s=0.01, count=900, start=None)
     record, moments = task.record(0.01, 900), [0, 17, 640, 899]
     added = task.contributions(0.01, moments).sum(axis=2)
     np.testing.assert_allclose(added, record[moments], atol=1e-12 * np.abs(record).max())
@@ -188,7 +192,7 @@ def test_a_failed_stream_leaves_no_file(tmp_path):
 def test_records_that_do_not_fit_are_refused(monkeypatch):
     with pytest.raises(ModelError, match="simulate_to"):
         simulate(space("damped"), step_s=1e-9, count=10**15)
-    monkeypatch.setattr(simulating.os, "sysconf", lambda name: (_ for _ in ()).throw(ValueError(name)))
+    monkeypatch.setattr(os, "sysconf", lambda name: (_ for _ in ()).throw(ValueError(name)))
     simulating.check_memory(10**15, 4)  # a system that can't tell
 
 

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from typing import Any
+
 import numpy as np
 import pytest
 import scipy.sparse as sparse
@@ -10,7 +12,7 @@ import vib
 from tests.references.forced import mounted
 from vib.errors import ModelError
 from vib.response import forced as forcing
-from vib.response.loads import Load, harmonic_ground, recorded_ground
+from vib.response.loads import GroundQuantity, Load, harmonic_ground, recorded_ground
 from vib.response.respond import respond
 from vib.response.signals import Constant, Harmonic, Impulse, Samples, half_sine
 
@@ -64,6 +66,11 @@ def test_a_recorded_ground_is_the_same_in_all_three_quantities():
     travel = 0.002 * np.sin(np.pi * times / 2) ** 4
     speed = np.gradient(travel, times, edge_order=2)
     rate = np.gradient(speed, times, edge_order=2)
+    recorded: tuple[tuple[GroundQuantity, Any], ...] = (
+        ("acceleration", rate),
+        ("velocity", speed),
+        ("displacement", travel),
+    )
     found = [
         respond(
             mounted(0.05),
@@ -72,7 +79,7 @@ def test_a_recorded_ground_is_the_same_in_all_three_quantities():
             duration_s=2.0,
             step_s=0.001,
         ).displacement_m[:, 0]
-        for quantity, values in (("acceleration", rate), ("velocity", speed), ("displacement", travel))
+        for quantity, values in recorded
     ]
     for other in found[1:]:
         np.testing.assert_allclose(other, found[0], atol=2e-4 * np.abs(found[0]).max())
@@ -109,7 +116,12 @@ def long_chain(size=140):
 
 @pytest.mark.parametrize("signal", [half_sine(1.0, 0.4), Harmonic(1.0, 1.0), Constant(1.0)])
 def test_a_reduced_model_is_within_what_it_states(monkeypatch, signal):
-    arguments = {"loads": [Load(signal, "20")], "watch": ["20", "90"], "duration_s": 8.0, "step_s": 0.02}
+    arguments: dict[str, Any] = {
+        "loads": [Load(signal, "20")],
+        "watch": ["20", "90"],
+        "duration_s": 8.0,
+        "step_s": 0.02,
+    }
     reduced = respond(long_chain(), **arguments)
     monkeypatch.setattr(forcing, "FULL_SIZE", 1000)
     whole = respond(long_chain(), **arguments)

@@ -17,6 +17,7 @@ from vib.response.signals import (
     Impulse,
     Points,
     Samples,
+    Signal,
     Steps,
     Sweep,
     ends_of,
@@ -24,7 +25,7 @@ from vib.response.signals import (
 )
 
 TIMES = np.array([0.1, 0.25, 0.7, 0.9])
-SIGNALS = {
+SIGNALS: dict[str, Signal] = {
     "constant": Constant(3.0, 0.2, 0.8),
     "points": Points(TIMES, np.array([1.0, -2.0, 0.5, 4.0])),
     "samples": Samples([0.0, 1.0, -1.0, 2.0], 0.25, 0.05),

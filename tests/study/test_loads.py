@@ -92,7 +92,9 @@ def test_lines_and_outputs(tmp_path):
         'watch = ["block", "block z"]\n'
     )
     study = read(tmp_path, text)
-    np.testing.assert_allclose(lines_of(study), [1, 10, 100])
+    lines = lines_of(study)
+    assert lines is not None
+    np.testing.assert_allclose(lines, [1, 10, 100])
     assert watched(study) == [("block", "x"), ("block", "z")]
     assert lines_of(read(tmp_path, "")) is None
 
