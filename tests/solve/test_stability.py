@@ -60,7 +60,7 @@ def test_too_large_to_be_sure():
 @settings(max_examples=40, deadline=None)
 @given(st.integers(0, 10**6), st.integers(1, 12), st.integers(0, 4))
 def test_passive_damping(seed, rank, spoiled):
-    """Sums of dashpots in any direction are passive, also where no row is dominant; a minus sign spoils it."""
+    """Sums of dashpots in any direction are passive, no row need be dominant; a minus sign spoils it."""
     rng = np.random.default_rng(seed)
     directions = rng.standard_normal((20, rank))
     mass, stiffness = np.eye(20), np.eye(20)

@@ -16,6 +16,7 @@ from vib.solve.backends.interface import Factor
 from vib.solve.undamped import EPS, Array, Matrix
 
 DEPENDENT = 1e-20  # of the energy of a direction; what is left below this after projection is dropped
+FINE = 1e-12  # a second projection that takes less than this share off leaves S times the image as it was
 APART = 1e-10  # least eigenvalue of the Gram matrix of unit directions that are turned at one go
 
 
@@ -95,9 +96,13 @@ class EnergySpace:
         force = self._regular @ image
         again = basis.T @ force
         image = image - basis @ again
-        force = self._regular @ image
+        left = np.sqrt(np.abs(np.einsum("ij,ij->j", image, force)))
+        if again.size and (np.abs(again).max(axis=0) > FINE * left).any():
+            force = self._regular @ image
         fresh, turned = _orthonormal(image, force, before)
         for _ in range(2):  # what is nearly dependent in the block itself gets digits of its own
+            if fresh.shape[1] == image.shape[1]:
+                break
             rest = image - fresh @ (turned.T @ image)
             rest = rest - basis @ (basis.T @ (self._regular @ rest))
             more, also = _orthonormal(rest, self._regular @ rest, before)

@@ -247,7 +247,7 @@ def _localised(problem: _Problem, ask: _Ask, wanted: int, term: Localised) -> So
     count = wanted if ask.number is None or ask.limit is not None else ask.number
     with Reduction(mass, straight, term) as reduction:
         for _ in range(MOST_COUNTS):
-            undamped = reduction.undamped(count + LAW_MODES)
+            undamped = reduction.undamped(count + (LAW_MODES if _law(system) else 0))
             damping = modal_damping(system, undamped)
             if problem.real_shapes and damping.proportional:
                 return _blocks(problem, ask) if system.size >= LARGE else None
