@@ -17,6 +17,7 @@ if TYPE_CHECKING:
 
 MOST_FACES = 12_000  # painted; more are thinned out first
 VECTORS = 400  # more faces than this go into a picture as an image of 200 dots an inch
+_FINER = 8  # times that the grid which thins faces out may be refined
 _EDGES = 2500  # the lines between more faces than this would blacken the picture
 _LIGHT = np.array([0.35, -0.55, 0.76])  # from above, over the left shoulder
 
@@ -30,8 +31,14 @@ def corners_of(mesh: MeshView) -> tuple[list[NDArray[np.intp]], list[str]]:
     total = sum(len(corners) for corners in faces)
     if total <= MOST_FACES:
         return faces, parts
-    cells = float(MOST_FACES) / 6.0
-    merged = _merged(mesh, faces, int(np.sqrt(cells)))
+    across = max(2, int(np.sqrt(MOST_FACES / 6)))  # right for a cube; slender bodies take a finer grid
+    merged = _merged(mesh, faces, across)
+    for _ in range(_FINER):
+        across = -(-3 * across // 2)
+        finer = _merged(mesh, faces, across)
+        if sum(len(corners) for corners, _ in finer) > MOST_FACES:
+            break
+        merged = finer
     return [corners for corners, _ in merged], [parts[i] for _, i in merged]
 
 
