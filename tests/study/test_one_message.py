@@ -1,8 +1,8 @@
 """One slip in a study file gives one message: nothing that only follows from it is reported as well."""
 
 import pytest
-from test_faults import GOOD
 
+from tests.study.test_faults import GOOD
 from vib.errors import StudyError
 from vib.study import read
 
