@@ -26,7 +26,7 @@ def check_files(study: Study, survey: Survey, document: dict[str, Any], pictures
     from vib.show.figures.structure import structure_picture
 
     found = {"check.json": to_json(document).encode()}
-    if study.matrices is not None:
+    if study.matrices is not None or any(not region.use for region in survey.regions):
         return found
     for name in ("parts", "members"):
         if document[name]:
