@@ -228,3 +228,11 @@ def test_an_unstable_system_is_never_fine(name):
     found = frequency_response(UNSTABLE[name], lines_hz=[0.7])
     assert not found.stable
     assert "UNSTABLE" in found.remarks[0]
+
+
+def test_responses_that_are_rounding_are_said_to_be():
+    """Far above all its frequencies a chain hardly passes anything on."""
+    found = frequency_response(chain(40), lines_hz=[1.0, 200.0], inputs=["1"], outputs=["40"])
+    assert any("rounding as much as response" in remark for remark in found.remarks)
+    near = frequency_response(chain(40), lines_hz=[1.0, 2.0], inputs=["1"], outputs=["1"])
+    assert not any("rounding" in remark for remark in near.remarks)

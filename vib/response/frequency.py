@@ -21,6 +21,7 @@ if TYPE_CHECKING:
 Along = str | Sequence[float] | None
 Channel = str | tuple[str, Along]
 Kind = Literal["receptance", "mobility", "accelerance"]
+_FAINT = 1e-10  # of the largest response; sums of residues are rounded at 1e-16 of their largest term
 KINDS: tuple[Kind, ...] = ("receptance", "mobility", "accelerance")
 
 
@@ -180,7 +181,7 @@ def frequency_response(
         ground=ground is not None,
         method=answer.method,
         stable=answer.stable,
-        remarks=(*_remarks(answer), *notes),
+        remarks=(*_remarks(answer), *_faint(found), *notes),
     )
     if answer.complete:
         return result
@@ -340,6 +341,19 @@ def _check(system: System, lines: Array, found: NDArray[np.complex128]) -> None:
     raise AccuracyError(
         f"lines: {line:.6g} Hz is exactly a natural frequency of an undamped mode, where the response is "
         "infinite; state some damping, or move the line"
+    )
+
+
+def _faint(found: Complex) -> tuple[str, ...]:
+    """Where a sum of large terms leaves next to nothing, what is left is rounding."""
+    size = np.abs(found)
+    top = size.max(axis=0)
+    lines = int(((size < _FAINT * top) & (top > 0)).any(axis=(1, 2)).sum())
+    if not lines:
+        return ()
+    return (
+        f"At {lines} lines a response is below {_FAINT:.0e} of the largest of its channels; such a figure "
+        "is rounding as much as response.",
     )
 
 
