@@ -216,7 +216,9 @@ def write_report(
 
             screening = screen(modes, study.excitations, band=band)
         wish.tell("drawing the page")
-        page = render_page(Findings(study, survey, modes, ring, screening, shown, start))
+        page = render_page(
+            Findings(study, survey, modes, ring, screening, shown, start, _curves(study, modes))
+        )
         name = f"{path.stem}.html"
         (written,) = write_files(out if out is not None else Path(), {name: page.encode("utf-8")})
     # a path must not be broken into lines, however long it is

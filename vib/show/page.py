@@ -26,6 +26,7 @@ from vib.show.tables.screen import (
     objection_words,
     screening_verdict,
 )
+from vib.show.tables.speeds import speed_blocks
 from vib.show.words import CAUTION, completeness, rigid_motion, stability
 from vib.units import UnitSystem
 
@@ -34,6 +35,7 @@ if TYPE_CHECKING:
     from vib.response.ring import Ring
     from vib.screening import Screening
     from vib.show.figures.canvas import Picture
+    from vib.speeds import SpeedCurves
     from vib.structure.survey import Survey
     from vib.study import Study
 
@@ -44,7 +46,7 @@ _MOST_SHAPES = 12
 class Findings:
     """Everything that goes on the page; ``ring`` and ``screening`` are None where the study asks for none.
 
-    ``start`` is what set it ringing, in words.
+    ``start`` is what set it ringing, in words; ``curves`` the modes against the speed of each shaft.
     """
 
     study: Study
@@ -54,6 +56,7 @@ class Findings:
     screening: Screening | None
     units: UnitSystem
     start: str = ""
+    curves: tuple[SpeedCurves, ...] = ()
 
 
 @dataclass(frozen=True)
@@ -228,6 +231,7 @@ def _modes(findings: Findings) -> Section:
             frequency_table(modes) if modes.count else NONE_FOUND,
             stability(modes),
             *rigid_motion(modes),
+            *speed_blocks(findings.curves),
             Sentence(said, "quiet"),
             *pictures,
             mass_table(modes),
@@ -282,7 +286,7 @@ def _screening(findings: Findings) -> Section:
             screening_verdict(screening),
             line_table(screening),
             meeting_table(screening) or Sentence("No mode lies inside a band."),
-            *_drawings(speed_pictures(screening, findings.modes), "speeds"),
+            *_drawings(speed_pictures(screening, findings.modes, findings.curves), "speeds"),
             keep_out_table(screening),
             Bullets(screening.remarks) if screening.remarks else None,
         ),
