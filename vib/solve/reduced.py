@@ -5,9 +5,6 @@ s (a M + b K) + K, so x lies in the span of inv(T0(s)) B, which Krylov spaces of
 better with every step, or it is an undamped mode that B does not see (Z. Bai, Appl. Numer. Math. 43 (2002)
 9-44, on Krylov spaces for second-order systems). The projected problem is solved densely. Left vectors lie in
 the same space, so eigenvalues are off by the square of what the vectors are.
-
-The proof that none is missing: det T(s) = det T0(s) det(1 + (s L + N) B' inv(T0(s)) B). The zeros of det T0
-are counted by Sylvester's law, those of the small determinant over them by the argument principle.
 """
 
 from __future__ import annotations
@@ -26,16 +23,15 @@ from vib.solve.damped import Complex, Damped
 from vib.solve.energy import Coordinates, EnergySpace
 from vib.solve.localised import Localised
 from vib.solve.pairs import Pairs, Quadratic, damped_from_pairs, improve
+from vib.solve.proof import prove
 from vib.solve.quadratic import modal_pairs
 from vib.solve.undamped import Array, Matrix, Undamped, elastic_ratio, round_off, stores_nothing
-from vib.solve.winding import MissingError, missing_within, widest_gap
 
 RANDOM = 4  # directions beside those of the dashpots, for modes that no dashpot sees
 SPARE = 4  # modes beyond those asked for
 SHAPE = 1e-8  # energy norm of the residual of a unit shape; eigenvalues are then right to its square
 GROWTH = 1.1  # of the space between two solutions of the projected problem
 MOST_COLUMNS = 600  # of the basis; dense problems of twice that size
-UNSURE = 0.05  # most that the phase of the small determinant may be off for what the space lacks
 NO_MASS = 1e-13  # of the largest mass: coordinates below it have none
 FREE_SHIFT = 1e-8  # of the highest ratio of stiffness to mass, to begin with
 NEARLY_FREE = 1e-9  # pivots of a stiffness of unit diagonal below this may be those of a free structure
@@ -318,7 +314,7 @@ def reduced_quadratic(
     pairs = Pairs.found(values[chosen], basis @ weights[:, chosen], basis @ duals[:, chosen])
     with_norms = replace(whole, norm=_norm(reduction), dual_norm=_dual_norm(reduction))
     pairs = improve(with_norms, pairs, passive=passive)
-    certified = _proof(reduction, problem, undamped, pairs.values, count, limit) if certify else None
+    certified = prove(reduction, problem, undamped, pairs.values, count, limit) if certify else None
     damped = damped_from_pairs(pairs, still, reduction.mass, complete=False, certified=certified)
     return damped if passive else replace(damped, growing=_growing(problem, values, weights, order[wanted:]))
 
@@ -353,107 +349,3 @@ def _dual_norm(reduction: Reduction) -> Callable[[Complex], Array]:
         return np.asarray(np.abs(work[: force.shape[1]] + work[force.shape[1] :]))
 
     return norm
-
-
-def _proof(
-    reduction: Reduction,
-    problem: Projected,
-    undamped: Undamped,
-    values: Complex,
-    count: int,
-    limit: float | None,
-) -> float | None:
-    """Magnitude below which no eigenvalue is missing; None if that can't be shown.
-
-    Raises
-    ------
-    MissingError
-        Some are.
-    """
-    found = np.sort(np.abs(values))
-    first = count - undamped.rigid if limit is None else int((found <= limit).sum())
-    radius = widest_gap(found, first, limit or 0.0)
-    if radius is None:
-        return None
-    term, squares = problem.term, problem.squares
-    place = _above(reduction, problem, radius)
-    if place is None:
-        return None
-    counted = reduction.count_below(place)
-    if counted is None:
-        return None
-    have = int((squares < place).sum())
-    if counted != have:
-        raise MissingError(counted - have)
-    if term.stiffness_part * radius > 0.5 or term.mass_part * radius < 0:
-        return None  # slow roots of modes beyond those counted might lie within the circle
-    bare = _undamped_zeros(term, np.where(np.arange(len(squares)) < undamped.rigid, 0.0, squares), place)
-    still = _zeros_at_rest(problem, undamped.rigid)
-    known = np.concatenate([values, values[values.imag > 0].conj(), np.zeros(still)])
-
-    def logarithm(s: complex) -> complex:
-        ratio = _small_determinant(problem, s)
-        return ratio + complex(np.log((s - bare) / radius).sum())
-
-    missing = missing_within(logarithm, known, radius)
-    if missing is None:
-        return None
-    if missing:
-        raise MissingError(missing)
-    return radius
-
-
-def _zeros_at_rest(problem: Projected, rigid: int) -> int:
-    """How many eigenvalues at zero the rigid-body motions make: two for each that no velocity force resists.
-
-    A force at right angles to all of them (gyroscopic) is answered by a steady offset and does not count.
-    """
-    drag = problem.linear()[:rigid, :rigid]
-    touch = np.abs(problem.touch)[:rigid]
-    terms = float((touch @ np.abs(problem.term.linear) @ touch.T).max(initial=0.0))
-    sizes = scipy.linalg.svdvals(drag) if rigid else np.zeros(0)
-    return rigid + int((sizes <= 1e-9 * max(terms, np.finfo(float).tiny)).sum())
-
-
-def _above(reduction: Reduction, problem: Projected, radius: float) -> float | None:
-    """A value in a gap of the converged undamped spectrum above the square of ``radius``."""
-    found, squares = problem.found, problem.squares
-    good = int(np.argmin(np.append(found.residuals <= 1e-4 * found.theta, False)))
-    best, place = 1e-4, None
-    for number in range(1, good):
-        low, high = max(float(squares[number - 1]), radius**2), float(squares[number])
-        if high / low - 1 > best:
-            best, place = high / low - 1, float(np.sqrt(low * high))
-        if place is not None and number > 8 + int((squares < radius**2).sum()):
-            break
-    return place
-
-
-def _undamped_zeros(term: Localised, squares: Array, place: float) -> Complex:
-    """Zeros of det T0 for the modes below ``place``."""
-    inside = squares[squares < place].astype(complex)
-    half = (term.mass_part + term.stiffness_part * inside) / 2
-    root = np.sqrt(half**2 - inside)
-    return np.concatenate([-half + root, -half - root])
-
-
-def _small_determinant(problem: Projected, s: complex) -> complex:
-    """log det(1 + (s L + N) B' inv(T0(s)) B) with the damping law among the terms."""
-    theta, term, shift = problem.found.theta, problem.term, problem.shift
-    stiff = 1 + shift * theta
-    bare = s * s * theta + s * (term.mass_part * theta + term.stiffness_part * stiff) + stiff
-    both = np.hstack([problem.touch, problem.held])
-    answer = both.T @ (both / bare[:, None])
-    rank = term.rank
-    weight = np.zeros(answer.shape, complex)
-    weight[:rank, :rank] = s * term.linear + term.constant
-    weight[rank:, rank:] = s * np.diag(problem.rates)
-    inner = np.eye(len(answer)) + weight @ answer
-    sign, size = np.linalg.slogdet(inner)
-    # What the space lacks of the answer is r' inv(T0) r with the residual r, in the energy of S at most
-    # |r|^2 max |S / T0|; it moves the phase by no more than the trace norm of what it moves inside.
-    whole = s * s + shift + s * (term.mass_part + term.stiffness_part * shift)
-    beyond = np.linalg.norm(whole * (problem.found.beyond @ (both / bare[:, None])), axis=0)
-    lacking = np.outer(beyond, beyond) * float(np.abs(1 / bare).max())
-    moved = np.abs(np.linalg.solve(inner, weight)) @ lacking
-    return complex(size + 1j * np.angle(sign)) if np.trace(moved) <= UNSURE else complex(np.nan)

@@ -6,7 +6,7 @@ from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
-from vib.show.figures.canvas import BAD, COLOURS, INK, Picture, legend, sheet, short, style
+from vib.show.figures.canvas import BAD, COLOURS, DASHES, INK, Picture, legend, sheet, short, style
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -29,8 +29,9 @@ def curve_picture(curves: SpeedCurves, name: str) -> Picture:
         axes.set_title(f"Modes against the speed of {short(curves.shaft)}")
         top = float(curves.speeds_hz[-1])
         handles = draw_curves(axes, curves)
-        for order in sorted({row.order for row in curves.critical}):
-            (line,) = axes.plot([0, 60 * top], [0, order * top], color=COLOURS[2], lw=1.0, zorder=1)
+        for number, order in enumerate(sorted({row.order for row in curves.critical})):
+            colour, dashes = COLOURS[2 + number % 3], DASHES[number % len(DASHES)]
+            (line,) = axes.plot([0, 60 * top], [0, order * top], color=colour, ls=dashes, lw=1.0, zorder=1)
             handles.append((line, f"order {order:g}"))
         axes.set_xlim(0.0, 60 * top)
         axes.set_ylim(0.0, 1.08 * float(curves.frequencies_hz.max(initial=0.0)) or 1.0)
