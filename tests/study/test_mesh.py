@@ -3,7 +3,8 @@
 import pytest
 from pydantic import ValidationError
 
-from vib.study import Study
+from vib.errors import StudyError
+from vib.study import Study, read
 from vib.study.mesh import Finder
 
 UNITS = {"units": {"length": "mm"}}
@@ -58,3 +59,13 @@ def test_a_length_that_is_none():
 def test_one_way_to_find_a_point(point):
     with pytest.raises(ValidationError, match="needs exactly one of nearest, node, box, set"):
         study({"A": point})
+
+
+def test_the_length_may_be_the_one_that_the_study_declares(tmp_path):
+    file = tmp_path / "study.toml"
+    tables = '[mesh]\nfile = "m.vtu"\n[mesh.regions.all]\nmaterial = "structural steel"\n'
+    file.write_text('[units]\nlength = "mm"\n' + tables)
+    assert read(file).mesh.metres == 1e-3
+    file.write_text(tables)
+    with pytest.raises(StudyError, match=r"mesh\.length.*is missing: the unit of the coordinates"):
+        read(file)

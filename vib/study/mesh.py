@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from typing import Annotated, Any, Literal
 
-from pydantic import Discriminator, Field, Tag, field_validator, model_validator
+from pydantic import Discriminator, Field, Tag, ValidationInfo, field_validator, model_validator
 
 from vib.study.geometry import Table
 from vib.study.quantities import Axis, Name, Quantity, Vector, positive
@@ -53,7 +53,11 @@ class Mesh(Table):
     """A mesh file beside the study: lines become members, surfaces shells, volumes solids."""
 
     file: Name = Field(description="any kind that meshio reads, such as .vtu, .vtk, .msh, .inp, .xdmf")
-    length: Name = Field(description='the unit of its coordinates, such as "mm"; files do not say it')
+    length: Name = Field(
+        "",
+        validate_default=True,
+        description='the unit of its coordinates, such as "mm"; files do not say it; default: [units] length',
+    )
     tag: Name | None = Field(
         None, description="name of the integer cell data that tells the regions, where a file has several"
     )
@@ -63,6 +67,14 @@ class Mesh(Table):
     regions: dict[Name, MeshRegion] = Field(
         {}, description="by name in the file, or tag as text; a mesh without regions has one, called all"
     )
+
+    @field_validator("length", mode="before")
+    @classmethod
+    def _declared(cls, unit: object, info: ValidationInfo) -> object:
+        declared = (info.context or {}).get("units", {}).get("length", "")
+        if not (unit or declared):
+            raise ValueError('is missing: the unit of the coordinates, such as length = "mm"')
+        return unit or declared
 
     @field_validator("length")
     @classmethod
