@@ -3,8 +3,7 @@
 import pytest
 from pydantic import ValidationError
 
-from vib.errors import StudyError
-from vib.study import Study, read
+from vib.study import Study
 from vib.study.mesh import Finder
 
 UNITS = {"units": {"length": "mm"}}
@@ -61,11 +60,8 @@ def test_one_way_to_find_a_point(point):
         study({"A": point})
 
 
-def test_the_length_may_be_the_one_that_the_study_declares(tmp_path):
-    file = tmp_path / "study.toml"
-    tables = '[mesh]\nfile = "m.vtu"\n[mesh.regions.all]\nmaterial = "structural steel"\n'
-    file.write_text('[units]\nlength = "mm"\n' + tables)
-    assert read(file).mesh.metres == 1e-3
-    file.write_text(tables)
-    with pytest.raises(StudyError, match=r"mesh\.length.*is missing: the unit of the coordinates"):
-        read(file)
+def test_the_length_may_be_the_one_that_the_study_declares():
+    tables = {"mesh": {"file": "m.vtu", "regions": {"all": REGION}}}
+    assert Study.model_validate(tables, context={"units": {"length": "mm"}}).mesh.metres == 1e-3
+    with pytest.raises(ValidationError, match="is missing: the unit of the coordinates"):
+        Study.model_validate(tables)
