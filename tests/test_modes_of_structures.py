@@ -296,7 +296,7 @@ def test_free_structures_are_described_by_place():
     modes = rod(8, free=True).modes(count=3)
     assert modes.rigid_descriptions == ("the whole structure can move freely along x",)
     assert modes.rigid_body_count == 1
-    assert modes.errors_hz[0] == 0
+    assert 0 < modes.errors_hz[0] < 1e-4 * modes.frequencies_hz[-1]  # what round-off may hide
     np.testing.assert_allclose(modes.frequencies_hz[1:], [0.5, 1.0], rtol=0.005)  # j / 2, free-free rod
     assert (np.abs(modes.frequencies_hz - [0, 0.5, 1.0]) <= modes.errors_hz).all()
     np.testing.assert_allclose(modes.strain_energy["bar"], [0, 1, 1], rtol=1e-12)

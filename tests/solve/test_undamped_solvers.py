@@ -15,6 +15,7 @@ from vib.solve.dense import dense_undamped
 from vib.solve.factor import SingularFactorError, factorise, negative_count
 from vib.solve.shift_invert import count_below, sparse_undamped
 from vib.solve.undamped import EPS
+from vib.system import System
 
 
 def positive(rng, size):
@@ -216,3 +217,21 @@ def test_factor_solves_both_ways(form):
 def test_singular_factor(form):
     with pytest.raises(SingularFactorError, match="singular"):
         factorise(form(np.array([[1.0, 1.0], [1.0, 1.0]])))
+
+
+@pytest.mark.parametrize("seed", range(5))
+def test_soft_modes_that_the_entries_no_longer_hold_are_within_their_bars(seed):
+    """Springs over twelve decades in a chain: the exact frequencies come from its flexibility min(c_i, c_j).
+
+    The stiffness matrix adds neighbouring springs, which rounds the soft ones away; what is then called a
+    rigid-body mode must own up to it.
+    """
+    springs = 10 ** np.random.default_rng(seed).uniform(0, 12, 120)
+    reach = np.cumsum(1 / springs)
+    exact = 1 / np.sqrt(scipy.linalg.eigvalsh(np.minimum.outer(reach, reach))[::-1][:6]) / (2 * np.pi)
+    stiffness = (
+        np.diag(springs + np.append(springs[1:], 0)) - np.diag(springs[1:], 1) - np.diag(springs[1:], -1)
+    )
+    for form in (np.asarray, sparse.csr_array):
+        modes = System(mass=form(np.eye(120)), stiffness=form(stiffness)).modes(count=6)
+        assert (np.abs(modes.frequencies_hz - exact) <= modes.errors_hz + 1e-9 * exact).all()

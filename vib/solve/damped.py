@@ -63,7 +63,8 @@ def proportional_modes(damping: ModalDamping, massless: Array) -> Damped:
             moved, sized = _movement(value, square, rate, error, float(undamped.errors[index]))
             values.append(value)
             movement.append(moved)
-            sizes.append(sized)
+            # of a rigid-body mode the frequency that round-off may hide, which moves no other figure
+            sizes.append(sized if value else float(undamped.errors[index]))
             source.append(index)
     shapes, squares, rates = undamped.shapes, undamped.values, damping.total
     if massless.shape[1] and damping.rayleigh is not None and damping.rayleigh[1] > 0:

@@ -15,7 +15,16 @@ from scipy.linalg import lapack
 
 from vib.errors import AccuracyError
 from vib.massless import Condensed, condense, root_scale
-from vib.solve.undamped import EPS, Array, Matrix, Undamped, elastic_ratio, round_off, stores_nothing
+from vib.solve.undamped import (
+    EPS,
+    Array,
+    Matrix,
+    Undamped,
+    elastic_ratio,
+    round_off,
+    stores_nothing,
+    with_hidden,
+)
 
 # Above this ratio of highest to lowest frequency the fast singular value routine, whose error is relative to
 # the highest, is replaced by the one-sided Jacobi one. Vectors then hold 1e-16 * 1e5, frequencies its square.
@@ -52,7 +61,8 @@ def condensed_modes(reduced: Condensed) -> Undamped:
     # Pivots of the scaled stiffness that cancel to round-off: the same criterion, before a shape is known.
     rigid = stores_nothing(energy, terms) | (np.arange(len(values)) < null)
     values = np.where(rigid, 0.0, values)
-    errors = np.where(rigid, 0.0, errors + round_off(terms, mass_terms, np.sqrt(np.abs(values))))
+    angular = np.sqrt(np.abs(values))
+    errors = with_hidden(errors + round_off(terms, mass_terms, angular), rigid, energy, terms, angular)
     order = np.lexsort((values, ~rigid))
     return Undamped(
         values=values[order],

@@ -19,7 +19,7 @@ from vib.solve.clock import Clock, Progress
 from vib.solve.krylov import Ritz
 from vib.solve.pencil import Pencil
 from vib.solve.shift import Start
-from vib.solve.undamped import Undamped, round_off
+from vib.solve.undamped import Undamped, round_off, with_hidden
 
 BLOCK = 8
 BASIS_BYTES = 4e9
@@ -226,7 +226,8 @@ def results(
     values = np.where(rigid, 0.0, energy)
     angular = np.sqrt(np.abs(values))
     far = np.where(rigid, 1.0, 2 * angular)
-    errors = np.where(rigid, 0.0, bounds / theta**2 / far + round_off(terms, mass_terms, angular))
+    errors = bounds / theta**2 / far + round_off(terms, mass_terms, angular)
+    errors = with_hidden(errors, rigid, energy, terms, angular)
     order = np.lexsort((values, ~rigid))
     return Undamped(
         values=values[order],

@@ -23,9 +23,10 @@ class Undamped:
     """Solutions of stiffness x = value mass x, ascending, rigid-body modes first.
 
     ``values`` (m,) are squares of angular frequencies, exactly 0 for rigid-body modes; ``shapes`` (n, m)
-    have unit modal mass; ``errors`` (m,) bound the error of each angular frequency, rad/s; ``rigid`` counts
-    the rigid-body modes; ``complete`` tells that these are all finite ones; ``certified`` is an angular
-    frequency below which none is missing, None if that was not shown.
+    have unit modal mass; ``errors`` (m,) bound the error of each angular frequency, rad/s, which for
+    rigid-body modes is what round-off may hide; ``rigid`` counts the rigid-body modes; ``complete`` tells
+    that these are all finite ones; ``certified`` is an angular frequency below which none is missing, None
+    if that was not shown.
     """
 
     values: Array
@@ -70,6 +71,22 @@ def stores_nothing(energy: Array, terms: Array) -> NDArray[np.bool_]:
     The test is dimensionless and does not change when freedoms are scaled or units change.
     """
     return np.asarray(np.abs(energy) <= CANCELLATION * EPS * terms)
+
+
+def with_hidden(
+    errors: Array, rigid: NDArray[np.bool_], energy: Array, terms: Array, angular: Array
+) -> Array:
+    """Error of each angular frequency (m,) with what was set aside as no energy, for unit modal mass.
+
+    Where soft and stiff parts are many decades apart, the entries of the matrices themselves no longer hold
+    the soft ones. A rigid-body mode is then only known to the energy found and its round-off, and taking
+    them as nothing shifts the squares of the others by as much (H. Weyl, Math. Ann. 71 (1912) 441-479).
+    """
+    if not rigid.any():
+        return errors
+    square = float((np.abs(energy) + 4 * EPS * terms)[rigid].max())  # these modes mix freely: one for all
+    safe = np.where(angular > 0, angular, np.inf)
+    return np.where(rigid, np.sqrt(square), errors + square / (2 * safe))
 
 
 def round_off(stiffness_terms: Array, mass_terms: Array, angular: Array) -> Array:
