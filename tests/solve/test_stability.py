@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 import scipy.sparse as sparse
-from hypothesis import given, settings
+from hypothesis import example, given, settings
 from hypothesis import strategies as st
 
 from vib.solve.dense import dense_undamped
@@ -58,7 +58,8 @@ def test_too_large_to_be_sure():
 
 
 @settings(max_examples=40, deadline=None)
-@given(st.integers(0, 10**6), st.integers(1, 12), st.integers(0, 4))
+@example(seed=7, rank=1, spoiled=0)  # a dashpot much smaller than the gyroscopic entries beside it
+@given(seed=st.integers(0, 10**6), rank=st.integers(1, 12), spoiled=st.integers(0, 4))
 def test_passive_damping(seed, rank, spoiled):
     """Sums of dashpots in any direction are passive, no row need be dominant; a minus sign spoils it."""
     rng = np.random.default_rng(seed)

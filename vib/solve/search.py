@@ -11,7 +11,6 @@ import scipy.sparse as sparse
 
 from vib.errors import AccuracyError, MatrixError
 from vib.massless import condense, dense, split_mass
-from vib.solve.arnoldi import LowRank, sparse_quadratic
 from vib.solve.backward import backward_errors
 from vib.solve.damped import Damped, proportional_modes
 from vib.solve.damping import ModalDamping, modal_damping
@@ -19,14 +18,12 @@ from vib.solve.dense import condensed_modes
 from vib.solve.factor import negative_count
 from vib.solve.lanczos import lowest_modes
 from vib.solve.localised import Localised, localise
-from vib.solve.pairs import Quadratic
-from vib.solve.quadratic import quadratic_modes
-from vib.solve.reduced import Reduction, UnsuitedError, reduced_quadratic
 from vib.solve.shift_invert import count_below, sparse_undamped
 from vib.solve.stability import is_passive, watched
 from vib.solve.undamped import CANCELLATION, EPS, Array, Matrix, Undamped
-from vib.solve.winding import MissingError
 from vib.system import System
+
+# What only damped systems need is imported where it is used: a plain frame shall not wait for it.
 
 DENSE_SIZE = 100  # up to here all modes cost less than the set-up of the sparse solvers
 ARRAY_SIZE = 400  # dense arrays are treated as such up to here whatever is asked for
@@ -187,6 +184,8 @@ def _dense(problem: _Problem, ask: _Ask) -> Solution:
             lags = split_mass(mass).massless
         found = proportional_modes(damping, lags)
     else:
+        from vib.solve.quadratic import quadratic_modes
+
         names = tuple(str(freedom) for freedom in system.freedoms)
         linear, stiffness = dense(problem.linear), dense(problem.stiffness)
         found = quadratic_modes(mass, linear, stiffness, damping.undamped, damping.law, names)
@@ -230,6 +229,8 @@ def _count_agrees(mass: Matrix, stiffness: Matrix, undamped: Undamped, kept: int
 def _sparse(problem: _Problem, ask: _Ask, wanted: int, below: int | None) -> Solution:
     """Look for ``wanted`` modes, and for more until those asked for are among them."""
     if problem.term is not None:
+        from vib.solve.reduced import UnsuitedError
+
         try:
             found = _localised(problem, ask, wanted, problem.term)
         except UnsuitedError:
@@ -243,6 +244,11 @@ def _sparse(problem: _Problem, ask: _Ask, wanted: int, below: int | None) -> Sol
 
 def _localised(problem: _Problem, ask: _Ask, wanted: int, term: Localised) -> Solution | None:
     """Through the Krylov space of few dashpots or spinning bodies; None where the shapes stay as they are."""
+    from vib.solve.arnoldi import LowRank
+    from vib.solve.pairs import Quadratic
+    from vib.solve.reduced import Reduction, reduced_quadratic
+    from vib.solve.winding import MissingError
+
     system, mass, straight = problem.system, problem.mass, problem.straight
     count = wanted if ask.number is None or ask.limit is not None else ask.number
     with Reduction(mass, straight, term) as reduction:
@@ -310,6 +316,9 @@ def _quadratic(
     problem: _Problem, ask: _Ask, damping: ModalDamping, wanted: int
 ) -> tuple[Damped | None, bool]:
     """Complex modes by the Arnoldi process; None where a count finds some missing, to search again."""
+    from vib.solve.arnoldi import sparse_quadratic
+    from vib.solve.winding import MissingError
+
     try:
         found = sparse_quadratic(
             problem.mass,
