@@ -138,5 +138,6 @@ def test_limit_in_a_large_damped_system():
     every, found = system.modes(), system.modes(up_to=0.03)
     expected = every.eigenvalues[every.frequencies_hz <= 0.03]
     np.testing.assert_allclose(found.eigenvalues, expected, rtol=1e-9)
+    assert found.complete_below_hz is not None
     assert found.complete_below_hz >= 0.03
     assert any("argument principle" in remark for remark in found.remarks)

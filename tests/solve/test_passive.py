@@ -5,8 +5,8 @@ import pytest
 import scipy.sparse as sparse
 
 from vib import System
-from vib.solve.arnoldi import is_passive
 from vib.solve.dense import dense_undamped
+from vib.solve.stability import is_passive
 from vib.solve.undamped import Undamped
 
 SIZE = 120

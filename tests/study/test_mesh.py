@@ -62,6 +62,8 @@ def test_one_way_to_find_a_point(point):
 
 def test_the_length_may_be_the_one_that_the_study_declares():
     tables = {"mesh": {"file": "m.vtu", "regions": {"all": REGION}}}
-    assert Study.model_validate(tables, context={"units": {"length": "mm"}}).mesh.metres == 1e-3
+    mesh = Study.model_validate(tables, context={"units": {"length": "mm"}}).mesh
+    assert mesh is not None
+    assert mesh.metres == 1e-3
     with pytest.raises(ValidationError, match="is missing: the unit of the coordinates"):
         Study.model_validate(tables)
