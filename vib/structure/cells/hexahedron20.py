@@ -13,11 +13,10 @@ from typing import ClassVar
 
 import numpy as np
 
-from vib.structure.cells.family import Array
 from vib.structure.cells.hexahedron import CORNERS
+from vib.structure.cells.nodal import NodalSolid
 from vib.structure.cells.polynomial import Nodal
 from vib.structure.cells.quadrature import Rule, cube
-from vib.structure.cells.solid import Solid
 
 EDGES = np.array(
     [[0, 1], [1, 2], [2, 3], [3, 0], [4, 5], [5, 6], [6, 7], [7, 4], [0, 4], [1, 5], [2, 6], [3, 7]]
@@ -31,25 +30,13 @@ _POWERS = [
 _FUNCTIONS = Nodal(NODES, np.array(_POWERS))
 
 
-class Hexahedron20(Solid):
+class Hexahedron20(NodalSolid):
     """Serendipity hexahedron."""
 
     kind: ClassVar[str] = "hexahedron20"
+    functions: ClassVar[Nodal] = _FUNCTIONS
     nodes: ClassVar[int] = 20
     corners: ClassVar[int] = 8
-
-    @property
-    def reference(self) -> Array:
-        """See `Solid.reference`."""
-        return _FUNCTIONS.nodes
-
-    def shape(self, points: Array) -> Array:
-        """See `Solid.shape`."""
-        return _FUNCTIONS.values(points)
-
-    def gradients(self, points: Array) -> Array:
-        """See `Solid.gradients`."""
-        return _FUNCTIONS.gradients(points)
 
     @cached_property
     def stiffness_rule(self) -> Rule:

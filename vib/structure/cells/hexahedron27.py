@@ -12,35 +12,22 @@ from typing import ClassVar
 
 import numpy as np
 
-from vib.structure.cells.family import Array
 from vib.structure.cells.hexahedron20 import NODES
+from vib.structure.cells.nodal import NodalSolid
 from vib.structure.cells.polynomial import Nodal
 from vib.structure.cells.quadrature import Rule, cube
-from vib.structure.cells.solid import Solid
 
 _FACES = np.array([[-1, 0, 0], [1, 0, 0], [0, -1, 0], [0, 1, 0], [0, 0, -1], [0, 0, 1], [0, 0, 0]])
 _FUNCTIONS = Nodal(np.vstack([NODES, _FACES]), np.array(list(product(range(3), repeat=3))))
 
 
-class Hexahedron27(Solid):
+class Hexahedron27(NodalSolid):
     """Triquadratic hexahedron."""
 
     kind: ClassVar[str] = "hexahedron27"
+    functions: ClassVar[Nodal] = _FUNCTIONS
     nodes: ClassVar[int] = 27
     corners: ClassVar[int] = 8
-
-    @property
-    def reference(self) -> Array:
-        """See `Solid.reference`."""
-        return _FUNCTIONS.nodes
-
-    def shape(self, points: Array) -> Array:
-        """See `Solid.shape`."""
-        return _FUNCTIONS.values(points)
-
-    def gradients(self, points: Array) -> Array:
-        """See `Solid.gradients`."""
-        return _FUNCTIONS.gradients(points)
 
     @cached_property
     def stiffness_rule(self) -> Rule:

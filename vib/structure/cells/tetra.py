@@ -11,38 +11,25 @@ from typing import ClassVar
 
 import numpy as np
 
-from vib.structure.cells.family import Array
+from vib.structure.cells.nodal import NodalSolid
 from vib.structure.cells.polynomial import Nodal
 from vib.structure.cells.quadrature import Rule, tetrahedron
-from vib.structure.cells.solid import Solid
 
 _NODES = np.array([[0, 0, 0], [1, 0, 0], [0, 1, 0], [0, 0, 1]], dtype=np.float64)
 _FUNCTIONS = Nodal(_NODES, _NODES.astype(np.intp))
 
 
-class Tetra(Solid):
+class Tetra(NodalSolid):
     """Constant-strain tetrahedron."""
 
     kind: ClassVar[str] = "tetra"
+    functions: ClassVar[Nodal] = _FUNCTIONS
     nodes: ClassVar[int] = 4
     corners: ClassVar[int] = 4
     remark: ClassVar[str] = (
         "first-order tetrahedra are too stiff, so that frequencies come out too high; "
         "the error bar shows by how much, second-order tetrahedra are far closer"
     )
-
-    @property
-    def reference(self) -> Array:
-        """See `Solid.reference`."""
-        return _FUNCTIONS.nodes
-
-    def shape(self, points: Array) -> Array:
-        """See `Solid.shape`."""
-        return _FUNCTIONS.values(points)
-
-    def gradients(self, points: Array) -> Array:
-        """See `Solid.gradients`."""
-        return _FUNCTIONS.gradients(points)
 
     @cached_property
     def stiffness_rule(self) -> Rule:

@@ -11,10 +11,9 @@ from typing import ClassVar
 
 import numpy as np
 
-from vib.structure.cells.family import Array
+from vib.structure.cells.nodal import NodalSolid
 from vib.structure.cells.polynomial import Nodal
 from vib.structure.cells.quadrature import Rule, collapsed_tetrahedron, tetrahedron
-from vib.structure.cells.solid import Solid
 
 _CORNERS = np.array([[0, 0, 0], [1, 0, 0], [0, 1, 0], [0, 0, 1]], dtype=np.float64)
 _EDGES = np.array([[0, 1], [1, 2], [2, 0], [0, 3], [1, 3], [2, 3]])
@@ -22,25 +21,13 @@ _NODES = np.vstack([_CORNERS, _CORNERS[_EDGES].mean(axis=1)])
 _FUNCTIONS = Nodal(_NODES, np.rint(2 * _NODES).astype(np.intp))  # twice a node is its monomial's exponents
 
 
-class Tetra10(Solid):
+class Tetra10(NodalSolid):
     """Quadratic tetrahedron."""
 
     kind: ClassVar[str] = "tetra10"
+    functions: ClassVar[Nodal] = _FUNCTIONS
     nodes: ClassVar[int] = 10
     corners: ClassVar[int] = 4
-
-    @property
-    def reference(self) -> Array:
-        """See `Solid.reference`."""
-        return _FUNCTIONS.nodes
-
-    def shape(self, points: Array) -> Array:
-        """See `Solid.shape`."""
-        return _FUNCTIONS.values(points)
-
-    def gradients(self, points: Array) -> Array:
-        """See `Solid.gradients`."""
-        return _FUNCTIONS.gradients(points)
 
     @cached_property
     def stiffness_rule(self) -> Rule:

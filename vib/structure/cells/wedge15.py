@@ -12,10 +12,9 @@ from typing import ClassVar
 
 import numpy as np
 
-from vib.structure.cells.family import Array
+from vib.structure.cells.nodal import NodalSolid
 from vib.structure.cells.polynomial import Nodal
 from vib.structure.cells.quadrature import Rule, wedge
-from vib.structure.cells.solid import Solid
 
 _TRIANGLE = np.array([[0, 0], [1, 0], [0, 1]], dtype=np.float64)
 _CORNERS = np.vstack([np.column_stack([_TRIANGLE, np.full(3, z)]) for z in (-1.0, 1.0)])
@@ -26,26 +25,14 @@ _POWERS = [[i, j, k] for k in (0, 1) for i, j in _QUADRATIC] + [[0, 0, 2], [1, 0
 _FUNCTIONS = Nodal(_NODES, np.array(_POWERS))
 
 
-class Wedge15(Solid):
+class Wedge15(NodalSolid):
     """Serendipity wedge."""
 
     kind: ClassVar[str] = "wedge15"
+    functions: ClassVar[Nodal] = _FUNCTIONS
     nodes: ClassVar[int] = 15
     corners: ClassVar[int] = 6
     mirror: ClassVar[tuple[int, int] | None] = None
-
-    @property
-    def reference(self) -> Array:
-        """See `Solid.reference`."""
-        return _FUNCTIONS.nodes
-
-    def shape(self, points: Array) -> Array:
-        """See `Solid.shape`."""
-        return _FUNCTIONS.values(points)
-
-    def gradients(self, points: Array) -> Array:
-        """See `Solid.gradients`."""
-        return _FUNCTIONS.gradients(points)
 
     @cached_property
     def stiffness_rule(self) -> Rule:
