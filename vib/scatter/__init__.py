@@ -1,0 +1,1 @@
+"""Scatter and sweeps: what the tolerances of a study do to its frequencies, damping and levels."""
