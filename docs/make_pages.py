@@ -30,6 +30,7 @@ _WORDS = {
     ("Respond", "frequencies"): "two frequencies (`Hz`)",
     ("Excitation", "speed"): "a running speed (`rpm`), or a list of two",
     ("Excitation", "along"): "a component or three numbers",
+    ("Severity", "support"): '`"rigid"`, `"flexible"` or a table',
     ("Impact", "along"): "a component or three numbers",
     ("Members", "up"): "an axis or three numbers",
     ("MeshRegion", "up"): "an axis or three numbers",
@@ -61,6 +62,7 @@ _TABLES = {
     "loads": "[[loads]]",
     "base_motion": "[base_motion]",
     "response": "[response]",
+    "severity": "[severity]",
     "matrices": "[matrices]",
 }
 _INTRODUCTION = """# The study file
@@ -188,6 +190,7 @@ def _sub_part(key: str, name: str, table: dict[str, Any]) -> str:
         "Wave": "harmonic",
         "SweptSine": "sweep",
         "SixStiffnesses": "stiffness",
+        "StandPerAxis": "support",
         "SixDashpots": "dashpot",
     }
     shown = where.get(name, "a matrix as a table")
@@ -195,6 +198,8 @@ def _sub_part(key: str, name: str, table: dict[str, Any]) -> str:
         title = "[mesh.regions.NAME]"
     elif name == "Finder":
         title = "A point found in the mesh"
+    elif name == "OwnLimits":
+        title = "[[severity.limits]]"
     else:
         title = f"`{shown}` of `{key}`" if name in where else f"{shown[0].upper()}{shown[1:]}"
     return f"### {title}\n\n{_plain(table['description'])}\n\n{_rows_of(name, table)}"

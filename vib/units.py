@@ -58,6 +58,7 @@ KINDS = {
     "angular_velocity": Kind("an angular velocity", "rad/s", "rad/s", "rad/s"),
     "acceleration": Kind("an acceleration", "m/s^2", "m/s^2", "in/s^2"),
     "angular_acceleration": Kind("an angular acceleration", "rad/s^2", "rad/s^2", "rad/s^2"),
+    "power": Kind("a power", "W", "kW", "hp"),
     "ratio": Kind("a ratio", "", "", ""),
 }
 # no quantity of a machine comes near; beyond it products of two would overflow on the way

@@ -37,6 +37,7 @@ def check_names(raw: Mapping[str, Any]) -> Iterator[Finding]:
         yield from _unknown("point", points, _listed(support.get("at"), ("supports", i, "at")))
     for i, spring in _rows(raw, "springs"):
         yield from _check_spring(spring, ("springs", i, "between"), points)
+    yield from _check_main(raw)
     if "matrices" in raw:
         # a freedom may also be named by its number, and the number of rows is not known here
         return
@@ -54,6 +55,27 @@ def check_names(raw: Mapping[str, Any]) -> Iterator[Finding]:
     if isinstance(response, Mapping):
         watched = _listed(response.get("watch"), ("response", "watch"))
         yield from _unknown("point or body", places, [(path, _place(name, places)) for path, name in watched])
+    yield from _check_judged(raw, places)
+
+
+def _check_main(raw: Mapping[str, Any]) -> Iterator[Finding]:
+    """The main excitation of [severity] is one with a running speed."""
+    severity = raw.get("severity")
+    if isinstance(severity, Mapping) and isinstance(severity.get("main"), str):
+        yield from _check_shaft(raw, severity["main"], ("severity", "main"), "is needed to judge by")
+
+
+def _check_judged(raw: Mapping[str, Any], places: list[str]) -> Iterator[Finding]:
+    """The places that [severity] judges, and those that limits of one's own hold for."""
+    severity = raw.get("severity")
+    if not isinstance(severity, Mapping):
+        return
+    judged = _listed(severity.get("places"), ("severity", "places"))
+    limits = severity.get("limits")
+    for i, row in enumerate(limits if isinstance(limits, list) else []):
+        if isinstance(row, Mapping):
+            judged += _listed(row.get("at"), ("severity", "limits", i, "at"))
+    yield from _unknown("point or body", places, [(path, _place(name, places)) for path, name in judged])
 
 
 def _place(text: str, places: list[str]) -> str:
@@ -152,13 +174,16 @@ def _check_spin(raw: Mapping[str, Any], body: Mapping[str, Any], path: Path) -> 
     """The shaft of a spin is an excitation with a running speed."""
     spin = body.get("spin")
     shaft = spin.get("shaft") if isinstance(spin, Mapping) else None
-    if not isinstance(shaft, str):
-        return
+    if isinstance(shaft, str):
+        yield from _check_shaft(raw, shaft, path, "a body could follow")
+
+
+def _check_shaft(raw: Mapping[str, Any], shaft: str, path: Path, use: str) -> Iterator[Finding]:
     rows = {row.get("name", f"excitation {i + 1}"): row for i, row in _rows(raw, "excitations")}
     known = [name for name in rows if isinstance(name, str)]
     yield from _unknown("excitation", known, [(path, shaft)])
     if shaft in rows and "speed" not in rows[shaft] and "speeds" not in rows[shaft]:
-        yield path, f'the excitation "{shaft}" has no running speed that a body could follow'
+        yield path, f'the excitation "{shaft}" has no running speed that {use}'
 
 
 def _check_spring(spring: Mapping[str, Any], path: Path, points: list[str]) -> Iterator[Finding]:

@@ -12,6 +12,7 @@ from vib.study.loads import AppliedLoad, BaseMotion, Respond
 from vib.study.machine import Body, Damping, Excitation, Impact, Matrices, Spring
 from vib.study.mesh import Finder, Mesh, Point
 from vib.study.quantities import Name, Quantity
+from vib.study.severity import Severity
 from vib.units import KINDS, UnitSystem, factor
 
 if TYPE_CHECKING:
@@ -83,6 +84,7 @@ class Study(Table):
     loads: tuple[AppliedLoad, ...] = ()
     base_motion: BaseMotion | None = None
     response: Respond = Respond()
+    severity: Severity | None = None
     matrices: Matrices | None = None
 
     _file: Path | None = PrivateAttr(None)
@@ -115,6 +117,11 @@ class Study(Table):
             raise ValueError(f"points.{found[0]} is to be found in a mesh, and there is no [mesh]")
         if self.base_motion is not None and self.matrices is not None:
             raise ValueError("base_motion needs a structure: bare matrices don't say what they stand on")
+        if self.severity is not None and self.matrices is not None and not self.severity.support_known:
+            raise ValueError(
+                "severity.support is needed with [matrices], which don't say which freedom moves along "
+                'which axis: write support = "rigid" or "flexible"'
+            )
         return self
 
     @property
