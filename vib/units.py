@@ -58,6 +58,7 @@ KINDS = {
     "angular_velocity": Kind("an angular velocity", "rad/s", "rad/s", "rad/s"),
     "acceleration": Kind("an acceleration", "m/s^2", "m/s^2", "in/s^2"),
     "angular_acceleration": Kind("an angular acceleration", "rad/s^2", "rad/s^2", "rad/s^2"),
+    "unbalance": Kind("an unbalance", "kg m", "g mm", "oz in"),
     "power": Kind("a power", "W", "kW", "hp"),
     "ratio": Kind("a ratio", "", "", ""),
 }
@@ -73,7 +74,7 @@ _USUAL_UNITS = (
     "MPa", "GPa", "psi", "ksi", "N/m", "N/mm", "kN/m", "kN/mm", "lbf/in", "kip/in", "N s", "N s/m",
     "N s/mm", "lbf s/in", "lbf s", "N m", "kN m", "N m s", "N m/rad", "lbf in", "lbf ft", "kg/m^3",
     "lb/in^3", "lb/ft^3", "Hz", "rpm", "rad/s", "s", "ms", "deg", "rad", "mm/s", "m/s", "in/s", "m/s^2",
-    "mm^2", "cm^2", "in^2", "mm^4", "cm^4", "in^4",
+    "g mm", "kg mm", "mm^2", "cm^2", "in^2", "mm^4", "cm^4", "in^4",
 )  # fmt: skip
 
 

@@ -6,7 +6,7 @@ import numpy as np
 import pytest
 
 from vib.modes import Modes
-from vib.study.machine import Excitation
+from vib.study.excitations import Excitation
 from vib.system import System
 
 

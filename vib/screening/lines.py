@@ -10,7 +10,7 @@ from vib.errors import ModelError, UnitError
 from vib.units import parse
 
 if TYPE_CHECKING:
-    from vib.study.machine import Excitation
+    from vib.study.excitations import Excitation
 
 DEFAULT_BAND = 0.20  # common practice, no source; a study or a caller can set another
 

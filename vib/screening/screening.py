@@ -12,7 +12,7 @@ from vib.screening.lines import DEFAULT_BAND, Line, excitation_lines
 
 if TYPE_CHECKING:
     from vib.modes import Modes
-    from vib.study.machine import Excitation
+    from vib.study.excitations import Excitation
 
 Range = tuple[float, float]
 

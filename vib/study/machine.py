@@ -1,4 +1,4 @@
-"""The tables of a study about the machine: bodies, springs, damping, excitations, impact, matrices."""
+"""The tables of a study about the machine: bodies, springs, damping, impact, matrices."""
 
 from __future__ import annotations
 
@@ -208,74 +208,6 @@ def rayleigh_constants(rows: tuple[tuple[float, float], tuple[float, float]]) ->
     (w1, z1), (w2, z2) = ((tau * frequency, ratio) for frequency, ratio in rows)
     span = w2**2 - w1**2
     return 2 * w1 * w2 * (z1 * w2 - z2 * w1) / span, 2 * (z2 * w2 - z1 * w1) / span
-
-
-def _speed(value: object, info: ValidationInfo) -> object:
-    """One speed, or [from, to]; cycles per second."""
-    if isinstance(value, list):
-        if len(value) != 2:
-            raise ValueError(
-                "expected one speed or a range [from, to]; for a list of speeds use speeds = [...]"
-            )
-        low, high = (read_quantity(entry, "speed", info) for entry in value)
-        if not 0 <= low < high:
-            raise ValueError("a range of speeds must go upwards from zero or more")
-        return low, high
-    speed = read_quantity(value, "speed", info)
-    if speed <= 0:
-        raise ValueError("a speed must be greater than zero")
-    return speed, speed
-
-
-_HIGHEST_ORDER = 1e6  # far above any count of teeth, bars or blades
-
-
-class Excitation(Table):
-    """What shakes the machine: orders of a running speed, fixed frequencies, or both."""
-
-    name: Name = Field("", description='default: numbered, such as "excitation 1"')
-    speed: (
-        Annotated[tuple[float, float], BeforeValidator(_speed, json_schema_input_type=str | list[str])] | None
-    ) = Field(None, description="running speed, or a range [from, to]")
-    speeds: tuple[Annotated[float, positive("speed")], ...] = Field(
-        (), description="a list of running speeds"
-    )
-    orders: tuple[Number, ...] = Field(
-        (1.0,), min_length=1, description="multiples of the running speed, whole or not"
-    )
-    frequencies: tuple[Annotated[float, positive("frequency")], ...] = Field(
-        (), description="fixed frequencies"
-    )
-    at: Name | None = Field(None, description="point or body where it acts")
-    along: Along | None = Field(
-        None, description="component or direction in which it acts; default: all three"
-    )
-    band: Annotated[float, Quantity("ratio", 0.0)] | None = Field(
-        None, description="half width of the band to keep clear of, as a share of the excitation frequency"
-    )
-
-    @model_validator(mode="after")
-    def _whole(self) -> Excitation:
-        if self.speed is None and not self.speeds and not self.frequencies:
-            raise ValueError("needs a speed, speeds or frequencies")
-        if self.speed is not None and self.speeds:
-            raise ValueError("takes speed or speeds, not both")
-        if min(self.orders) <= 0:
-            raise ValueError("orders must be greater than zero")
-        if max(self.orders) > _HIGHEST_ORDER:
-            raise ValueError(
-                f"orders: {max(self.orders):g} is larger than any order; write e.g. orders = [1, 2]"
-            )
-        if self.along is not None and self.at is None:
-            raise ValueError("along needs at: the point or body where it acts")
-        if self.band is not None and self.band >= 1:
-            raise ValueError('band must be less than 1; a band of 20 % is written 0.2 or "20 %"')
-        return self
-
-    @property
-    def speed_ranges(self) -> tuple[tuple[float, float], ...]:
-        """Running speeds as (from, to) in cycles per second; one speed is a range of no width."""
-        return (self.speed,) if self.speed is not None else tuple((speed, speed) for speed in self.speeds)
 
 
 # a quantity whose kind depends on the direction (a force or a moment, ...): read where both are known

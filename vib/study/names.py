@@ -41,8 +41,7 @@ def check_names(raw: Mapping[str, Any]) -> Iterator[Finding]:
     if "matrices" in raw:
         # a freedom may also be named by its number, and the number of rows is not known here
         return
-    for i, excitation in _rows(raw, "excitations"):
-        yield from _unknown("point or body", places, _listed(excitation.get("at"), ("excitations", i, "at")))
+    yield from _check_excitations(raw, places)
     for i, load in _rows(raw, "loads"):
         yield from _unknown("point or body", places, _listed(load.get("at"), ("loads", i, "at")))
         if "along" not in load:
@@ -76,6 +75,32 @@ def _check_judged(raw: Mapping[str, Any], places: list[str]) -> Iterator[Finding
         if isinstance(row, Mapping):
             judged += _listed(row.get("at"), ("severity", "limits", i, "at"))
     yield from _unknown("point or body", places, [(path, _place(name, places)) for path, name in judged])
+
+
+def _check_excitations(raw: Mapping[str, Any], places: list[str]) -> Iterator[Finding]:
+    """The places of excitations and of their forces, and the directions of those."""
+    from vib.study.excitations import FORCES, UPRIGHT
+
+    for i, excitation in _rows(raw, "excitations"):
+        yield from _unknown("point or body", places, _listed(excitation.get("at"), ("excitations", i, "at")))
+        for name in FORCES:
+            for path, row in _tables(excitation.get(name), ("excitations", i, name)):
+                for key in ("at", "planes", "places"):
+                    yield from _unknown("point or body", places, _listed(row.get(key), (*path, key)))
+                if name in UPRIGHT and not (row.get("turning") or "along" in row or "along" in excitation):
+                    turning = "" if name in ("crank", "strokes", "mains") else ", or turning = true"
+                    yield (
+                        (*path, "along"),
+                        f'is missing: the direction in which the force acts, such as "x"{turning}',
+                    )
+
+
+def _tables(value: object, path: Path) -> list[tuple[Path, Mapping[str, Any]]]:
+    """One table, or each of a list of tables, with its path."""
+    if isinstance(value, Mapping):
+        return [(path, value)]
+    rows = value if isinstance(value, list) else []
+    return [((*path, j), row) for j, row in enumerate(rows) if isinstance(row, Mapping)]
 
 
 def _place(text: str, places: list[str]) -> str:
@@ -182,7 +207,7 @@ def _check_shaft(raw: Mapping[str, Any], shaft: str, path: Path, use: str) -> It
     rows = {row.get("name", f"excitation {i + 1}"): row for i, row in _rows(raw, "excitations")}
     known = [name for name in rows if isinstance(name, str)]
     yield from _unknown("excitation", known, [(path, shaft)])
-    if shaft in rows and "speed" not in rows[shaft] and "speeds" not in rows[shaft]:
+    if shaft in rows and not {"speed", "speeds", "shaft"} & rows[shaft].keys():
         yield path, f'the excitation "{shaft}" has no running speed that {use}'
 
 

@@ -7,9 +7,10 @@ from typing import TYPE_CHECKING, Annotated, Any, Literal
 
 from pydantic import Field, PrivateAttr, create_model, field_validator, model_validator
 
+from vib.study.excitations import Excitation, follow
 from vib.study.geometry import Material, Members, Section, Support, Table
 from vib.study.loads import AppliedLoad, BaseMotion, Respond
-from vib.study.machine import Body, Damping, Excitation, Impact, Matrices, Spring
+from vib.study.machine import Body, Damping, Impact, Matrices, Spring
 from vib.study.mesh import Finder, Mesh, Point
 from vib.study.quantities import Name, Quantity
 from vib.study.severity import Severity
@@ -117,6 +118,7 @@ class Study(Table):
             raise ValueError(f"points.{found[0]} is to be found in a mesh, and there is no [mesh]")
         if self.base_motion is not None and self.matrices is not None:
             raise ValueError("base_motion needs a structure: bare matrices don't say what they stand on")
+        follow(self.excitations)
         if self.severity is not None and self.matrices is not None and not self.severity.support_known:
             raise ValueError(
                 "severity.support is needed with [matrices], which don't say which freedom moves along "

@@ -1,0 +1,246 @@
+"""The table of a study about what shakes the machine: speeds, orders, frequencies, and their forces."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Sequence
+from typing import Annotated, Any
+
+from pydantic import BeforeValidator, Field, PrivateAttr, ValidationInfo, model_validator
+
+from vib.errors import ModelError
+from vib.study.forces import Belt, Blades, Forces, Gear, Mains, Misalignment, Push
+from vib.study.geometry import Table
+from vib.study.machine import is_rotation
+from vib.study.motions import Crank, Shaking, Strokes, Unbalance
+from vib.study.quantities import Along, Axis, Name, Number, Quantity, positive, read_quantity
+
+Range = tuple[float, float]
+Force = Unbalance | Push | Crank | Strokes
+_HIGHEST_ORDER = 1e6  # far above any count of teeth, bars or blades
+FORCES = (
+    "unbalance",
+    "forces",
+    "misalignment",
+    "belt",
+    "blades",
+    "gear",
+    "crank",
+    "strokes",
+    "mains",
+)
+UPRIGHT = FORCES[1:]  # those that act along a stated direction
+
+
+def _speed(value: object, info: ValidationInfo) -> object:
+    """One speed, or [from, to]; cycles per second."""
+    if isinstance(value, list):
+        if len(value) != 2:
+            raise ValueError(
+                "expected one speed or a range [from, to]; for a list of speeds use speeds = [...]"
+            )
+        low, high = (read_quantity(entry, "speed", info) for entry in value)
+        if not 0 <= low < high:
+            raise ValueError("a range of speeds must go upwards from zero or more")
+        return low, high
+    speed = read_quantity(value, "speed", info)
+    if speed <= 0:
+        raise ValueError("a speed must be greater than zero")
+    return speed, speed
+
+
+def _several(value: object) -> object:
+    """One table stands for a list of one."""
+    return [value] if isinstance(value, dict) else value
+
+
+_SEVERAL = BeforeValidator(_several)
+
+
+class Excitation(Table):
+    """What shakes the machine: orders of a running speed, fixed frequencies, and the forces behind them.
+
+    Without a force an order or a frequency is only screened against. Each kind of force is a table, or a list
+    of tables.
+    """
+
+    name: Name = Field("", description='default: numbered, such as "excitation 1"')
+    speed: Annotated[Range, BeforeValidator(_speed, json_schema_input_type=str | list[str])] | None = Field(
+        None, description="running speed, or a range [from, to]"
+    )
+    speeds: tuple[Annotated[float, positive("speed")], ...] = Field(
+        (), description="a list of running speeds"
+    )
+    shaft: Name | None = Field(
+        None, description="instead of a speed: another excitation, whose speed it follows (belt, gear)"
+    )
+    ratio: Number = Field(1.0, description="its speed over that of `shaft`")
+    axis: Axis | None = Field(
+        None,
+        description="of the shaft, the direction of the thumb of the right hand; default: that of the body "
+        "that spins with it",
+    )
+    orders: tuple[Number, ...] = Field(
+        (1.0,),
+        min_length=1,
+        description="multiples of the running speed, whole or not; those of its forces are added, and stand "
+        "alone where none are given",
+    )
+    frequencies: tuple[Annotated[float, positive("frequency")], ...] = Field(
+        (), description="fixed frequencies; those of its forces are added"
+    )
+    at: Name | None = Field(None, description="point or body where it acts")
+    along: Along | None = Field(
+        None, description="component or direction in which it acts; default: all three"
+    )
+    band: Annotated[float, Quantity("ratio", 0.0)] | None = Field(
+        None, description="half width of the band to keep clear of, as a share of the excitation frequency"
+    )
+    unbalance: Annotated[tuple[Unbalance, ...], _SEVERAL] = ()
+    forces: Annotated[tuple[Forces, ...], _SEVERAL] = ()
+    misalignment: Annotated[tuple[Misalignment, ...], _SEVERAL] = ()
+    belt: Annotated[tuple[Belt, ...], _SEVERAL] = ()
+    blades: Annotated[tuple[Blades, ...], _SEVERAL] = ()
+    gear: Annotated[tuple[Gear, ...], _SEVERAL] = ()
+    crank: Annotated[tuple[Crank, ...], _SEVERAL] = ()
+    strokes: Annotated[tuple[Strokes, ...], _SEVERAL] = ()
+    mains: Annotated[tuple[Mains, ...], _SEVERAL] = ()
+    ground: Annotated[tuple[Shaking, ...], _SEVERAL] = ()
+
+    _follows: tuple[Range, ...] | None = PrivateAttr(None)
+
+    @model_validator(mode="after")
+    def _whole(self, info: ValidationInfo) -> Excitation:
+        self._check_speed()
+        for name in FORCES:
+            rows = getattr(self, name)
+            words = [name if len(rows) == 1 else f"{name}[{number}]" for number in range(len(rows))]
+            placed = [self._placed(row, word, info) for row, word in zip(rows, words, strict=True)]
+            object.__setattr__(self, name, tuple(placed))
+        self._gather()
+        if self.orders and min(self.orders) <= 0:
+            raise ValueError("orders must be greater than zero")
+        if max(self.orders) > _HIGHEST_ORDER:
+            raise ValueError(
+                f"orders: {max(self.orders):g} is larger than any order; write e.g. orders = [1, 2]"
+            )
+        if self.along is not None and self.at is None:
+            raise ValueError("along needs at: the point or body where it acts")
+        if self.band is not None and self.band >= 1:
+            raise ValueError('band must be less than 1; a band of 20 % is written 0.2 or "20 %"')
+        return self
+
+    def _check_speed(self) -> None:
+        given = [name for name in ("speed", "speeds", "shaft") if getattr(self, name)]
+        if len(given) > 1:
+            raise ValueError(f"takes {' or '.join(given)}, not both")
+        fixed = self.frequencies or any(row.fixed() for _, row in self.acting())
+        if not given and not fixed:
+            raise ValueError("needs a speed, speeds, shaft or frequencies")
+        turning = next((name for name, row in self.acting() if row.multiples()), None)
+        if not given and turning:
+            raise ValueError(f"{turning} goes with the running speed: give speed, speeds or shaft")
+        if self.shaft is None and self.ratio != 1:
+            raise ValueError("ratio goes with shaft: the excitation whose speed it follows")
+        if self.ratio <= 0:
+            raise ValueError("ratio must be greater than zero; which way a shaft turns is said by its axis")
+
+    def _placed(self, row: Any, word: str, info: ValidationInfo) -> Any:
+        """A force with its place, its direction and the amplitude that they give a meaning to."""
+        at = row.at or self.at
+        if at is None and not getattr(row, "places", None):
+            raise ValueError(f"{word}: needs at, the point or body where it acts")
+        turns = isinstance(row, Unbalance) or getattr(row, "turning", False)
+        along = row.along if turns or row.along is not None else self.along
+        kind = ("force", "moment")[is_rotation(along)]
+
+        def sized(value: Any, name: str) -> float:
+            try:
+                size = read_quantity(value, kind, info)
+            except ValueError as error:
+                raise ValueError(f"{word}: {name}: {error}") from None
+            if size == 0:
+                raise ValueError(f"{word}: {name} must not be zero")
+            return size
+
+        changed: dict[str, Any] = {"at": at, "along": along}
+        if isinstance(row, Unbalance | Crank) and is_rotation(along):
+            raise ValueError(f"{word}: it pulls along an axis or a direction, not about one")
+        for name in ("amplitude", "peak"):
+            if getattr(row, name, None) is not None:
+                changed[name] = sized(getattr(row, name), name)
+        if isinstance(row, Forces) and row.table:
+            changed["table"] = tuple(
+                (o, sized(amplitude, "table"), phase) for o, amplitude, phase in row.table
+            )
+        return row.model_copy(update=changed)
+
+    def _gather(self) -> None:
+        """Screen against what the forces bring as well."""
+        multiples = [one for _, row in self.acting() for one in row.multiples()]
+        fixed = [one for _, row in self.acting() for one in row.fixed()]
+        own = list(self.orders) if "orders" in self.model_fields_set or not multiples else []
+        object.__setattr__(self, "orders", tuple(dict.fromkeys([*own, *sorted(multiples)])))
+        object.__setattr__(self, "frequencies", tuple(dict.fromkeys([*self.frequencies, *fixed])))
+
+    def acting(self) -> Iterator[tuple[str, Force | Shaking]]:
+        """What it does to the machine, each with the word for it."""
+        for name in (*FORCES, "ground"):
+            for row in getattr(self, name):
+                yield name, row
+
+    @property
+    def turns(self) -> bool:
+        """Whether it has a running speed."""
+        return self.speed is not None or bool(self.speeds) or self.shaft is not None
+
+    @property
+    def speed_ranges(self) -> tuple[Range, ...]:
+        """Running speeds as (from, to) in cycles per second; one speed is a range of no width."""
+        if self.shaft is not None:
+            if self._follows is None:
+                raise ModelError(
+                    f'{self.name}: it follows the speed of "{self.shaft}", which is known in a study only'
+                )
+            return self._follows
+        return (self.speed,) if self.speed is not None else tuple((speed, speed) for speed in self.speeds)
+
+
+def leader(excitation: Excitation, others: Sequence[Excitation]) -> tuple[Excitation, float]:
+    """The excitation whose speed this one follows in the end, and its own speed over that speed.
+
+    Raises
+    ------
+    ValueError
+        The excitations follow one another in a circle, or an unknown one.
+    """
+    by_name = {row.name: row for row in others}
+    ratio, seen = 1.0, {excitation.name}
+    while excitation.shaft is not None:
+        ratio *= excitation.ratio
+        if excitation.shaft not in by_name:
+            raise ValueError(f'no excitation is named "{excitation.shaft}"')
+        excitation = by_name[excitation.shaft]
+        if excitation.name in seen:
+            raise ValueError(f'"{excitation.name}" follows its own speed; one needs a speed of its own')
+        seen.add(excitation.name)
+    return excitation, ratio
+
+
+def follow(excitations: Sequence[Excitation]) -> None:
+    """Tell those that follow another's speed what it is.
+
+    Raises
+    ------
+    ValueError
+        As `leader`; or who leads has no running speed.
+    """
+    for number, excitation in enumerate(excitations):
+        if excitation.shaft is None:
+            continue
+        try:
+            first, ratio = leader(excitation, excitations)
+            if not first.turns:
+                raise ValueError(f'"{first.name}" has no running speed to follow')
+        except ValueError as error:
+            raise ValueError(f"excitations[{number}].shaft: {error}") from None
+        excitation._follows = tuple((ratio * low, ratio * high) for low, high in first.speed_ranges)
