@@ -7,12 +7,13 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 from numpy.typing import NDArray
 
+from vib.amplitudes import amplitude, greatest_translation
 from vib.errors import ModelError
 from vib.system import COMPONENTS
 
 if TYPE_CHECKING:
     from vib.modes import Modes
-    from vib.study.machine import Excitation
+    from vib.study.excitations import Excitation
     from vib.system import Place
 
 Array = NDArray[np.float64]
@@ -63,15 +64,15 @@ def drive(modes: Modes, excitation: Excitation) -> Array | None:
     if place is None:
         return _bare_drive(modes, excitation, shapes)
     if excitation.along is None:
-        at_place = _amplitude(_motion(place, shapes)[:3])
+        at_place = amplitude(_motion(place, shapes)[:3])
         if not place.motion[:3].count_nonzero():
             raise ModelError(f"{place.name}: it is held in every direction and can't be driven there.")
-        return _share(at_place, _greatest_translation(modes, shapes))
+        return _share(at_place, greatest_translation(modes.system, shapes))
     along = excitation.along
     at_place = np.abs(modes.system.direction(excitation.at, along) @ shapes)
     if isinstance(along, str) and along.lstrip("-") in COMPONENTS[3:]:
         return _share(at_place, _greatest_rotation(modes, shapes))
-    return _share(at_place, _greatest_translation(modes, shapes))
+    return _share(at_place, greatest_translation(modes.system, shapes))
 
 
 def _bare_drive(modes: Modes, excitation: Excitation, shapes: NDArray[Any]) -> Array:
@@ -84,7 +85,7 @@ def _bare_drive(modes: Modes, excitation: Excitation, shapes: NDArray[Any]) -> A
         if freedom.point == excitation.at and freedom.component in COMPONENTS[:3]
     ]
     if excitation.along is None and rows:
-        return _share(_amplitude(shapes[rows]), greatest)
+        return _share(amplitude(shapes[rows]), greatest)
     return _share(np.abs(system.direction(excitation.at, excitation.along) @ shapes), greatest)
 
 
@@ -94,41 +95,17 @@ def _motion(place: Place, shapes: NDArray[Any]) -> NDArray[Any]:
     return moved
 
 
-def _amplitude(components: NDArray[Any]) -> Array:
-    """Greatest displacement during a cycle, (..., m), from complex components (..., 3 or fewer, m).
-
-    The real part of v exp(i t) runs along an ellipse whose half axis squared is (|v|^2 + |v . v|) / 2.
-    """
-    squared = (np.abs(components) ** 2).sum(axis=-2)
-    plain = np.abs((components**2).sum(axis=-2))
-    amplitude: Array = np.sqrt((squared + plain) / 2.0)
-    return amplitude
-
-
-def _greatest_translation(modes: Modes, shapes: NDArray[Any]) -> Array:
-    """(m,) greatest translation of any drawn node or named place."""
-    anatomy = modes.system.anatomy
-    assert anatomy is not None
-    nodes = np.asarray(anatomy.wireframe.motion @ shapes)
-    drawn = _amplitude(nodes.reshape(len(nodes) // 3, 3, shapes.shape[1]))
-    named = [_amplitude(_motion(place, shapes)[:3])[np.newaxis] for place in anatomy.places.values()]
-    greatest: Array = np.concatenate([drawn, *named]).max(axis=0)
-    modal_mass = (shapes.conj() * (modes.system.mass @ shapes)).sum(axis=0).real
-    whole = float(anatomy.rigid_mass[0, 0])
-    return np.maximum(greatest, np.sqrt(modal_mass / whole)) if whole > 0 else greatest
-
-
 def _greatest_rotation(modes: Modes, shapes: NDArray[Any]) -> Array:
     """(m,) greatest rotation of any named place, and no less than greatest translation over extent."""
     anatomy = modes.system.anatomy
     assert anatomy is not None
     places = anatomy.places.values()
-    rotation: Array = np.max([_amplitude(_motion(place, shapes)[3:]) for place in places], axis=0)
+    rotation: Array = np.max([amplitude(_motion(place, shapes)[3:]) for place in places], axis=0)
     positions = np.vstack([anatomy.wireframe.nodes_m, *(place.position_m for place in places)])
     extent = float(np.linalg.norm(np.ptp(positions, axis=0)))
     if not extent:
         return rotation
-    return np.maximum(rotation, _greatest_translation(modes, shapes) / extent)
+    return np.maximum(rotation, greatest_translation(modes.system, shapes) / extent)
 
 
 def _share(part: Array, whole: Array) -> Array:
