@@ -65,6 +65,7 @@ _TABLES = {
     "severity": "[severity]",
     "matrices": "[matrices]",
 }
+_SPREAD = "#/$defs/Spread"
 _INTRODUCTION = """# The study file
 
 Results support, and do not replace, review by a licensed engineer under the local code.
@@ -85,6 +86,25 @@ A *matrix* is a file name (`"mass.mtx"`, Matrix Market, or `"mass.npz"`, one arr
 without pickles), rows (`[[2, 0], [0, 1]]`), or a table that also names the unit of the numbers.
 """
 
+_TOLERANCES = """## Tolerances
+
+Any quantity may carry a tolerance, which `vib scatter` draws from; every other command uses the value alone.
+In short as text: `"2 kN/mm +- 20 %"`, `"900 mm ± 2 mm"` (either way, and every value within is as likely as
+another). A percentage is a share of the value. In full as a table: `{value = "2 kN/mm", tolerance = "20 %",
+distribution = "normal", group = "mounts"}`, `{from = "1.5 kN/mm", to = "2.5 kN/mm"}`, `{value = "2 kN/mm",
+standard_deviation = "10 %", distribution = "lognormal"}`.
+
+| distribution | what the tolerance t says |
+|---|---|
+| `"uniform"` | all values lie between value - t and value + t, each as likely (JCGM 100:2008, 4.3.7) |
+| `"triangular"` | all values lie between value - t and value + t, most of them near value |
+| `"normal"` | 95 % of the values lie between value - t and value + t: t is 1.96 standard deviations |
+| `"lognormal"` | the value is the median; 95 % lie between value / (1 + t/value) and value + t |
+
+Entries of a table that stands for several springs or runs vary together; so do quantities of one `group`,
+wholly or, with a `correlation` below 1, in part (normal correlation of their normal scores).
+"""
+
 
 def study_file_page() -> str:
     """The page of every key, unit and default."""
@@ -96,6 +116,7 @@ def study_file_page() -> str:
         "## At the top of the file\n\n" + _rows_of("Study", schema, skip=set(_TABLES) | {"units"}),
     ]
     parts.append(_units_part())
+    parts.append(_TOLERANCES + "\n" + _rows_of("Spread", schema["$defs"]["Spread"]))
     for key, heading in _TABLES.items():
         entry = schema["properties"][key]
         named = _reference(entry)
@@ -150,13 +171,16 @@ def _value(entry: dict[str, Any]) -> str:
     if "$ref" in entry:
         return "a table"
     if "anyOf" in entry:
-        options = [_value(option) for option in entry["anyOf"] if option.get("type") != "null"]
+        written = [option for option in entry["anyOf"] if option.get("$ref") != _SPREAD]
+        options = [_value(option) for option in written if option.get("type") != "null"]
         return " or ".join(dict.fromkeys(options))
     if "prefixItems" in entry:
         items = [_value(item) for item in entry["prefixItems"]]
         return f"a list of {len(items)}: {', '.join(dict.fromkeys(items))}"
     if entry.get("type") == "array":
         return f"a list: {_value(entry.get('items', {}))}"
+    if isinstance(entry.get("type"), list):
+        return "text with a unit, or a number"
     return {"string": "text", "number": "a number", "boolean": "true or false"}.get(
         entry.get("type", ""), "a value"
     )
@@ -180,7 +204,7 @@ def _references(entry: object) -> Iterator[str]:
 
 
 def _parts_of(table: dict[str, Any]) -> list[str]:
-    return list(dict.fromkeys(_references(table["properties"])))
+    return [name for name in dict.fromkeys(_references(table["properties"])) if name != "Spread"]
 
 
 def _sub_part(key: str, name: str, table: dict[str, Any]) -> str:

@@ -4,13 +4,14 @@ from __future__ import annotations
 
 from typing import Annotated, Any, Literal
 
-from pydantic import BeforeValidator, Field, ValidationInfo, field_validator, model_validator
+from pydantic import BeforeValidator, Field, ValidationInfo, WithJsonSchema, field_validator, model_validator
 
 from vib.study.geometry import Table
 from vib.study.machine import Pulse, is_rotation
 from vib.study.quantities import Along, Name, Names, Quantity, positive, read_quantity
 
-_Size = str | float
+# a quantity whose kind depends on the direction (a force or a moment, ...): read where both are known
+_Size = Annotated[Any, WithJsonSchema({"type": ["string", "number"]})]
 _LEAST_LINES, _MOST_LINES = 2, 100_000
 
 

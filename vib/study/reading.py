@@ -14,6 +14,8 @@ from vib.study.lines import Path, find_line, line_numbers
 from vib.study.matrices import load_matrices
 from vib.study.names import Finding, check_names, did_you_mean
 from vib.study.schema import Study, Units
+from vib.study.tolerances import Tolerance, check_tolerances, mark
+from vib.study.varying import Source
 from vib.units import KINDS
 
 _LARGEST_FILE = 50 * 2**20
@@ -51,14 +53,18 @@ def read(path: str | FilePath) -> Study:
     lines = line_numbers(text)
     findings = list(check_names(raw))
     study = None
+    tolerances: dict[str, Tolerance] = {}
+    marked = mark(_with_names(raw))
     try:
         units = _units(raw)
-        study = Study.model_validate(_with_names(raw), context={"units": units})
+        study = Study.model_validate(marked, context={"units": units, "tolerances": tolerances})
     except ValidationError as error:
         findings += [_finding(detail) for detail in error.errors(include_url=False)]
+    findings += check_tolerances(tolerances)
     if study is None or findings:
         raise StudyError(str(path), _faults(findings, lines))
     study._file = file
+    study._source = Source(marked, units, tolerances)
     if study.mesh is not None and not (file.parent / study.mesh.file).is_file():
         missing = f'there is no file "{study.mesh.file}" beside the study'
         raise StudyError(str(path), _faults([(("mesh", "file"), missing)], lines))

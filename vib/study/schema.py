@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from pathlib import Path
 from typing import TYPE_CHECKING, Annotated, Any, Literal
 
@@ -19,6 +20,7 @@ from vib.units import KINDS, UnitSystem, factor
 if TYPE_CHECKING:
     from vib.study.matrices import LoadedMatrices
     from vib.study.records import Record
+    from vib.study.tolerances import Tolerance
     from vib.system import System
 
 
@@ -91,6 +93,7 @@ class Study(Table):
     _file: Path | None = PrivateAttr(None)
     _loaded: Any = PrivateAttr(None)
     _records: Any = PrivateAttr(None)
+    _source: Any = PrivateAttr(None)
 
     @field_validator("accuracy")
     @classmethod
@@ -146,6 +149,36 @@ class Study(Table):
     def records(self) -> dict[str, Record]:
         """The records of loads and of the moving ground, SI, by entry such as ``"loads[0]"``."""
         return dict(self._records or {})
+
+    @property
+    def tolerances(self) -> dict[str, Tolerance]:
+        """The tolerances that the file states, by entry such as ``"springs[0].stiffness.x"``."""
+        return dict(self._source.tolerances) if self._source is not None else {}
+
+    def varied(self, values: Mapping[str, float]) -> Study:
+        """The same study with SI values in the place of entries, checked as if they stood in the file.
+
+        Parameters
+        ----------
+        values
+            By entry such as ``"springs[0].stiffness.x"``; frequencies and speeds in cycles per second.
+
+        Raises
+        ------
+        StudyError
+            There is no such entry, it is no quantity, or a value is none that it may have.
+        ModelError
+            The study was not read from a file.
+        """
+        from vib.study.varying import vary
+
+        return vary(self, values)[0]
+
+    def kind_of(self, entry: str, value: float = 1.0) -> str:
+        """The kind of quantity (see `vib.units.KINDS`) that an entry holds; raises as `varied` does."""
+        from vib.study.varying import vary
+
+        return vary(self, {entry: value})[1][entry]
 
     def system(self, *, up_to: str | float | None = None) -> System:
         """The second-order system of this study, SI units inside.
