@@ -257,7 +257,7 @@ def _size(given: object, spread: Spread, nominal: float, kind: str, unit: str | 
         if kind == "ratio" and _relative(spread.value) and 100 * share <= 100 * abs(nominal):
             points, part = f"{nominal:g} +- {share:g}", f"{nominal:g} +- {given.strip()}"
             raise ValueError(
-                f'"+- {given.strip()}" can mean percentage points or a share of the value: write the value as '
+                f'"+- {given.strip()}" can mean percentage points or a share of the value: write it as '
                 f"a plain number: {points} for points, {part} for a share"
             )
         if nominal == 0 and share > 0:
