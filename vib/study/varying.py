@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
-from functools import cache
+from functools import cache, cached_property
 from typing import TYPE_CHECKING, Any, get_args
 
 from pydantic import TypeAdapter, ValidationError
@@ -28,6 +28,11 @@ class Source:
     units: Mapping[str, str]
     tolerances: Mapping[str, Tolerance]
 
+    @cached_property
+    def entries(self) -> dict[str, Path]:
+        """The path of every entry, by its name."""
+        return {entry(path): path for path in _leaves(self.raw, ())}
+
 
 def vary(study: Study, values: Mapping[str, float]) -> tuple[Study, dict[str, str]]:
     """The study with SI values in the place of entries, and the kind of each of these entries.
@@ -48,7 +53,7 @@ def vary(study: Study, values: Mapping[str, float]) -> tuple[Study, dict[str, st
     raw: Any = source.raw
     tables: dict[Path, list[str]] = {}
     for name, value in values.items():
-        path = _find(study, source.raw, name)
+        path = _find(study, source, name)
         placed = Exactly(value)
         placed.path = path
         raw = _with(raw, path, placed)
@@ -121,15 +126,15 @@ def _with(raw: Any, path: Path, value: Any) -> Any:
     return table
 
 
-def _find(study: Study, raw: Mapping[str, Any], name: str) -> Path:
+def _find(study: Study, source: Source, name: str) -> Path:
     """The path of an entry that the file has, or that it could have."""
-    known = {entry(path): path for path in _leaves(raw, ())}
+    known = source.entries
     if name in known:
         return known[name]
     path: Path = tuple(
         int(step) if step.isdigit() else step for step in name.replace("[", ".").replace("]", "").split(".")
     )
-    table: Any = raw
+    table: Any = source.raw
     for depth, step in enumerate(path[:-1]):
         inside = step in table if isinstance(table, dict) else isinstance(step, int) and step < len(table)
         if not inside and (depth == 0 or isinstance(table, list) or isinstance(step, int)):
