@@ -197,3 +197,14 @@ def test_the_kind_of_an_entry(tmp_path):
     assert study.kind_of("springs[0].stiffness.x") == "stiffness"
     assert study.kind_of("springs[0].stiffness.rx") == "rotational_stiffness"
     assert study.kind_of("damping.ratio", 0.1) == "ratio"
+
+
+def test_what_follows_a_shaft_follows_it_in_the_varied_study_only(tmp_path):
+    belt = 'speed = "1480 rpm"\n[[excitations]]\nname = "belt"\nshaft = "fan"\nratio = 0.5'
+    study = read(tmp_path, ('speed = "1480 rpm"', belt))
+    varied = study.varied({"excitations[0].speed": 10.0})
+    assert varied.excitations[1].speed_ranges == ((5.0, 5.0),)
+    assert study.excitations[1].speed_ranges == (pytest.approx((1480 / 120, 1480 / 120)),)
+    assert study.varied({"excitations[1].ratio": 2.0}).excitations[1].speed_ranges[0][0] == pytest.approx(
+        2 * 1480 / 60
+    )

@@ -17,7 +17,8 @@ from vib.study.tolerances import Exactly, MarkedTable, Tolerance, entry
 if TYPE_CHECKING:
     from vib.study.schema import Study
 
-_WHOLE = {"mesh", "damping", "impact", "base_motion", "response", "severity", "matrices"}
+# read again as a whole: single tables, and excitations, of which one may follow the speed of another
+_WHOLE = {"mesh", "damping", "impact", "base_motion", "response", "severity", "matrices", "excitations"}
 
 
 @dataclass(frozen=True)
@@ -74,6 +75,7 @@ def vary(study: Study, values: Mapping[str, float]) -> tuple[Study, dict[str, st
         if name not in kinds:
             raise StudyError(_shown(study), [Fault(name, "is no quantity that could vary")])
     varied = study.model_copy(update=changed)
+    varied._one_way()  # type: ignore[operator]  # what holds between tables
     left = {name: tolerance for name, tolerance in source.tolerances.items() if name not in values}
     varied._source = Source(raw, source.units, left)
     return varied, kinds
