@@ -18,6 +18,7 @@ if TYPE_CHECKING:
     from vib.response.ring import Ring
     from vib.response.simulate import simulate, simulate_to
     from vib.screening import Screening, screen
+    from vib.severity import Severity, judge
     from vib.statespace import StateSpace
     from vib.study import Study, read
     from vib.system import System
@@ -30,10 +31,12 @@ __all__ = [
     "Response",
     "Ring",
     "Screening",
+    "Severity",
     "StateSpace",
     "Study",
     "System",
     "VibError",
+    "judge",
     "read",
     "screen",
     "simulate",
@@ -47,10 +50,12 @@ _HOME = {
     "Response": "vib.response.respond",
     "Ring": "vib.response.ring",
     "Screening": "vib.screening",
+    "Severity": "vib.severity",
     "StateSpace": "vib.statespace",
     "Study": "vib.study",
     "System": "vib.system",
     "VibError": "vib.errors",
+    "judge": "vib.severity",
     "read": "vib.study",
     "screen": "vib.screening",
     "simulate": "vib.response.simulate",

@@ -17,6 +17,7 @@ if TYPE_CHECKING:
 Array = NDArray[np.float64]
 Range = tuple[float, float]
 
+STATED = "stated in the study"
 SOURCE = "API 617 / API RP 684, formula from memory"
 NOT_ASKED_BELOW = 2.5  # an amplification factor below this asks for no margin
 _CAP_BELOW, _CAP_ABOVE, _STEP_ABOVE, _SCALE = 0.16, 0.26, 0.10, 0.17
@@ -59,6 +60,11 @@ class Margin:
     seen: bool
 
     @property
+    def stated(self) -> bool:
+        """Whether the margin asked for is the user's own."""
+        return self.source == STATED
+
+    @property
     def met(self) -> bool:
         """Whether the margin is as large as asked for."""
         return self.actual >= self.wanted * (1 - 1e-9)
@@ -91,6 +97,15 @@ def wanted_margin(amplification: float, *, above: bool) -> float:
     grown = 0.0 if amplification == np.inf else 1.0 / (amplification - 1.5)
     bare = _SCALE * (1.0 - grown)
     return min(_CAP_ABOVE, _STEP_ABOVE + bare) if above else min(_CAP_BELOW, bare)
+
+
+def needed_hz(table: Table, main_hz: float) -> float:
+    """How far modes must reach for every margin and the support to be judged, Hz."""
+    return (1.0 + _reach(table)) * main_hz
+
+
+def _reach(table: Table) -> float:
+    return max(_FARTHEST, table.separation_margin or 0.0)
 
 
 @dataclass(frozen=True)
@@ -165,7 +180,6 @@ def judge_margins(
     if modes is None or not running:
         return ()
     peaks = [peak for curve in curves.T for peak in half_power(speed_hz, curve)]
-    reach = max(_FARTHEST, table.separation_margin or 0.0)
     found = []
     for index, eigenvalue in enumerate(modes.eigenvalues):
         ratio = float(modes.damping_ratios[index])
@@ -174,7 +188,7 @@ def judge_margins(
         natural = float(modes.frequencies_hz[index])
         own = [peak for peak in peaks if abs(peak.speed_hz - natural) <= _NEAR * natural]
         margin = _margin(index + 1, natural, ratio, own, running, table)
-        if margin.actual <= reach:
+        if margin.actual <= _reach(table):
             found.append(margin)
     return tuple(found)
 
@@ -192,7 +206,7 @@ def _margin(
         how = f"damping ratio {ratio:.3g}: 1 / (2 ratio)"
     below, actual = _distance(critical, running)
     if table.separation_margin is not None:
-        wanted, source = table.separation_margin, "stated in the study"
+        wanted, source = table.separation_margin, STATED
     else:
         # inside the range the larger of the two is asked for; whichever, it is not met
         wanted, source = wanted_margin(factor, above=below is not True), SOURCE

@@ -110,8 +110,8 @@ class Severity(Table):
     )
     main: Name | None = Field(
         None,
-        description="the excitation whose running speed is the main excitation frequency; default: the "
-        "first one with a running speed",
+        description="the excitation whose running speed is the main excitation frequency; default: the one "
+        "whose speed varies in a run-up",
     )
     limits: tuple[OwnLimits, ...] = Field(
         (), description="limits of the user's own, beside or instead of a standard"
