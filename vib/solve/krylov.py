@@ -101,9 +101,16 @@ class Krylov:
         """Multiply the waiting block by the operator and take what is new in it as the next block."""
         first, last = self.done, self.used
         image = self._pencil.factorise(self._shift).solve(self._waiting)
+        # what the recurrence says of it is subtracted before the first product with the mass
+        expected = self._projected[:last, first:last].copy()
+        corner = self._waiting.T @ image
+        expected[first:] = (corner + corner.T) / 2
+        coupled = np.flatnonzero(expected.any(axis=1))[:1]
+        lead = slice(int(coupled[0]) if coupled.size else last, last)
+        image -= self._basis[:, lead] @ expected[lead]
         self.done = last
         self._waiting = np.zeros((self._pencil.size, 0))
-        self._append(image, known=last, came_from=(first, last))
+        self._append(image, known=last, came_from=(first, last), expected=expected)
 
     def ritz(self) -> Ritz:
         """Approximations from the part of the basis that the operator was applied to."""
@@ -138,19 +145,28 @@ class Krylov:
         self._projected[:count, count : count + wide] = link.T
         self.done, self.used = count, count + wide
 
-    def _append(self, image: Array, known: int, came_from: tuple[int, int] | None = None) -> None:
-        """Orthogonalise ``image`` (n, b) against the basis, append what is new, note the projections."""
+    def _append(
+        self,
+        image: Array,
+        known: int,
+        came_from: tuple[int, int] | None = None,
+        expected: Array | None = None,
+    ) -> None:
+        """Orthogonalise ``image`` (n, b) against the basis, append what is new, note the projections.
+
+        ``expected`` (known, b) are projections that have been subtracted already.
+        """
         mass, basis = self._pencil.mass, self._basis[:, :known]
         weighted = mass @ image
-        before = np.einsum("ij,ij->j", image, weighted)
-        shares = np.zeros((known, image.shape[1]))
-        left = before
+        left = np.einsum("ij,ij->j", image, weighted)
+        shares = np.zeros((known, image.shape[1])) if expected is None else expected
+        before = left + np.einsum("ij,ij->j", shares, shares)
         for again in range(MOST_PASSES):
             share = basis.T @ weighted
             image -= basis @ share
-            shares += share
+            shares = shares + share
             sizes = np.sqrt(np.maximum(left, np.maximum(DEPENDENT**2 * before, TINY)))
-            if again and np.abs(share / sizes).max(initial=0.0) <= SLIGHT:
+            if (again or expected is not None) and np.abs(share / sizes).max(initial=0.0) <= SLIGHT:
                 break  # nothing but round-off was left to subtract: the product with the mass still holds
             weighted = mass @ image
             left = np.einsum("ij,ij->j", image, weighted)

@@ -2,11 +2,13 @@
 
 from __future__ import annotations
 
+from contextlib import ExitStack
+
 import numpy as np
 import scipy.sparse as sparse
 from numpy.typing import NDArray
 
-from vib.solve.backends.choice import factor, upper_triangle
+from vib.solve.backends.choice import factor, one_pool, upper_triangle
 from vib.solve.backends.interface import Array, Factor, Matrix
 from vib.solve.undamped import CANCELLATION, EPS, elastic_ratio, stores_nothing
 
@@ -26,15 +28,18 @@ class Pencil:
         self._pattern = (both.indices, both.indptr)
         self._stiff, self._massive = both.data.real.copy(), both.data.imag.copy()
         self._backend = backend
+        self._threads = ExitStack()
         self._factor: Factor | None = None
         self._row_sums: Array | None = None
         self.shift = np.nan
 
     def __enter__(self) -> Pencil:
+        self._threads.enter_context(one_pool(self.size, self._backend))
         return self
 
     def __exit__(self, *_: object) -> None:
         self.release()
+        self._threads.close()
 
     def release(self) -> None:
         """Give the memory of the factorisation back."""

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import platform
 from collections.abc import Callable, Iterator
+from contextlib import contextmanager
 
 import numpy as np
 import scipy.sparse as sparse
@@ -80,6 +81,24 @@ def factor(
     raise FactorError(" ".join(["The matrix could not be factorised.", *said]))
 
 
+@contextmanager
+def one_pool(size: int, backend: str | None = None) -> Iterator[None]:
+    """Keep OpenBLAS to one thread where PARDISO works: two pools that wait busily take each other's cores."""
+    if not _goes_to_pardiso(size, backend):
+        yield
+        return
+    from threadpoolctl import ThreadpoolController
+
+    with ThreadpoolController().select(internal_api="openblas").limit(limits=1):
+        yield
+
+
+def _goes_to_pardiso(size: int, backend: str | None) -> bool:
+    if backend is None:
+        return size >= WORTH_LOADING and pardiso.installed()
+    return backend == pardiso.Pardiso.backend
+
+
 def upper_triangle(matrix: Matrix) -> sparse.csr_array:
     """The upper triangle, zeros on the diagonal stored as well."""
     upper = sparse.csr_array(sparse.triu(matrix, format="csr"))
@@ -102,9 +121,7 @@ def _attempts(
 ) -> Iterator[Callable[[], Factor]]:
     """Ways to factorise, best first."""
     size = matrix.shape[0]
-    if backend == pardiso.Pardiso.backend or (
-        backend is None and size >= WORTH_LOADING and pardiso.installed()
-    ):
+    if _goes_to_pardiso(size, backend):
         yield lambda: pardiso.Pardiso(matrix, symmetric=symmetric, definite=definite)
         if symmetric and not definite:
             yield lambda: pardiso.Pardiso(matrix, symmetric=True, matching=True)

@@ -179,8 +179,8 @@ class Factor(ABC):
         """Solve for two right-hand sides, refine until they are right; refuse the factor if they stay off."""
         ramp = np.arange(self.size) / self.size
         right = np.stack([np.cos(1e3 * ramp) + 0.5, np.sin(7e5 * ramp**2)], axis=1)
-        counts = np.repeat(np.arange(self.size), np.diff(self._matrix.indptr))
-        sums = np.bincount(counts, weights=np.abs(self._matrix.data), minlength=self.size)
+        sizes = (np.abs(self._matrix.data), self._matrix.indices, self._matrix.indptr)
+        sums = sparse.csr_array(sizes, shape=self._matrix.shape) @ np.ones(self.size)
         largest = sums.max() * (2 if self.symmetric else 1)  # the norm, or half of it, or twice
         solution = self._solve(right)
         self.refinements = 0
