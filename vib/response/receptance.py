@@ -50,33 +50,35 @@ def receptance(system: System, omega: Array, outputs: Array, inputs: Array) -> R
 
     Infinite or NaN where an undamped mode is hit exactly; the caller says what that means.
     """
-    light = split_mass(system.mass).massless if _has_massless(system) else np.zeros((system.size, 0))
+    light = split_mass(system.mass).massless if has_massless(system) else np.zeros((system.size, 0))
     law = system.damping_law.ratio or system.damping_law.bands or system.damping_law.material
     if system.unsymmetric and law:
         return _by_poles(full_model(system), omega, outputs, inputs)  # says why that can't be
     terms = [matrix for matrix in (system.damping, system.gyroscopic) if matrix is not None]
     if any(acts_on(matrix, light) for matrix in terms):
         return _by_poles(full_model(system), omega, outputs, inputs)
-    straight = _symmetric_part(system)
-    undamped, seen = _modes(straight, omega)
+    straight = symmetric_part(system)
+    undamped, seen = known_modes(straight, omega)
     split = None if _diagonal(system, seen) else _localised(system)
     if split is None and not _diagonal(system, seen):
         return _without_low_rank(system, undamped, omega, outputs, inputs)
     return _by_residues(system, seen, split, omega, outputs, inputs, light)
 
 
-def _has_massless(system: System) -> bool:
+def has_massless(system: System) -> bool:
+    """Whether motions without mass are looked for."""
     return system.size <= ALL_MODES or bool((np.asarray(system.mass.diagonal()) == 0).any())
 
 
-def _symmetric_part(system: System) -> System:
+def symmetric_part(system: System) -> System:
+    """What the undamped modes are taken from: without circulatory forces, and then without damping."""
     if not system.unsymmetric:
         return system
     stiffness = (system.stiffness + system.stiffness.T) / 2
     return replace(system, stiffness=stiffness, damping=None, gyroscopic=None, unsymmetric=False)
 
 
-def _modes(system: System, omega: Array) -> tuple[Undamped, ModalDamping]:
+def known_modes(system: System, omega: Array) -> tuple[Undamped, ModalDamping]:
     """All undamped modes of a system of moderate size, else those well beyond the highest line."""
     if system.size <= ALL_MODES:
         undamped = every_mode(system)

@@ -31,7 +31,7 @@ _CHUNK = 6_000_000  # complex numbers at a time
 class Dashpots:
     """A term directions (n, q) (i w linear + constant) directions' of the dynamic stiffness.
 
-    ``linear`` and ``constant`` are (q, q).
+    ``linear`` and ``constant`` are (q, q), or (k, q, q) where they differ from line to line.
     """
 
     directions: Array
@@ -182,10 +182,13 @@ def coupled(
     found = np.empty((omega.size, outputs, inputs), np.complex128)
     bound = np.zeros((omega.size, outputs, inputs))
     step = max(1, _CHUNK // max(1, (outputs + q) * (inputs + q) + len(summed.squares)))
+    linear, constant = (
+        np.broadcast_to(matrix, (omega.size, q, q)) for matrix in (dashpots.linear, dashpots.constant)
+    )
     for first in range(0, omega.size, step):
         piece = slice(first, first + step)
         lines = omega[piece]
-        core = 1j * lines[:, None, None] * dashpots.linear + dashpots.constant
+        core = 1j * lines[:, None, None] * linear[piece] + constant[piece]
         near = np.abs(summed.denominators(lines)) < _NEAR * (lines[:, None] ** 2)
         whole = summed(lines, without=near)
         left = np.zeros((lines.size, outputs, q), np.complex128)
