@@ -5,10 +5,13 @@ from __future__ import annotations
 import math
 from dataclasses import dataclass
 from enum import StrEnum
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 from vib.screening.drive import HARDLY_DRIVEN
 from vib.screening.lines import Line
+
+if TYPE_CHECKING:
+    from vib.severity.consequence import Consequence
 
 # at and above this ratio the response to a force of constant size has no peak (ISO 2041; 1 / sqrt(2))
 NO_PEAK_RATIO = math.sqrt(0.5)
@@ -47,6 +50,9 @@ class Row:
         Running speeds (from, to), rev/s, at which this order would lie too near; None for a fixed frequency.
     note
         What else is to be said, or "".
+    consequence
+        The predicted level where line and mode meet, and its zone; None where the mode is outside the band or
+        no force is stated.
     """
 
     mode: int
@@ -60,6 +66,7 @@ class Row:
     verdict: Verdict
     speeds_to_avoid: tuple[float, float] | None
     note: str
+    consequence: Consequence | None = None
 
     @property
     def counts(self) -> bool:
@@ -94,6 +101,7 @@ class Row:
             "speed_from_rpm": speeds[0] * 60.0 if speeds else None,
             "speed_to_rpm": speeds[1] * 60.0 if speeds else None,
             "note": self.note,
+            "consequence": None if self.consequence is None else self.consequence.to_dict(),
         }
 
 

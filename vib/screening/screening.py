@@ -6,13 +6,16 @@ from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
 
+from vib.screening.consequences import consequence_remarks, consequence_words, weighed
 from vib.screening.drive import HARDLY_DRIVEN, drive
 from vib.screening.judgement import NO_PEAK_RATIO, Row, judge
 from vib.screening.lines import DEFAULT_BAND, Line, excitation_lines
 
 if TYPE_CHECKING:
     from vib.modes import Modes
+    from vib.response.run_up import RunUp
     from vib.study.excitations import Excitation
+    from vib.study.severity import Severity
 
 Range = tuple[float, float]
 
@@ -144,7 +147,14 @@ class Screening:
         }
 
 
-def screen(modes: Modes, excitations: Sequence[Excitation], *, band: float | str | None = None) -> Screening:
+def screen(
+    modes: Modes,
+    excitations: Sequence[Excitation],
+    *,
+    band: float | str | None = None,
+    run_ups: Sequence[RunUp] = (),
+    severity: Severity | None = None,
+) -> Screening:
     """Screen modes against what shakes the machine.
 
     A mode is inside the band of a line where ``abs(f - f_excitation) <= band * f_excitation``; over a range
@@ -161,6 +171,11 @@ def screen(modes: Modes, excitations: Sequence[Excitation], *, band: float | str
     band
         Half width as a share of the excitation frequency, or text such as ``"25 %"``, for excitations that
         have none of their own. Default 20 %: common practice, no source.
+    run_ups
+        Predicted vibration, one run-up for each shaft that turns by itself: each row inside a band then says
+        what the coincidence comes to. They change no verdict: a coincidence counts however harmless it is.
+    severity
+        ``study.severity``, for the zones of these levels.
 
     Returns
     -------
@@ -176,17 +191,22 @@ def screen(modes: Modes, excitations: Sequence[Excitation], *, band: float | str
     lines = excitation_lines(excitations, band=band)
     drives = {excitation.name: drive(modes, excitation) for excitation in excitations}
     oscillating, not_screened = _sorted_out(modes)
-    rows = tuple(
-        judge(
-            index + 1,
-            float(modes.frequencies_hz[index]),
-            float(modes.errors_hz[index]),
-            float(modes.damping_ratios[index]),
-            line,
-            _entry(drives[line.excitation], index),
-        )
-        for index in oscillating
-        for line in lines
+    rows = weighed(
+        tuple(
+            judge(
+                index + 1,
+                float(modes.frequencies_hz[index]),
+                float(modes.errors_hz[index]),
+                float(modes.damping_ratios[index]),
+                line,
+                _entry(drives[line.excitation], index),
+            )
+            for index in oscillating
+            for line in lines
+        ),
+        modes,
+        run_ups,
+        severity,
     )
     needed = max(line.band_to_hz for line in lines)
     reach = modes.complete_below_hz
@@ -196,7 +216,7 @@ def screen(modes: Modes, excitations: Sequence[Excitation], *, band: float | str
         rows=rows,
         lines=lines,
         clear=clear,
-        verdict=_verdict(rows, covered, modes.stable),
+        verdict=_verdict(rows, covered, modes.stable, bool(run_ups)),
         covered_up_to_hz=reach,
         needed_up_to_hz=needed,
         keep_out=tuple(
@@ -205,7 +225,7 @@ def screen(modes: Modes, excitations: Sequence[Excitation], *, band: float | str
         diagrams=tuple(_diagram(excitation, lines) for excitation in excitations),
         not_screened=not_screened,
         stable=modes.stable,
-        remarks=_remarks(excitations, lines, rows, reach, needed, modes),
+        remarks=(*_remarks(excitations, lines, rows, reach, needed, modes), *consequence_remarks(rows)),
     )
 
 
@@ -274,7 +294,7 @@ def _diagram(excitation: Excitation, lines: Sequence[Line]) -> SpeedDiagram:
     )
 
 
-def _verdict(rows: Sequence[Row], covered: bool, stable: bool) -> str:
+def _verdict(rows: Sequence[Row], covered: bool, stable: bool, predicted: bool) -> str:
     counting = [row for row in rows if row.counts]
     numbers = sorted({row.mode for row in counting})
     if len(numbers) == 1:
@@ -290,6 +310,8 @@ def _verdict(rows: Sequence[Row], covered: bool, stable: bool) -> str:
         said = (
             "Not shown to be clear: no mode found lies inside a band, but the modes do not cover every band."
         )
+    if predicted and counting:
+        said = f"{said} {consequence_words(counting)}"
     return said if stable else f"The system is unstable. {said}"
 
 
