@@ -11,6 +11,7 @@ from hypothesis import strategies as st
 
 from tests.solve.lattices import box, lattice
 from vib.errors import AccuracyError
+from vib.progress import listening
 from vib.solve import krylov
 from vib.solve.backends import pardiso
 from vib.solve.backends.choice import BACKENDS
@@ -287,9 +288,10 @@ def test_a_mode_counted_too_few_is_a_contradiction(monkeypatch):
 def test_progress_goes_up_and_time_left_is_told():
     problem = box((9, 9, 9))
     told = []
-    lowest_modes(
-        problem.mass, problem.stiffness, count=12, progress=lambda share, left: told.append((share, left))
-    )
+    with listening(lambda *said: told.append(said)):
+        lowest_modes(problem.mass, problem.stiffness, count=12)
+    assert told[0][0] == f"factorising {problem.mass.shape[0]} equations"
+    told = [(share, left) for work, share, left in told if work == "searching modes"]
     shares = [share for share, _ in told]
     assert len(told) >= 3
     assert shares == sorted(shares)
@@ -309,13 +311,13 @@ def test_interruption_keeps_what_converged_and_frees_the_factor(monkeypatch, bac
 
     monkeypatch.setattr(Factor, "__init__", noted)
 
-    def stop(share, left):
+    def stop(work, share, left):
         steps.append(share)
-        if len(steps) == 8:
+        if len(steps) == 9:  # in the midst of the search
             raise KeyboardInterrupt
 
-    with pytest.raises(AccuracyError, match="Interrupted after") as caught:
-        lowest_modes(problem.mass, problem.stiffness, count=20, backend=backend, progress=stop)
+    with listening(stop), pytest.raises(AccuracyError, match="Interrupted after") as caught:
+        lowest_modes(problem.mass, problem.stiffness, count=20, backend=backend)
     partial = caught.value.partial
     assert isinstance(partial, Undamped)
     assert 0 < len(partial.values) < 20

@@ -8,6 +8,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from vib.errors import ModelError
+from vib.progress import listening
 from vib.structure import sparsity
 from vib.structure.cells import FAMILIES, Properties
 from vib.structure.sparsity import Assembly, Group, assemble, find_pattern
@@ -95,13 +96,14 @@ def test_freedoms_follow_the_cells_that_meet_at_a_node() -> None:
 
 def test_chunks_change_nothing_but_the_last_bits(monkeypatch: pytest.MonkeyPatch) -> None:
     nodes, groups = mixed(3)
-    seen: list[tuple[int, int]] = []
+    seen: list[tuple[str, float | None]] = []
     expected = assemble(nodes, groups)
     monkeypatch.setattr(sparsity, "_CHUNK_VALUES", 1500)
     monkeypatch.setattr(sparsity, "_BLOCKS", 7)
-    found = assemble(nodes, groups, progress=lambda done, total: seen.append((done, total)))
+    with listening(lambda work, share, _: seen.append((work, share))):
+        found = assemble(nodes, groups)
     total = sum(len(group.connectivity) for group in groups)
-    assert seen[-1] == (total, total)
+    assert seen[-1] == ("assembling", 1.0)
     assert len(seen) > total / 4
     for one, other in ((found.stiffness, expected.stiffness), (found.mass, expected.mass)):
         np.testing.assert_array_equal(one.indices, other.indices)

@@ -10,6 +10,7 @@ from dataclasses import dataclass, field
 from pathlib import Path
 from typing import TYPE_CHECKING, Any, TextIO
 
+from vib.cli.progress_line import ProgressLine
 from vib.errors import AccuracyError, MatrixError, ModelError, VibError
 
 if TYPE_CHECKING:
@@ -41,11 +42,13 @@ class Wish:
     out: Path | None = None
     quiet: bool = False
     said: list[str] = field(default_factory=list)
+    line: ProgressLine = field(default_factory=ProgressLine)
 
     def tell(self, text: str) -> None:
         """A line on standard error, once, unless quiet was asked for."""
         if not self.quiet and text not in self.said:
             self.said.append(text)
+            self.line.clear()
             write_line(sys.stderr, text)
 
 
@@ -56,6 +59,7 @@ def deliver(answer: Answer, wish: Wish) -> int:
     from vib.show.terminal import plainer, render
 
     stream = output()
+    wish.line.clear()
     if wish.json:
         shown = to_json(answer.document()) + "\n"
     else:
@@ -179,7 +183,7 @@ def at_work_on(path: Path, wish: Wish) -> Iterator[Study]:
     def tell(message: Warning | str, category: type[Warning], *place: Any, **more: Any) -> None:
         wish.tell(f"remark: a library warns: {' '.join(str(message).split())} ({category.__name__})")
 
-    with warnings.catch_warnings():
+    with warnings.catch_warnings(), wish.line.shown(sys.stderr, quiet=wish.quiet):
         warnings.showwarning = tell
         try:
             study = read(path)

@@ -4,33 +4,36 @@ from __future__ import annotations
 
 import math
 import time
-from collections.abc import Callable
 
+from vib.progress import tell
 from vib.solve.backends.interface import Factor
 from vib.solve.krylov import Krylov
 from vib.solve.pencil import Pencil
 
-Progress = Callable[[float, float], None]
 # Blocks that a search takes beyond twice the wanted modes, before its own pace is known.
 BLOCKS_BEYOND = 7
 
 
 class Clock:
-    """Times factorisations and steps; tells the share done and the seconds left."""
+    """Times factorisations and steps; tells the share done and the seconds left (`vib.progress`).
 
-    def __init__(self, report: Progress | None) -> None:
-        """``report`` receives the share done, 0 to 1, and the seconds left."""
-        self._report = report
+    ``seconds`` is the time spent in factorisations and steps so far.
+    """
+
+    def __init__(self) -> None:
         self._began = time.perf_counter()
+        self.seconds = 0.0
         self._factor = self._step = self._share = 0.0
         self._falls: list[float] = []
         self._steps = 0
 
     def time_factor(self, pencil: Pencil, shift: float) -> Factor:
         """Factorise K - shift M."""
+        tell(f"factorising {pencil.size} equations", self._share or None)
         start = time.perf_counter()
         factor = pencil.factorise(shift)
         self._factor = time.perf_counter() - start
+        self.seconds += self._factor
         return factor
 
     def time_step(self, krylov: Krylov) -> None:
@@ -38,6 +41,7 @@ class Clock:
         start = time.perf_counter()
         krylov.step()
         self._step = time.perf_counter() - start
+        self.seconds += self._step
         self._steps += 1
 
     def tell(self, slowest: float | None, blocks: float) -> None:
@@ -51,5 +55,4 @@ class Clock:
         seconds = left * self._step + self._factor
         past = time.perf_counter() - self._began
         self._share = max(self._share, past / (past + seconds))
-        if self._report is not None:
-            self._report(self._share, seconds)
+        tell("searching modes", self._share, seconds)

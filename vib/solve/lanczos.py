@@ -8,6 +8,8 @@ directions until the numbers agree.
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 import scipy.linalg
 from numpy.typing import NDArray
@@ -15,7 +17,7 @@ from numpy.typing import NDArray
 from vib.errors import AccuracyError
 from vib.solve.backends.interface import Matrix
 from vib.solve.bounds import About, Found, theta_bounds
-from vib.solve.clock import Clock, Progress
+from vib.solve.clock import Clock
 from vib.solve.krylov import Ritz
 from vib.solve.pencil import Pencil
 from vib.solve.shift import Start
@@ -42,7 +44,6 @@ def lowest_modes(
     backend: str | None = None,
     block: int = BLOCK,
     basis_bytes: float = BASIS_BYTES,
-    progress: Progress | None = None,
 ) -> Undamped:
     """The lowest modes of stiffness x = value mass x, with all multiplicities, proved by an inertia count.
 
@@ -64,8 +65,6 @@ def lowest_modes(
         Columns solved for at a time.
     basis_bytes
         Most memory for the basis; it is restarted when full.
-    progress
-        Called after each step with the share of the work done and an estimate of the seconds left.
 
     Raises
     ------
@@ -76,9 +75,9 @@ def lowest_modes(
     if count is None and below is None:
         raise ValueError("lowest_modes: give count, below or both.")
     with Pencil(mass, stiffness, backend) as pencil:
-        search = _Search(pencil, Start(block, basis_bytes), Clock(progress), free=free, certify=certify)
+        search = _Search(pencil, Start(block, basis_bytes), Clock(), free=free, certify=certify)
         try:
-            return search.run(count, below)
+            return replace(search.run(count, below), seconds=search.clock.seconds)
         except KeyboardInterrupt:
             found = search.partial()
             done = 0 if found is None else len(found.values)

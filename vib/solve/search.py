@@ -11,6 +11,7 @@ import scipy.sparse as sparse
 
 from vib.errors import AccuracyError, MatrixError
 from vib.massless import condense, dense, split_mass
+from vib.solve.backends.choice import extra_would_save
 from vib.solve.backward import backward_errors
 from vib.solve.damped import Damped, proportional_modes
 from vib.solve.damping import ModalDamping, modal_damping
@@ -160,7 +161,19 @@ def _blocks(problem: _Problem, ask: _Ask) -> Solution | None:
         return None
     found = proportional_modes(damping, np.zeros((problem.system.size, 0)))
     kept = cut(found, ask.number, ask.limit)
-    return Solution(kept, damping, undamped.certified is not None, _law_remark(damping))
+    remarks = (*_law_remark(damping), *_extra_remark(problem.system.size, undamped.seconds))
+    return Solution(kept, damping, undamped.certified is not None, remarks)
+
+
+def _extra_remark(size: int, seconds: float) -> tuple[str, ...]:
+    """What the optional solver would have saved, where that is worth a word."""
+    saved = extra_would_save(size, seconds)
+    if saved is None:
+        return ()
+    return (
+        f"Factorisations and solves took {seconds:.0f} s; the extra `fast` (pip install 'vib[fast]') would "
+        f"save about {saved:.0f} s of them.",
+    )
 
 
 def _thin(system: System) -> bool:

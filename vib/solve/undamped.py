@@ -26,7 +26,7 @@ class Undamped:
     have unit modal mass; ``errors`` (m,) bound the error of each angular frequency, rad/s, which for
     rigid-body modes is what round-off may hide; ``rigid`` counts the rigid-body modes; ``complete`` tells
     that these are all finite ones; ``certified`` is an angular frequency below which none is missing, None
-    if that was not shown.
+    if that was not shown; ``seconds`` is the time spent in factorisations and solves, where it was measured.
     """
 
     values: Array
@@ -35,6 +35,7 @@ class Undamped:
     rigid: int
     complete: bool
     certified: float | None = None
+    seconds: float = 0.0
 
     @property
     def angular(self) -> Array:

@@ -7,7 +7,7 @@ the whole matrix. Beside the matrices only one chunk is held in memory.
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import Any
 
@@ -16,11 +16,11 @@ from numpy.typing import NDArray
 from scipy.sparse import bsr_array, csr_array
 
 from vib.errors import ModelError
+from vib.progress import tell
 from vib.structure.cells.family import Array, Family, Numbers, Properties
 
 Matrix = Any  # scipy.sparse csr_array; scipy has no types
 Ints = NDArray[np.integer[Any]]
-Progress = Callable[[int, int], None]
 
 # doubles in the element matrices of one chunk: about 8 MB, within the shared cache of usual machines
 _CHUNK_VALUES = 1_000_000
@@ -78,7 +78,7 @@ class Assembly:
     pattern: Pattern
 
 
-def assemble(nodes_m: Array, groups: Sequence[Group], progress: Progress | None = None) -> Assembly:
+def assemble(nodes_m: Array, groups: Sequence[Group]) -> Assembly:
     """Stiffness and mass of all cells.
 
     Parameters
@@ -87,8 +87,6 @@ def assemble(nodes_m: Array, groups: Sequence[Group], progress: Progress | None 
         Node coordinates (n, 3), m.
     groups
         The cells; check them with `vib.structure.cells.check_cells` before.
-    progress
-        Called with cells done and cells in all after each chunk.
 
     Raises
     ------
@@ -107,8 +105,7 @@ def assemble(nodes_m: Array, groups: Sequence[Group], progress: Progress | None 
             chunk = slice(start, start + step)
             _add_chunk(pattern, group, chunk, nodes_m, stiffness, mass)
             done += len(group.connectivity[chunk])
-            if progress:
-                progress(done, total)
+            tell("assembling", done / total)
     turn = _transposition(pattern.blocks)
     first = _finished(pattern, stiffness, turn)
     del stiffness

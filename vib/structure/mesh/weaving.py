@@ -19,7 +19,7 @@ from numpy.typing import NDArray
 
 from vib.structure.mesh.model import MeshModel, held_flags
 from vib.structure.rigid import arms
-from vib.structure.sparsity import Pattern, Progress, assemble
+from vib.structure.sparsity import Pattern, assemble
 from vib.study.quantities import COMPONENTS
 from vib.system import Array, Freedom, Matrix
 
@@ -121,7 +121,7 @@ class MeshFreedoms(Sequence[Freedom]):
         return Freedom(f"node {node + 1}", COMPONENTS[row - 3 * int(self._first[node])])
 
 
-def weave(model: MeshModel, points: dict[str, int], frame: Matrix, progress: Progress | None = None) -> Woven:
+def weave(model: MeshModel, points: dict[str, int], frame: Matrix) -> Woven:
     """Assemble the cells and cut what supports hold; join what follows points.
 
     Parameters
@@ -133,7 +133,7 @@ def weave(model: MeshModel, points: dict[str, int], frame: Matrix, progress: Pro
     frame
         (6 k + t, f) `Nodes.transform` of everything that is not mesh.
     """
-    assembled = assemble(model.nodes_m, model.groups, progress)
+    assembled = assemble(model.nodes_m, model.groups)
     pattern = assembled.pattern
     joined, follow = _joined(model, points, frame, pattern)
     own = np.ones(pattern.size, dtype=bool)
