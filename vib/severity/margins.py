@@ -23,7 +23,7 @@ NOT_ASKED_BELOW = 2.5  # an amplification factor below this asks for no margin
 _CAP_BELOW, _CAP_ABOVE, _STEP_ABOVE, _SCALE = 0.16, 0.26, 0.10, 0.17
 _FARTHEST = 0.4  # modes farther from the running speeds than any margin asked for are left out
 _LEAST_POINTS = 5  # of the run-up between the half-power points, for the peak to be trusted
-_NEAR = 0.1  # a peak this near to a natural frequency, as a share of it, is that mode's
+_NEAR = 0.1  # a peak this near to the nearest natural frequency, as a share of it, is that mode's
 
 
 @dataclass(frozen=True)
@@ -179,38 +179,42 @@ def judge_margins(
     """
     if modes is None or not running:
         return ()
-    peaks = [peak for curve in curves.T for peak in half_power(speed_hz, curve)]
-    found = []
-    for index, eigenvalue in enumerate(modes.eigenvalues):
-        ratio = float(modes.damping_ratios[index])
-        if index < modes.rigid_body_count or eigenvalue.imag == 0 or ratio >= np.sqrt(0.5):
-            continue
-        natural = float(modes.frequencies_hz[index])
-        own = [peak for peak in peaks if abs(peak.speed_hz - natural) <= _NEAR * natural]
-        margin = _margin(index + 1, natural, ratio, own, running, table)
-        if margin.actual <= _reach(table):
-            found.append(margin)
-    return tuple(found)
+    oscillating = [
+        index for index, ratio in enumerate(modes.damping_ratios) if _resonates(modes, index, ratio)
+    ]
+    natural = modes.frequencies_hz[oscillating]
+    own: dict[int, list[Peak]] = {}
+    for peak in (peak for curve in curves.T for peak in half_power(speed_hz, curve)):
+        if natural.size:
+            nearest = int(np.argmin(np.abs(natural - peak.speed_hz)))
+            if abs(peak.speed_hz - natural[nearest]) <= _NEAR * natural[nearest]:
+                own.setdefault(oscillating[nearest], []).append(peak)
+    margins = (_margin(modes, index, own.get(index, []), running, table) for index in oscillating)
+    return tuple(margin for margin in margins if margin.actual <= _reach(table))
+
+
+def _resonates(modes: Modes, index: int, ratio: float) -> bool:
+    return index >= modes.rigid_body_count and modes.eigenvalues[index].imag != 0 and ratio < np.sqrt(0.5)
 
 
 def _margin(
-    mode: int, natural: float, ratio: float, peaks: Sequence[Peak], running: Sequence[Range], table: Table
+    modes: Modes, index: int, peaks: Sequence[Peak], running: Sequence[Range], table: Table
 ) -> Margin:
     if peaks:
         peak = max(peaks, key=lambda peak: peak.height)
         critical, factor = peak.speed_hz, peak.amplification
         how = "half-power points of the run-up"
     else:
-        critical = natural
+        critical, ratio = float(modes.frequencies_hz[index]), float(modes.damping_ratios[index])
         factor = 1 / (2 * ratio) if ratio > 0 else np.inf
-        how = f"damping ratio {ratio:.3g}: 1 / (2 ratio)"
+        how = f"damping ratio {ratio:.3g}: 1 / (2 ratio); no peak of its own in the run-up"
     below, actual = _distance(critical, running)
     if table.separation_margin is not None:
         wanted, source = table.separation_margin, STATED
     else:
         # inside the range the larger of the two is asked for; whichever, it is not met
         wanted, source = wanted_margin(factor, above=below is not True), SOURCE
-    return Margin(mode, critical, factor, how, below, actual, wanted, source, bool(peaks))
+    return Margin(index + 1, critical, factor, how, below, actual, wanted, source, bool(peaks))
 
 
 def _distance(critical: float, running: Sequence[Range]) -> tuple[bool | None, float]:
