@@ -14,8 +14,10 @@ if TYPE_CHECKING:
     from vib.modes import Modes
     from vib.response.frequency import FrequencyResponse
     from vib.response.loads import Load
+    from vib.response.over_speeds import run_up
     from vib.response.respond import Response
     from vib.response.ring import Ring
+    from vib.response.run_up import RunUp
     from vib.response.simulate import simulate, simulate_to
     from vib.screening import Screening, screen
     from vib.severity import Severity, judge
@@ -30,6 +32,7 @@ __all__ = [
     "Modes",
     "Response",
     "Ring",
+    "RunUp",
     "Screening",
     "Severity",
     "StateSpace",
@@ -38,6 +41,7 @@ __all__ = [
     "VibError",
     "judge",
     "read",
+    "run_up",
     "screen",
     "simulate",
     "simulate_to",
@@ -49,6 +53,7 @@ _HOME = {
     "Modes": "vib.modes",
     "Response": "vib.response.respond",
     "Ring": "vib.response.ring",
+    "RunUp": "vib.response.run_up",
     "Screening": "vib.screening",
     "Severity": "vib.severity",
     "StateSpace": "vib.statespace",
@@ -57,6 +62,7 @@ _HOME = {
     "VibError": "vib.errors",
     "judge": "vib.severity",
     "read": "vib.study",
+    "run_up": "vib.response.over_speeds",
     "screen": "vib.screening",
     "simulate": "vib.response.simulate",
     "simulate_to": "vib.response.simulate",

@@ -132,7 +132,9 @@ class RunUp:
 
     @property
     def in_service(self) -> NDArray[np.bool_]:
-        """(k,) whether a speed is one at which the machine runs."""
+        """(k,) whether a speed is one at which the machine runs; all where nothing turns."""
+        if not self.service_hz:
+            return np.ones(len(self.speed_hz), dtype=bool)
         found = np.zeros(len(self.speed_hz), dtype=bool)
         for low, high in self.service_hz:
             found |= (self.speed_hz >= low * (1 - 1e-12)) & (self.speed_hz <= high * (1 + 1e-12))

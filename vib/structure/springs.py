@@ -51,7 +51,7 @@ def read_springs(study: Study, points: dict[str, int], faults: list[str]) -> Spr
     pairs, owner, labels, turns, stiffness, dashpot = [], [], [], [], [], []
     pulls: list[float] = []
     for i, spring in enumerate(study.springs):
-        axes = _axes(spring, i, faults)
+        axes = spring_axes(spring, i, faults)
         for a, b in spring.between:
             if "ground" in (a, b):
                 a, b = (b, a) if a == "ground" else (a, b)
@@ -95,7 +95,7 @@ def read_springs(study: Study, points: dict[str, int], faults: list[str]) -> Spr
     )
 
 
-def _axes(spring: Spring, i: int, faults: list[str]) -> Array:
+def spring_axes(spring: Spring, i: int, faults: list[str]) -> Array:
     """The spring's axes as rows; an x axis along a global axis brings the next two in their order."""
     if spring.x_axis is None:
         return np.eye(3)
