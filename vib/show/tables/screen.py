@@ -7,6 +7,7 @@ from typing import TYPE_CHECKING, Any
 from vib.show.blocks import Block, Column, Heading, Sentence, Table, Tone, text_column
 from vib.show.numbers import MISSING, error_bar, joined, significant
 from vib.show.words import CAUTION, caution
+from vib.units import UnitSystem, shown, shown_unit
 
 if TYPE_CHECKING:
     from vib.modes import Modes
@@ -15,10 +16,10 @@ if TYPE_CHECKING:
     from vib.screening.lines import Line
 
 
-def screening_blocks(screening: Screening, title: str) -> list[Block]:
+def screening_blocks(screening: Screening, title: str, units: UnitSystem = "si") -> list[Block]:
     """All that the ``screen`` command shows: the verdict first."""
     blocks: list[Block] = [Heading(title), screening_verdict(screening), line_table(screening)]
-    near = meeting_table(screening)
+    near = meeting_table(screening, units)
     if near is not None:
         blocks.append(near)
     else:
@@ -82,11 +83,15 @@ def line_table(screening: Screening) -> Table:
     return Table("What shakes the machine", columns, tuple(rows), tones=tuple(tones))
 
 
-def meeting_table(screening: Screening) -> Table | None:
-    """The modes inside a band, those that count first; None where there are none."""
+def meeting_table(screening: Screening, units: UnitSystem = "si") -> Table | None:
+    """The modes inside a band, those that count first; None where there are none.
+
+    Where forces are stated the level at which line and mode meet stands beside them, with its zone.
+    """
     inside = sorted((row for row in screening.rows if row.inside), key=lambda row: (not row.counts, row.mode))
     if not inside:
         return None
+    predicted = any(row.consequence is not None for row in inside)
     rows = tuple(
         (
             str(row.mode),
@@ -95,6 +100,7 @@ def meeting_table(screening: Screening) -> Table | None:
             _line_words(row.line),
             _signed_percent(row.separation),
             MISSING if row.drive is None else significant(row.drive, 2),
+            *(_consequence(row, units) if predicted else ()),
             _verdict(row),
         )
         for row in inside
@@ -106,10 +112,23 @@ def meeting_table(screening: Screening) -> Table | None:
         text_column("excitation"),
         Column("off by", "%"),
         Column("drive", "0 to 1"),
+        *((Column("level r.m.s.", shown_unit("velocity", units)), text_column("zone")) if predicted else ()),
         text_column("verdict"),
     )
     tones: tuple[Tone, ...] = tuple("bad" if row.counts else "careful" for row in inside)
-    return Table("Modes inside a band", columns, rows, tones=tones)
+    sources = dict.fromkeys(row.consequence.source for row in inside if row.consequence is not None)
+    named = "; ".join(source for source in sources if source)
+    title = f"Modes inside a band; zones by {named}" if named else "Modes inside a band"
+    return Table(title, columns, rows, tones=tones)
+
+
+def _consequence(row: Row, units: UnitSystem) -> tuple[str, str]:
+    """The level where line and mode meet and its zone; "as it runs" where they don't."""
+    found = row.consequence
+    if found is None:
+        return MISSING, "no force stated"
+    level = significant(shown(found.velocity_rms_m_s, "velocity", units), 3)
+    return level, f"{found.zone or MISSING}{'' if found.meets else ', as it runs'}"
 
 
 def keep_out_table(screening: Screening) -> Table | None:
