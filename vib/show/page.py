@@ -2,19 +2,19 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
 from dataclasses import dataclass
 from datetime import date
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING
 
 import numpy as np
 
-from vib.show.blocks import SYMBOLS, Block, Bullets, Facts, Sentence, Table, unit_label
+from vib.show.blocks import SYMBOLS, Bullets, Facts, Sentence, unit_label
 from vib.show.figures.ringing import ring_pictures
 from vib.show.figures.shapes import shape_picture
 from vib.show.figures.speeds import speed_pictures
 from vib.show.figures.structure import structure_picture
 from vib.show.numbers import joined, significant
+from vib.show.sections import Drawing, Section, drawings
 from vib.show.tables.check import axes_table, facts, part_table, reaction_table, sag_table, support_table
 from vib.show.tables.data import material_table, section_table
 from vib.show.tables.modes import NONE_FOUND, energy_words, frequency_table, mass_table
@@ -34,7 +34,6 @@ if TYPE_CHECKING:
     from vib.modes import Modes
     from vib.response.ring import Ring
     from vib.screening import Screening
-    from vib.show.figures.canvas import Picture
     from vib.speeds import SpeedCurves
     from vib.structure.survey import Survey
     from vib.study import Study
@@ -57,37 +56,6 @@ class Findings:
     units: UnitSystem
     start: str = ""
     curves: tuple[SpeedCurves, ...] = ()
-
-
-@dataclass(frozen=True)
-class Drawing:
-    """A picture on the page, as an SVG element, with a caption."""
-
-    svg: str
-    caption: str = ""
-    small: bool = False
-
-
-@dataclass(frozen=True)
-class Section:
-    """A part of the page under its own heading."""
-
-    title: str
-    name: str
-    items: tuple[Block | Drawing | None, ...]
-
-    @property
-    def shown(self) -> list[Block | Drawing | list[Any]]:
-        """What there is; small drawings in a row, and tables in a row, are one group."""
-        found: list[Any] = []
-        for item in self.items:
-            if isinstance(item, Table) or (isinstance(item, Drawing) and item.small):
-                if not (found and isinstance(found[-1], list) and type(found[-1][0]) is type(item)):
-                    found.append([])
-                found[-1].append(item)
-            elif item is not None:
-                found.append(item)
-        return found
 
 
 def render_page(findings: Findings, created: date | None = None) -> str:
@@ -175,16 +143,12 @@ def sections(findings: Findings) -> list[Section]:
     ]
 
 
-def _drawings(pictures: Sequence[Picture], prefix: str, small: bool = False) -> list[Drawing]:
-    return [Drawing(picture.svg(f"{prefix}-{picture.name}"), small=small) for picture in pictures]
-
-
 def _model(findings: Findings) -> Section:
     study, survey, units = findings.study, findings.survey, findings.units
     drawing: list[Drawing] = []
     if study.matrices is None:
         frames = [(np.array(run.origin_m), np.array([run.x, run.y, run.z])) for run in survey.runs]
-        drawing = _drawings([structure_picture(study, findings.modes.system, frames)], "model")
+        drawing = drawings([structure_picture(study, findings.modes.system, frames)], "model")
     return Section(
         "Model",
         "model",
@@ -261,7 +225,7 @@ def _ring(findings: Findings) -> Section:
         (
             Sentence(f"Start: {findings.start}."),
             ring_stability(ring),
-            *_drawings(ring_pictures(ring, units), "ring"),
+            *drawings(ring_pictures(ring, units), "ring"),
             peak_table(ring, False, units),
             peak_table(ring, True, units),
             fall_table(ring),
@@ -286,7 +250,7 @@ def _screening(findings: Findings) -> Section:
             screening_verdict(screening),
             line_table(screening),
             meeting_table(screening) or Sentence("No mode lies inside a band."),
-            *_drawings(speed_pictures(screening, findings.modes, findings.curves), "speeds"),
+            *drawings(speed_pictures(screening, findings.modes, findings.curves), "speeds"),
             keep_out_table(screening),
             Bullets(screening.remarks) if screening.remarks else None,
         ),
