@@ -147,3 +147,40 @@ def test_the_verdict_does_not_depend_on_units(size, seed, decade):
     stiffness[0, 1] += 1e-9 * np.sqrt(stiffness[0, 0] * stiffness[1, 1])
     with pytest.raises(MatrixError, match="row 1, column 2"):
         System(mass=np.eye(size), stiffness=stiffness)
+
+
+def consistent_rod(pieces):
+    """Consistent mass of a rod of linear pieces, each with its own mass."""
+    weights = np.random.default_rng(3).uniform(0.5, 2.0, pieces)
+    main = np.zeros(pieces + 1)
+    main[:-1] += weights / 3
+    main[1:] += weights / 3
+    return sparse.csr_array(sparse.diags_array([weights / 6, main, weights / 6], offsets=[-1, 0, 1]))
+
+
+def test_a_well_conditioned_mass_is_accepted_without_a_factorisation(monkeypatch):
+    def refuse(*_, **__):
+        raise AssertionError("factorised")
+
+    monkeypatch.setattr("scipy.sparse.linalg.splu", refuse)
+    mass = consistent_rod(3000)
+    System(mass=mass, stiffness=sparse.eye_array(3001, format="csr"))
+
+
+@pytest.mark.parametrize("depth", [0.4, 1e-5])
+def test_a_hidden_indefinite_block_of_a_large_mass_is_found(depth):
+    """Three masses whose couplings are each possible and together are not: lowest eigenvalue -depth."""
+    share = -(1 + depth) / 2
+    mass = consistent_rod(3000).tolil()
+    mass[1500:1503, :] = 0.0
+    mass[:, 1500:1503] = 0.0
+    mass[1500:1503, 1500:1503] = np.full((3, 3), share) + (1 - share) * np.eye(3)
+    with pytest.raises(MatrixError, match=r"mass: indefinite; .* row 150[123], column 150[123]"):
+        System(mass=mass.tocsr(), stiffness=sparse.eye_array(3001, format="csr"))
+
+
+def test_a_large_mass_with_massless_freedoms_is_accepted():
+    mass = consistent_rod(3000).tolil()
+    mass[700:710, :] = 0.0
+    mass[:, 700:710] = 0.0
+    System(mass=mass.tocsr(), stiffness=sparse.eye_array(3001, format="csr"))
