@@ -8,6 +8,8 @@ import numpy as np
 import pytest
 
 import vib
+import vib.response.receptance as receiving
+import vib.response.steady as steadying
 from vib.errors import ModelError
 
 TAU = 2 * np.pi
@@ -131,3 +133,377 @@ def test_a_rotor_on_a_skid_equals_a_dense_solution_by_hand(tmp_path):
             column = run.transmitted.names.index(f"isolators {name} {'xyz'[axis]}")
             force = (k + 1j * TAU * run.speed_hz * c) * moved[:, axis]
             assert np.allclose(run.transmitted.force_n[:, 0, column], force, rtol=1e-7, atol=1e-9)
+
+
+FRAME = """
+title = "Fan on a frame"
+[units]
+length = "mm"
+mass = "kg"
+inertia = "kg m^2"
+[materials.steel]
+youngs_modulus = "210 GPa"
+poissons_ratio = 0.30
+density = "7850 kg/m^3"
+[sections.tube]
+shape = "rectangular hollow"
+width = 80
+height = 120
+thickness = 5
+[points]
+A = [0, 0, 0]
+B = [1500, 0, 0]
+E = [0, 0, 900]
+F = [1500, 0, 900]
+G = [750, 0, 900]
+H = [750, 500, 900]
+[[members]]
+section = "tube"
+material = "steel"
+runs = [["A", "E"], ["B", "F"], ["E", "G", "F"]]
+[[members]]
+name = "arm"
+section = "tube"
+material = "steel"
+runs = [["G", "H"]]
+offset_end = [0, 0, -60]
+releases = { end = ["rx"] }
+[[bodies]]
+name = "fan"
+mass = 120
+centre = [750, 300, 1100]
+inertia = [5, 9, 8]
+carried_by = ["G", "H"]
+[bodies.spin]
+axis = "y"
+shaft = "fan"
+inertia = 6
+[[supports]]
+at = ["A", "B"]
+hold = "all"
+%s
+[damping]
+rayleigh = [["5 Hz", 0.01], ["80 Hz", 0.02]]
+[[excitations]]
+name = "fan"
+speed = ["300 rpm", "3000 rpm"]
+at = "fan"
+unbalance = { amount = "900 g mm" }
+blades = { count = 3, along = "y", amplitude = "30 N" }
+forces = { order = 2, along = "rz", amplitude = "20 N m", phase = "40 deg" }
+"""
+AT_THE_ARM = '[[supports]]\nat = "H"\nhold = ["y", "rx"]\n'
+MOUNTS = """[[springs]]
+name = "mounts"
+between = [["H", "ground"]]
+stiffness = { x = "80 N/mm", z = "200 N/mm", rz = "9 kN m/rad" }
+dashpot = { z = "300 N s/m" }
+x_axis = [0.6, 0.8, 0]
+y_axis = "z"
+"""
+
+
+@pytest.mark.parametrize("extra", ["", AT_THE_ARM, MOUNTS])
+def test_forces_on_the_ground_balance_the_machine(tmp_path, extra):
+    """Newton and Euler: what is put in, less what the masses take, arrives at the ground (about the origin)."""
+    study = study_of(tmp_path, (FRAME % extra).replace("rayleigh =", "# rayleigh ="))
+    speeds = np.array([6.0, 17.3, 40.0])
+    run = vib.run_up(study, speeds_hz=speeds)
+    system = run.system
+    planned = vib.drive.drive(system, study.excitations)
+    places = system.anatomy.places
+    for number, line in enumerate(planned.lines):
+        omega = TAU * run.lines[number].frequency_hz
+        forces = planned.forces(line, speeds)
+        for k in range(len(speeds)):
+            matrix = dynamic(system, speeds[k], omega[k])
+            moved = np.linalg.solve(matrix, planned.directions @ forces[k])
+            # spin brings a moment of its own: Ip W (v x a), taken from the structure by the gyroscopic matrix
+            inertia = -(omega[k] ** 2) * (system.anatomy.carried.T @ moved)
+            turning = places["fan"].motion[3:] @ moved * 1j * omega[k]
+            inertia[3:] += -6.0 * TAU * speeds[k] * skew([0, 1, 0]) @ turning
+            applied = sum(
+                wrench(np.real(aim.weights), places[aim.place].position_m) * force
+                for aim, force in zip(planned.inputs, forces[k], strict=True)
+            )
+            arrived = np.zeros(6, complex)
+            for column, (owner, component) in enumerate(
+                zip(run.transmitted.owners, run.transmitted.components, strict=True)
+            ):
+                weights = np.eye(6)[["x", "y", "z", "rx", "ry", "rz"].index(component)]
+                at = places[owner.split()[-1]].position_m
+                arrived += wrench(weights, at) * run.transmitted.force_n[k, number, column]
+            scale = np.abs(applied).max() + np.abs(inertia).max()
+            assert np.abs(arrived - (applied - inertia)).max() < 1e-8 * scale
+
+
+def wrench(weights, at):
+    """Force, and moment about the origin, of a force and a moment at a place."""
+    return np.concatenate([weights[:3], weights[3:] + np.cross(at, weights[:3])])
+
+
+def dynamic(system, speed, omega):
+    """The dynamic stiffness with the gyroscopic matrix turned to another speed, dense."""
+    turning = sum(
+        (TAU * (speed - row.speed_hz) * row.gyroscopic.toarray() for row in system.rotations),
+        np.zeros((system.size, system.size)),
+    )
+    linear = turning
+    for matrix in (system.damping, system.gyroscopic):
+        if matrix is not None:
+            linear = linear + matrix.toarray()
+    return system.stiffness.toarray() - omega**2 * system.mass.toarray() + 1j * omega * linear
+
+
+def with_mounts(tmp_path, text=FRAME % MOUNTS):
+    return study_of(tmp_path, text)
+
+
+def test_both_ways_of_solving_agree(tmp_path, monkeypatch):
+    speeds = np.linspace(5.0, 50.0, 7)
+    study = with_mounts(tmp_path)
+    found = []
+    for solved in (0, 10_000):
+        monkeypatch.setattr(steadying, "SOLVED", solved)
+        found.append(vib.run_up(study, speeds_hz=speeds))
+    first, second = found
+    assert "residues of all" in first.method and "solved at every point" in second.method
+    top = np.abs(second.displacement_m).max(axis=0) + 1e-30
+    assert (np.abs(first.displacement_m - second.displacement_m) / top).max() < 1e-8
+    forces = np.abs(second.transmitted.force_n).max(axis=(0, 2))[:, None]
+    assert (np.abs(first.transmitted.force_n - second.transmitted.force_n) / forces).max() < 1e-7
+
+
+def test_a_reduced_model_keeps_within_its_bound(tmp_path, monkeypatch):
+    """The lowest modes with static corrections, against every mode."""
+    speeds = np.linspace(5.0, 50.0, 7)
+    study = with_mounts(tmp_path)
+    whole = vib.run_up(study, speeds_hz=speeds)
+    monkeypatch.setattr(steadying, "SOLVED", 0)
+    monkeypatch.setattr(receiving, "ALL_MODES", 30)
+    less = vib.run_up(study, speeds_hz=speeds)
+    assert "static correction" in less.method and "at most" in less.errors[-1]
+    top = np.abs(whole.displacement_m).max(axis=(0, 2))[:, None]
+    off = np.abs(less.displacement_m - whole.displacement_m)
+    assert (off <= less.error_m + 1e-9 * top).all()
+    assert (off / top).max() < 1e-5
+
+
+def test_supports_carry_what_very_stiff_springs_carry(tmp_path):
+    speeds = np.array([6.0, 17.3, 40.0])
+    k = '"1e13 N/m"'
+    turn = '"1e13 N m/rad"'
+    stiff = f"""[[springs]]
+name = "stand"
+between = [["A", "ground"], ["B", "ground"]]
+stiffness = {{ x = {k}, y = {k}, z = {k}, rx = {turn}, ry = {turn}, rz = {turn} }}
+"""
+    text = (FRAME % (MOUNTS + stiff)).replace('[[supports]]\nat = ["A", "B"]\nhold = "all"\n', "")
+    text = text.replace("rayleigh =", "# rayleigh =")
+    sprung = vib.run_up(with_mounts(tmp_path, text), speeds_hz=speeds)
+    held = vib.run_up(
+        with_mounts(tmp_path, (FRAME % MOUNTS).replace("rayleigh =", "# rayleigh =")), speeds_hz=speeds
+    )
+    for name in ("A x", "A z", "A ry", "B y", "B rz"):
+        ours = held.transmitted.force_n[:, :, held.transmitted.names.index(name)]
+        theirs = sprung.transmitted.force_n[:, :, sprung.transmitted.names.index(f"stand {name}")]
+        # what the springs still give falls with their stiffness
+        assert np.abs(ours - theirs).max() < 5e-5 * np.abs(theirs).max()
+
+
+def test_a_shaken_ground_equals_the_transmissibility(tmp_path):
+    text = FRAME % MOUNTS
+    text = (
+        text[: text.index("unbalance = {")]
+        + 'ground = { along = "z", frequency = "13 Hz", velocity = "2 mm/s" }\n'
+    )
+    text = text.replace("rayleigh =", "# rayleigh =")  # damping by mass would pull at the fixed stars
+    study = with_mounts(tmp_path, text.replace('[bodies.spin]\naxis = "y"\nshaft = "fan"\ninertia = 6\n', ""))
+    run = vib.run_up(study, speeds_hz=[20.0], watch=[("fan", "z"), ("fan", "ry")])
+    ride = study.system().frequency_response(
+        lines_hz=[13.0], ground=["z"], outputs=[("fan", "z"), ("fan", "ry")]
+    )
+    wanted = ride.receptance[0, :, 0] * 2e-3 / (1j * TAU * 13)
+    assert np.abs(run.displacement_m[0, 0] - wanted).max() < 1e-9 * np.abs(wanted).max()
+    # momentum: what the feet press on the ground is what all masses take, those that are held too
+    anatomy = run.system.anatomy
+    lifted = [name.endswith(" z") for name in run.transmitted.names]
+    ground = 2e-3 / (1j * TAU * 13)
+    matrix = dynamic(run.system, 20.0, TAU * 13)
+    relative = np.linalg.solve(matrix, (TAU * 13) ** 2 * anatomy.carried[:, 2] * ground)
+    momentum = (TAU * 13) ** 2 * (anatomy.carried[:, 2] @ relative + anatomy.rigid_mass[2, 2] * ground)
+    assert abs(run.transmitted.force_n[0, 0, lifted].sum() - momentum) < 1e-9 * abs(momentum)
+
+
+def test_no_peak_is_missed_and_each_is_met(tmp_path):
+    """Lightly damped, against a scan a hundred times finer about each resonance."""
+    text = (
+        (FRAME % MOUNTS.replace("300 N s/m", "3 N s/m"))
+        .replace("0.01]", "0.0004]")
+        .replace("0.02]", "0.001]")
+    )
+    study = with_mounts(tmp_path, text)
+    run = vib.run_up(study)
+    assert len(run.resonances) > 6
+    fine = np.unique(
+        np.concatenate(
+            [row.speed_hz * (1 + row.damping_ratio * np.linspace(-3, 3, 201)) for row in run.resonances]
+        )
+    )
+    fine = fine[(fine >= 5) & (fine <= 50)]
+    scan = vib.run_up(study, speeds_hz=fine, modes=run.system.modes(up_to=150))
+    ours, theirs = run.velocity_rms_m_s.max(axis=0), scan.velocity_rms_m_s.max(axis=0)
+    assert (ours >= theirs * (1 - 2e-3)).all()
+    assert len(run.speed_hz) < 2000
+
+
+def test_gyroscopic_resonances_are_the_critical_speeds(tmp_path):
+    from vib.speeds import speed_curves
+
+    text = SKID.replace("[20, 26, 26]", "[60, 36, 36]")
+    study = study_of(tmp_path, text)
+    run = vib.run_up(study)
+    curves = speed_curves(study.system(), "fan", count=12, top_hz=70)
+    wanted = [row.speed_hz for row in curves.critical if 5 <= row.speed_hz <= 70 and row.damping_ratio < 0.7]
+    found = [row.speed_hz for row in run.resonances]
+    assert len(found) == len(wanted) > 3
+    widths = np.array([row.damping_ratio for row in run.resonances]) * wanted
+    assert (np.abs(np.array(found) - wanted) <= 0.2 * widths).all()
+
+
+def test_lines_of_one_frequency_add_as_vectors_and_others_as_mean_squares(tmp_path):
+    head = SKID[: SKID.index("unbalance =")]
+    speeds = np.array([7.0, 20.0, 33.0])
+    alone = [
+        'unbalance = { amount = "2000 g mm" }\n',
+        'forces = { order = 1, along = "y", amplitude = "90 N", phase = "50 deg" }\n',
+        'blades = { count = 5, along = "z", amplitude = "40 N" }\n',
+    ]
+    runs = [vib.run_up(study_of(tmp_path, head + one), speeds_hz=speeds) for one in alone]
+    whole = vib.run_up(study_of(tmp_path, head + "".join(alone)), speeds_hz=speeds)
+    assert whole.groups == ((0, 1), (2,))
+    first = runs[0].displacement_m[:, 0] + runs[1].displacement_m[:, 0]
+    second = runs[2].displacement_m[:, 0]
+    rms = np.sqrt((np.abs(first) ** 2 + np.abs(second) ** 2) / 2)
+    assert np.allclose(whole.displacement_rms_m, rms, rtol=1e-12)
+    w = TAU * speeds[:, None]
+    assert np.allclose(
+        whole.velocity_rms_m_s, np.sqrt((w * np.abs(first)) ** 2 / 2 + (5 * w * np.abs(second)) ** 2 / 2)
+    )
+    assert np.allclose(whole.displacement_peak_m, np.abs(first) + np.abs(second), rtol=1e-12)
+
+
+def test_a_shaft_that_follows_drives_at_its_own_speed(tmp_path):
+    text = (
+        SKID
+        + """
+[[excitations]]
+name = "motor"
+shaft = "fan"
+ratio = 2.5
+axis = "x"
+at = "skid"
+unbalance = { amount = "500 g mm" }
+"""
+    )
+    study = study_of(tmp_path, text)
+    run = vib.run_up(study, speeds_hz=[10.0])
+    assert [line.frequency_hz[0] for line in run.lines] == [10.0, 25.0]
+    turned = vib.run_up(study, shaft="motor", speeds_hz=[25.0])
+    assert np.allclose(run.displacement_m, turned.displacement_m, rtol=1e-12)
+    assert turned.service_hz == ((12.5, 175.0),)
+
+
+def test_a_machine_that_turns_by_itself_keeps_its_speed(tmp_path):
+    text = (
+        SKID
+        + """
+[[excitations]]
+name = "pump"
+speed = ["1200 rpm", "1500 rpm"]
+axis = "x"
+at = "skid"
+unbalance = { amount = "500 g mm" }
+"""
+    )
+    study = study_of(tmp_path, text)
+    run = vib.run_up(study, speeds_hz=[10.0, 25.0])
+    assert run.lines[1].frequency_hz.tolist() == [25.0, 25.0]
+    assert run.groups == ((0,), (1,))  # equally fast at 25 Hz, yet no vector sum: they drift
+    assert any("pump turns by itself, at 1500 rpm throughout, its fastest" in one for one in run.remarks)
+    slow = vib.run_up(study, speeds_hz=[10.0], held_hz={"pump": 20.0})
+    assert slow.lines[1].frequency_hz.tolist() == [20.0]
+
+
+UNSTABLE = """
+title = "Rotor with internal damping"
+[matrices]
+mass = { rows = [[1, 0], [0, 1]], unit = "kg" }
+stiffness = { rows = [[1e4, 0], [0, 1e4]], unit = "N/m" }
+damping = { rows = [[10, 0], [0, 10]], unit = "N s/m" }
+circulatory = { rows = [[0, 2000], [-2000, 0]], unit = "N/m" }
+speed = "1200 rpm"
+freedoms = ["y", "z"]
+[[excitations]]
+name = "rotor"
+speed = ["300 rpm", "1800 rpm"]
+at = "y"
+unbalance = [{ amount = "100 g mm" }, { at = "z", amount = "100 g mm", phase = "-90 deg" }]
+"""
+
+
+def test_an_unstable_rotor_has_no_level_beyond_the_onset(tmp_path):
+    """Internal damping: onset where circulatory = damping x natural frequency, here 100 n = 10 x 100 rad/s."""
+    run = vib.run_up(study_of(tmp_path, UNSTABLE))
+    assert not run.stable
+    onset = run.speed_hz[~run.stable_at].min()
+    assert onset == pytest.approx(10.0, abs=0.2)
+    assert run.speed_hz[run.stable_at].max() < onset
+    assert np.isinf(run.velocity_rms_m_s[~run.stable_at]).all()
+    assert np.isfinite(run.velocity_rms_m_s[run.stable_at]).all()
+    assert run.remarks[0].startswith("The system is UNSTABLE at 600")
+    assert run.to_dict()["stable"] is False
+    k = 3
+    w = TAU * run.speed_hz[k]
+    matrix = 1e4 * np.eye(2) - w**2 * np.eye(2) + 10j * w * np.eye(2)
+    matrix = matrix + 100 * run.speed_hz[k] * np.array([[0, 1], [-1, 0]])
+    wanted = np.linalg.solve(matrix, 1e-4 * w**2 * np.array([1, -1j]))
+    assert np.allclose(run.displacement_m[k, 0], wanted, rtol=1e-9)
+
+
+def test_an_undamped_resonance_is_owned_up_to(tmp_path):
+    text = SKID.replace("dashpot = {", "#")
+    run = vib.run_up(study_of(tmp_path, text))
+    assert run.remarks[0].startswith("Undamped modes")
+    assert run.displacement_peak_m.max() > 1.0  # metres: nobody takes that for a level
+
+
+@pytest.mark.parametrize(
+    ("change", "message"),
+    [
+        (('unbalance = { grade = "G 6.3", at_speed = "3000 rpm", phase = "30 deg" }', ""), "states a force"),
+        (('at = "rotor"', 'at = "skid"'), "needs the mass of the rotor"),
+        (
+            (
+                'at = "rotor"\nunbalance = { grade = "G 6.3",',
+                'at = "skid"\nunbalance = { grade = "G 6.3", planes = ["A", "D"], mass = 250,',
+            ),
+            "does not lie between the planes",
+        ),
+    ],
+)
+def test_what_is_refused(tmp_path, change, message):
+    with pytest.raises(ModelError, match=message):
+        vib.run_up(study_of(tmp_path, SKID.replace(*change)))
+
+
+def test_wrong_speeds_and_shafts_are_refused(tmp_path):
+    study = study_of(tmp_path, SKID)
+    for arguments, message in (
+        ({"speeds_hz": [0.0]}, "above zero"),
+        ({"shaft": "motor"}, "no excitation of that name has a running speed"),
+        ({"held_hz": {"fan": 3.0}}, "no other machine"),
+        ({"watch": [("nowhere", "x")]}, "no such place"),
+    ):
+        with pytest.raises(ModelError, match=message):
+            vib.run_up(study, **arguments)

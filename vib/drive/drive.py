@@ -133,8 +133,7 @@ def drive(
     Raises
     ------
     ModelError
-        Nothing drives, an unknown place or shaft, an axis or a mass that is missing, a place that is held in
-        every direction of its force, overlapping blows.
+        Nothing drives, an unknown place or shaft, an axis or a mass that is missing, overlapping blows.
     """
     found = train(excitations, shaft, held_hz)
     gathered = _Gathered(system, found)
@@ -193,8 +192,8 @@ class _Gathered:
                 self.columns.append(column)
             found.append((self.numbers[aim], times(factor, term.strength)))
         if not moves:
-            raise ModelError(
-                f"{excitation.name}: {source}: {term.aim.place} is held along the force, which shakes nothing"
+            self.remarks.append(
+                f"{excitation.name}: {source}: {term.aim.place} is held along the force: nothing shakes by it."
             )
         return found
 

@@ -153,7 +153,7 @@ class _Task:
         displacement = np.zeros((k, len(lines), p), np.complex128)
         forces = np.zeros((k, len(lines), q), np.complex128)
         error = np.zeros((k, len(lines), p))
-        rows = p + 3 * q
+        rows = p + 4 * q
         columns = len(self.drive.inputs) + (0 if self.ride is None else 6)
         step = max(1, _CHUNK // max(1, rows * columns))
         for group in self.drive.groups():
@@ -186,7 +186,7 @@ class _Task:
             error = np.einsum("koi,ki->ko", bound[:, :p], np.abs(acting))
             forces = np.zeros((len(speeds), 0), np.complex128)
             if self.standing is not None:
-                forces = self.standing.forces(omega, moved[:, p:], pushed, shaken)
+                forces = self.standing.forces(speeds, omega, moved[:, p:], pushed, shaken)
         if self.ride is not None:
             moved[:, :p] += shaken @ self.ride.T
         return moved[:, :p], error, forces

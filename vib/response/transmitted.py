@@ -20,6 +20,7 @@ from vib.response.residue_sum import Complex
 from vib.structure.assembly import Assembly, assemble
 from vib.structure.build import PieceDivision
 from vib.structure.rigid import turned
+from vib.structure.spin import cross_matrix
 from vib.structure.springs import spring_axes
 from vib.structure.stacks import add_up
 from vib.study import Study
@@ -34,10 +35,10 @@ _SAME = (
 
 @dataclass(frozen=True, eq=False)
 class Feet:
-    """q forces on the ground: (stiffness + i w damping - w^2 mass) q + direct f + ground u_ground.
+    """q forces: (stiffness + i w (damping + n turning) - w^2 mass) u + direct f - w^2 ground u_g.
 
-    ``stiffness``, ``damping``, ``mass`` (q, n); ``direct`` (q, i) from the inputs of a drive; ``ground``
-    (q, 6) times minus w^2 times the displacement of the ground.
+    ``stiffness``, ``damping``, ``mass`` (q, n); ``turning`` (q, n) per rev/s of the reference shaft, None
+    where nothing that spins is held; ``direct`` (q, i) from the inputs of a drive; ``ground`` (q, 6).
     """
 
     names: tuple[str, ...]
@@ -49,17 +50,23 @@ class Feet:
     mass: Array
     direct: Array
     ground: Array
+    turning: Array | None
     remarks: tuple[str, ...] = ()
 
     def outputs(self) -> Array:
-        """(n, 3 q) directions whose displacements are needed."""
-        return np.vstack([self.stiffness, self.damping, self.mass]).T
+        """(n, 3 q) or (n, 4 q) directions whose displacements are needed."""
+        rows = [self.stiffness, self.damping, self.mass]
+        return np.vstack(rows if self.turning is None else [*rows, self.turning]).T
 
-    def forces(self, omega: Array, moved: Complex, pushed: Complex, shaken: Complex) -> Complex:
-        """(k, q) from displacements (k, 3 q) along `outputs`, inputs (k, i) and the ground (k, 6)."""
-        q = len(self.names)
-        w = omega[:, None]
-        found = moved[:, :q] + 1j * w * moved[:, q : 2 * q] - w**2 * moved[:, 2 * q :]
+    def forces(
+        self, speed_hz: Array, omega: Array, moved: Complex, pushed: Complex, shaken: Complex
+    ) -> Complex:
+        """(k, q) from displacements (k, ...) along `outputs`, inputs (k, i) and the ground (k, 6)."""
+        q, w = len(self.names), omega[:, None]
+        stiff, damped, heavy = (moved[:, number * q : (number + 1) * q] for number in range(3))
+        if self.turning is not None:
+            damped = damped + speed_hz[:, None] * moved[:, 3 * q :]
+        found = stiff + 1j * w * damped - w**2 * heavy
         return np.asarray(found + pushed @ self.direct.T - w**2 * (shaken @ self.ground.T))
 
 
@@ -95,6 +102,7 @@ class _Foot:
     mass: Matrix | None = None
     direct: Array | None = None
     ground: Array | None = None
+    turning: Array | None = None
 
 
 def _springs(system: System, study: Study, beta: float) -> Iterator[_Foot]:
@@ -137,6 +145,8 @@ def _supports(assembly: Assembly, study: Study, drive: Drive, remarks: list[str]
     if study.damping.rayleigh is not None:
         alpha, beta = rayleigh_constants(study.damping.rayleigh)
         damping = dashpot + alpha * mass + beta * stiffness
+    kept, turning = _spins(assembly, drive)
+    damping = damping + kept
     rigid = assembly.rigid_motion()
     unsure = []
     for hub in np.unique(ties.hub[: len(held)][held.any(axis=1)]):
@@ -146,7 +156,7 @@ def _supports(assembly: Assembly, study: Study, drive: Drive, remarks: list[str]
         if not sure:
             unsure += [layout.point_names[p] for p in here]
         rows = (6 * at[:, None] + np.arange(6)).ravel()
-        balance = [sparse.csr_array(gather @ matrix[rows]) for matrix in (stiffness, damping, mass)]
+        balance = [sparse.csr_array(gather @ matrix[rows]) for matrix in (stiffness, damping, mass, turning)]
         moved = [share @ (one @ nodes.transform).toarray() for one in balance]
         carried = share @ (balance[2] @ rigid)
         pushed = share @ (gather @ _pushes((*layout.point_names, *layout.bodies.names), at, drive))
@@ -164,6 +174,7 @@ def _supports(assembly: Assembly, study: Study, drive: Drive, remarks: list[str]
                 mass=-moved[2][piece],
                 direct=pushed[piece],
                 ground=-carried[piece],
+                turning=-moved[3][piece] if moved[3].any() else None,
             )
     if unsure:
         remarks.append(
@@ -183,6 +194,27 @@ def _members(assembly: Assembly, hub: int) -> tuple[NDArray[np.intp], Matrix]:
     follow = np.concatenate([ties.rigid[own], (stretches.attachment()[apart] @ ties.rigid[ends])[mine]])
     at = np.concatenate([own, len(ties.hub) + mine])
     return at, sparse.csr_array(np.swapaxes(follow, 1, 2).transpose(1, 0, 2).reshape(6, -1))
+
+
+def _spins(assembly: Assembly, drive: Drive) -> tuple[Matrix, Matrix]:
+    """Gyroscopic terms of bodies that keep their speed, and per rev/s of the reference shaft."""
+    layout, train = assembly.layout, drive.train
+    size = assembly.nodes.transform.shape[0]
+    kept, turning = sparse.lil_array((size, size)), sparse.lil_array((size, size))
+    for number, body in enumerate(layout.study.bodies):
+        if body.spin is None:
+            continue
+        first = 6 * (len(layout.point_names) + number) + 3
+        unit = slice(first, first + 3)
+        axis = np.array(body.spin.axis)
+        polar = body.spin.inertia or float(axis @ layout.bodies.mass[number][3:, 3:] @ axis)
+        block = -2 * np.pi * polar * body.spin.ratio * cross_matrix(axis)
+        shaft = body.spin.shaft or ""
+        if shaft in train.ratios:
+            turning[unit, unit] = train.ratios[shaft] * block
+        else:
+            kept[unit, unit] = train.held.get(shaft, body.spin.speed or 0.0) * block
+    return sparse.csr_array(kept), sparse.csr_array(turning)
 
 
 def _shares(lever: Array) -> tuple[Array, bool]:
@@ -226,5 +258,6 @@ def _stacked(found: list[_Foot], size: int, inputs: int, remarks: tuple[str, ...
         rows("mass", size),
         rows("direct", inputs),
         rows("ground", 6),
+        rows("turning", size) if any(foot.turning is not None for foot in found) else None,
         remarks,
     )
