@@ -8,6 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from vib.errors import AccuracyError
+from vib.progress import tell
 from vib.solve.damped import Damped
 from vib.solve.search import Solution, solve_system
 from vib.system import Discretisation, Division, System
@@ -87,6 +88,7 @@ def _of_cells(system: System, solution: Solution, cells: Discretisation) -> Conv
     size = np.where(np.arange(number) < damped.rigid, 0.0, np.abs(damped.values))
     finer = cells.finer() if number else None
     remarks: tuple[str, ...] = ()
+    tell("estimating the error of the mesh")
     if finer is None:
         errors, remarks = cells.errors(damped.shapes, size)
         told = "by the stresses of the modes"
