@@ -1,0 +1,158 @@
+"""Samples to frequencies, damping and errors: on the reduced basis, in full where that is not good enough."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from vib.errors import AccuracyError
+from vib.scatter.batch import Batch
+from vib.scatter.family import Builder
+from vib.scatter.model import Model
+from vib.scatter.tracking import first_left_out, follow
+from vib.solve.search import solve_system
+from vib.system import Array, Matrix
+
+BLOCK = 250  # samples whose small matrices are held at once: they stay in the processor's cache
+# weight of the ratio of frequencies beside the likeness of shapes: little, but for eigenvalues that do not
+# swing, of which a pair may have one shape
+CLOSENESS, CLOSENESS_REAL = 0.02, 0.5
+
+
+@dataclass(frozen=True, eq=False)
+class Evaluator:
+    """All that a worker needs to evaluate samples.
+
+    Attributes
+    ----------
+    model, bounds
+        The reduced family, None where every sample is solved in full, and (d, 2) where it holds.
+    nominal
+        (m,) complex eigenvalues whose shapes are followed, the first ``rigid`` zero in every sample.
+    shapes
+        (r, m) their shapes in the basis.
+    mass, pushed
+        (n, n) the nominal mass, in whose norm shapes are compared, and (n, m) its product with them.
+    candidates, everything
+        How many eigenvalues of each sample are looked at, and whether these are all there are.
+    family_error, tolerance
+        Relative to a frequency: error of the interpolated matrices, and what the basis may add.
+    """
+
+    builder: Builder
+    model: Model | None
+    bounds: Array
+    nominal: NDArray[np.complex128]
+    rigid: int
+    shapes: NDArray[np.complex128]
+    mass: Matrix
+    pushed: NDArray[np.complex128]
+    candidates: int
+    everything: bool
+    family_error: float
+    tolerance: float
+
+    def __call__(self, samples: Array) -> Batch:
+        """Frequencies, damping ratios and errors of samples (N, d), SI.
+
+        Raises
+        ------
+        ModelError
+            A sample can't be built, where it has to be solved in full.
+        AccuracyError
+            A full solution can't be trusted.
+        """
+        blocks = [samples[first : first + BLOCK] for first in range(0, len(samples), BLOCK)]
+        return Batch.joined([self._block(block) for block in blocks or [samples]])
+
+    def _block(self, samples: Array) -> Batch:
+        if self.model is None:
+            return self.in_full(samples)
+        slack = 1e-9 * np.ptp(self.bounds, axis=1)
+        inside = (samples >= self.bounds[:, 0] - slack) & (samples <= self.bounds[:, 1] + slack)
+        found, sound = self.reduced(samples)
+        wrong = np.flatnonzero(~(sound & inside.all(axis=1)))
+        if not len(wrong):
+            return found
+        rows = found.arrays()
+        for name, value in self.in_full(samples[wrong]).arrays().items():
+            rows[name][wrong] = value
+        return Batch(**rows)
+
+    def reduced(self, samples: Array) -> tuple[Batch, NDArray[np.bool_]]:
+        """What the reduced basis says about samples (N, d), and for which of them (N,) it is good enough."""
+        if self.model is None:
+            raise AccuracyError("There is no reduced basis for these samples.")
+        found = self.model.candidates(samples, self.candidates)
+        likeness = _likeness(found.shapes, np.linalg.norm(found.shapes, axis=1), self.shapes)
+        size = np.abs(found.values)
+        errors = found.errors + self.family_error * size
+        grows = found.growth > 1e-9 * size.max(axis=1)
+        batch = self._columns(found.values, errors, likeness, ~grows)
+        accurate = batch.errors_hz <= (self.tolerance + self.family_error) * batch.frequencies_hz
+        sound = found.sound & accurate.all(axis=1) & ~grows
+        return batch, np.asarray(sound & np.isfinite(batch.frequencies_hz).all(axis=1))
+
+    def in_full(self, samples: Array) -> Batch:
+        """Full solutions of the rebuilt samples (N, d)."""
+        return Batch.joined([self._one_in_full(sample) for sample in samples])
+
+    def _one_in_full(self, sample: Array) -> Batch:
+        system = self.builder.system(sample)
+        damped = solve_system(system, self.candidates, None).damped
+        if len(damped.values) < len(self.nominal):
+            raise AccuracyError("A sample has fewer modes than the nominal structure.")
+        weight = np.sqrt(np.einsum("ij,ij->j", damped.shapes.conj(), self.mass @ damped.shapes).real)
+        likeness = _likeness(damped.shapes[None], weight[None], self.pushed)
+        stable = damped.growing is None and not (damped.values.real > damped.movement).any()
+        return self._columns(
+            damped.values[None], damped.errors[None], likeness, np.array([stable]), full=True
+        )
+
+    def _columns(
+        self,
+        values: NDArray[np.complex128],
+        errors: Array,
+        likeness: Array,
+        stable: NDArray[np.bool_],
+        *,
+        full: bool = False,
+    ) -> Batch:
+        """Eigenvalues (N, k) put in the columns of the nominal modes, which they are like (N, k, m)."""
+        rigid = self.rigid
+        likeness[:, :rigid], likeness[:, :, :rigid] = 0.0, 0.0
+        likeness[:, np.arange(rigid), np.arange(rigid)] = 1.0
+        size = np.abs(values)
+        tiny = np.finfo(float).tiny
+        apart = np.abs(np.log(np.maximum(size, tiny)[:, :, None] / np.maximum(np.abs(self.nominal), tiny)))
+        swinging = (values.imag > 0)[:, :, None] & (self.nominal.imag > 0)
+        weight = np.where(swinging, CLOSENESS, CLOSENESS_REAL)
+        chosen = follow(likeness - weight * np.minimum(apart, 1.0))
+        left = first_left_out(chosen, values.shape[1])
+        beyond = np.concatenate([size - errors, size[:, -1:] - errors[:, -1:]], axis=1)
+        complete = np.take_along_axis(beyond, left[:, None], axis=1)[:, 0]
+        if self.everything:
+            complete = np.where(left == values.shape[1], np.inf, complete)
+        values, errors, size = (np.take_along_axis(rows, chosen, axis=1) for rows in (values, errors, size))
+        likeness = np.take_along_axis(likeness, chosen[:, None], axis=1)[:, 0]
+        step = np.diff(size, axis=1) + errors[:, 1:] + errors[:, :-1]
+        ratios = -values.real / np.where(size > 0, size, np.nan) + 0.0
+        return Batch(
+            frequencies_hz=size / (2 * np.pi),
+            damping_ratios=ratios,
+            errors_hz=errors / (2 * np.pi),
+            likeness=likeness,
+            swapped=np.asarray((step < 0).any(axis=1)),
+            full=np.full(len(values), full),
+            stable=stable,
+            complete_hz=np.maximum(complete, 0.0) / (2 * np.pi),
+        )
+
+
+def _likeness(shapes: NDArray[np.complex128] | Array, size: Array, nominal: NDArray[np.complex128]) -> Array:
+    """Modal assurance (N, k, m) in the norm of the nominal mass; ``size`` (N, k) the norm of each shape."""
+    product = np.swapaxes(shapes, 1, 2).conj() @ nominal
+    safe = np.where(size > 0, size, 1.0)
+    return np.asarray(np.abs(product) ** 2 / safe[:, :, None] ** 2)
