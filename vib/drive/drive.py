@@ -193,7 +193,7 @@ class _Gathered:
             found.append((self.numbers[aim], times(factor, term.strength)))
         if not moves:
             self.remarks.append(
-                f"{excitation.name}: {source}: {term.aim.place} is held along the force: nothing shakes by it."
+                f"{excitation.name}: {source}: {term.aim.place} is held along the force: it shakes nothing."
             )
         return found
 
