@@ -11,7 +11,13 @@ VibError (also a ValueError)
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
+from functools import wraps
+from typing import ParamSpec, TypeVar
+
+P = ParamSpec("P")
+R = TypeVar("R")
 
 
 class VibError(ValueError):
@@ -72,3 +78,35 @@ class AccuracyError(VibError):
     def __init__(self, message: str, partial: object = None) -> None:
         self.partial = partial
         super().__init__(message)
+
+
+def in_own_words(function: Callable[P, R]) -> Callable[P, R]:
+    """Let no failure of a linear algebra library out of ``function`` but as `AccuracyError`."""
+
+    @wraps(function)
+    def guarded(*arguments: P.args, **named: P.kwargs) -> R:
+        try:
+            return function(*arguments, **named)
+        except VibError:
+            raise
+        except MemoryError as fault:
+            raise AccuracyError(
+                "There is not enough memory for this; ask for fewer modes or a lower highest frequency."
+            ) from fault
+        except Exception as fault:
+            if not _of_linear_algebra(fault):
+                raise
+            raise AccuracyError(
+                "The equations of this system could not be solved: a matrix among them is singular, or stiff "
+                "and soft or heavy and light parts lie too far apart for double precision."
+            ) from fault
+
+    return guarded
+
+
+def _of_linear_algebra(fault: Exception) -> bool:
+    """Whether numpy or scipy gave up on a matrix, told without importing them."""
+    names = {kind.__name__ for kind in type(fault).__mro__}
+    return bool(names & {"LinAlgError", "ArpackError"}) or (
+        isinstance(fault, RuntimeError) and "singular" in str(fault)
+    )

@@ -4,14 +4,14 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass
-from typing import Any
+from typing import Any, cast
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from vib.convergence import Converged, converged_modes
 from vib.descriptions import damping_note, describe, name_rigid
-from vib.errors import ModelError, ShapeError
+from vib.errors import ModelError, ShapeError, in_own_words
 from vib.shares import kinetic_shares, participation, strain_shares
 from vib.system import System
 
@@ -165,6 +165,7 @@ def _unit_columns(shapes: Numbers) -> Numbers:
     return np.asarray(shapes / np.where(length > 0, length, 1.0))
 
 
+@in_own_words
 def find_modes(system: System, *, count: int | None = None, up_to: str | float | None = None) -> Modes:
     """Natural frequencies, damping ratios and mode shapes of a system.
 
@@ -207,9 +208,7 @@ def find_modes(system: System, *, count: int | None = None, up_to: str | float |
     """
     limit_hz = _limit(up_to)
     limit = None if limit_hz is None else 2 * np.pi * limit_hz
-    if count is not None and (isinstance(count, bool) or int(count) != count or count < 1):
-        raise ModelError(f"count: a whole number of modes from 1 is needed, got {count!r}.")
-    found = converged_modes(system, None if count is None else int(count), limit)
+    found = converged_modes(system, _number(count), limit)
     damped, used = found.solution.damped, found.system
     rigid_descriptions: tuple[str, ...] = ()
     shapes = damped.shapes
@@ -250,19 +249,37 @@ def find_modes(system: System, *, count: int | None = None, up_to: str | float |
     )
 
 
-def _limit(up_to: str | float | None) -> float | None:
+def _number(count: object) -> int | None:
+    """How many modes were asked for."""
+    if count is None:
+        return None
+    number = _real(count)
+    if number is None or not np.isfinite(number) or number < 1 or int(number) != number:
+        raise ModelError(f"count: a whole number of modes from 1 is needed, got {count!r}.")
+    return int(number)
+
+
+def _limit(up_to: object) -> float | None:
     """The highest frequency asked for, Hz."""
     if up_to is None:
         return None
     if isinstance(up_to, str):
         from vib.units import parse
 
-        value = parse(up_to, "frequency")
+        value: float | None = parse(up_to, "frequency")
     else:
-        value = float(up_to)
-    if not np.isfinite(value) or value <= 0:
-        raise ModelError(f"up_to: a positive frequency is needed, got {up_to!r}.")
+        value = _real(up_to)
+    if value is None or not np.isfinite(value) or value <= 0:
+        raise ModelError(
+            f'up_to: a positive frequency is needed, a number in Hz or text such as "200 Hz", got {up_to!r}.'
+        )
     return value
+
+
+def _real(value: object) -> float | None:
+    """One real number, or None for anything else."""
+    plain = isinstance(value, (int, float, np.integer, np.floating)) and not isinstance(value, bool)
+    return float(cast("float", value)) if plain else None
 
 
 def _complete(certified: float | None, limit: float | None, limit_hz: float | None) -> float | None:

@@ -17,7 +17,7 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from vib.errors import AccuracyError, ModelError
+from vib.errors import AccuracyError, ModelError, in_own_words
 from vib.solve.damped import Damped
 from vib.solve.search import solve_system
 from vib.system import Array, Rotation, System
@@ -148,6 +148,7 @@ def at_speed(system: System, shaft: str, speed_hz: float) -> System:
     return replace(system, gyroscopic=gyroscopic, stiffness=stiffness, anatomy=anatomy, rotations=others)
 
 
+@in_own_words
 def speed_curves(
     system: System,
     shaft: str,

@@ -14,7 +14,7 @@ from typing import TYPE_CHECKING, Any, Literal
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-from vib.errors import MatrixError, ModelError, ShapeError
+from vib.errors import MatrixError, ModelError, ShapeError, in_own_words
 from vib.massless import EPS, FirstOrder, Matrix, dense, first_order
 
 if TYPE_CHECKING:
@@ -86,24 +86,28 @@ class StateSpace:
                 raise ShapeError(name, expected=(count,), got=(len(names),), hint="One name each.")
             object.__setattr__(self, name, names)
 
+    @in_own_words
     def transition(self, time_s: float) -> Array:
         """The state transition matrix Phi(t) = exp(A t), (s, s); see `vib.response.transition`."""
         from vib.response.transition import transition
 
         return transition(self.A, time_s)
 
+    @in_own_words
     def poles(self) -> NDArray[np.complex128]:
         """The eigenvalues of A, (s,), 1/s, by size."""
         from vib.response.exports import poles
 
         return poles(self)
 
+    @in_own_words
     def zeros(self) -> NDArray[np.complex128]:
         """The transmission zeros, (k,), 1/s, by size; see `vib.response.exports.zeros`."""
         from vib.response.exports import zeros
 
         return zeros(self)
 
+    @in_own_words
     def residues(self) -> tuple[NDArray[np.complex128], NDArray[np.complex128]]:
         """Poles (s,) and residues (s, o, i); see `vib.response.exports.residues`."""
         from vib.response.exports import residues
@@ -122,6 +126,7 @@ class StateSpace:
 
         return save(self, path)
 
+    @in_own_words
     def simulate(self, inputs: Sequence[Any] = (), **arguments: Any) -> Array:
         """The outputs over time under given inputs; see `vib.response.simulate.simulate`."""
         from vib.response.simulate import simulate
@@ -145,6 +150,7 @@ def _array(name: str, value: ArrayLike) -> Array:
     return array
 
 
+@in_own_words
 def state_space(
     system: System,
     inputs: Sequence[Place] | None = None,

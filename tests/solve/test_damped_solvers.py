@@ -141,3 +141,28 @@ def test_limit_in_a_large_damped_system():
     assert found.complete_below_hz is not None
     assert found.complete_below_hz >= 0.03
     assert any("argument principle" in remark for remark in found.remarks)
+
+
+def test_a_rate_of_growth_equal_to_a_frequency_is_another_mode():
+    """Buckled, damped: eigenvalues of the first-order matrix by numpy, an independent route."""
+    stiffness = 2 * np.eye(6) - np.eye(6, k=1) - np.eye(6, k=-1)
+    stiffness[3, 3] -= 4.0
+    for damping in (np.diag([0.3, 0, 0, 0, 0, 0]), 9 * np.eye(6)):
+        modes = System(mass=np.eye(6), damping=damping, stiffness=stiffness).modes()
+        state = np.block([[np.zeros((6, 6)), np.eye(6)], [-stiffness, -damping]])
+        expected = np.linalg.eigvals(state)
+        distance = np.abs(modes.eigenvalues[:, None] - expected).min(axis=1)
+        assert (distance <= 1e-12 * np.abs(modes.eigenvalues)).all()
+        assert not modes.stable
+
+
+def test_a_dashpot_between_two_places_of_a_free_structure():
+    """It resists no rigid-body motion, though its own terms cancel there: two eigenvalues at zero."""
+    size = 1200
+    mass, stiffness = long_chain(free=True, size=size)
+    damping = np.zeros((size, size))
+    damping[500:502, 500:502] = [[3, -3], [-3, 3]]
+    modes = System(mass=mass, damping=sparse.csr_array(damping), stiffness=stiffness).modes(count=6)
+    assert modes.rigid_body_count == 1
+    assert modes.complete_below_hz is not None
+    assert (modes.backward_errors <= 1e-10).all()

@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING, Literal
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-from vib.errors import AccuracyError, ModelError
+from vib.errors import AccuracyError, ModelError, in_own_words
 from vib.response.exponential import EPS, Array
 from vib.response.receptance import Receptance, receptance
 from vib.response.residue_sum import Complex
@@ -101,6 +101,7 @@ class FrequencyResponse:
         return float((worst / np.where(top > 0, top, np.inf)).max(initial=0.0))
 
 
+@in_own_words
 def frequency_response(
     system: System,
     *,

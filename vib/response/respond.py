@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
-from vib.errors import ModelError
+from vib.errors import ModelError, in_own_words
 from vib.response.exponential import Array
 from vib.response.forced import QUANTITIES, Forced, forced_model
 from vib.response.frequency import Channels, channels, ground_axis, ground_motion
@@ -120,6 +120,7 @@ class Response:
     remarks: tuple[str, ...]
 
 
+@in_own_words
 def respond(
     system: System,
     *,

@@ -14,7 +14,7 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 from numpy.typing import ArrayLike
 
-from vib.errors import AccuracyError, ModelError
+from vib.errors import AccuracyError, ModelError, in_own_words
 from vib.response.assemble import QUANTITIES, assemble
 from vib.response.contributions import Contributions, Flags, contributions_of
 from vib.response.decay import FALLS, Fall, Peak, envelope_fall, peak_of, record_fall
@@ -151,6 +151,7 @@ class Ring:
         return ring_as_dict(self)
 
 
+@in_own_words
 def ring(
     system: System,
     *,

@@ -116,11 +116,12 @@ def _turned(undamped: Undamped, damping: Matrix) -> Undamped:
     """Shapes of equal frequency turned so that the damping does not couple them."""
     angular, errors, shapes = undamped.angular, undamped.errors, undamped.shapes.copy()
     values = undamped.values.copy()
+    signed = np.copysign(angular, values)  # what grows at the rate at which another swings is not equal to it
     start = 0
     for stop in range(1, len(angular) + 1):
         if stop < len(angular):
             slack = 4 * (errors[stop] + errors[stop - 1]) + 1e-12 * angular[stop]
-            if angular[stop] - angular[stop - 1] <= slack and (stop != undamped.rigid):
+            if abs(signed[stop] - signed[stop - 1]) <= slack and stop != undamped.rigid:
                 continue
         if stop - start > 1:
             block = shapes[:, start:stop]

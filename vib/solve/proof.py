@@ -55,7 +55,7 @@ def prove(
     if term.stiffness_part * radius > 0.5 or term.mass_part * radius < 0:
         return None  # slow roots of modes beyond those counted might lie within the circle
     bare = _undamped_zeros(term, np.where(np.arange(len(squares)) < undamped.rigid, 0.0, squares), place)
-    still = _zeros_at_rest(problem, undamped.rigid)
+    still = _zeros_at_rest(reduction, problem, undamped.rigid)
     known = np.concatenate([values, values[values.imag > 0].conj(), np.zeros(still)])
 
     def logarithm(s: complex) -> complex:
@@ -70,15 +70,18 @@ def prove(
     return radius
 
 
-def _zeros_at_rest(problem: Projected, rigid: int) -> int:
+def _zeros_at_rest(reduction: Reduction, problem: Projected, rigid: int) -> int:
     """How many eigenvalues at zero the rigid-body motions make: two for each that no velocity force resists.
 
     A force at right angles to all of them (gyroscopic) is answered by a steady offset and does not count.
     """
+    if not rigid:
+        return 0
     drag = problem.linear()[:rigid, :rigid]
-    touch = np.abs(problem.touch)[:rigid]
+    still = np.abs(reduction.space.basis @ problem.found.turn[:, :rigid])
+    touch = still.T @ abs(problem.term.basis)  # what cancels between the ends of a dashpot is not lost here
     terms = float((touch @ np.abs(problem.term.linear) @ touch.T).max(initial=0.0))
-    sizes = scipy.linalg.svdvals(drag) if rigid else np.zeros(0)
+    sizes = scipy.linalg.svdvals(drag)
     return rigid + int((sizes <= 1e-9 * max(terms, np.finfo(float).tiny)).sum())
 
 

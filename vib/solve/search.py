@@ -9,7 +9,7 @@ from typing import NamedTuple
 import numpy as np
 import scipy.sparse as sparse
 
-from vib.errors import AccuracyError, MatrixError
+from vib.errors import AccuracyError, MatrixError, in_own_words
 from vib.massless import condense, dense, split_mass
 from vib.solve.backends.choice import extra_would_save
 from vib.solve.backward import backward_errors
@@ -51,6 +51,7 @@ class Solution:
     backward: Array = field(default_factory=lambda: np.zeros(0))  # backward error of each pair (m,)
 
 
+@in_own_words
 def solve_system(system: System, count: int | None, limit: float | None, *, certify: bool = True) -> Solution:
     """The lowest ``count`` modes, those up to ``limit`` (rad/s), or all finite ones.
 

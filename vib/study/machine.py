@@ -65,6 +65,15 @@ class Body(Table):
             raise ValueError("spin needs the polar moment: give inertia of the body, or spin.inertia")
         if min(ixx, iyy, izz) < 0 or min(minors) < slack * scale or whole < slack * scale**2:
             raise ValueError("inertia and products are not those of a body: a principal moment is negative")
+        if self.spin is not None and self.spin.inertia is not None and scale:
+            x, y, z = self.spin.axis
+            polar = ixx * x * x + iyy * y * y + izz * z * z - 2 * (ixy * x * y + iyz * y * z + izx * z * x)
+            if self.spin.inertia > polar * (1 + 1e-9):
+                raise ValueError(
+                    f"spin.inertia {self.spin.inertia:g} kg m^2 is more than the {polar:.6g} kg m^2 of the "
+                    "whole body about that axis; the inertia of the body includes what spins: raise one or lower "
+                    "the other"
+                )
         return self
 
 

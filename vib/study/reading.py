@@ -47,6 +47,8 @@ def read(path: str | FilePath) -> Study:
         The file cannot be read, or has faults: every fault that could be found, each with its entry
         and line.
     """
+    if not isinstance(path, (str, FilePath)):
+        raise StudyError(repr(path), [Fault("", "the path of a study file is needed, as text or a Path.")])
     file = FilePath(path)
     text = _text_of(file)
     raw = _parse(text, file)
