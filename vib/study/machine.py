@@ -71,8 +71,7 @@ class Body(Table):
             if self.spin.inertia > polar * (1 + 1e-9):
                 raise ValueError(
                     f"spin.inertia {self.spin.inertia:g} kg m^2 is more than the {polar:.6g} kg m^2 of the "
-                    "whole body about that axis; the inertia of the body includes what spins: raise one or lower "
-                    "the other"
+                    "whole body about that axis, which includes what spins: raise one or lower the other"
                 )
         return self
 
