@@ -226,24 +226,36 @@ def respond(
         list[str] | None,
         typer.Option(metavar="PLACE", help='Place to show, such as "motor" or "motor x"; may be repeated.'),
     ] = None,
+    run_up: Annotated[
+        bool,
+        typer.Option("--run-up", help="Steady vibration over the running speeds, by the forces stated."),
+    ] = False,
+    shaft: Annotated[
+        str | None,
+        typer.Option(metavar="NAME", help="With --run-up: the excitation whose speed varies."),
+    ] = None,
     json: AsJson = False,
     out: Out = None,
     quiet: Quiet = False,
     units: Units = None,
     pictures: Pictures = "svg",
 ) -> int:
-    """Forced response: to loads and motions of the ground over time, and over frequency.
+    """Forced response: to loads and motions of the ground over time, over frequency, or over running speeds.
 
     What acts is [[loads]] and [base_motion] of the study, what is recorded [response]; the options stand in
-    for its entries. Exit status 1 if the system is unstable.
+    for its entries. With --run-up it is the forces of [[excitations]], judged by [severity]. Exit status 1 if
+    the system is unstable, or the vibration of a run-up is not acceptable.
 
     \b
     Example:
       vib respond frame.toml --frequencies "1 Hz" "100 Hz" --at motor --along x
+      vib respond frame.toml --run-up
     """
-    from vib.cli.responses import RespondOptions, show_responses
+    from vib.cli.responses import RespondOptions, show_responses, show_run_up
 
-    options = RespondOptions(duration, step, frequencies, lines, at, along, watch or [])
+    options = RespondOptions(duration, step, frequencies, lines, at, along, watch or [], shaft)
+    if run_up:
+        return show_run_up(study, options, units, pictures, Wish(json, out, quiet))
     return show_responses(study, options, units, pictures, Wish(json, out, quiet))
 
 

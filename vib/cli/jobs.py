@@ -13,6 +13,7 @@ if TYPE_CHECKING:
     from vib.cli.starts import StartOptions
     from vib.modes import Modes
     from vib.response.ring import Ring
+    from vib.screening import Screening
     from vib.speeds import SpeedCurves
     from vib.structure.survey import Survey
     from vib.study import Study
@@ -158,11 +159,10 @@ def show_ring(path: Path, options: StartOptions, units: Chosen, pictures: str, w
 def show_screening(path: Path, band: str | None, pictures: str, wish: Wish) -> int:
     """Modes against what shakes the machine."""
     with at_work_on(path, wish) as study:
-        from vib.screening import screen
         from vib.show.tables.screen import screening_blocks, screening_document
 
         modes = screening_modes(study, band)
-        screening = screen(modes, study.excitations, band=band)
+        screening = _screened(study, modes, band)
         curves = _curves(study, modes)
 
         @cache
@@ -175,13 +175,25 @@ def show_screening(path: Path, band: str | None, pictures: str, wish: Wish) -> i
             return screening_files(screening, modes, document(), pictures, curves)
 
         answer = Answer(
-            screening_blocks(screening, study.title),
+            screening_blocks(screening, study.title, study.output_units),
             document,
             [*screening.remarks, *modes.remarks],
             files,
             OBJECTION if screening.objections or not screening.stable else DONE,
         )
         return deliver(answer, wish)
+
+
+def _screened(study: Study, modes: Modes, band: str | None) -> Screening:
+    """The screening; where forces are stated, with the level at each coincidence."""
+    from vib.cli.run_ups import coincidences
+    from vib.screening import screen
+
+    found = screen(modes, study.excitations, band=band)
+    run_ups = coincidences(study, modes, found)
+    if not run_ups:
+        return found
+    return screen(modes, study.excitations, band=band, run_ups=run_ups, severity=study.severity)
 
 
 def screening_modes(study: Study, band: str | None) -> Modes:
@@ -202,6 +214,8 @@ def write_report(
 ) -> int:
     """The page; its path is the result."""
     with at_work_on(path, wish) as study:
+        from vib.cli.responses import RespondOptions, responses_of
+        from vib.cli.run_ups import drives, run_up_of
         from vib.show.documents import to_json
         from vib.show.files import write_files
         from vib.show.page import Findings, render_page
@@ -212,13 +226,21 @@ def write_report(
         ring, start = _report_ring(study, modes, shown)
         screening = None
         if study.excitations:
-            from vib.screening import screen
-
-            screening = screen(modes, study.excitations, band=band)
-        wish.tell("drawing the page")
-        page = render_page(
-            Findings(study, survey, modes, ring, screening, shown, start, _curves(study, modes))
+            screening = _screened(study, modes, band)
+        found = Findings(
+            study,
+            survey,
+            modes,
+            ring,
+            screening,
+            shown,
+            start,
+            _curves(study, modes),
+            run_ups=run_up_of(study) if drives(study) else None,
+            responses=responses_of(study, RespondOptions()),
         )
+        wish.tell("drawing the page")
+        page = render_page(found)
         name = f"{path.stem}.html"
         (written,) = write_files(out if out is not None else Path(), {name: page.encode("utf-8")})
     # a path must not be broken into lines, however long it is

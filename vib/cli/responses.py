@@ -14,6 +14,7 @@ if TYPE_CHECKING:
     from vib.modes import Modes
     from vib.response.frequency import FrequencyResponse
     from vib.response.respond import Response
+    from vib.show.tables.respond import Responses
     from vib.study import Study
     from vib.system import System
 
@@ -31,30 +32,24 @@ class RespondOptions:
     at: str | None = None
     along: str | None = None
     watch: list[str] = field(default_factory=list)
+    shaft: str | None = None
 
 
 def show_responses(path: Path, options: RespondOptions, units: Chosen, pictures: str, wish: Wish) -> int:
     """Response over time where something acts, and over frequency where lines are asked for."""
     with at_work_on(path, wish) as study:
-        from vib.show.tables.respond import Responses, respond_blocks, respond_document
+        from vib.show.tables.respond import respond_blocks, respond_document
 
-        system = study.system()
         shown = units or study.output_units
-        acts = bool(study.loads) or study.base_motion is not None
-        lines = _lines(study, options)
-        if not acts and lines is None:
+        if options.shaft is not None:
+            raise ModelError("--shaft goes with --run-up")
+        found = responses_of(study, options)
+        if found is None:
             raise ModelError(
                 "nothing to respond to: add [[loads]] or [base_motion] to the study, or ask for a frequency "
-                'response with --frequencies "1 Hz" "100 Hz" --at PLACE --along x'
+                'response with --frequencies "1 Hz" "100 Hz" --at PLACE --along x, or for a run-up with '
+                "--run-up"
             )
-        modes = None
-        if lines is not None and study.matrices is None:  # one division of the structure for both
-            modes = system.modes(up_to=float(lines.max()))
-        found = Responses(
-            study.title,
-            _record(study, system, modes, options) if acts else None,
-            None if lines is None else _frequency(study, system, modes, options, lines),
-        )
 
         @cache
         def document() -> dict[str, Any]:
@@ -71,6 +66,54 @@ def show_responses(path: Path, options: RespondOptions, units: Chosen, pictures:
             found.remarks,
             files,
             DONE if found.stable else OBJECTION,
+        )
+        return deliver(answer, wish)
+
+
+def responses_of(study: Study, options: RespondOptions) -> Responses | None:
+    """The response to what acts, and the lines that are asked for; None where there is neither."""
+    from vib.show.tables.respond import Responses
+
+    acts = bool(study.loads) or study.base_motion is not None
+    lines = _lines(study, options)
+    if not acts and lines is None:
+        return None
+    system = study.system()
+    modes = None
+    if lines is not None and study.matrices is None:  # one division of the structure for both
+        modes = system.modes(up_to=float(lines.max()))
+    return Responses(
+        study.title,
+        _record(study, system, modes, options) if acts else None,
+        None if lines is None else _frequency(study, system, modes, options, lines),
+    )
+
+
+def show_run_up(path: Path, options: RespondOptions, units: Chosen, pictures: str, wish: Wish) -> int:
+    """Steady vibration over the running speeds, and how bad it is."""
+    with at_work_on(path, wish) as study:
+        from vib.cli.run_ups import run_up_of
+        from vib.show.tables.run_up import run_up_blocks, run_up_document
+
+        for name in ("duration", "step", "frequencies", "lines", "at", "along"):
+            if getattr(options, name) is not None:
+                raise ModelError(f"--{name} does not go with --run-up; --watch and --shaft do")
+        shown = units or study.output_units
+        found = run_up_of(study, options.shaft, options.watch or None)
+        severity = found.severity
+
+        @cache
+        def document() -> dict[str, Any]:
+            return run_up_document(found)
+
+        def files() -> dict[str, bytes]:
+            from vib.show.run_up_files import run_up_files
+
+            return run_up_files(found, document(), shown, pictures)
+
+        fine = found.run_up.stable and (severity is None or severity.acceptable)
+        answer = Answer(
+            run_up_blocks(found, shown), document, found.remarks, files, DONE if fine else OBJECTION
         )
         return deliver(answer, wish)
 

@@ -25,7 +25,8 @@ def places_to_watch(system: System, study: Study | None, planned: Drive) -> Sequ
     named = []
     if study is not None:
         judged = study.severity.places if study.severity is not None else None
-        named = [*(study.response.watch or ()), *(judged or ())]
+        limited = [name for row in study.severity.limits for name in row.at or ()] if study.severity else []
+        named = [*(study.response.watch or ()), *(judged or ()), *limited]
         if study.severity is not None and judged is None:
             named += [body.name for body in study.bodies]
     if not named:

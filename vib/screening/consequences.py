@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING
 
 from vib.screening.judgement import Row
 from vib.severity.consequence import consequence
-from vib.severity.severity import main_frequency
+from vib.severity.severity import judged_outputs, main_frequency
 from vib.severity.standards import MEANING
 from vib.severity.support import judge_support
 
@@ -28,7 +28,7 @@ def weighed(
     if severity is not None:
         first = run_ups[0]
         running = first.in_service if first.in_service.any() else slice(None)
-        places = [place for (place, _), turn in zip(first.places, first.rotational, strict=True) if not turn]
+        places = [first.places[column][0] for column in judged_outputs(first, severity)]
         main_hz = float(main_frequency(first, severity)[running].max())
         supports = dict(judge_support(modes, severity, list(dict.fromkeys(places)), main_hz))
     return tuple(

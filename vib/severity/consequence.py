@@ -10,7 +10,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from vib.severity.levels import band_levels, strain, zone_numbers
-from vib.severity.severity import axis_of
+from vib.severity.severity import axis_of, judged_outputs
 from vib.severity.standards import ZONES, Zone, boundaries
 from vib.severity.support import Support
 from vib.study.severity import Severity as Table
@@ -133,7 +133,8 @@ def _level(
     lines: tuple[int, ...],
     natural_hz: float,
 ) -> Consequence | None:
-    watched = [column for column, turning in enumerate(run_up.rotational) if not turning]
+    straight = [column for column, turning in enumerate(run_up.rotational) if not turning]
+    watched = straight if table is None else judged_outputs(run_up, table)
     if not watched:
         return None
     frequency = run_up.lines[lines[0]].frequency_hz

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any, Literal
 
@@ -55,8 +55,12 @@ class OwnCheck:
         }
 
 
-def check_own(run_up: RunUp, table: Table, chosen: NDArray[np.bool_]) -> tuple[OwnCheck, ...]:
+def check_own(
+    run_up: RunUp, table: Table, watched: Sequence[int], chosen: NDArray[np.bool_]
+) -> tuple[OwnCheck, ...]:
     """Every limit at every place that it is for, over the speeds (k,) that are chosen.
+
+    A limit that names no places is for the outputs ``watched``.
 
     Raises
     ------
@@ -76,11 +80,13 @@ def check_own(run_up: RunUp, table: Table, chosen: NDArray[np.bool_]) -> tuple[O
                 f"severity.limits: {limits.name}: force: there are no supports in bare matrices; leave it out"
             )
     return tuple(
-        check for limits in table.limits for check in _checks(run_up, limits, np.flatnonzero(chosen))
+        check for limits in table.limits for check in _checks(run_up, limits, watched, np.flatnonzero(chosen))
     )
 
 
-def _checks(run_up: RunUp, limits: OwnLimits, chosen: NDArray[np.intp]) -> Iterator[OwnCheck]:
+def _checks(
+    run_up: RunUp, limits: OwnLimits, watched: Sequence[int], chosen: NDArray[np.intp]
+) -> Iterator[OwnCheck]:
     levels: dict[Owned, Array] = {
         "velocity_rms": run_up.velocity_rms_m_s,
         "displacement_rms": run_up.displacement_rms_m,
@@ -89,7 +95,9 @@ def _checks(run_up: RunUp, limits: OwnLimits, chosen: NDArray[np.intp]) -> Itera
     for quantity, values in levels.items():
         limit = getattr(limits, quantity)
         for column, output in enumerate(run_up.outputs):
-            named = limits.at is None or output in limits.at or run_up.places[column][0] in limits.at
+            named = column in watched
+            if limits.at is not None:
+                named = output in limits.at or run_up.places[column][0] in limits.at
             if limit is not None and named and not run_up.rotational[column]:
                 yield _check(run_up, quantity, output, values[:, column], limit, limits.name, chosen)
     if limits.force is not None and run_up.transmitted is not None:

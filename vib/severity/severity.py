@@ -218,8 +218,8 @@ def judge(run_up: RunUp, table: Table, modes: Modes | None = None) -> Severity:
     Parameters
     ----------
     run_up
-        Its outputs are the places that are judged; angles are left out. Its running speeds are judged, all
-        its speeds where it states none.
+        Its outputs at the places that the table names are judged; without such, those at bodies; angles are
+        left out. Its running speeds are judged, all its speeds where it states none.
     table
         ``study.severity``.
     modes
@@ -231,7 +231,7 @@ def judge(run_up: RunUp, table: Table, modes: Modes | None = None) -> Severity:
     ModelError
         The main excitation that the table names has no force in the run-up, or there is no output to judge.
     """
-    watched = [column for column, turning in enumerate(run_up.rotational) if not turning]
+    watched = judged_outputs(run_up, table)
     if not watched:
         raise ModelError("severity: there is no place to judge; name bearings or feet in severity.places")
     chosen = run_up.in_service if run_up.in_service.any() else np.ones(len(run_up.speed_hz), dtype=bool)
@@ -245,7 +245,7 @@ def judge(run_up: RunUp, table: Table, modes: Modes | None = None) -> Severity:
     speeds = run_up.speed_hz[chosen]
     return Severity(
         rows=rows,
-        own=check_own(run_up, table, chosen),
+        own=check_own(run_up, table, watched, chosen),
         supports=supports,
         margins=judge_margins(modes, table, _running(run_up, main), main, _turning(run_up, main, watched)),
         machine=table.machine_words,
@@ -256,6 +256,17 @@ def judge(run_up: RunUp, table: Table, modes: Modes | None = None) -> Severity:
         stable=bool(run_up.stable_at[chosen].all()),
         remarks=tuple(_remarks(run_up, table, supports, modes, float(main[chosen].max()))),
     )
+
+
+def judged_outputs(run_up: RunUp, table: Table) -> list[int]:
+    """Which outputs are judged: at the places that the table names, else at bodies, else all; no angles."""
+    straight = [column for column, turning in enumerate(run_up.rotational) if not turning]
+    if table.places is not None:
+        named = set(table.places)
+        return [k for k in straight if run_up.outputs[k] in named or run_up.places[k][0] in named]
+    anatomy = run_up.system.anatomy
+    bodies = {part.name for part in anatomy.parts if part.kind == "body"} if anatomy is not None else set()
+    return [k for k in straight if run_up.places[k][0] in bodies] or straight
 
 
 def main_frequency(run_up: RunUp, table: Table) -> Array:

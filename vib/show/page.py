@@ -9,6 +9,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from vib.show.blocks import SYMBOLS, Bullets, Facts, Sentence, unit_label
+from vib.show.driven import response_section, run_up_section, severity_section, severity_words
 from vib.show.figures.ringing import ring_pictures
 from vib.show.figures.shapes import shape_picture
 from vib.show.figures.speeds import speed_pictures
@@ -34,6 +35,8 @@ if TYPE_CHECKING:
     from vib.modes import Modes
     from vib.response.ring import Ring
     from vib.screening import Screening
+    from vib.show.tables.respond import Responses
+    from vib.show.tables.run_up import RunUps
     from vib.speeds import SpeedCurves
     from vib.structure.survey import Survey
     from vib.study import Study
@@ -43,9 +46,10 @@ _MOST_SHAPES = 12
 
 @dataclass(frozen=True, eq=False)
 class Findings:
-    """Everything that goes on the page; ``ring`` and ``screening`` are None where the study asks for none.
+    """Everything that goes on the page; what the study does not ask for is None.
 
-    ``start`` is what set it ringing, in words; ``curves`` the modes against the speed of each shaft.
+    ``start`` is what set it ringing, in words; ``curves`` the modes against the speed of each shaft;
+    ``run_ups`` the run-up and its severity; ``responses`` the response to loads and a moving ground.
     """
 
     study: Study
@@ -56,6 +60,8 @@ class Findings:
     units: UnitSystem
     start: str = ""
     curves: tuple[SpeedCurves, ...] = ()
+    run_ups: RunUps | None = None
+    responses: Responses | None = None
 
 
 def render_page(findings: Findings, created: date | None = None) -> str:
@@ -106,6 +112,7 @@ def verdict(findings: Findings) -> list[Sentence]:
     elif modes.stable or screening.objections:
         told.append(screening_verdict(screening))
         told += [Sentence(words) for words in objection_words(screening)]
+    told += severity_words(findings.run_ups)
     if modes.stable:
         told.append(first)
     told += rigid_motion(modes)
@@ -133,12 +140,16 @@ def _error_words(modes: Modes) -> Sentence:
 
 def sections(findings: Findings) -> list[Section]:
     """The parts of the page in their order."""
+    asked = findings.study.severity is not None
     return [
         _model(findings),
         _assumptions(findings),
         _modes(findings),
         _ring(findings),
         _screening(findings),
+        severity_section(findings.run_ups, asked, findings.units),
+        run_up_section(findings.run_ups, bool(findings.study.excitations), findings.units),
+        response_section(findings.responses, findings.units),
         _evidence(findings),
     ]
 
@@ -249,7 +260,7 @@ def _screening(findings: Findings) -> Section:
         (
             screening_verdict(screening),
             line_table(screening),
-            meeting_table(screening) or Sentence("No mode lies inside a band."),
+            meeting_table(screening, findings.units) or Sentence("No mode lies inside a band."),
             *drawings(speed_pictures(screening, findings.modes, findings.curves), "speeds"),
             keep_out_table(screening),
             Bullets(screening.remarks) if screening.remarks else None,

@@ -20,6 +20,7 @@ _STYLES: dict[Tone, str] = {
     "quiet": "dim",
 }
 _LEAST_WIDTH, _GREATEST_WIDTH = 60, 120
+_UNBOUNDED = 1000
 
 
 def render(blocks: Sequence[Block], *, width: int = 80, colour: bool = False) -> str:
@@ -75,7 +76,10 @@ def _print(console: Console, block: Block) -> None:
     else:
         if block.title:
             console.print(Text(block.title, style="bold"))
-        console.print(_grid(block))
+        grid = _grid(block)
+        # a table that can't be made narrow enough runs over the edge; nothing is cut off
+        least = console.measure(grid, options=console.options.update(max_width=_UNBOUNDED)).minimum
+        console.print(grid, width=max(console.width, least), crop=False, soft_wrap=False)
 
 
 def _hang(console: Console, first: str, text: str) -> None:

@@ -45,19 +45,23 @@ class Responses:
 
 def respond_blocks(found: Responses, units: UnitSystem) -> list[Block]:
     """All that the ``respond`` command shows."""
-    blocks: list[Block] = [Heading(found.title)]
-    if not found.stable:
-        blocks.append(Sentence("The system is UNSTABLE: its motion grows by itself.", "bad"))
-    else:
-        blocks.append(Sentence("The system is stable: what is not driven dies away or stays small.", "good"))
+    blocks: list[Block] = [Heading(found.title), response_stability(found)]
     if found.record is not None:
-        blocks += _record_blocks(found.record, units)
+        blocks += record_blocks(found.record, units)
     if found.lines is not None:
-        blocks += _line_blocks(found.lines)
+        blocks += line_blocks(found.lines)
     return [*blocks, caution()]
 
 
-def _record_blocks(record: Response, units: UnitSystem) -> list[Block]:
+def response_stability(found: Responses) -> Sentence:
+    """Whether what is not driven dies away."""
+    if not found.stable:
+        return Sentence("The system is UNSTABLE: its motion grows by itself.", "bad")
+    return Sentence("The system is stable: what is not driven dies away or stays small.", "good")
+
+
+def record_blocks(record: Response, units: UnitSystem) -> list[Block]:
+    """The response over time: loads, extremes, steady part, shares of the modes, method."""
     blocks: list[Block] = [Sentence("Loads:"), Bullets(record.loads)]
     for turning in (False, True):
         table = _extreme_table(record, turning, units)
@@ -196,7 +200,8 @@ def _largest(lines: FrequencyResponse, output: int, given: int) -> float:
     return float(np.abs(lines.receptance[:, outputs][:, :, inputs]).max())
 
 
-def _line_blocks(lines: FrequencyResponse) -> list[Block]:
+def line_blocks(lines: FrequencyResponse) -> list[Block]:
+    """The response over frequency: its peaks, and the method."""
     kind = "receptance"
     word = "transmissibility" if lines.ground else kind
     rows = []

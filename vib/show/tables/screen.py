@@ -96,10 +96,10 @@ def meeting_table(screening: Screening, units: UnitSystem = "si") -> Table | Non
         (
             str(row.mode),
             significant(row.frequency_hz, 4),
-            error_bar(row.error_hz),
+            *(() if predicted else (error_bar(row.error_hz),)),
             _line_words(row.line),
             _signed_percent(row.separation),
-            MISSING if row.drive is None else significant(row.drive, 2),
+            _drive(row),
             *(_consequence(row, units) if predicted else ()),
             _verdict(row),
         )
@@ -108,27 +108,33 @@ def meeting_table(screening: Screening, units: UnitSystem = "si") -> Table | Non
     columns = (
         Column("mode"),
         Column("natural", "Hz"),
-        Column("error", "± Hz"),
+        *(() if predicted else (Column("error", "± Hz"),)),
         text_column("excitation"),
         Column("off by", "%"),
         Column("drive", "0 to 1"),
-        *((Column("level r.m.s.", shown_unit("velocity", units)), text_column("zone")) if predicted else ()),
+        *((Column("level", shown_unit("velocity", units)), text_column("zone")) if predicted else ()),
         text_column("verdict"),
     )
     tones: tuple[Tone, ...] = tuple("bad" if row.counts else "careful" for row in inside)
     sources = dict.fromkeys(row.consequence.source for row in inside if row.consequence is not None)
     named = "; ".join(source for source in sources if source)
-    title = f"Modes inside a band; zones by {named}" if named else "Modes inside a band"
+    title = "Modes inside a band" + ("; level: r.m.s. velocity where they meet" if predicted else "")
+    title += f"; zones by {named}" if named else ""
     return Table(title, columns, rows, tones=tones)
 
 
 def _consequence(row: Row, units: UnitSystem) -> tuple[str, str]:
-    """The level where line and mode meet and its zone; "as it runs" where they don't."""
+    """The r.m.s. level where line and mode meet, and its zone."""
     found = row.consequence
     if found is None:
-        return MISSING, "no force stated"
-    level = significant(shown(found.velocity_rms_m_s, "velocity", units), 3)
-    return level, f"{found.zone or MISSING}{'' if found.meets else ', as it runs'}"
+        return MISSING, MISSING
+    return significant(shown(found.velocity_rms_m_s, "velocity", units), 3), found.zone or MISSING
+
+
+def _drive(row: Row) -> str:
+    if row.drive is None:
+        return MISSING
+    return significant(row.drive, 2) if row.drive >= 1e-3 else "0"
 
 
 def keep_out_table(screening: Screening) -> Table | None:
@@ -175,7 +181,10 @@ def screening_document(screening: Screening, title: str, modes: Modes) -> dict[s
 
 
 def _verdict(row: Row) -> str:
-    return f"{row.verdict}; {row.note}" if row.note else str(row.verdict)
+    notes = [str(row.verdict), row.note]
+    if row.consequence is not None and not row.consequence.meets:
+        notes.append("level as it runs")
+    return "; ".join(note for note in notes if note)
 
 
 def _line_words(line: Line) -> str:

@@ -17,8 +17,8 @@ ZONE_TONES: dict[str | None, Tone] = {"A": "good", "B": "plain", "C": "careful",
 _OWN_WORDS = {
     "velocity_rms": "velocity, r.m.s.",
     "displacement_rms": "displacement, r.m.s.",
-    "displacement_peak": "displacement, peak (bound)",
-    "force": "force, amplitude (bound)",
+    "displacement_peak": "displacement, at most",
+    "force": "force, at most",
 }
 _POSITIONS = {True: "below", False: "above", None: "within"}
 _METRES_PER = {"si": 1e-6, "us": 25.4e-6}
@@ -76,16 +76,21 @@ def level_table(severity: Severity, units: UnitSystem) -> Table:
     )
     columns = (
         text_column("place"),
-        Column("worst at", "rpm"),
-        Column("velocity r.m.s.", shown_unit("velocity", units)),
+        Column("at", "rpm"),
+        Column("velocity", shown_unit("velocity", units)),
         text_column("zone"),
-        Column("displacement r.m.s.", fine_unit(units)),
+        Column("displacement", fine_unit(units)),
         text_column("zone"),
         text_column("support"),
-        text_column("worse zone"),
+        text_column("zone"),
     )
     tones = tuple(ZONE_TONES[row.zone] for row in severity.rows)
-    return Table("Predicted vibration at the running speeds", columns, rows, tones=tones)
+    return Table(
+        "Predicted vibration at the running speeds, r.m.s., each where it is worst",
+        columns,
+        rows,
+        tones=tones,
+    )
 
 
 def boundary_table(severity: Severity, units: UnitSystem) -> Table | None:
