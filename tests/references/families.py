@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from types import ModuleType
 
-from tests.references import bands, beams, forced, frames, lumped, times
+from tests.references import bands, beams, driven, forced, frames, lumped, times
 from tests.references.common import BUILDERS
 
 FAMILIES: dict[ModuleType, str] = {
@@ -13,6 +13,7 @@ FAMILIES: dict[ModuleType, str] = {
     lumped: "Lumped systems, damped systems, rotors",
     times: "Transition matrices, decay, pulses",
     forced: "Forced vibration, frequency response, isolation",
+    driven: "Excitations",
     bands: "Screening",
 }
 

@@ -22,9 +22,12 @@ def at_ratios(ratios: list[float], damping_ratio: float) -> vib.FrequencyRespons
     return one_mass(1.0, NATURAL_HZ, damping_ratio).frequency_response(lines_hz=NATURAL_HZ * np.array(ratios))
 
 
-def mounted(damping_ratio: float) -> vib.System:
-    """1 kg on a vertical spring and dashpot, as a structure with a ground."""
-    constant = 2 * damping_ratio * np.sqrt(STIFFNESS)
+def mounted(
+    damping_ratio: float, extra: str = "", mass: float = 1.0, natural_hz: float = NATURAL_HZ
+) -> vib.Study:
+    """A mass (1 kg) on a vertical spring and dashpot, as a structure with a ground."""
+    omega = 2 * np.pi * natural_hz
+    constant = 2 * damping_ratio * omega * mass
     dashpot = f'dashpot = {{ z = "{float(constant)!r} N s/m" }}' if damping_ratio else ""
     return study(
         f"""
@@ -32,17 +35,18 @@ def mounted(damping_ratio: float) -> vib.System:
 p = ["0 m", "0 m", "0 m"]
 [[bodies]]
 name = "m"
-mass = "1 kg"
+mass = "{mass} kg"
 carried_by = "p"
 [[supports]]
 at = "p"
 hold = ["x", "y", "rx", "ry", "rz"]
 [[springs]]
 between = ["p", "ground"]
-stiffness = {{ z = "{float(STIFFNESS)!r} N/m" }}
+stiffness = {{ z = "{float(omega**2 * mass)!r} N/m" }}
 {dashpot}
+{extra}
 """
-    ).system()
+    )
 
 
 @covers("FRF-2")
@@ -105,8 +109,10 @@ def peaks(entry: Entry) -> Iterator[Check]:
         top = f"peak_{name}" if name == "transmissibility" else f"peak_{name}_factor"
         near = place + 1e-4 * np.arange(-1.0, 2.0)
         if name == "transmissibility":
-            found = mounted(ratio).frequency_response(
-                lines_hz=NATURAL_HZ * near, outputs=[("m", "z")], ground=["z"]
+            found = (
+                mounted(ratio)
+                .system()
+                .frequency_response(lines_hz=NATURAL_HZ * near, outputs=[("m", "z")], ground=["z"])
             )
             sizes = np.abs(found.receptance[:, 0, 0])
         else:
@@ -140,6 +146,13 @@ def unbalance(entry: Entry) -> Iterator[Check]:
         motion = -found.accelerance[line, 0, 0]
         yield Check(f"r = {ratio:g}, factor", float(abs(motion)), factor, 1e-10)
         yield Check(f"r = {ratio:g}, lag, deg", float(-np.degrees(np.angle(motion))), lag, 1e-9)
+    driven = '[[excitations]]\nspeed = "300 rpm"\nat = "m"\nunbalance = { along = "z", amount = "1 kg m" }'
+    run = vib.run_up(
+        mounted(entry["inputs"]["zeta"], driven), speeds_hz=[NATURAL_HZ * row[0] for row in rows]
+    )
+    for motion, (ratio, factor, lag) in zip(run.displacement_m[:, 0, 0].tolist(), rows, strict=True):
+        yield Check(f"r = {ratio:g}, factor, by run-up", abs(motion), factor, 1e-10)
+        yield Check(f"r = {ratio:g}, lag, deg, by run-up", float(-np.degrees(np.angle(motion))), lag, 1e-9)
 
 
 @covers("FORCED-HP")
@@ -158,10 +171,14 @@ def transmissibility(entry: Entry) -> Iterator[Check]:
     rows = entry["expected"]["rows"]
     for column, ratio in enumerate((0.0, 0.05, 0.1, 0.2), 1):
         finite = [row for row in rows if not isinstance(row[column], str)]
-        found = mounted(ratio).frequency_response(
-            lines_hz=NATURAL_HZ * np.array([row[0] for row in finite]),
-            outputs=[("m", "z")],
-            ground=["z"],
+        found = (
+            mounted(ratio)
+            .system()
+            .frequency_response(
+                lines_hz=NATURAL_HZ * np.array([row[0] for row in finite]),
+                outputs=[("m", "z")],
+                ground=["z"],
+            )
         )
         for line, row in enumerate(finite):
             what = f"zeta = {ratio:g}, r = {row[0]:g}"
@@ -171,8 +188,10 @@ def transmissibility(entry: Entry) -> Iterator[Check]:
 @covers("ISOL-REQ")
 def required_ratio(entry: Entry) -> Iterator[Check]:
     (ratios,) = entry["expected"].values()
-    found = mounted(0.0).frequency_response(
-        lines_hz=NATURAL_HZ * np.array(ratios), outputs=[("m", "z")], ground=["z"]
+    found = (
+        mounted(0.0)
+        .system()
+        .frequency_response(lines_hz=NATURAL_HZ * np.array(ratios), outputs=[("m", "z")], ground=["z"])
     )
     for line, wanted in enumerate((0.5, 0.2, 0.1, 0.05)):
         yield Check(f"r = {ratios[line]:.6g}", float(abs(found.receptance[line, 0, 0])), wanted, 1e-9)
@@ -193,6 +212,18 @@ def transmitted_force(entry: Entry) -> Iterator[Check]:
     yield Check("transmitted force, N", float(abs(passed)), expected["F_transmitted"], 1e-8)
     speed = 1e3 * omega * abs(motion) / np.sqrt(2)
     yield Check("velocity rms, mm/s", float(speed), expected["v_rms_machine"], 1e-8)
+    driven = (
+        f'[[excitations]]\nspeed = "{given["speed"]} rpm"\nat = "m"\n'
+        f'unbalance = {{ along = "z", amount = "{given["m_u e"]} kg m" }}'
+    )
+    run = vib.run_up(
+        mounted(ratio, driven, mass, float(natural / (2 * np.pi))), speeds_hz=[given["speed"] / 60]
+    )
+    assert run.transmitted is not None
+    passed = run.transmitted.force_n[0, 0, run.transmitted.names.index("spring 1 p z")]
+    yield Check("transmitted force, by run-up, N", float(abs(passed)), expected["F_transmitted"], 1e-8)
+    speed = 1e3 * run.velocity_rms_m_s[0, 0]
+    yield Check("velocity rms, by run-up, mm/s", float(speed), expected["v_rms_machine"], 1e-8)
 
 
 @covers("SEV-CONV")
