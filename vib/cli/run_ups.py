@@ -40,10 +40,10 @@ def run_up_of(
 
     found = run_up(study, shaft=shaft, watch=watch, modes=modes)
     if study.severity is None:
-        return RunUps(study.title, found, None)
+        return RunUps(study, found, None)
     running = main_frequency(found, study.severity)[found.in_service]
     needed = needed_hz(study.severity, float(running.max()))
-    return RunUps(study.title, found, judge(found, study.severity, found.system.modes(up_to=needed)))
+    return RunUps(study, found, judge(found, study.severity, found.system.modes(up_to=needed)))
 
 
 def coincidences(study: Study, modes: Modes, screening: Screening) -> Sequence[RunUp]:

@@ -34,7 +34,7 @@ def run_up_section(found: RunUps | None, stated: bool, units: UnitSystem) -> Sec
             run_up_stability(found.run_up),
             *drawings(kept, "run-up"),
             _left_out(len(curves), _MOST_RUN_UPS, "places"),
-            *run_up_tables(found.run_up, units),
+            *run_up_tables(found, units),
             run_up_facts(found.run_up),
             Bullets(found.run_up.remarks) if found.run_up.remarks else None,
         ),

@@ -195,12 +195,14 @@ def _draw_boundaries(axes: Axes, severity: Severity, place: str, units: UnitSyst
         )
         axes.set_ylim(top=max(axes.get_ylim()[1], 1.1 * level))
         if not handles:
-            handles.append((line, f"zone boundaries, {limits[0].source.split(',')[0]}"))
+            handles.append((line, f"zone boundaries, {limits[0].source.split(',')[0]}, from memory"))
     return handles
 
 
 def _draw_service(axes: Axes, run_up: RunUp) -> list[tuple[Any, str]]:
     handle: Any = None
+    if run_up.in_service.all():  # nothing to tell them from
+        return []
     for low, high in run_up.service_hz:
         if high > low:
             handle = axes.axvspan(60 * low, 60 * high, facecolor="#d9d9d9", alpha=0.6, lw=0, zorder=0)

@@ -10,6 +10,7 @@ from numpy.typing import NDArray
 
 from vib.show.blocks import Block, Bullets, Column, Facts, Heading, Sentence, Table, text_column
 from vib.show.numbers import MISSING, percent, significant
+from vib.show.tables.driving import driving_table
 from vib.show.tables.ring import KINDS
 from vib.show.tables.severity import fine, fine_unit, severity_blocks
 from vib.show.words import CAUTION, caution
@@ -18,18 +19,23 @@ from vib.units import UnitSystem, shown, shown_unit
 if TYPE_CHECKING:
     from vib.response.run_up import RunUp
     from vib.severity import Severity
+    from vib.study import Study
 
 _MOST_MEETINGS = 24
-_MOST_LINES = 24
 
 
 @dataclass(frozen=True, eq=False)
 class RunUps:
     """What ``vib respond --run-up`` found; ``severity`` is None where the study has no [severity]."""
 
-    title: str
+    study: Study
     run_up: RunUp
     severity: Severity | None
+
+    @property
+    def title(self) -> str:
+        """Of the study."""
+        return self.study.title
 
     @property
     def remarks(self) -> tuple[str, ...]:
@@ -43,7 +49,7 @@ def run_up_blocks(found: RunUps, units: UnitSystem) -> list[Block]:
     blocks: list[Block] = [Heading(found.title), run_up_stability(found.run_up)]
     if found.severity is not None:
         blocks += severity_blocks(found.severity, units)
-    return [*blocks, *run_up_tables(found.run_up, units), run_up_facts(found.run_up), caution()]
+    return [*blocks, *run_up_tables(found, units), run_up_facts(found.run_up), caution()]
 
 
 def run_up_stability(run_up: RunUp) -> Sentence:
@@ -56,10 +62,11 @@ def run_up_stability(run_up: RunUp) -> Sentence:
     )
 
 
-def run_up_tables(run_up: RunUp, units: UnitSystem) -> list[Block]:
+def run_up_tables(found: RunUps, units: UnitSystem) -> list[Block]:
     """The tables of the run-up itself."""
+    run_up = found.run_up
     tables = (
-        shaking_table(run_up),
+        driving_table(run_up, found.study, units),
         highest_table(run_up, units),
         force_table(run_up, units),
         crossing_table(run_up),
@@ -67,52 +74,31 @@ def run_up_tables(run_up: RunUp, units: UnitSystem) -> list[Block]:
     return [table for table in tables if table is not None]
 
 
-def shaking_table(run_up: RunUp) -> Table:
-    """Every line: what it comes from, and its frequencies at the running speeds."""
-    chosen = service(run_up)
-    rows = []
-    for line in run_up.lines[:_MOST_LINES]:
-        low, high = float(line.frequency_hz[chosen].min()), float(line.frequency_hz[chosen].max())
-        frequencies = significant(low) if low == high else f"{significant(low)} to {significant(high)}"
-        order = MISSING if line.order is None else f"{line.order:.6g}"
-        rows.append((line.excitation, line.source, order, frequencies))
-    left = len(run_up.lines) - len(rows)
-    if left:
-        rows.append((f"and {left} more", "", "", ""))
-    columns = (text_column("excitation"), text_column("by"), Column("order"), Column("frequency", "Hz"))
-    return Table("What drives the machine", columns, tuple(rows))
-
-
 def highest_table(run_up: RunUp, units: UnitSystem) -> Table:
     """The highest level of each output in the run-up and at the running speeds, all frequencies counted."""
     velocity, peak = run_up.velocity_rms_m_s, run_up.displacement_peak_m
-    chosen = np.flatnonzero(service(run_up))
     rows = []
     for column, name in enumerate(run_up.outputs):
         turning = run_up.rotational[column]
-        top = int(np.argmax(velocity[:, column]))
-        run = int(chosen[np.argmax(velocity[chosen, column])])
-        rows.append(
-            (
-                name,
-                _level(velocity[top, column], turning, units),
-                _rpm(run_up, top),
-                _moved(peak[top, column], turning, units),
-                _mostly(run_up, top, column),
-                _level(velocity[run, column], turning, units),
-                _moved(peak[run, column], turning, units),
-            )
-        )
-    columns = (
-        text_column("output"),
-        Column("velocity r.m.s.", _units_of(run_up, units, 1)),
-        Column("at", "rpm"),
-        Column("displacement at most", _units_of(run_up, units, 0)),
-        text_column("mostly by"),
-        Column("velocity when running", _units_of(run_up, units, 1)),
-        Column("displacement when running", _units_of(run_up, units, 0)),
-    )
-    return Table("Highest in the run-up, and at the running speeds", columns, tuple(rows))
+        top, run = _tops(run_up, velocity[:, column])
+        row = [name]
+        for at in (top, run)[: 1 + _apart(run_up)]:
+            row += [
+                _level(velocity[at, column], turning, units),
+                _moved(peak[at, column], turning, units),
+                _rpm(run_up, at),
+            ]
+        rows.append((*row, _mostly(run_up, top, column)))
+    unit = _units_of(run_up, units, 1), _units_of(run_up, units, 0)
+    columns = [text_column("output")]
+    for when in ("", "running: ")[: 1 + _apart(run_up)]:
+        columns += [
+            Column(f"{when}velocity", unit[0]),
+            Column(f"{when}displacement", unit[1]),
+            Column("at", "rpm"),
+        ]
+    title = "Highest in the run-up, velocity r.m.s. and displacement at most"
+    return Table(title, (*columns, text_column("mostly by")), tuple(rows))
 
 
 def force_table(run_up: RunUp, units: UnitSystem) -> Table | None:
@@ -121,30 +107,18 @@ def force_table(run_up: RunUp, units: UnitSystem) -> Table | None:
     if given is None or not given.names:
         return None
     rms, peak = run_up.transmitted_rms_n, run_up.transmitted_peak_n
-    chosen = np.flatnonzero(service(run_up))
     rows = []
     for column, (name, component) in enumerate(zip(given.names, given.components, strict=True)):
         kind = "moment" if component.startswith("r") else "force"
-        top = int(np.argmax(rms[:, column]))
-        run = int(chosen[np.argmax(rms[chosen, column])])
-        values = [
-            significant(shown(float(value), kind, units), 3)
-            for value in (rms[top, column], peak[top, column], rms[run, column], peak[run, column])
-        ]
-        rows.append(
-            (name, given.kinds[column], *values[:2], _rpm(run_up, top), *values[2:], shown_unit(kind, units))
-        )
-    columns = (
-        text_column("at"),
-        text_column("kind"),
-        Column("r.m.s."),
-        Column("at most"),
-        Column("at", "rpm"),
-        Column("r.m.s. when running"),
-        Column("at most when running"),
-        text_column("unit"),
-    )
-    return Table("Forces on supports and mounts", columns, tuple(rows))
+        row = [name, given.kinds[column], shown_unit(kind, units)]
+        for at in _tops(run_up, rms[:, column])[: 1 + _apart(run_up)]:
+            sizes = (rms[at, column], peak[at, column])
+            row += [significant(shown(float(size), kind, units), 3) for size in sizes] + [_rpm(run_up, at)]
+        rows.append(tuple(row))
+    columns = [text_column("at"), text_column("kind"), text_column("unit")]
+    for when in ("", "running: ")[: 1 + _apart(run_up)]:
+        columns += [Column(f"{when}r.m.s."), Column(f"{when}at most"), Column("at", "rpm")]
+    return Table("Forces on supports and mounts, highest in the run-up", tuple(columns), tuple(rows))
 
 
 def crossing_table(run_up: RunUp) -> Table | None:
@@ -209,10 +183,16 @@ def run_up_document(found: RunUps) -> dict[str, Any]:
     }
 
 
-def service(run_up: RunUp) -> NDArray[np.bool_]:
-    """(k,) the running speeds; every speed where none is stated."""
+def _apart(run_up: RunUp) -> int:
+    """1 where the run-up goes beyond the running speeds, so that these are told apart; else 0."""
     chosen = run_up.in_service
-    return chosen if chosen.any() else np.ones(len(run_up.speed_hz), dtype=bool)
+    return int(bool(chosen.any()) and not chosen.all())
+
+
+def _tops(run_up: RunUp, level: NDArray[np.float64]) -> tuple[int, int]:
+    """Where a level (k,) is highest: of all speeds, and of the running speeds."""
+    chosen = np.flatnonzero(run_up.in_service) if _apart(run_up) else np.arange(len(level))
+    return int(np.argmax(level)), int(chosen[np.argmax(level[chosen])])
 
 
 def _mostly(run_up: RunUp, at: int, column: int) -> str:
