@@ -30,6 +30,31 @@ _WORDS = {
     ("Respond", "frequencies"): "two frequencies (`Hz`)",
     ("Excitation", "speed"): "a running speed (`rpm`), or a list of two",
     ("Excitation", "along"): "a component or three numbers",
+    ("Excitation", "axis"): "an axis or three numbers",
+    **{
+        (name, "along"): "a component or three numbers"
+        for name in (
+            "Unbalance",
+            "Forces",
+            "Misalignment",
+            "Belt",
+            "Blades",
+            "Gear",
+            "Crank",
+            "Strokes",
+            "Mains",
+        )
+    },
+    **{
+        (name, "amplitude"): "a force (`N`), along a rotation a moment (`N m`)"
+        for name in ("Forces", "Misalignment", "Belt", "Blades", "Gear", "Mains")
+    },
+    ("Unbalance", "grade"): 'text such as `"G 6.3"`, or a velocity (`m/s`)',
+    ("Forces", "table"): "a list of lists",
+    ("Strokes", "peak"): "a force (`N`), along a rotation a moment (`N m`)",
+    ("Shaking", "displacement"): "a length (`m`), about an axis an angle (`rad`)",
+    ("Shaking", "velocity"): "a velocity (`m/s`), about an axis an angular velocity (`rad/s`)",
+    ("Shaking", "acceleration"): "an acceleration (`m/s^2`), about an axis an angular one (`rad/s^2`)",
     ("Severity", "support"): '`"rigid"`, `"flexible"` or a table',
     ("Impact", "along"): "a component or three numbers",
     ("Members", "up"): "an axis or three numbers",
@@ -181,9 +206,8 @@ def _value(entry: dict[str, Any]) -> str:
         return f"a list: {_value(entry.get('items', {}))}"
     if isinstance(entry.get("type"), list):
         return "text with a unit, or a number"
-    return {"string": "text", "number": "a number", "boolean": "true or false"}.get(
-        entry.get("type", ""), "a value"
-    )
+    kinds = {"string": "text", "number": "a number", "integer": "a whole number", "boolean": "true or false"}
+    return kinds.get(entry.get("type", ""), "a value")
 
 
 def _reference(entry: dict[str, Any]) -> str | None:
@@ -208,6 +232,8 @@ def _parts_of(table: dict[str, Any]) -> list[str]:
 
 
 def _sub_part(key: str, name: str, table: dict[str, Any]) -> str:
+    from vib.study.excitations import FORCES
+
     where = {
         "Releases": "releases",
         "Pulse": "pulse" if key == "impact" else "half_sine",
@@ -216,6 +242,8 @@ def _sub_part(key: str, name: str, table: dict[str, Any]) -> str:
         "SixStiffnesses": "stiffness",
         "StandPerAxis": "support",
         "SixDashpots": "dashpot",
+        "Shaking": "ground",
+        **{name.capitalize(): name for name in FORCES},
     }
     shown = where.get(name, "a matrix as a table")
     if name == "MeshRegion":

@@ -53,9 +53,6 @@ def _several(value: object) -> object:
     return [value] if isinstance(value, dict) else value
 
 
-_SEVERAL = BeforeValidator(_several)
-
-
 class Excitation(Table):
     """What shakes the machine: orders of a running speed, fixed frequencies, and the forces behind them.
 
@@ -95,16 +92,37 @@ class Excitation(Table):
     band: Annotated[float, Quantity("ratio", 0.0)] | None = Field(
         None, description="half width of the band to keep clear of, as a share of the excitation frequency"
     )
-    unbalance: Annotated[tuple[Unbalance, ...], _SEVERAL] = ()
-    forces: Annotated[tuple[Forces, ...], _SEVERAL] = ()
-    misalignment: Annotated[tuple[Misalignment, ...], _SEVERAL] = ()
-    belt: Annotated[tuple[Belt, ...], _SEVERAL] = ()
-    blades: Annotated[tuple[Blades, ...], _SEVERAL] = ()
-    gear: Annotated[tuple[Gear, ...], _SEVERAL] = ()
-    crank: Annotated[tuple[Crank, ...], _SEVERAL] = ()
-    strokes: Annotated[tuple[Strokes, ...], _SEVERAL] = ()
-    mains: Annotated[tuple[Mains, ...], _SEVERAL] = ()
-    ground: Annotated[tuple[Shaking, ...], _SEVERAL] = ()
+    unbalance: Annotated[
+        tuple[Unbalance, ...], BeforeValidator(_several, json_schema_input_type=Unbalance | list[Unbalance])
+    ] = Field((), description="pull of a mass off the axis")
+    forces: Annotated[
+        tuple[Forces, ...], BeforeValidator(_several, json_schema_input_type=Forces | list[Forces])
+    ] = Field((), description="forces of stated amplitude, by order or frequency")
+    misalignment: Annotated[
+        tuple[Misalignment, ...],
+        BeforeValidator(_several, json_schema_input_type=Misalignment | list[Misalignment]),
+    ] = Field((), description="of shafts out of line")
+    belt: Annotated[tuple[Belt, ...], BeforeValidator(_several, json_schema_input_type=Belt | list[Belt])] = (
+        Field((), description="a fault that goes round with a belt")
+    )
+    blades: Annotated[
+        tuple[Blades, ...], BeforeValidator(_several, json_schema_input_type=Blades | list[Blades])
+    ] = Field((), description="blades or vanes that pass an edge")
+    gear: Annotated[tuple[Gear, ...], BeforeValidator(_several, json_schema_input_type=Gear | list[Gear])] = (
+        Field((), description="meshing teeth")
+    )
+    crank: Annotated[
+        tuple[Crank, ...], BeforeValidator(_several, json_schema_input_type=Crank | list[Crank])
+    ] = Field((), description="pistons on a crank")
+    strokes: Annotated[
+        tuple[Strokes, ...], BeforeValidator(_several, json_schema_input_type=Strokes | list[Strokes])
+    ] = Field((), description="blows of a press")
+    mains: Annotated[
+        tuple[Mains, ...], BeforeValidator(_several, json_schema_input_type=Mains | list[Mains])
+    ] = Field((), description="magnetic forces at multiples of the line frequency")
+    ground: Annotated[
+        tuple[Shaking, ...], BeforeValidator(_several, json_schema_input_type=Shaking | list[Shaking])
+    ] = Field((), description="a steady motion of the ground")
 
     _follows: tuple[Range, ...] | None = PrivateAttr(None)
 
