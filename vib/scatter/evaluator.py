@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from importlib.metadata import version
 
 import numpy as np
 from numpy.typing import NDArray
@@ -16,6 +17,7 @@ from vib.solve.search import solve_system
 from vib.system import Array, Matrix
 
 BLOCK = 250  # samples whose small matrices are held at once: they stay in the processor's cache
+FULL_CHUNK = 4  # samples that are solved in full at a time
 # weight of the ratio of frequencies beside the likeness of shapes: little, but for eigenvalues that do not
 # swing, of which a pair may have one shape
 CLOSENESS, CLOSENESS_REAL = 0.02, 0.5
@@ -53,6 +55,20 @@ class Evaluator:
     everything: bool
     family_error: float
     tolerance: float
+
+    @property
+    def chunk(self) -> int:
+        """How many samples are handed out at a time, when many are run."""
+        return BLOCK if self.model is not None else FULL_CHUNK
+
+    @property
+    def fingerprint(self) -> str:
+        """Equal for evaluators that give the same results."""
+        # the nominal modes stand for what the study reads from other files: a mesh, matrices
+        nominal = [f"{value:.6e}" for value in self.nominal.tolist()]
+        study = self.builder.study.model_dump_json()
+        figures = (self.builder.paths, self.candidates, self.tolerance, self.bounds.tolist(), nominal)
+        return f"{version('vib')} {study} {figures}"
 
     def __call__(self, samples: Array) -> Batch:
         """Frequencies, damping ratios and errors of samples (N, d), SI.

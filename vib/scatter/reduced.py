@@ -95,7 +95,7 @@ def solve(stiffness: Array, mass: Array, count: int, rigid: int) -> Solved:
 def _factor(mass: Array) -> tuple[Array, NDArray[np.bool_]]:
     """Cholesky factors (N, r, r), and which there are; the identity stands for the others."""
     try:
-        return np.linalg.cholesky(mass), np.ones(len(mass), dtype=bool)
+        return np.asarray(np.linalg.cholesky(mass)), np.ones(len(mass), dtype=bool)
     except np.linalg.LinAlgError:
         regular = np.asarray(np.linalg.eigvalsh(mass)[:, 0] > 0)
         safe = np.where(regular[:, None, None], mass, np.eye(mass.shape[1]))
