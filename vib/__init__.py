@@ -19,6 +19,8 @@ if TYPE_CHECKING:
     from vib.response.ring import Ring
     from vib.response.run_up import RunUp
     from vib.response.simulate import simulate, simulate_to
+    from vib.scatter.scatter import Scatter, scatter
+    from vib.scatter.sweep import Sweep, sweep
     from vib.screening import Screening, screen
     from vib.severity import Severity, judge
     from vib.statespace import StateSpace
@@ -33,18 +35,22 @@ __all__ = [
     "Response",
     "Ring",
     "RunUp",
+    "Scatter",
     "Screening",
     "Severity",
     "StateSpace",
     "Study",
+    "Sweep",
     "System",
     "VibError",
     "judge",
     "read",
     "run_up",
+    "scatter",
     "screen",
     "simulate",
     "simulate_to",
+    "sweep",
 ]
 
 _HOME = {
@@ -54,18 +60,22 @@ _HOME = {
     "Response": "vib.response.respond",
     "Ring": "vib.response.ring",
     "RunUp": "vib.response.run_up",
+    "Scatter": "vib.scatter.scatter",
     "Screening": "vib.screening",
     "Severity": "vib.severity",
     "StateSpace": "vib.statespace",
     "Study": "vib.study",
+    "Sweep": "vib.scatter.sweep",
     "System": "vib.system",
     "VibError": "vib.errors",
     "judge": "vib.severity",
     "read": "vib.study",
     "run_up": "vib.response.over_speeds",
+    "scatter": "vib.scatter.scatter",
     "screen": "vib.screening",
     "simulate": "vib.response.simulate",
     "simulate_to": "vib.response.simulate",
+    "sweep": "vib.scatter.sweep",
 }
 
 

@@ -33,6 +33,15 @@ class Effects:
     total: Array
     total_error: Array
 
+    def of_factor(self, factor: int) -> dict[str, list[float]]:
+        """Plain values of one factor, one for each figure."""
+        return {
+            "first_order": self.first[factor].tolist(),
+            "first_order_error": self.first_error[factor].tolist(),
+            "total": self.total[factor].tolist(),
+            "total_error": self.total_error[factor].tolist(),
+        }
+
 
 def effects(design: Design, figures: Array, *, seed: int) -> Effects:
     """Effects from figures ((f + 2) N, k) at the points of the design, in its order."""

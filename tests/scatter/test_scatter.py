@@ -1,0 +1,203 @@
+"""Scatter against closed forms and brute force."""
+
+import numpy as np
+import pytest
+
+from tests.scatter.conftest import SWAP as SWAP_TEXT
+from tests.scatter.direct import Direct
+from vib.errors import ModelError
+from vib.scatter.family import Family
+from vib.scatter.sampling import Factors
+from vib.scatter.scatter import check_values, scatter
+
+
+def frequency(stiffness_n_m, mass_kg=100.0):
+    return np.sqrt(stiffness_n_m / mass_kg) / (2 * np.pi)
+
+
+def in_band(low, high, nominal_n_mm):
+    """Probability that sqrt(k / m) / (2 pi) lies from low to high (Hz), the stiffness evenly within 30 %."""
+    least, most = 0.7 * nominal_n_mm * 1e3, 1.3 * nominal_n_mm * 1e3
+    edges = np.clip([(2 * np.pi * f) ** 2 * 100.0 for f in (low, high)], least, most)
+    return float(edges[1] - edges[0]) / (most - least)
+
+
+@pytest.fixture(scope="module")
+def found(studies):
+    return scatter(studies(), samples=1024, seed=3)
+
+
+def test_frequencies_of_every_sample_are_those_of_the_closed_form(found):
+    """One mass on one spring each: f = sqrt(k / m) / (2 pi). Columns stay with their mass when they swap."""
+    exact = frequency(found.values)
+    np.testing.assert_allclose(found.batch.frequencies_hz, exact, rtol=1e-6)
+    np.testing.assert_array_equal(found.batch.swapped, exact[:, 0] > exact[:, 1])
+    assert 0.2 < found.batch.swapped.mean() < 0.5
+    np.testing.assert_allclose(found.batch.damping_ratios, 0.01, rtol=1e-6)
+
+
+def test_percentiles_are_those_of_the_closed_form(found):
+    for mode, nominal in enumerate((400e3, 440e3)):
+        for percent, estimate in found.frequencies_hz[mode].percentiles.items():
+            exact = frequency(nominal * (0.7 + 0.6 * percent / 100))
+            assert estimate.low <= exact <= estimate.high
+            assert estimate.value == pytest.approx(exact, rel=1e-3)
+
+
+@pytest.mark.parametrize("method", ["sobol", "latin hypercube"])
+def test_probabilities_hold_the_exact_ones_where_modes_swap(studies, method):
+    """Two independent modes that trade places: each probability has a closed form."""
+    low, high = 10.5 * 0.96, 10.5 * 1.04
+    one, other = in_band(low, high, 400), in_band(low, high, 440)
+    either = 1 - (1 - one) * (1 - other)
+    held = []
+    for seed in range(20):
+        met = scatter(studies(), samples=512, seed=seed, method=method, ranking=False).chances
+        assert met is not None
+        first, second = (row.probability for row in met.by_mode)
+        for estimate, exact in ((first, one), (second, other), (met.any_line, either)):
+            held.append(estimate.low <= exact <= estimate.high)
+            assert estimate.high - estimate.low < 0.09
+    # 95 % of 60 are expected; fewer than 51 has a probability below 0.2 % even for independent draws
+    assert sum(held) >= 51
+
+
+def test_brute_force_agrees_within_the_stated_error(studies):
+    """A frame whose two swaying modes swap, against full solutions of as many other samples."""
+    study = studies(FRAME)
+    found = scatter(study, samples=1024, seed=1, ranking=False, count=3)
+    factors = Factors.of(tuple(study.tolerances.values()))
+    values = factors.values(np.random.default_rng(99).random((400, len(factors.names))))
+    bounds = {path: (row.low, row.high) for path, row in study.tolerances.items()}
+    brute = Direct(Family.from_study(study, bounds, count=3)).evaluate(values)
+    assert found.batch.swapped.any()
+    assert brute.swapped.any()
+    assert found.chances is not None
+    lines = found.chances.by_line[0].line
+    for row in found.chances.by_mode:
+        column = brute.frequencies_hz[:, (row.mode or 0) - 1]
+        share = np.mean((column >= lines.band_from_hz) & (column <= lines.band_to_hz))
+        # both are estimates: their errors add by squares, and 3 in place of 2 standard errors are allowed
+        error = 3 * np.sqrt(
+            share * (1 - share) / 400 + ((row.probability.high - row.probability.low) / 4) ** 2
+        )
+        assert abs(share - row.probability.value) <= error + 1 / 400
+    assert len(found.chances.by_mode) == 2
+
+
+def test_the_same_samples_solved_in_full_have_the_same_modes(studies):
+    study = studies(FRAME)
+    found = scatter(study, samples=32, seed=5, ranking=False, count=3)
+    bounds = {path: (row.low, row.high) for path, row in study.tolerances.items()}
+    brute = Direct(Family.from_study(study, bounds, count=3)).evaluate(found.values)
+    np.testing.assert_allclose(found.batch.frequencies_hz, brute.frequencies_hz, rtol=2e-4)
+
+
+FRAME = """
+title = "Mast with an oblong foot"
+[units]
+length = "mm"
+[points]
+A = [0, 0, 0]
+B = [0, 0, 1500]
+[sections.mast]
+shape = "rectangle"
+width = 60
+height = 64
+[materials.steel]
+like = "structural steel"
+youngs_modulus = "210 GPa +- 5 %"
+[[members]]
+name = "mast"
+section = "mast"
+material = "steel"
+runs = [["A", "B"]]
+[[bodies]]
+name = "head"
+mass = "80 kg +- 10 %"
+carried_by = "B"
+[[springs]]
+name = "foot"
+between = ["A", "ground"]
+stiffness = { x = "50 kN/mm", y = "50 kN/mm", z = "50 kN/mm", rz = "90 kN m/rad" }
+[[springs]]
+name = "tilting foot"
+between = ["A", "ground"]
+stiffness = { rx = "300 kN m/rad +- 40 %", ry = "260 kN m/rad +- 40 %" }
+[damping]
+ratio = 0.01
+[[excitations]]
+name = "pump"
+speed = "288 rpm"
+at = "head"
+band = "5 %"
+"""
+
+
+def test_the_same_seed_gives_the_same_numbers(studies):
+    one, other = (scatter(studies(), samples=100, seed=7) for _ in range(2))
+    np.testing.assert_array_equal(one.values, other.values)
+    np.testing.assert_array_equal(one.batch.frequencies_hz, other.batch.frequencies_hz)
+    assert one.ranking is not None
+    assert other.ranking is not None
+    np.testing.assert_array_equal(one.ranking.frequencies.total, other.ranking.frequencies.total)
+    assert any("100 points of a Sobol sequence" in remark for remark in one.remarks)
+
+
+def test_bands_follow_a_speed_that_scatters(studies):
+    study = studies(FRAME, ('speed = "288 rpm"', 'speed = "420 rpm +- 5 %"'))
+    found = scatter(study, samples=64, seed=0, ranking=False, count=3)
+    column = found.factors.paths.index("excitations[0].speed")
+    assert found.chances is not None
+    np.testing.assert_allclose(found.chances.needed_hz, 1.05 * found.values[:, column])
+
+
+def test_the_ranking_is_that_of_the_closed_form(found):
+    """Each frequency depends on its own spring alone: total effects 1 and 0."""
+    np.testing.assert_allclose(found.ranking.frequencies.total, np.eye(2), atol=0.02)
+    np.testing.assert_allclose(found.ranking.frequencies.first, np.eye(2), atol=0.03)
+    assert np.isnan(found.ranking.damping_ratios.total).all()
+
+
+def test_slopes_are_those_of_the_closed_form(found):
+    """df/dk = f / (2 k), from f = sqrt(k / m) / (2 pi)."""
+    exact = np.diag([frequency(k) / (2 * k) for k in (400e3, 440e3)])
+    np.testing.assert_allclose(found.slopes, exact, rtol=1e-6, atol=1e-15)
+    np.testing.assert_allclose(
+        np.diag(found.shifts_hz), 0.15 * frequency(np.array([400e3, 440e3])), rtol=1e-6
+    )
+
+
+def test_slopes_of_a_frame_are_its_difference_quotients(studies):
+    study = studies(FRAME)
+    found = scatter(study, samples=16, seed=0, ranking=False, count=2)
+    for column, (path, row) in enumerate(study.tolerances.items()):
+        step = 1e-3 * row.nominal
+        varied = (study.varied({path: row.nominal + sign * step}) for sign in (1, -1))
+        above, below = (one.system().modes(count=2).frequencies_hz for one in varied)
+        np.testing.assert_allclose(
+            found.slopes[:, column], (above - below) / (2 * step), rtol=2e-3, atol=1e-12
+        )
+
+
+def test_draws_that_cannot_be_are_named(studies):
+    stiff = '{ value = "400 N/mm", tolerance = "90 %", distribution = "normal" }'
+    study = studies(SWAP_TEXT, ('"400 N/mm +- 30 %"', stiff))
+    with pytest.raises(ModelError, match=r"sample \d+ of 1024 can't be: .*springs\[0\].*must be at least 0"):
+        scatter(study, samples=1024, ranking=False)
+
+
+def test_corners_that_cannot_be_do_not_forbid_samples_that_can(studies):
+    """Wall and width of a section vary; the corner with the thickest wall is not drawn."""
+    tube = 'shape = "square hollow"\nwidth = "60 mm +- 10 %"\nthickness = "20 mm +- 40 %"'
+    study = studies(FRAME, ('shape = "rectangle"\nwidth = 60\nheight = 64', tube))
+    paths = ("sections.mast.width", "sections.mast.thickness")
+    check_values(study, paths, np.array([[0.056, 0.026], [0.066, 0.030], [0.054, 0.013]]))
+    with pytest.raises(ModelError, match="sample 2 of 2"):
+        check_values(study, paths, np.array([[0.066, 0.027], [0.055, 0.0279]]))
+
+
+def test_a_study_without_tolerances_does_not_scatter(studies):
+    study = studies(SWAP_TEXT, ('"400 N/mm +- 30 %"', '"400 N/mm"'), ('"440 N/mm +- 30 %"', '"440 N/mm"'))
+    with pytest.raises(ModelError, match="the study states none"):
+        scatter(study)
