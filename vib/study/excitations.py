@@ -217,7 +217,7 @@ class Excitation(Table):
         if self.shaft is not None:
             if self._follows is None:
                 raise ModelError(
-                    f'{self.name}: it follows the speed of "{self.shaft}", which is known in a study only'
+                    f'{self.name}: it follows the speed of "{self.shaft}", which is not known here'
                 )
             return self._follows
         return (self.speed,) if self.speed is not None else tuple((speed, speed) for speed in self.speeds)
@@ -228,7 +228,7 @@ def leader(excitation: Excitation, others: Sequence[Excitation]) -> tuple[Excita
 
     Raises
     ------
-    ValueError
+    ModelError
         The excitations follow one another in a circle, or an unknown one.
     """
     by_name = {row.name: row for row in others}
@@ -236,29 +236,22 @@ def leader(excitation: Excitation, others: Sequence[Excitation]) -> tuple[Excita
     while excitation.shaft is not None:
         ratio *= excitation.ratio
         if excitation.shaft not in by_name:
-            raise ValueError(f'no excitation is named "{excitation.shaft}"')
+            raise ModelError(f'no excitation is named "{excitation.shaft}"')
         excitation = by_name[excitation.shaft]
         if excitation.name in seen:
-            raise ValueError(f'"{excitation.name}" follows its own speed; one needs a speed of its own')
+            raise ModelError(f'"{excitation.name}" follows its own speed; one needs a speed of its own')
         seen.add(excitation.name)
     return excitation, ratio
 
 
 def follow(excitations: Sequence[Excitation]) -> None:
-    """Tell those that follow another's speed what it is.
-
-    Raises
-    ------
-    ValueError
-        As `leader`; or who leads has no running speed.
-    """
-    for number, excitation in enumerate(excitations):
+    """Tell those that follow another's speed what it is; `vib.study.names` reports what can't be followed."""
+    for excitation in excitations:
         if excitation.shaft is None:
             continue
         try:
             first, ratio = leader(excitation, excitations)
-            if not first.turns:
-                raise ValueError(f'"{first.name}" has no running speed to follow')
-        except ValueError as error:
-            raise ValueError(f"excitations[{number}].shaft: {error}") from None
-        excitation._follows = tuple((ratio * low, ratio * high) for low, high in first.speed_ranges)
+        except ModelError:
+            continue
+        if first.turns:
+            excitation._follows = tuple((ratio * low, ratio * high) for low, high in first.speed_ranges)

@@ -38,6 +38,7 @@ def check_names(raw: Mapping[str, Any]) -> Iterator[Finding]:
     for i, spring in _rows(raw, "springs"):
         yield from _check_spring(spring, ("springs", i, "between"), points)
     yield from _check_main(raw)
+    yield from _check_leaders(raw)
     if "matrices" in raw:
         # a freedom may also be named by its number, and the number of rows is not known here
         return
@@ -75,6 +76,22 @@ def _check_judged(raw: Mapping[str, Any], places: list[str]) -> Iterator[Finding
         if isinstance(row, Mapping):
             judged += _listed(row.get("at"), ("severity", "limits", i, "at"))
     yield from _unknown("point or body", places, [(path, _place(name, places)) for path, name in judged])
+
+
+def _check_leaders(raw: Mapping[str, Any]) -> Iterator[Finding]:
+    """The excitations whose speed others follow, in no circle."""
+    rows = {row.get("name", f"excitation {i + 1}"): row for i, row in _rows(raw, "excitations")}
+    for i, excitation in _rows(raw, "excitations"):
+        shaft, path = excitation.get("shaft"), ("excitations", i, "shaft")
+        if not isinstance(shaft, str):
+            continue
+        yield from _check_shaft(raw, shaft, path, "could be followed")
+        seen = [excitation.get("name", f"excitation {i + 1}")]
+        while isinstance(shaft, str) and shaft in rows and shaft not in seen:
+            seen.append(shaft)
+            shaft = rows[shaft].get("shaft")
+        if shaft in seen:
+            yield path, f'"{shaft}" follows its own speed; one needs a speed of its own'
 
 
 def _check_excitations(raw: Mapping[str, Any], places: list[str]) -> Iterator[Finding]:
