@@ -195,7 +195,7 @@ def _draw_boundaries(axes: Axes, severity: Severity, place: str, units: UnitSyst
         )
         axes.set_ylim(top=max(axes.get_ylim()[1], 1.1 * level))
         if not handles:
-            handles.append((line, f"zone boundaries, {limits[0].source.split(',')[0]}, from memory"))
+            handles.append((line, f"zones by {limits[0].source.split(',')[0]}, from memory"))
     return handles
 
 
