@@ -27,7 +27,7 @@ carried_by = "A"
 [[springs]]
 name = "mount"
 between = ["A", "ground"]
-stiffness = {x = "4 kN/mm", y = "2 kN/mm", z = "1 kN/mm", rx = "9 MN m/rad", ry = "9 MN m/rad", rz = "9 MN m/rad"}
+stiffness = {x = "4 kN/mm", y = "2 kN/mm", z = "1 kN/mm", rx = "9e6 N m", ry = "9e6 N m", rz = "9e6 N m"}
 [damping]
 ratio = 0.03
 [[excitations]]
@@ -90,7 +90,7 @@ def test_the_orders_add_up_to_the_whole(found):
 
 def test_the_waterfall_holds_every_line_at_its_frequency(found):
     (axes,) = spectra_picture(found.run_up, 2, "si", "waterfall").figure.axes
-    sticks = [path.vertices for group in axes.collections for path in group.get_paths()]
+    sticks = [np.asarray(path.vertices) for group in axes.collections for path in group.get_paths()]
     speeds = np.array([segment[0, 1] for segment in sticks]) / 60
     orders = np.array([segment[0, 0] for segment in sticks]) / speeds
     assert set(orders.round(9)) == {1.0, 2.0}
