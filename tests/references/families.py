@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from types import ModuleType
 
-from tests.references import bands, beams, driven, forced, frames, lumped, times
+from tests.references import bands, beams, driven, forced, frames, lumped, severities, times
 from tests.references.common import BUILDERS
 
 FAMILIES: dict[ModuleType, str] = {
@@ -15,6 +15,7 @@ FAMILIES: dict[ModuleType, str] = {
     forced: "Forced vibration, frequency response, isolation",
     driven: "Excitations",
     bands: "Screening",
+    severities: "Severity",
 }
 
 
