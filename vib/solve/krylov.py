@@ -25,6 +25,8 @@ DEPENDENT = 1e-10
 # Columns are freed of the basis until a pass subtracts no more than this share of what was left of them;
 # mostly twice is enough (B. N. Parlett, The Symmetric Eigenvalue Problem, SIAM 1998, section 6.9).
 SLIGHT = 1e-12
+# What the recurrence has been subtracted from is free at once where it holds no more than this of the basis.
+NOTHING = 1e-14
 MOST_PASSES = 4
 # The basis of a block whose columns are this far from depending on each other needs no second turn.
 SAFE = 1e-2
@@ -166,7 +168,8 @@ class Krylov:
             image -= basis @ share
             shares = shares + share
             sizes = np.sqrt(np.maximum(left, np.maximum(DEPENDENT**2 * before, TINY)))
-            if (again or expected is not None) and np.abs(share / sizes).max(initial=0.0) <= SLIGHT:
+            slight = SLIGHT if again else NOTHING
+            if (again or expected is not None) and np.abs(share / sizes).max(initial=0.0) <= slight:
                 break  # nothing but round-off was left to subtract: the product with the mass still holds
             weighted = mass @ image
             left = np.einsum("ij,ij->j", image, weighted)

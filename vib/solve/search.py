@@ -122,7 +122,7 @@ class _Problem:
         self.spinning = system.gyroscopic is not None and abs(system.gyroscopic).max() > 0
         damping, gyroscopic = system.damping, system.gyroscopic
         terms = [matrix for matrix in (damping, gyroscopic) if matrix is not None]
-        self.linear: Matrix = sum(terms[1:], terms[0]) if terms else self.mass * 0.0
+        self.linear: Matrix = sum(terms[1:], terms[0]) if terms else sparse.csr_array(self.mass.shape)
         if sparse.issparse(self.mass):
             self.linear = sparse.csr_array(self.linear)
         self.velocity = bool(self.twisted or abs(self.linear).max() > 0)
