@@ -83,7 +83,7 @@ def test_only_running_speeds_are_judged_and_the_worst_is_shown(run_up, table):
 
 def test_the_support_is_judged_at_each_speed(run_up, table, monkeypatch):
     """30 Hz along y: rigid up to 24 Hz. 1.5 mm/s is zone B on a rigid, A on a flexible support."""
-    from vib.severity import severity as room
+    from vib.severity import judging as room
     from vib.severity.support import Support
 
     stand = Support("y", "flexible", False, 30.0, 2, 0.0, 26.0, "by hand")
@@ -154,6 +154,11 @@ def test_where_nothing_turns_the_strongest_line_is_the_main_one(run_up, table):
     assert found.margins == ()
     assert found.rows[0].velocity_rms_m_s == pytest.approx(1e-3 * np.sqrt(5), rel=1e-12)
     assert "rpm" not in found.verdict
+
+
+def test_a_study_without_a_table_is_told(run_up):
+    with pytest.raises(ModelError, match=r"the study has no \[severity\] table"):
+        judge(run_up([25.0], [(1, None)], [1e-4]), None)
 
 
 def test_angles_alone_cannot_be_judged(run_up, table):

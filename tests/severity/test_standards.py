@@ -6,8 +6,8 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 import vib
-from vib.severity.margins import half_power, judge_margins, wanted_margin
-from vib.severity.standards import band_from_hz, boundaries
+from vib.severity.margins import critical_speeds, half_power, judge_margins, wanted_margin
+from vib.severity.standards import band_from_hz, boundaries, outside_scope
 from vib.severity.support import judge_support
 from vib.study.severity import Severity
 
@@ -76,6 +76,16 @@ def test_below_600_rpm_the_band_reaches_down_to_2_hz():
 
 
 TURN = 'rx = "1e9 N m/rad", ry = "1e9 N m/rad", rz = "1e9 N m/rad", '
+
+
+def test_speeds_that_the_standard_is_not_for_are_told():
+    """120 r/min to 30 000 r/min (ISO 20816-3) and 15 000 r/min (ISO 10816-3), from memory."""
+    new, old = table(group=1), table(group=1, standard="ISO 10816-3")
+    assert [len(outside_scope(new, rpm / 60)) for rpm in (119, 120, 30000, 30001)] == [1, 0, 0, 1]
+    assert [len(outside_scope(old, rpm / 60)) for rpm in (119, 120, 15000, 15001)] == [1, 0, 0, 1]
+    assert outside_scope(table(machine_class="I"), 1.0) == ()
+
+
 BLOCK = """
 [points]
 A = ["0 m", "0 m", "0 m"]
@@ -202,7 +212,9 @@ def test_peaks_that_are_not_resolved_are_left_out():
 def test_margins_of_critical_speeds_around_the_running_range(tmp_path):
     modes = block_modes(tmp_path, 20.0, 27.0, 33.0)
     nothing = np.zeros((2, 0))
-    found = judge_margins(modes, table(group=1), [(24.0, 28.0)], np.array([1.0, 2.0]), nothing)
+    found = judge_margins(
+        critical_speeds(modes, (), (0, 0)), table(group=1), [(24.0, 28.0)], np.array([1.0, 2.0]), nothing
+    )
     below, inside, above = found
     assert (below.below, inside.below, above.below) == (True, None, False)
     assert [one.actual for one in found] == pytest.approx([1 / 6, 0.0, 5 / 28], rel=1e-6)
@@ -212,11 +224,15 @@ def test_margins_of_critical_speeds_around_the_running_range(tmp_path):
     assert all("damping ratio 0.01" in one.amplification_source for one in found)
     assert all(one.source == "API 617 / API RP 684, formula from memory" for one in found)
     own = judge_margins(
-        modes, table(group=1, separation_margin="17 %"), [(24.0, 28.0)], np.array([1.0, 2.0]), nothing
+        critical_speeds(modes, (), (0, 0)),
+        table(group=1, separation_margin="17 %"),
+        [(24.0, 28.0)],
+        np.array([1.0, 2.0]),
+        nothing,
     )
     assert [one.met for one in own] == [False, False, True]
     assert own[0].source == "stated in the study"
-    assert judge_margins(None, table(group=1), [(24.0, 28.0)], np.array([1.0, 2.0]), nothing) == ()
+    assert judge_margins((), table(group=1), [(24.0, 28.0)], np.array([1.0, 2.0]), nothing) == ()
 
 
 def test_the_peak_of_the_run_up_wins_over_the_damping_ratio(tmp_path):
@@ -224,7 +240,9 @@ def test_the_peak_of_the_run_up_wins_over_the_damping_ratio(tmp_path):
     speeds = np.linspace(5, 40, 7001)
     x = speeds / 20
     curve = x**2 / np.sqrt((1 - x**2) ** 2 + (0.02 * x) ** 2)
-    (found,) = judge_margins(modes, table(group=1), [(24.0, 24.0)], speeds, curve[:, np.newaxis])
+    (found,) = judge_margins(
+        critical_speeds(modes, (), (0, 0)), table(group=1), [(24.0, 24.0)], speeds, curve[:, np.newaxis]
+    )
     assert found.seen
     assert found.amplification_source == "half-power points of the run-up"
     assert found.amplification == pytest.approx(50, rel=2e-3)  # of order ratio squared, and the steps

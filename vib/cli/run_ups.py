@@ -34,16 +34,11 @@ def run_up_of(
     """
     from vib.response.over_speeds import run_up
     from vib.severity import judge
-    from vib.severity.margins import needed_hz
-    from vib.severity.severity import main_frequency
     from vib.show.tables.run_up import RunUps
 
     found = run_up(study, shaft=shaft, watch=watch, modes=modes)
-    if study.severity is None:
-        return RunUps(study, found, None)
-    running = main_frequency(found, study.severity)[found.in_service]
-    needed = needed_hz(study.severity, float(running.max()))
-    return RunUps(study, found, judge(found, study.severity, found.system.modes(up_to=needed)))
+    severity = None if study.severity is None else judge(found, study.severity)
+    return RunUps(study, found, severity)
 
 
 def coincidences(study: Study, modes: Modes, screening: Screening) -> Sequence[RunUp]:

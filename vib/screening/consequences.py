@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING
 
 from vib.screening.judgement import Row
 from vib.severity.consequence import consequence
-from vib.severity.severity import judged_outputs, main_frequency
+from vib.severity.judging import judged_outputs, main_frequency
 from vib.severity.standards import MEANING
 from vib.severity.support import judge_support
 

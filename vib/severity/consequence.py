@@ -9,8 +9,8 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 from numpy.typing import NDArray
 
+from vib.severity.judging import axis_of, judged_outputs
 from vib.severity.levels import band_levels, strain, zone_numbers
-from vib.severity.severity import axis_of, judged_outputs
 from vib.severity.standards import ZONES, Zone, boundaries
 from vib.severity.support import Support
 from vib.study.severity import Severity as Table

@@ -22,6 +22,7 @@ SOURCE = "API 617 / API RP 684, formula from memory"
 NOT_ASKED_BELOW = 2.5  # an amplification factor below this asks for no margin
 _CAP_BELOW, _CAP_ABOVE, _STEP_ABOVE, _SCALE = 0.16, 0.26, 0.10, 0.17
 _FARTHEST = 0.4  # modes farther from the running speeds than any margin asked for are left out
+_NO_PEAK_RATIO = np.sqrt(0.5)  # damped so much or more, a mode has no peak (ISO 2041)
 _LEAST_POINTS = 5  # of the run-up between the half-power points, for the peak to be trusted
 _NEAR = 0.1  # a peak this near to the nearest natural frequency, as a share of it, is that mode's
 
@@ -156,65 +157,86 @@ def _summit(x: Array, y: Array) -> tuple[float, float]:
     return float(place), float(y[0] + slopes[0] * (place - x[0]) + bend * (place - x[0]) * (place - x[1]))
 
 
+@dataclass(frozen=True)
+class Critical:
+    """A critical speed, rev/s: number of the mode, and its damping ratio there."""
+
+    mode: int
+    speed_hz: float
+    damping_ratio: float
+
+
+def critical_speeds(modes: Modes, met: Sequence[Critical], span: Range) -> tuple[Critical, ...]:
+    """The critical speeds of a shaft (order 1), by speed.
+
+    Parameters
+    ----------
+    modes
+        Of the system at its stated speed.
+    met
+        Those that a run-up found, where modes may change with the speed.
+    span
+        Its slowest and fastest speed, rev/s: where it found any, only modes outside it are added.
+    """
+    others = [
+        Critical(index + 1, float(modes.frequencies_hz[index]), float(modes.damping_ratios[index]))
+        for index, eigenvalue in enumerate(modes.eigenvalues)
+        if index >= modes.rigid_body_count and eigenvalue.imag != 0
+    ]
+    added = [one for one in others if not met or not span[0] <= one.speed_hz <= span[1]]
+    found = [one for one in (*met, *added) if one.damping_ratio < _NO_PEAK_RATIO]
+    return tuple(sorted(found, key=lambda one: one.speed_hz))
+
+
 def judge_margins(
-    modes: Modes | None,
+    critical: Sequence[Critical],
     table: Table,
     running: Sequence[Range],
     speed_hz: Array,
     curves: Array,
 ) -> tuple[Margin, ...]:
-    """Every mode near the running speeds, as a critical speed of the main shaft (order 1).
+    """Every critical speed of the main shaft near its running speeds.
 
     Parameters
     ----------
-    modes
-        Of the system; None: nothing is judged.
+    critical
+        As from `critical_speeds`.
     table
         A margin of its own stands in for the formula.
     running
-        Running speeds (from, to) of the main shaft, rev/s.
+        Running speeds (from, to) of the main shaft, rev/s; without any nothing is judged.
     speed_hz, curves
         (k,) speeds and (k, p) amplitudes at turning frequency of the judged places along each axis; p may
         be 0.
     """
-    if modes is None or not running:
+    if not running or not critical:
         return ()
-    oscillating = [
-        index for index, ratio in enumerate(modes.damping_ratios) if _resonates(modes, index, ratio)
-    ]
-    natural = modes.frequencies_hz[oscillating]
+    speeds = np.array([one.speed_hz for one in critical])
     own: dict[int, list[Peak]] = {}
     for peak in (peak for curve in curves.T for peak in half_power(speed_hz, curve)):
-        if natural.size:
-            nearest = int(np.argmin(np.abs(natural - peak.speed_hz)))
-            if abs(peak.speed_hz - natural[nearest]) <= _NEAR * natural[nearest]:
-                own.setdefault(oscillating[nearest], []).append(peak)
-    margins = (_margin(modes, index, own.get(index, []), running, table) for index in oscillating)
+        nearest = int(np.argmin(np.abs(speeds - peak.speed_hz)))
+        if abs(peak.speed_hz - speeds[nearest]) <= _NEAR * speeds[nearest]:
+            own.setdefault(nearest, []).append(peak)
+    margins = (_margin(one, own.get(k, []), running, table) for k, one in enumerate(critical))
     return tuple(margin for margin in margins if margin.actual <= _reach(table))
 
 
-def _resonates(modes: Modes, index: int, ratio: float) -> bool:
-    return index >= modes.rigid_body_count and modes.eigenvalues[index].imag != 0 and ratio < np.sqrt(0.5)
-
-
-def _margin(
-    modes: Modes, index: int, peaks: Sequence[Peak], running: Sequence[Range], table: Table
-) -> Margin:
+def _margin(one: Critical, peaks: Sequence[Peak], running: Sequence[Range], table: Table) -> Margin:
     if peaks:
         peak = max(peaks, key=lambda peak: peak.height)
-        critical, factor = peak.speed_hz, peak.amplification
+        speed, factor = peak.speed_hz, peak.amplification
         how = "half-power points of the run-up"
     else:
-        critical, ratio = float(modes.frequencies_hz[index]), float(modes.damping_ratios[index])
+        speed, ratio = one.speed_hz, one.damping_ratio
         factor = 1 / (2 * ratio) if ratio > 0 else np.inf
         how = f"damping ratio {ratio:.3g}: 1 / (2 ratio); no peak of its own in the run-up"
-    below, actual = _distance(critical, running)
+    below, actual = _distance(speed, running)
     if table.separation_margin is not None:
         wanted, source = table.separation_margin, STATED
     else:
         # inside the range the larger of the two is asked for; whichever, it is not met
         wanted, source = wanted_margin(factor, above=below is not True), SOURCE
-    return Margin(index + 1, critical, factor, how, below, actual, wanted, source, bool(peaks))
+    return Margin(one.mode, speed, factor, how, below, actual, wanted, source, bool(peaks))
 
 
 def _distance(critical: float, running: Sequence[Range]) -> tuple[bool | None, float]:

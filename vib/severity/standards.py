@@ -36,6 +36,7 @@ _BY_CLASS: dict[str, tuple[float, ...]] = {
 }
 
 BAND_TO_HZ = 1000.0
+_SLOWEST_RPM = 120
 _BAND_FROM_HZ, _SLOW_BAND_FROM_HZ, _SLOW_HZ = 10.0, 2.0, 600.0 / 60.0
 
 MEANING: dict[Zone, str] = {
@@ -116,9 +117,18 @@ def band_words(table: Table) -> str:
     )
 
 
-def worst(zones: Any) -> Zone | None:
-    """The worst of some zones; None of none."""
-    return max(zones, default=None)
+def outside_scope(table: Table, speed_hz: float) -> tuple[str, ...]:
+    """A remark where the running speed (rev/s) is one that the standard is not for.
+
+    ISO 20816-3: 120 r/min to 30 000 r/min, ISO 10816-3: 120 r/min to 15 000 r/min; both from memory.
+    """
+    fastest = {"ISO 20816-3": 30000, "ISO 10816-3": 15000}.get(table.rules or "")
+    if fastest is None or _SLOWEST_RPM <= 60 * speed_hz * (1 + 1e-9) <= fastest * (1 + 2e-9):
+        return ()
+    return (
+        f"{table.rules} is for running speeds from {_SLOWEST_RPM} to {fastest} r/min (from memory), not for "
+        f"{60 * speed_hz:.5g} r/min: its zones say little here.",
+    )
 
 
 def _scaled(values: tuple[float, ...], per_si: float) -> tuple[float, float, float]:

@@ -119,9 +119,7 @@ class Support:
         }
 
 
-def judge_support(
-    modes: Modes | None, table: Table, places: Sequence[str], main_hz: float
-) -> Mapping[str, Support]:
+def judge_support(modes: Modes, table: Table, places: Sequence[str], main_hz: float) -> Mapping[str, Support]:
     """The support along x, y and z; empty where no limit depends on it.
 
     A mode is one along an axis where the judged places move by at least a tenth of its greatest motion, and
@@ -131,8 +129,7 @@ def judge_support(
     Parameters
     ----------
     modes
-        Of a structure, rigid-body modes included, best up to 1.25 times ``main_hz``; None only if the table
-        states the support.
+        Of a structure, rigid-body modes included, best up to 1.25 times ``main_hz``.
     table
         Says how the machine stands, or leaves it to be judged.
     places
@@ -142,7 +139,7 @@ def judge_support(
     """
     if not table.needs_support:
         return {}
-    along = np.zeros((3, 0), dtype=bool) if modes is None else modes_along(modes, places)
+    along = modes_along(modes, places)
     return {
         axis: _judged(modes, getattr(table.support, axis), axis, row, main_hz)
         for axis, row in zip(AXES, along, strict=True)
@@ -167,13 +164,13 @@ def modes_along(modes: Modes, places: Sequence[str]) -> NDArray[np.bool_]:
 
 
 def _judged(
-    modes: Modes | None, stated: Stand | None, axis: str, along: NDArray[np.bool_], main_hz: float
+    modes: Modes, stated: Stand | None, axis: str, along: NDArray[np.bool_], main_hz: float
 ) -> Support:
     if stated is not None:
         return Support(axis, stated, True, None, None, 0.0, main_hz, "stated in the study")
     lowest = int(np.argmax(along)) if along.any() else None
-    if lowest is None or modes is None:
-        reach = 0.0 if modes is None else modes.complete_below_hz or 0.0
+    if lowest is None:
+        reach = modes.complete_below_hz or 0.0
         return Support(axis, "rigid", False, None, None, reach, main_hz, _SOURCE)
     natural = float(modes.frequencies_hz[lowest])
     stand: Stand = "rigid" if _rigid(natural, main_hz) else "flexible"
