@@ -281,3 +281,16 @@ def test_wrong_speeds_and_shafts_are_refused(tmp_path):
     ):
         with pytest.raises(ModelError, match=message):
             ran(study, **arguments)
+
+
+def test_what_grows_at_every_speed_is_unstable_at_every_speed(tmp_path):
+    path = tmp_path / "grows.toml"
+    path.write_text(
+        '[units]\nmass = "kg"\nstiffness = "N/m"\ndamping = "N s/m"\n[matrices]\nmass = [[1]]\n'
+        'stiffness = [[900]]\ndamping = [[-1]]\n[[excitations]]\nname = "motor"\nspeed = ["60 rpm", "600 rpm"]\n'
+        'at = "1"\nforces = {order = 1, amplitude = "1 N"}\n',
+        encoding="utf-8",
+    )
+    found = vib.run_up(vib.read(path))
+    assert not found.stable_at.any()
+    assert np.isinf(found.velocity_rms_m_s).all()

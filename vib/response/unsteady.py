@@ -50,6 +50,8 @@ def unsteady(
         if ranges and ranges[-1][1] >= start:
             start = ranges.pop()[0]
         ranges.append((start, stop))
+    if len(speeds) == 1 and ranges:  # the same at every speed
+        ranges = [(low, high)]
     doubt = (
         f"Forces can feed energy in: stability was judged by the {_SLOWEST} slowest motions at "
         f"{len(speeds)} speeds only."
