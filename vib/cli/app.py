@@ -12,7 +12,7 @@ from vib.cli.delivery import Wish
 _HELP = """Natural frequencies, ring-down and resonance screening of machine frames.
 
 A study is one TOML file with units. In the order of work: new, check, modes, ring, respond, screen,
-report.
+scatter, sweep, report.
 
 \b
 Example:
@@ -63,6 +63,32 @@ Band = Annotated[
         metavar="RATIO",
         help='Half width of the bands, such as "25 %", for excitations without their own.',
         show_default="20 %",
+    ),
+]
+Workers = Annotated[
+    int | None,
+    typer.Option(
+        "--workers",
+        metavar="NUMBER",
+        min=1,
+        help="How many work at a time.",
+        show_default="one for each core",
+    ),
+]
+Cluster = Annotated[
+    str | None,
+    typer.Option(
+        "--cluster",
+        metavar="ADDRESS",
+        help='Run on a Dask cluster instead: the address of its scheduler, such as "tcp://host:8786".',
+    ),
+]
+Resume = Annotated[
+    Path | None,
+    typer.Option(
+        "--resume",
+        metavar="FOLDER",
+        help="Keep what is done in this folder, and take it up again from there.",
     ),
 ]
 
@@ -279,6 +305,101 @@ def screen(
     from vib.cli.jobs import show_screening
 
     return show_screening(study, band, pictures, Wish(json, out, quiet))
+
+
+@app.command(short_help="What tolerances do to the frequencies.")
+def scatter(
+    study: StudyFile,
+    samples: Annotated[
+        int, typer.Option("--samples", metavar="NUMBER", min=2, help="How many; best a power of two.")
+    ] = 1024,
+    seed: Annotated[
+        int, typer.Option("--seed", metavar="NUMBER", min=0, help="The same seed draws the same samples.")
+    ] = 0,
+    method: Annotated[
+        Literal["sobol", "latin-hypercube"], typer.Option("--method", help="How the samples are spread.")
+    ] = "sobol",
+    levels: Annotated[
+        int,
+        typer.Option(
+            "--levels", metavar="NUMBER", min=0, help="For how many samples vibration is predicted by forces."
+        ),
+    ] = 256,
+    count: Count = None,
+    up_to: UpTo = None,
+    band: Band = None,
+    workers: Workers = None,
+    cluster: Cluster = None,
+    resume: Resume = None,
+    json: AsJson = False,
+    out: Out = None,
+    quiet: Quiet = False,
+    units: Units = None,
+    pictures: Pictures = "svg",
+) -> int:
+    """What the tolerances of a study do: scatter of frequencies and levels, probability of resonance.
+
+    Quantities are drawn within the tolerances that the study states, such as "2 kN/mm +- 20 %". Exit status
+    1 if the probability of a resonance, or of a level in zone C or worse, is above 5 %, or a sample is
+    unstable.
+
+    \b
+    Example:
+      vib scatter frame.toml --samples 4096 --out scatter
+    """
+    from vib.cli.scattering import Running, show_scatter
+
+    running = Running(count, up_to, workers, cluster, resume)
+    wish = Wish(json, out, quiet)
+    return show_scatter(study, (samples, seed, method, levels), band, running, units, pictures, wish)
+
+
+@app.command(
+    short_help="Modes while a quantity or two vary.",
+    context_settings={"ignore_unknown_options": True},  # "-5 mm" is a value; what is left over is counted
+)
+def sweep(
+    study: StudyFile,
+    ends: Annotated[list[str] | None, typer.Argument(metavar="FROM TO", hidden=True)] = None,
+    vary: Annotated[
+        list[str] | None,
+        typer.Option(
+            metavar="ENTRY FROM TO",
+            help='Entry of the study and its ends, such as "springs[0].stiffness.x" "1 kN/mm" "9 kN/mm"; '
+            "may be given twice.",
+        ),
+    ] = None,
+    steps: Annotated[
+        int | None,
+        typer.Option(
+            "--steps", metavar="NUMBER", min=2, help="How many values of each.", show_default="41, 15 of two"
+        ),
+    ] = None,
+    spacing: Annotated[
+        Literal["linear", "logarithmic"], typer.Option("--spacing", help="How the values are spaced.")
+    ] = "linear",
+    count: Count = None,
+    up_to: UpTo = None,
+    workers: Workers = None,
+    cluster: Cluster = None,
+    resume: Resume = None,
+    json: AsJson = False,
+    out: Out = None,
+    quiet: Quiet = False,
+    units: Units = None,
+    pictures: Pictures = "svg",
+) -> int:
+    """Natural frequencies and damping while one quantity of the study, or two, run from one value to another.
+
+    \b
+    Example:
+      vib sweep frame.toml --vary "springs[0].stiffness.x" "1 kN/mm" "9 kN/mm" --out sweep
+    """
+    from vib.cli.scattering import Running, show_sweep
+
+    running = Running(count, up_to, workers, cluster, resume)
+    wish = Wish(json, out, quiet)
+    return show_sweep(study, (vary or [], ends or []), steps, spacing, running, units, pictures, wish)
 
 
 @app.command(short_help="All of it as one printable page.")

@@ -2,8 +2,8 @@
 
 Rooms: ``sampling`` (points and distributions), ``family``, ``interpolation``, ``pattern`` (matrices as
 functions of the quantities), ``reanalysis``, ``evaluator`` and what they use (modes of many samples),
-``engine`` (which modes, and where the work is done), ``statistics``, ``chances``, ``ranking``, ``sensitivity`` (what the
-samples say), ``scatter`` and ``sweep`` (the two nouns).
+``engine`` (which modes, and where the work is done), ``levels`` (predicted vibration), ``statistics``,
+``chances``, ``ranking``, ``sensitivity`` (what the samples say), ``scatter`` and ``sweep`` (the two nouns).
 
 The package can be called: ``vib.scatter(study)`` is `vib.scatter.scatter.scatter`.
 """

@@ -34,7 +34,8 @@ class Batch:
     complete_hz
         (N,) no mode below this frequency is missing from the columns.
     levels
-        (N, q) r.m.s. velocity at q outputs, m/s; None where no levels were asked for.
+        (N, q, 4) r.m.s. velocity (m/s) and displacement (m) of q outputs in the band of a standard, and
+        the same of all frequencies; None where no levels were asked for.
     """
 
     frequencies_hz: Array

@@ -3,14 +3,19 @@
 from __future__ import annotations
 
 from collections.abc import Callable
+from contextlib import AbstractContextManager, nullcontext
+from dataclasses import dataclass
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
+from threadpoolctl import threadpool_limits
 
+from vib.progress import tell
 from vib.scatter.batch import Array, Batch
 from vib.scatter.family import Family
 from vib.scatter.reanalysis import Reanalysis
+from vib.scatter.running import Task, run
 
 if TYPE_CHECKING:
     from vib.study import Study
@@ -36,16 +41,33 @@ def limits_of(
     return {"count": LEAST_COUNT} if few else {"up_to": limit}
 
 
-def evaluate(
-    family: Family,
-    values: Array,
-    *,
-    workers: int | None,
-    cluster: str | None,
-    resume_in: str | Path | None,
-    progress: Progress | None,
-) -> tuple[Batch, tuple[str, ...]]:
-    """The modes of samples (N, d) of a family, and what there is to remark."""
+def calmly(study: Study) -> AbstractContextManager[object]:
+    """One BLAS thread for a frame: its matrices are small, and threads beside workers only wait."""
+    if study.mesh is not None or study.matrices is not None:
+        return nullcontext()
+    import scipy.linalg  # noqa: F401  (only a library that is loaded can be told)
+
+    return threadpool_limits(1, user_api="blas")  # type: ignore[no-any-return]
+
+
+@dataclass(frozen=True)
+class Where:
+    """Where the work is done, what keeps it, and who hears how far it is; see `vib.scatter.running.run`."""
+
+    workers: int | None = None
+    cluster: str | None = None
+    resume_in: str | Path | None = None
+    progress: Progress | None = None
+
+    def run(self, task: Task, values: Array, work: str) -> Batch:
+        """Do a task for samples (N, d); ``work`` names it."""
+        kept = None if self.resume_in is None else Path(self.resume_in) / work.replace(" ", "_")
+        heard = self.progress or (lambda share, left: tell(work, share, left))
+        return run(task, values, workers=self.workers, cluster=self.cluster, resume_in=kept, progress=heard)
+
+
+def reanalysis_of(family: Family, values: Array) -> Reanalysis:
+    """The reduced basis for samples (N, d) of a family."""
+    tell("reduced basis of the samples")
     mixed = values[np.random.default_rng(0).permutation(len(values))]
-    reanalysis = Reanalysis.build(family, training=mixed if len(mixed) >= ENOUGH else None)
-    return reanalysis.evaluate(values), reanalysis.remarks
+    return Reanalysis.build(family, training=mixed if len(mixed) >= ENOUGH else None)

@@ -12,9 +12,11 @@ import numpy as np
 from vib.errors import ModelError, StudyError
 from vib.scatter.batch import Array, Batch
 from vib.scatter.chances import Chances, chances
-from vib.scatter.engine import Progress, evaluate, limits_of
+from vib.scatter.engine import Progress, Where, calmly, limits_of, reanalysis_of
 from vib.scatter.family import Family
+from vib.scatter.levels import Levels, levels, measuring
 from vib.scatter.ranking import Effects, effects
+from vib.scatter.reanalysis import Reanalysis
 from vib.scatter.sampling import Design, Factors, Method, is_power_of_two, unit_points
 from vib.scatter.sensitivity import sensitivities
 from vib.scatter.statistics import Distribution, distribution, enough_for_percentiles
@@ -23,7 +25,7 @@ if TYPE_CHECKING:
     from vib.modes import Modes
     from vib.study import Study
 
-USUAL_SAMPLES = 1024
+USUAL_SAMPLES, USUAL_LEVELS = 1024, 256
 MOST_CORNERS = 6  # quantities of one table that are tried at all corners
 LEAST_ROWS, MOST_ROWS = 64, 1024  # of the design that ranks the factors
 
@@ -82,6 +84,8 @@ class Scatter:
         (m,) distributions.
     chances
         Probabilities of a mode within the band of an excitation; None without excitations.
+    levels
+        Predicted vibration of some of the samples; None where nothing states a force.
     ranking
         Which factors matter; None where it was not asked for.
     slopes
@@ -100,6 +104,7 @@ class Scatter:
     frequencies_hz: tuple[Distribution, ...]
     damping_ratios: tuple[Distribution, ...]
     chances: Chances | None
+    levels: Levels | None
     ranking: Ranking | None
     slopes: Array
     remarks: tuple[str, ...]
@@ -131,6 +136,7 @@ def scatter(
     up_to: str | float | None = None,
     band: float | str | None = None,
     ranking: bool = True,
+    level_samples: int = USUAL_LEVELS,
     workers: int | None = None,
     cluster: str | None = None,
     resume_in: str | Path | None = None,
@@ -156,6 +162,9 @@ def scatter(
     ranking
         Whether to rank the quantities, which takes half as many further samples for each of them (at most
         1024), and for two more.
+    level_samples
+        For how many of the samples vibration is predicted, where forces are stated; each takes some
+        hundredths of a second.
     workers
         How many processes; default: one for each core.
     cluster
@@ -179,19 +188,20 @@ def scatter(
     check_values(study, factors.paths, values)
     design, further = None, np.zeros((0, values.shape[1]))
     if ranking:
-        rows = _rows(samples)
-        design = Design.of(rows, len(factors.names), seed=seed, method=method)
+        design = Design.of(_rows(samples), len(factors.names), seed=seed, method=method)
         further = factors.values(design.points)
         check_values(study, factors.paths, further)
     everything = np.vstack([values, further])
     limits = zip(everything.min(axis=0).tolist(), everything.max(axis=0).tolist(), strict=True)
     bounds = dict(zip(factors.paths, limits, strict=True))
-    family = Family.from_study(study, bounds, **limits_of(study, count, up_to, band))
-    found, notes = evaluate(
-        family, everything, workers=workers, cluster=cluster, resume_in=resume_in, progress=progress
-    )
-    batch = _part(found, slice(0, samples))
-    modes = family.modes
+    where = Where(workers, cluster, resume_in, progress)
+    with calmly(study):
+        family = Family.from_study(study, bounds, **limits_of(study, count, up_to, band))
+        reanalysis = reanalysis_of(family, everything)
+        found = where.run(reanalysis.evaluator, everything, "samples")
+        predicted = _predicted(study, reanalysis, values[:level_samples], where)
+        slopes = sensitivities(family)
+    modes, batch = family.modes, _part(found, slice(0, samples))
     met = chances(study, modes, factors.paths, values, batch, band=band) if study.excitations else None
     ranked = None
     if design is not None:
@@ -207,10 +217,19 @@ def scatter(
         frequencies_hz=_distributions(batch.frequencies_hz, modes.frequencies_hz),
         damping_ratios=_distributions(batch.damping_ratios, modes.damping_ratios),
         chances=met,
+        levels=predicted,
         ranking=ranked,
-        slopes=sensitivities(family),
-        remarks=(*_remarks(samples, method, batch, met), *notes),
+        slopes=slopes,
+        remarks=(*_remarks(samples, method, batch, met), *reanalysis.remarks),
     )
+
+
+def _predicted(study: Study, reanalysis: Reanalysis, values: Array, where: Where) -> Levels | None:
+    """Predicted vibration of some samples (N, d); None where nothing states a force, or of no samples."""
+    task = measuring(study, reanalysis.evaluator) if len(values) else None
+    if task is None:
+        return None
+    return levels(task[1], task[0], where.run(task[0], values, "levels of samples"))
 
 
 def _rows(samples: int) -> int:

@@ -11,7 +11,7 @@ import numpy as np
 
 from vib.errors import ModelError, UnitError
 from vib.scatter.batch import Array, Batch
-from vib.scatter.engine import Progress, evaluate, limits_of
+from vib.scatter.engine import Progress, Where, calmly, limits_of, reanalysis_of
 from vib.scatter.family import Family, nominal_value
 from vib.units import parse
 
@@ -128,13 +128,12 @@ def sweep(
     grid = np.meshgrid(*(one.values for one in swept), indexing="ij")
     values = np.stack([axis.ravel() for axis in grid], axis=1)
     bounds = {one.path: (float(one.values.min()), float(one.values.max())) for one in swept}
-    family = Family.from_study(study, bounds, **limits_of(study, count, up_to, None))
-    batch, notes = evaluate(
-        family, values, workers=workers, cluster=cluster, resume_in=resume_in, progress=progress
-    )
-    return Sweep(
-        study=study, modes=family.modes, swept=swept, batch=batch, remarks=(*_remarks(batch), *notes)
-    )
+    with calmly(study):
+        family = Family.from_study(study, bounds, **limits_of(study, count, up_to, None))
+        reanalysis = reanalysis_of(family, values)
+        batch = Where(workers, cluster, resume_in, progress).run(reanalysis.evaluator, values, "sweep")
+    notes = (*_remarks(batch), *reanalysis.remarks)
+    return Sweep(study=study, modes=family.modes, swept=swept, batch=batch, remarks=notes)
 
 
 def _swept(
@@ -143,7 +142,8 @@ def _swept(
     nominal = nominal_value(study, path)
     kind = study.kind_of(path, nominal)
     try:
-        start, stop = (parse(end, kind) if isinstance(end, str) else float(end) for end in ends)
+        unit = study.units.declared().get(kind)
+        start, stop = (parse(end, kind, unit=unit) if isinstance(end, str) else float(end) for end in ends)
     except UnitError as error:
         raise UnitError(f"{path}: {error}") from None
     if not np.isfinite([start, stop]).all() or start == stop:
