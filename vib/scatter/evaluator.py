@@ -142,7 +142,9 @@ class Evaluator:
         likeness[:, np.arange(rigid), np.arange(rigid)] = 1.0
         size = np.abs(values)
         tiny = np.finfo(float).tiny
-        apart = np.abs(np.log(np.maximum(size, tiny)[:, :, None] / np.maximum(np.abs(self.nominal), tiny)))
+        apart = np.abs(
+            np.log(np.maximum(size, tiny))[:, :, None] - np.log(np.maximum(np.abs(self.nominal), tiny))
+        )
         swinging = (values.imag > 0)[:, :, None] & (self.nominal.imag > 0)
         weight = np.where(swinging, CLOSENESS, CLOSENESS_REAL)
         chosen = follow(likeness - weight * np.minimum(apart, 1.0))

@@ -25,6 +25,7 @@ from vib.solve.dense import dense_undamped
 from vib.solve.shift_invert import sparse_undamped
 from vib.solve.undamped import Undamped
 from vib.study import Study
+from vib.study.geometry import Material
 from vib.system import Array, Matrix, System
 
 EXACT = 1e-8  # change of an entry, against the largest of its row and column, that counts as none
@@ -203,15 +204,20 @@ class Family:
         pattern, everywhere = self.pattern, np.arange(len(self.base))
         return np.array([pattern.law(*row) for row in ((everywhere, self.base), *self.changes)])
 
-    def interpolated(self, values: Array) -> System:
-        """The system of one sample (d,) by interpolation; its anatomy is otherwise the nominal one."""
+    def vector(self, values: Array) -> Array:
+        """The entries of all matrices of one sample (d,) by interpolation."""
         vector = self.base.copy()
         for factor, (where, change) in zip(self.coefficients(values[None])[0, 1:], self.changes, strict=True):
             vector[where] += factor * change
+        return vector
+
+    def interpolated(self, values: Array) -> System:
+        """The system of one sample (d,) by interpolation; its anatomy is otherwise the nominal one."""
+        vector = self.vector(values)
         if self.pattern is None:
             raise AccuracyError("These matrices are not interpolated.")
         everywhere = np.arange(len(vector))
-        law, anatomy = stated_law(self.modes.system, self.pattern.law(everywhere, vector))
+        law, anatomy = stated_law(self.modes.system, self.pattern, vector)
         stiffness, mass, damping, gyroscopic = (
             self.pattern.matrix(kind, everywhere, vector) for kind in MATRICES
         )
@@ -244,7 +250,7 @@ def nominal_value(study: Study, path: str) -> float:
             if isinstance(found, Mapping):
                 found = found[step]
             else:
-                found = found[int(step)] if isinstance(found, tuple) else getattr(found, step)
+                found = found[int(step)] if isinstance(found, tuple) else _figure(found, step)
         except (AttributeError, LookupError, ValueError):
             raise ModelError(f"{path}: the study has no such entry ({step} is not there)") from None
     if isinstance(found, tuple) and len(found) == 2 and found[0] == found[1]:
@@ -252,6 +258,12 @@ def nominal_value(study: Study, path: str) -> float:
     if isinstance(found, bool) or not isinstance(found, int | float):
         raise ModelError(f"{path}: this entry holds no single number that could be varied")
     return float(found)
+
+
+def _figure(table: object, name: str) -> object:
+    """An entry of a table; of a material also what it takes over from the one it is like."""
+    given = getattr(table, name)
+    return getattr(table.data, name, None) if given is None and isinstance(table, Material) else given
 
 
 def lowest_undamped(system: System, count: int, *, certify: bool = False) -> Undamped:
@@ -286,8 +298,8 @@ def _interpolated(builder: Builder, modes: Modes, nominal: Array, bounds: Array)
             names=builder.paths,
         )
         interpolation, changes = search.run()
-    except (UnsuitedError, TypeError, AccuracyError) as fault:
-        return replace(rebuilt_family, remarks=(_rebuilding(str(fault)),))
+    except (UnsuitedError, AccuracyError) as fault:
+        return replace(rebuilt_family, remarks=(_rebuilding(str(fault).rstrip(".")),))
     family = replace(rebuilt_family, interpolation=interpolation, pattern=pattern, base=base, changes=changes)
     count = modes.count + 1
     checks = tuple(
@@ -296,9 +308,9 @@ def _interpolated(builder: Builder, modes: Modes, nominal: Array, bounds: Array)
     )
     error, worst = 0.0, 0.0
     for check, vector in zip(checks, vectors, strict=True):
-        found = family.interpolated(check.values)
-        worst = max(worst, float(_relative(np.abs(pattern.vector(found) - vector), scale).max(initial=0.0)))
-        error = max(error, _frequency_error(found, check))
+        difference = np.abs(family.vector(check.values) - vector)
+        worst = max(worst, float(_relative(difference, scale).max(initial=0.0)))
+        error = max(error, _frequency_error(family.interpolated(check.values), check))
     if max(worst, error) > TRUSTED:
         reason = f"at random points the interpolated matrices are {max(worst, error):.1g} off"
         return replace(rebuilt_family, checks=checks, remarks=(_rebuilding(reason),))

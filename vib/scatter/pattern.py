@@ -17,6 +17,7 @@ Indices = NDArray[np.intp]
 # which entries of the vector change, and by how much
 Change = tuple[Indices, Array]
 
+ROUND_OFF = 1e-12  # of the largest entry of a row and column
 MATRICES = ("stiffness", "mass", "damping", "gyroscopic")
 
 
@@ -39,8 +40,8 @@ class Pattern:
 
         Raises
         ------
-        TypeError
-            The damping law weighs a part whose stiffness is no matrix.
+        AccuracyError
+            The damping law weighs several parts whose stiffness is no matrix.
         """
         kinds = tuple(_matrices(systems[0]))
         keys = np.unique(np.concatenate([_entries(system)[0] for system in systems]))
@@ -56,10 +57,14 @@ class Pattern:
         """
         keys, values = _entries(system)
         places = np.minimum(np.searchsorted(self.keys, keys), len(self.keys) - 1)
-        if (self.keys[places] != keys).any():
-            raise AccuracyError("A sample couples freedoms that were not coupled before.")
+        known = self.keys[places] == keys
+        if not known.all():
+            # entries that cancel may be left as round-off
+            size = replace(self, keys=keys).scale(values)
+            if (np.abs(values[~known]) > ROUND_OFF * size[~known]).any():
+                raise AccuracyError("A sample couples freedoms that were not coupled before.")
         found = np.zeros(len(self.keys))
-        found[places] = values
+        found[places[known]] = values[known]
         return found
 
     def matrix(self, kind: str, where: Indices, values: Array) -> Matrix | None:
@@ -96,9 +101,17 @@ class Pattern:
 def _matrices(system: System) -> dict[str, Any]:
     found = {kind: getattr(system, kind) for kind in MATRICES}
     if system.damping_law.material and system.anatomy is not None:
-        for number, part in enumerate(system.anatomy.parts):
+        parts = system.anatomy.parts
+        # the cells of a mesh only multiply, but where they are one part they are what the others leave
+        cells = [number for number, part in enumerate(parts) if not sparse.issparse(part.stiffness)]
+        cells = [number for number in cells if parts[number].stiffness is not None]
+        if len(cells) > 1:
+            raise AccuracyError("Material damping of several regions of a mesh is not interpolated.")
+        for number, part in enumerate(parts):
             if part.damping_ratio is not None:
-                found[f"part {number}"] = part.stiffness
+                others = [row.stiffness for row in parts if row is not part and row.stiffness is not None]
+                left = number in cells
+                found[f"part {number}"] = system.stiffness - sum(others) if left else part.stiffness
     return found
 
 
@@ -129,16 +142,20 @@ def law_figures(system: System) -> Array:
     return np.array(rows, dtype=float)
 
 
-def stated_law(nominal: System, figures: Array) -> tuple[DampingLaw, Anatomy | None]:
-    """The damping law that these figures state, and the anatomy whose parts carry their ratios."""
+def stated_law(nominal: System, pattern: Pattern, vector: Array) -> tuple[DampingLaw, Anatomy | None]:
+    """The damping law of a vector, and the anatomy whose parts have their ratio and stiffness."""
+    everywhere = np.arange(len(vector))
+    figures = pattern.law(everywhere, vector)
     law, anatomy = nominal.damping_law, nominal.anatomy
     bands = 1 + 3 * len(law.bands)
     rows = tuple((float(a), float(b), float(c)) for a, b, c in figures[1:bands].reshape(-1, 3))
     if anatomy is not None and law.material:
         ratios = iter(figures[bands:].tolist())
-        parts = tuple(
-            part if part.damping_ratio is None else replace(part, damping_ratio=next(ratios))
-            for part in anatomy.parts
-        )
-        anatomy = replace(anatomy, parts=parts)
+        parts = []
+        for number, part in enumerate(anatomy.parts):
+            if part.damping_ratio is not None:
+                stiffness = pattern.matrix(f"part {number}", everywhere, vector)
+                part = replace(part, damping_ratio=next(ratios), stiffness=stiffness)
+            parts.append(part)
+        anatomy = replace(anatomy, parts=tuple(parts))
     return DampingLaw(float(figures[0]), rows, law.material), anatomy

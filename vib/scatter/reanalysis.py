@@ -149,18 +149,20 @@ class _Making:
         proportional = not spinning
         tried = self.training[SNAPSHOTS : SNAPSHOTS + TRIED]
 
-        def reduced() -> Evaluator:
-            basis = principal(metric, mass, nominal.shapes, np.hstack(shapes), self.tolerance)
+        def reduced(energy: float) -> Evaluator:
+            basis = principal(metric, mass, nominal.shapes, np.hstack(shapes), energy)
             model = self._model(basis, seen, proportional=proportional, spinning=spinning)
             everything = nominal.complete and self.count >= len(nominal.values)
             return self._evaluator(model, basis, everything)
 
-        evaluator = reduced()
+        energy = self.tolerance
+        evaluator = reduced(energy)
         if proportional and evaluator.model and evaluator.model.coupling(tried[:8]) > COUPLED:
             proportional = False
         if not proportional:
-            shapes += [self._complex(metric, sample) for sample in self.training[: SNAPSHOTS // 2]]
-            evaluator = reduced()
+            shapes.append(self._complex(metric, self.family.nominal))
+            shapes += [self._dragged(metric, sample) for sample in self.training[:SNAPSHOTS]]
+            evaluator = reduced(energy)
         for _ in range(ROUNDS):
             found, sound = evaluator.reduced(tried)
             if sound.mean() >= 1 - GOOD:
@@ -169,7 +171,8 @@ class _Making:
             worst = np.argsort(np.where(sound, 0.0, relative.max(axis=1)))[::-1][:ADDED]
             find = self._undamped if proportional else self._complex
             shapes += [find(metric, sample) for sample in tried[worst]]
-            evaluator = reduced()
+            energy /= 2  # what is missing may be less than was thought to matter
+            evaluator = reduced(energy)
         evaluator = self._calibrated(evaluator)
         size = evaluator.model.rank if evaluator.model else 0
         return Reanalysis(family.modes, evaluator, size, family.remarks)
@@ -178,6 +181,15 @@ class _Making:
         """Undamped shapes (n, k) of a sample, with unit energy in the metric."""
         found = lowest_undamped(self.family.interpolated(sample), self.count)
         return metric.scaled(found.shapes)
+
+    def _dragged(self, metric: Metric, sample: Array) -> Array:
+        """Where dampers and spinning bodies push undamped shapes (n, k), to the first order."""
+        system = self.family.interpolated(sample)
+        found = lowest_undamped(system, self.count)
+        linear = sum(term for term in (system.damping, system.gyroscopic) if term is not None)
+        energy = np.einsum("ij,ij->j", found.shapes, metric.matrix @ found.shapes)
+        pushed = found.angular * (linear @ found.shapes)
+        return np.asarray(metric.factor.solve_once(pushed) / np.sqrt(energy))
 
     def _complex(self, metric: Metric, sample: Array) -> Array:
         """Real and imaginary parts (n, 2 k) of the damped shapes of a sample."""
