@@ -5,6 +5,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
+import vib
 import vib.response.receptance as receiving
 import vib.response.steady as steadying
 from tests.response.machines import FRAME, MOUNTS, SKID, TAU, ran, skew, study_of
