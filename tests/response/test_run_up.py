@@ -288,7 +288,8 @@ def test_what_grows_at_every_speed_is_unstable_at_every_speed(tmp_path):
     path = tmp_path / "grows.toml"
     path.write_text(
         '[units]\nmass = "kg"\nstiffness = "N/m"\ndamping = "N s/m"\n[matrices]\nmass = [[1]]\n'
-        'stiffness = [[900]]\ndamping = [[-1]]\n[[excitations]]\nname = "motor"\nspeed = ["60 rpm", "600 rpm"]\n'
+        "stiffness = [[900]]\ndamping = [[-1]]\n"
+        '[[excitations]]\nname = "motor"\nspeed = ["60 rpm", "600 rpm"]\n'
         'at = "1"\nforces = {order = 1, amplitude = "1 N"}\n',
         encoding="utf-8",
     )

@@ -231,7 +231,7 @@ def test_margins_of_critical_speeds_around_the_running_range(tmp_path):
         nothing,
     )
     assert [one.met for one in own] == [False, False, True]
-    assert own[0].source == "stated in the study"
+    assert own[0].source == "the study"
     assert judge_margins((), table(group=1), [(24.0, 28.0)], np.array([1.0, 2.0]), nothing) == ()
 
 

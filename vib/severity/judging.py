@@ -220,6 +220,11 @@ def _remarks(
     reach = modes.complete_below_hz
     if reach is None or reach < needed_hz(table, main_hz):
         yield "The modes found do not reach far enough above the running speeds to judge every margin there."
+    if table.separation_margin is None and run_up.shaft:
+        yield (
+            "Separation margins by the amplification factor are those of rotors (API 617 / API RP 684, from "
+            "memory); for a frame they are a yardstick."
+        )
     yield from outside_scope(table, main_hz) if run_up.shaft else ()
     if table.rules is not None:
         yield "The standard's figures are quoted from memory: check them against its text before they decide."

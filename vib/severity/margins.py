@@ -17,7 +17,7 @@ if TYPE_CHECKING:
 Array = NDArray[np.float64]
 Range = tuple[float, float]
 
-STATED = "stated in the study"
+STATED = "the study"
 SOURCE = "API 617 / API RP 684, formula from memory"
 NOT_ASKED_BELOW = 2.5  # an amplification factor below this asks for no margin
 _CAP_BELOW, _CAP_ABOVE, _STEP_ABOVE, _SCALE = 0.16, 0.26, 0.10, 0.17

@@ -174,7 +174,7 @@ class Severity:
             listed = ", ".join(str(number) for number in numbers)
             which = f"Mode {listed} lies" if len(numbers) == 1 else f"Modes {listed} lie"
             told.append(
-                f"{which} nearer to the running speeds than the separation margin; {self.missed[0].source}."
+                f"{which} nearer to the running speeds than the separation margin of {self.missed[0].source}."
             )
         return " ".join(told)
 

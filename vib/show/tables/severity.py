@@ -171,24 +171,24 @@ def margin_table(severity: Severity) -> Table | None:
             _POSITIONS[margin.below],
             percent(margin.actual),
             percent(margin.wanted) if margin.wanted else "none",
-            margin.source,
         )
         for margin in severity.margins
     )
     columns = (
         Column("mode"),
         Column("critical", "rpm"),
-        Column("amplification"),
-        text_column("found from"),
+        Column("factor"),
+        text_column("amplification factor from"),
         text_column("lies"),
         Column("margin", "%"),
         Column("wanted", "%"),
-        text_column("source"),
     )
     tones: tuple[Tone, ...] = tuple(
         "plain" if margin.met else ("bad" if margin.stated else "careful") for margin in severity.margins
     )
-    return Table("Critical speeds against the running speeds", columns, rows, tones=tones)
+    source = severity.margins[0].source
+    title = f"Critical speeds against the running speeds; margin wanted by {source}"
+    return Table(title, columns, rows, tones=tones)
 
 
 def severity_facts(severity: Severity) -> Facts:
