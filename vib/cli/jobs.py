@@ -216,6 +216,7 @@ def write_report(
     with at_work_on(path, wish) as study:
         from vib.cli.responses import RespondOptions, responses_of
         from vib.cli.run_ups import drives, run_up_of
+        from vib.cli.scattering import scatter_of
         from vib.show.documents import to_json
         from vib.show.files import write_files
         from vib.show.page import Findings, render_page
@@ -238,6 +239,7 @@ def write_report(
             _curves(study, modes),
             run_ups=run_up_of(study) if drives(study) else None,
             responses=responses_of(study, RespondOptions()),
+            scatter=scatter_of(study, limits, band),
         )
         wish.tell("drawing the page")
         page = render_page(found)

@@ -5,12 +5,17 @@ from __future__ import annotations
 from dataclasses import dataclass
 from functools import cache
 from pathlib import Path
-from typing import Any, Literal
+from typing import TYPE_CHECKING, Any, Literal
 
 from vib.cli.delivery import DONE, OBJECTION, Answer, Wish, at_work_on, deliver
 from vib.errors import ModelError
 
+if TYPE_CHECKING:
+    from vib.scatter.scatter import Scatter
+    from vib.study import Study
+
 Chosen = Literal["si", "us"] | None
+PAGE_SAMPLES, PAGE_LEVELS = 256, 64
 
 
 @dataclass(frozen=True)
@@ -75,6 +80,17 @@ def show_scatter(
             status=OBJECTION if objects(found) else DONE,
         )
         return deliver(answer, wish)
+
+
+def scatter_of(study: Study, limits: tuple[int | None, str | None], band: str | None) -> Scatter | None:
+    """What the tolerances do, by samples few enough for a quick page; None without tolerances."""
+    if not study.tolerances:
+        return None
+    from vib.scatter.scatter import scatter
+
+    count, up_to = limits
+    levels = PAGE_LEVELS if study.mesh is None else 0
+    return scatter(study, samples=PAGE_SAMPLES, level_samples=levels, count=count, up_to=up_to, band=band)
 
 
 def show_sweep(

@@ -14,6 +14,7 @@ from vib.show.figures.ringing import ring_pictures
 from vib.show.figures.shapes import shape_picture
 from vib.show.figures.speeds import speed_pictures
 from vib.show.figures.structure import structure_picture
+from vib.show.how_sure import scatter_sections, scatter_words
 from vib.show.numbers import joined, significant
 from vib.show.sections import Drawing, Section, drawings
 from vib.show.tables.check import axes_table, facts, part_table, reaction_table, sag_table, support_table
@@ -34,6 +35,7 @@ from vib.units import UnitSystem
 if TYPE_CHECKING:
     from vib.modes import Modes
     from vib.response.ring import Ring
+    from vib.scatter.scatter import Scatter
     from vib.screening import Screening
     from vib.show.tables.respond import Responses
     from vib.show.tables.run_up import RunUps
@@ -49,7 +51,8 @@ class Findings:
     """Everything that goes on the page; what the study does not ask for is None.
 
     ``start`` is what set it ringing, in words; ``curves`` the modes against the speed of each shaft;
-    ``run_ups`` the run-up and its severity; ``responses`` the response to loads and a moving ground.
+    ``run_ups`` the run-up and its severity; ``responses`` the response to loads and a moving ground;
+    ``scatter`` what the tolerances do.
     """
 
     study: Study
@@ -62,6 +65,7 @@ class Findings:
     curves: tuple[SpeedCurves, ...] = ()
     run_ups: RunUps | None = None
     responses: Responses | None = None
+    scatter: Scatter | None = None
 
 
 def render_page(findings: Findings, created: date | None = None) -> str:
@@ -113,6 +117,7 @@ def verdict(findings: Findings) -> list[Sentence]:
         told.append(screening_verdict(screening))
         told += [Sentence(words) for words in objection_words(screening)]
     told += severity_words(findings.run_ups)
+    told += scatter_words(findings.scatter)
     if modes.stable:
         told.append(first)
     told += rigid_motion(modes)
@@ -150,6 +155,7 @@ def sections(findings: Findings) -> list[Section]:
         severity_section(findings.run_ups, asked, findings.units),
         run_up_section(findings.run_ups, bool(findings.study.excitations), findings.units),
         response_section(findings.responses, findings.units),
+        *scatter_sections(findings.scatter, findings.units),
         _evidence(findings),
     ]
 
