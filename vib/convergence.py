@@ -90,8 +90,7 @@ def _of_cells(system: System, solution: Solution, cells: Discretisation) -> Conv
     remarks: tuple[str, ...] = ()
     tell("estimating the error of the mesh")
     if finer is None:
-        errors, remarks = cells.errors(damped.shapes, size)
-        told = "by the stresses of the modes"
+        errors, told, remarks = cells.errors(damped.shapes, size)
     else:
         compared = np.abs(solve_system(finer.system, number, None, certify=False).damped.values)
         errors = size.copy()

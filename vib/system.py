@@ -118,8 +118,8 @@ class Discretisation(Protocol):
         """The same structure of better cells, where comparing with it tells the error best."""
         ...
 
-    def errors(self, shapes: NDArray[Any], angular: Array) -> tuple[Array, tuple[str, ...]]:
-        """Error of each angular frequency (m,), rad/s, by the stresses of the shapes (n, m), and remarks."""
+    def errors(self, shapes: NDArray[Any], angular: Array) -> tuple[Array, str, tuple[str, ...]]:
+        """Error of each angular frequency (m,), rad/s, by the shapes (n, m), how it was told, and remarks."""
         ...
 
     def member_errors(self, shapes: NDArray[Any], angular: Array) -> Array:

@@ -3,7 +3,7 @@
 Solids (three freedoms per node) and shells (six). Kinds and node numbering are those of meshio (and VTK).
 Rooms: `family` what each offers; `solid` all isoparametric solids, with `polynomial` and `quadrature` beneath
 them; `triangle` the shell facet, from `membrane`, `bending` and `facet`, and `split` the shells made of it;
-`checks` cells that can't be computed; `recovery` and `halving` the discretisation error of solids and shells.
+`checks` cells that can't be computed; `surplus` the shape functions that solids lack, by `edges` and faces.
 """
 
 from __future__ import annotations

@@ -55,8 +55,8 @@ class Hexahedron(Solid):
         reduced = matrix[:, :_OUTER, :_OUTER] + matrix[:, :_OUTER, _OUTER:] @ _following(matrix)
         return upper_blocks((reduced + reduced.swapaxes(1, 2)) / 2, self.pairs)
 
-    def _internal(self, coordinates: Array, properties: Properties, displacements: Array) -> Array:
-        """See `Solid._internal`."""
+    def internal(self, coordinates: Array, properties: Properties, displacements: Array) -> Array:
+        """See `Solid.internal`."""
         matrix = whole(self._full_blocks(coordinates, properties), self._all_pairs)
         found: Array = (_following(matrix) @ displacements).reshape(len(matrix), 3, 3, -1)
         return found

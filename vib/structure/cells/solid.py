@@ -149,9 +149,9 @@ class Solid(Family):
         rule, count = rule or self.stress_rule, len(coordinates)
         lame, shear = properties.lame(count)
         nodal, extra = self.gradients(rule.points), self.extra_gradients(rule.points)
-        determinant, gradients = self._mapped(nodal, extra, coordinates)
+        determinant, gradients = self.mapped(nodal, extra, coordinates)
         fields = displacements.reshape(count, self.nodes, 3, -1)
-        fields = np.concatenate([fields, self._internal(coordinates, properties, displacements)], axis=1)
+        fields = np.concatenate([fields, self.internal(coordinates, properties, displacements)], axis=1)
         # slope[i, j] = d u_i / d x_j
         slope = np.einsum("epaj,eaim->epijm", gradients, fields, optimize=True)
         strain = slope + slope.swapaxes(2, 3)
@@ -167,11 +167,11 @@ class Solid(Family):
             compliance=_compliance(properties, count),
         )
 
-    def _internal(self, coordinates: Array, properties: Properties, displacements: Array) -> Array:
+    def internal(self, coordinates: Array, properties: Properties, displacements: Array) -> Array:
         """Displacements of the internal shape functions, (e, extra, 3, m); most families have none."""
         return np.empty((len(coordinates), 0, 3, displacements.shape[-1]))
 
-    def _mapped(self, nodal: Array, extra: Array, coordinates: Array) -> tuple[Array, Array]:
+    def mapped(self, nodal: Array, extra: Array, coordinates: Array) -> tuple[Array, Array]:
         """Jacobian determinants (e, p) and gradients (e, p, k + extra, 3) in space."""
         determinant, inverse = determinant_and_inverse(jacobians(nodal, coordinates))
         gradients = nodal @ inverse
@@ -224,7 +224,7 @@ class Solid(Family):
     def _quadrature_blocks(self, coordinates: Array, properties: Properties) -> Array:
         count = len(coordinates)
         lame, shear = (value[:, None, None, None] for value in properties.lame(count))
-        determinant, gradients = self._mapped(*self._stiffness_gradients, coordinates)
+        determinant, gradients = self.mapped(*self._stiffness_gradients, coordinates)
         gradients *= np.sqrt(determinant * self.stiffness_rule.weights)[:, :, None, None]
         flat = gradients.reshape(count, len(self.stiffness_rule.weights), -1)
         tensor = flat.swapaxes(1, 2) @ flat

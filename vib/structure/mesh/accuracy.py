@@ -1,4 +1,4 @@
-"""The error of the frequencies of a mesh, estimated from the stresses of the modes."""
+"""The error of the frequencies of a mesh, estimated from its modes or by a finer mesh."""
 
 from __future__ import annotations
 
@@ -9,13 +9,11 @@ import numpy as np
 from numpy.typing import NDArray
 
 from vib.errors import AccuracyError
-from vib.structure.cells.recovery import energy_errors
 from vib.structure.division import expected_error
-from vib.structure.mesh.finer import count_of, divided, only_first_tetrahedra, only_shells, raised
-from vib.structure.mesh.operators import CellOperator
+from vib.structure.mesh.finer import count_of, divided, only_shells
 from vib.structure.mesh.plate_errors import plate_energies
+from vib.structure.mesh.solid_errors import solid_errors
 from vib.structure.mesh.weaving import Woven
-from vib.structure.sparsity import Group
 from vib.system import Array, Comparison, Part
 
 if TYPE_CHECKING:
@@ -42,40 +40,50 @@ class CellErrors:
         return self.layout.study.accuracy
 
     def finer(self) -> Comparison | None:
-        """Better cells, as far as memory and time allow; None where stresses have to do.
+        """Shells divided in four, as far as memory and time allow; None for meshes that hold other cells.
 
         The errors of shells are not of one sign, as these are no pure displacement elements, so that their
-        stresses overstate them severalfold: they are divided in four. The stresses of first-order tetrahedra
-        are too poor to be smoothed: they are compared with those of second order. Other solids need neither.
+        stresses overstate them severalfold.
         """
         model = self.woven.model
-        shells = only_shells(model)
-        if not (shells or only_first_tetrahedra(model)) or count_of(model) > MOST_COMPARED:
+        if not only_shells(model) or count_of(model) > MOST_COMPARED:
             return None
         from vib.structure.assembly import assemble
         from vib.structure.build import to_system
 
-        better = divided(model) if shells else raised(model)
-        system = to_system(assemble(replace(self.layout, mesh=better), self.counts))
-        if shells:
-            return Comparison(system, QUARTERED, "by comparison with every cell divided in four")
-        return Comparison(system, 1.0, "by comparison with cells of second order in their place")
+        system = to_system(assemble(replace(self.layout, mesh=divided(model)), self.counts))
+        return Comparison(system, QUARTERED, "by comparison with every cell divided in four")
 
-    def errors(self, shapes: NDArray[Any], angular: Array) -> tuple[Array, tuple[str, ...]]:
-        """Error of each angular frequency (m,), rad/s, and remarks.
-
-        The energy of the error of the stresses is the error of the squared frequency (G. Strang, G. J. Fix,
-        An Analysis of the Finite Element Method, 1973, section 6.3: it is of the order of the squared error
-        in energy); the frequency is off by half of that share.
-        """
-        elastic = angular > 0
+    def errors(self, shapes: NDArray[Any], angular: Array) -> tuple[Array, str, tuple[str, ...]]:
+        """See `vib.system.Discretisation`; what a gain in softness does is told in `solid_errors`."""
+        groups = self.woven.model.groups
+        words = " and ".join(
+            told
+            for dimension, told in (
+                (3, "by what richer cells would add"),
+                (2, "by the stresses of the modes"),
+            )
+            if any(group.family.dimension == dimension for group in groups)
+        )
         found = np.zeros(len(angular))
-        if not elastic.any():
-            return found, ()
+        elastic = np.flatnonzero(angular > 0)
+        if not len(elastic):
+            return found, words, ()
+        elastic = elastic[np.argsort(angular[elastic], kind="stable")]
+        size = angular[elastic]
         real = np.ascontiguousarray(np.real(shapes[:, elastic]))
-        share, remarks = self._share(real)
-        found[elastic] = angular[elastic] * np.where(np.isfinite(share), share / 2, 1.0)
-        return found, remarks
+        real *= size / np.sqrt(np.maximum(self._energy(real), np.finfo(float).tiny))
+        try:
+            gain = self._gains(self.woven.transform @ real, size)
+        except AccuracyError as problem:
+            found[elastic] = size
+            return (
+                found,
+                words,
+                (f"The error of the frequencies is not known, and stands as 100 %: {problem}",),
+            )
+        found[elastic] = size * (1 - 1 / np.sqrt(1 + gain / size**2))
+        return found, words, ()
 
     def member_errors(self, shapes: NDArray[Any], angular: Array) -> Array:
         """Error (m,), rad/s, that the pieces of members add, by their length and share of the energy."""
@@ -96,25 +104,25 @@ class CellErrors:
             found[mode] = angular[mode] * min(1.0, error) * held / whole
         return found
 
-    def _share(self, shapes: Array) -> tuple[Array, tuple[str, ...]]:
-        """Share of the error in the energy of each mode (m,); infinite where it can't be told."""
-        moved = self.woven.transform @ shapes
+    def _gains(self, moved: Array, angular: Array) -> Array:
+        """By how much modes (m,) on all rows of the mesh would be softer with exact cells, (rad/s)^2."""
         model, pattern = self.woven.model, self.woven.pattern
         solids = tuple(group for group in model.groups if group.family.dimension == 3)
         shells = tuple(group for group in model.groups if group.family.dimension == 2)
-        whole = self._energy(shapes)
-        error = np.zeros(shapes.shape[1])
-        try:
-            if solids:
-                held = whole if len(self.parts) == 1 else self._held(solids, moved)
-                error += energy_errors(model.nodes_m, solids, pattern, moved) * held
-        except AccuracyError as problem:
-            return np.full(shapes.shape[1], np.inf), (
-                f"The error of the frequencies is not known, and stands as 100 %: {problem}",
-            )
+        found = np.zeros(len(angular))
+        if solids:
+            found += solid_errors(model.nodes_m, solids, pattern, self._held(), moved, angular)
         if shells:
-            error += plate_energies(model.nodes_m, shells, pattern, moved)[0]
-        return error / np.maximum(whole, np.finfo(float).tiny), ()
+            found += plate_energies(model.nodes_m, shells, pattern, moved)[0]
+        return found
+
+    def _held(self) -> NDArray[np.bool_]:
+        """(k, 3): translations of nodes that can't move by themselves; also what follows points or bodies."""
+        first, own = self.woven.pattern.first, self.woven.own
+        held = np.zeros((len(first) - 1, 3), dtype=bool)
+        used = np.flatnonzero(np.diff(first))
+        held[used] = ~own[3 * first[used][:, None] + np.arange(3)]
+        return held
 
     def _energy(self, shapes: Array) -> Array:
         """Twice the strain energy of the whole in each mode (m,)."""
@@ -123,8 +131,3 @@ class CellErrors:
             if part.kind != "cells" and part.stiffness is not None:
                 found += np.einsum("ij,ij->j", shapes, part.stiffness @ shapes)
         return np.asarray(found)
-
-    def _held(self, groups: tuple[Group, ...], moved: Array) -> Array:
-        """Twice the strain energy (m,) that some cells hold."""
-        pushed = CellOperator(self.woven, groups, "stiffness").on_rows(moved)
-        return np.asarray(np.einsum("ij,ij->j", moved, pushed))

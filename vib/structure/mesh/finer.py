@@ -1,7 +1,7 @@
 """The same mesh with better cells, to tell by comparison how far frequencies are off.
 
-Shells are divided in four, tetrahedra of first order get mid-edge nodes. New nodes lie midway between old
-ones: what a curved surface loses by its flat cells is not seen.
+Shells are divided in four. New nodes lie midway between old ones: what a curved surface loses by its flat
+cells is not seen.
 """
 
 from __future__ import annotations
@@ -13,7 +13,6 @@ from numpy.typing import NDArray
 
 from vib.structure.cells import FAMILIES
 from vib.structure.mesh.model import MeshModel
-from vib.structure.mesh.skin import outer_faces
 from vib.structure.sparsity import Group
 
 Numbers = NDArray[np.intp]
@@ -133,46 +132,5 @@ def only_shells(model: MeshModel) -> bool:
 
 
 def count_of(model: MeshModel) -> int:
-    """Freedoms, about, of the better mesh."""
-    cells = sum(len(group.connectivity) * len(_PIECES.get(group.family.kind, (0,))) for group in model.groups)
-    return 6 * 4 * cells if only_shells(model) else 3 * 2 * cells
-
-
-_SIDES = np.array([[0, 1], [1, 2], [2, 0], [0, 3], [1, 3], [2, 3]])  # mid-edge nodes 4 to 9 of ten
-
-
-def raised(model: MeshModel) -> MeshModel:
-    """Tetrahedra of second order in the place of those of first order, with straight edges."""
-    listed = [np.sort(group.connectivity[:, _SIDES].reshape(-1, 2), axis=1) for group in model.groups]
-    edges, number = np.unique(np.concatenate(listed), axis=0, return_inverse=True)
-    middles = len(model.nodes_m) + number.ravel()
-    groups, start = [], 0
-    for group in model.groups:
-        own = middles[start : start + 6 * len(group.connectivity)].reshape(-1, 6)
-        start += own.size
-        cells = np.column_stack([group.connectivity, own])
-        groups.append(Group(FAMILIES["tetra10"], cells, group.properties))
-    outside = _on_skin(model, edges)
-    held = []
-    for name, nodes, components in model.held:
-        inside = np.zeros(len(model.nodes_m), dtype=bool)
-        inside[nodes] = True
-        along = outside & inside[edges].all(axis=1)
-        held.append((name, np.concatenate([nodes, len(model.nodes_m) + np.flatnonzero(along)]), components))
-    places = np.concatenate([model.nodes_m, model.nodes_m[edges].mean(axis=1)])
-    return replace(model, nodes_m=places, groups=tuple(groups), held=tuple(held))
-
-
-def _on_skin(model: MeshModel, edges: Numbers) -> NDArray[np.bool_]:
-    """Which of the edges (s, 2) lie on the surface; supports hold surfaces, not what is below them."""
-    count = len(model.nodes_m)
-    faces = [corners for _, corners in outer_faces(model.nodes_m, model.groups, model.part)]
-    pairs = [np.sort(face[:, [a, b]], axis=1) for face in faces for a, b in ((0, 1), (1, 2), (2, 0))]
-    seen = np.concatenate(pairs)
-    found: NDArray[np.bool_] = np.isin(edges[:, 0] * count + edges[:, 1], seen[:, 0] * count + seen[:, 1])
-    return found
-
-
-def only_first_tetrahedra(model: MeshModel) -> bool:
-    """Whether every cell is a tetrahedron of first order."""
-    return all(group.family.kind == "tetra" for group in model.groups)
+    """Freedoms, about, of a mesh of shells that are divided in four."""
+    return 24 * sum(len(group.connectivity) * len(_PIECES[group.family.kind]) for group in model.groups)

@@ -2,48 +2,54 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+
 import numpy as np
 from numpy.typing import NDArray
 
+from vib.structure.cells.edges import FACES
 from vib.structure.sparsity import Group
 from vib.system import Array
 
 Numbers = NDArray[np.intp]
-
-# corners of the faces by the number of corners of a solid; their sense is set by where the cell lies
-_FACES: dict[int, tuple[tuple[int, ...], ...]] = {
-    4: ((0, 1, 2), (0, 1, 3), (1, 2, 3), (0, 2, 3)),
-    5: ((0, 1, 2, 3), (0, 1, 4), (1, 2, 4), (2, 3, 4), (3, 0, 4)),
-    6: ((0, 1, 2), (3, 4, 5), (0, 1, 4, 3), (1, 2, 5, 4), (2, 0, 3, 5)),
-    8: ((0, 1, 2, 3), (4, 5, 6, 7), (0, 1, 5, 4), (1, 2, 6, 5), (2, 3, 7, 6), (3, 0, 4, 7)),
-}
 
 
 def outer_faces(
     nodes_m: Array, groups: tuple[Group, ...], parts: tuple[str, ...]
 ) -> list[tuple[str, Numbers]]:
     """Part and corners (f, 3 or 4) of the faces seen from outside; those of solids turned outwards."""
-    shells, faces, keys = [], [], []
+    found = []
+    solids = [(group, part) for group, part in zip(groups, parts, strict=True) if group.family.dimension == 3]
     for group, part in zip(groups, parts, strict=True):
-        corners = group.connectivity[:, : group.family.corners]
         if group.family.dimension == 2:
-            shells.append((part, corners))
-            continue
-        for face in _FACES[group.family.corners]:
-            chosen = corners[:, face]
-            faces.append((part, chosen, group))
-            # three corners tell a face from all others, also of four
-            keys.append(np.sort(chosen, axis=1)[:, :3])
-    if not faces:
-        return shells
-    alone = _once(np.concatenate(keys), len(nodes_m))
-    start = 0
-    for part, chosen, group in faces:
-        mine = alone[start : start + len(chosen)]
-        start += len(chosen)
-        if mine.any():
-            shells.append((part, _outwards(nodes_m, chosen[mine], group.connectivity[mine])))
-    return shells
+            found.append((part, group.connectivity[:, : group.family.corners]))
+    for (group, part), alone in zip(
+        solids, faces_seen(len(nodes_m), [group for group, _ in solids]), strict=True
+    ):
+        for column, face in enumerate(FACES[group.family.corners]):
+            mine = group.connectivity[alone[:, column]]
+            if len(mine):
+                found.append((part, _outwards(nodes_m, mine[:, face], mine)))
+    return found
+
+
+def faces_seen(count: int, solids: Sequence[Group]) -> list[NDArray[np.bool_]]:
+    """For each group of solids (e, faces): the face belongs to no other cell; of ``count`` nodes in all."""
+    keys = [
+        # three corners tell a face from all others, also of four
+        np.sort(group.connectivity[:, face], axis=1)[:, :3]
+        for group in solids
+        for face in FACES[group.family.corners]
+    ]
+    if not keys:
+        return []
+    alone = np.split(_once(np.concatenate(keys), count), np.cumsum([len(key) for key in keys])[:-1])
+    found, start = [], 0
+    for group in solids:
+        faces = len(FACES[group.family.corners])
+        found.append(np.stack(alone[start : start + faces], axis=1))
+        start += faces
+    return found
 
 
 def _once(keys: Numbers, count: int) -> NDArray[np.bool_]:
