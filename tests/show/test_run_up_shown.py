@@ -11,7 +11,7 @@ import vib
 from vib.severity import judge
 from vib.show.figures.running import order_picture, run_up_pictures, spectra_picture
 from vib.show.tables.run_up import RunUps, run_up_blocks
-from vib.show.tables.severity import boundary_table, level_table, severity_verdict
+from vib.show.tables.severity import boundary_table, counts, level_table, severity_verdict
 from vib.show.terminal import render
 
 SVG = "{http://www.w3.org/2000/svg}"
@@ -131,3 +131,11 @@ def test_no_table_loses_a_column_on_a_narrow_terminal(found, width):
         assert heading in text
     assert "…" not in text
     assert "21940-11" in text.replace("\n", "")  # the source of the balance grade
+
+
+def test_rounding_is_no_vibration_and_instability_is_no_rounding(found):
+    assert level_table(found.severity, "si").rows[0][2] == "0"  # nothing acts along x
+    assert not counts(1e-13, 1.0)
+    assert counts(1e-8, 1.0)
+    assert counts(np.inf, np.inf)
+    assert not counts(0.0, 0.0)

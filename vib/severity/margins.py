@@ -24,6 +24,7 @@ _CAP_BELOW, _CAP_ABOVE, _STEP_ABOVE, _SCALE = 0.16, 0.26, 0.10, 0.17
 _FARTHEST = 0.4  # modes farther from the running speeds than any margin asked for are left out
 _NO_PEAK_RATIO = np.sqrt(0.5)  # damped so much or more, a mode has no peak (ISO 2041)
 _LEAST_POINTS = 5  # of the run-up between the half-power points, for the peak to be trusted
+_LEAST_PEAK = 1e-3  # of the highest amplitude at any place; what is below is not seen
 _NEAR = 0.1  # a peak this near to the nearest natural frequency, as a share of it, is that mode's
 
 
@@ -213,7 +214,10 @@ def judge_margins(
         return ()
     speeds = np.array([one.speed_hz for one in critical])
     own: dict[int, list[Peak]] = {}
+    least = _LEAST_PEAK * curves.max(initial=0.0)
     for peak in (peak for curve in curves.T for peak in half_power(speed_hz, curve)):
+        if peak.height < least:
+            continue
         nearest = int(np.argmin(np.abs(speeds - peak.speed_hz)))
         if abs(peak.speed_hz - speeds[nearest]) <= _NEAR * speeds[nearest]:
             own.setdefault(nearest, []).append(peak)

@@ -12,7 +12,7 @@ from vib.show.blocks import Block, Bullets, Column, Facts, Heading, Sentence, Ta
 from vib.show.numbers import MISSING, percent, significant
 from vib.show.tables.driving import driving_table
 from vib.show.tables.ring import KINDS
-from vib.show.tables.severity import fine, fine_unit, severity_blocks
+from vib.show.tables.severity import counts, fine, fine_unit, severity_blocks
 from vib.show.words import CAUTION, caution
 from vib.units import UnitSystem, shown, shown_unit
 
@@ -65,60 +65,87 @@ def run_up_stability(run_up: RunUp) -> Sentence:
 def run_up_tables(found: RunUps, units: UnitSystem) -> list[Block]:
     """The tables of the run-up itself."""
     run_up = found.run_up
-    tables = (
+    chosen = run_up.in_service
+    apart = bool(chosen.any()) and not chosen.all()
+    everywhere, running = np.arange(len(chosen)), np.flatnonzero(chosen)
+    tables: list[Table | None] = [
         driving_table(run_up, found.study, units),
-        highest_table(run_up, units),
-        force_table(run_up, units),
-        crossing_table(run_up),
-    )
+        highest_table(run_up, units, everywhere, "in the run-up"),
+    ]
+    if apart:
+        tables.append(highest_table(run_up, units, running, "at the running speeds"))
+    tables.append(force_table(run_up, units, everywhere, "in the run-up"))
+    if apart:
+        tables.append(force_table(run_up, units, running, "at the running speeds"))
+    tables.append(crossing_table(run_up))
     return [table for table in tables if table is not None]
 
 
-def highest_table(run_up: RunUp, units: UnitSystem) -> Table:
-    """The highest level of each output in the run-up and at the running speeds, all frequencies counted."""
+def highest_table(run_up: RunUp, units: UnitSystem, chosen: NDArray[np.intp], where: str) -> Table:
+    """The highest level of each output at the chosen speeds, all frequencies counted."""
     velocity, peak = run_up.velocity_rms_m_s, run_up.displacement_peak_m
     rows = []
     for column, name in enumerate(run_up.outputs):
         turning = run_up.rotational[column]
-        top, run = _tops(run_up, velocity[:, column])
-        row = [name]
-        for at in (top, run)[: 1 + _apart(run_up)]:
-            row += [
-                _level(velocity[at, column], turning, units),
-                _moved(peak[at, column], turning, units),
-                _rpm(run_up, at),
-            ]
-        rows.append((*row, _mostly(run_up, top, column)))
-    unit = _units_of(run_up, units, 1), _units_of(run_up, units, 0)
-    columns = [text_column("output")]
-    for when in ("", "running: ")[: 1 + _apart(run_up)]:
-        columns += [
-            Column(f"{when}velocity", unit[0]),
-            Column(f"{when}displacement", unit[1]),
-            Column("at", "rpm"),
-        ]
-    title = "Highest in the run-up, velocity r.m.s. and displacement at most"
-    return Table(title, (*columns, text_column("mostly by")), tuple(rows))
+        alike = [k for k, turns in enumerate(run_up.rotational) if turns == turning]
+        top = int(chosen[np.argmax(velocity[chosen, column])])
+        moves = counts(velocity[top, column], velocity[:, alike].max())
+        rows.append(
+            (
+                name,
+                _level(velocity[top, column], turning, units) if moves else "0",
+                _moved(peak[top, column], turning, units) if moves else "0",
+                _rpm(run_up, top) if moves else MISSING,
+                _mostly(run_up, top, column) if moves else MISSING,
+            )
+        )
+    columns = (
+        text_column("output"),
+        Column("velocity", _units_of(run_up, units, 1)),
+        Column("displacement", _units_of(run_up, units, 0)),
+        Column("at", "rpm"),
+        text_column("mostly by"),
+    )
+    return Table(f"Highest {where}: velocity r.m.s., displacement at most", columns, tuple(rows))
 
 
-def force_table(run_up: RunUp, units: UnitSystem) -> Table | None:
-    """Forces on supports and mounts; None where there are none."""
+def force_table(run_up: RunUp, units: UnitSystem, chosen: NDArray[np.intp], where: str) -> Table | None:
+    """Forces on supports and mounts at the chosen speeds; None where there are none."""
     given = run_up.transmitted
     if given is None or not given.names:
         return None
     rms, peak = run_up.transmitted_rms_n, run_up.transmitted_peak_n
     rows = []
     for column, (name, component) in enumerate(zip(given.names, given.components, strict=True)):
-        kind = "moment" if component.startswith("r") else "force"
-        row = [name, given.kinds[column], shown_unit(kind, units)]
-        for at in _tops(run_up, rms[:, column])[: 1 + _apart(run_up)]:
-            sizes = (rms[at, column], peak[at, column])
-            row += [significant(shown(float(size), kind, units), 3) for size in sizes] + [_rpm(run_up, at)]
-        rows.append(tuple(row))
-    columns = [text_column("at"), text_column("kind"), text_column("unit")]
-    for when in ("", "running: ")[: 1 + _apart(run_up)]:
-        columns += [Column(f"{when}r.m.s."), Column(f"{when}at most"), Column("at", "rpm")]
-    return Table("Forces on supports and mounts, highest in the run-up", tuple(columns), tuple(rows))
+        turning = component.startswith("r")
+        kind = "moment" if turning else "force"
+        alike = [k for k, other in enumerate(given.components) if other.startswith("r") == turning]
+        at = int(chosen[np.argmax(rms[chosen, column])])
+        sizes = ["0", "0"]
+        acts = counts(rms[at, column], rms[:, alike].max())
+        if acts:
+            sizes = [
+                significant(shown(float(size), kind, units), 3)
+                for size in (rms[at, column], peak[at, column])
+            ]
+        rows.append(
+            (
+                name,
+                given.kinds[column],
+                shown_unit(kind, units),
+                *sizes,
+                _rpm(run_up, at) if acts else MISSING,
+            )
+        )
+    columns = (
+        text_column("on"),
+        text_column("kind"),
+        text_column("unit"),
+        Column("r.m.s."),
+        Column("at most"),
+        Column("at", "rpm"),
+    )
+    return Table(f"Forces on supports and mounts, highest {where}", columns, tuple(rows))
 
 
 def crossing_table(run_up: RunUp) -> Table | None:
@@ -181,18 +208,6 @@ def run_up_document(found: RunUps) -> dict[str, Any]:
         "remarks": list(found.remarks),
         "caution": CAUTION,
     }
-
-
-def _apart(run_up: RunUp) -> int:
-    """1 where the run-up goes beyond the running speeds, so that these are told apart; else 0."""
-    chosen = run_up.in_service
-    return int(bool(chosen.any()) and not chosen.all())
-
-
-def _tops(run_up: RunUp, level: NDArray[np.float64]) -> tuple[int, int]:
-    """Where a level (k,) is highest: of all speeds, and of the running speeds."""
-    chosen = np.flatnonzero(run_up.in_service) if _apart(run_up) else np.arange(len(level))
-    return int(np.argmax(level)), int(chosen[np.argmax(level[chosen])])
 
 
 def _mostly(run_up: RunUp, at: int, column: int) -> str:

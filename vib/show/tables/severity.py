@@ -21,6 +21,7 @@ _OWN_WORDS = {
     "force": "force, at most",
 }
 _POSITIONS = {True: "below", False: "above", None: "within"}
+ROUNDING = 1e-9  # of the highest level of its kind; what is below is no vibration
 _METRES_PER = {"si": 1e-6, "us": 25.4e-6}
 
 
@@ -32,6 +33,11 @@ def fine_unit(units: UnitSystem) -> str:
 def fine(metres: float, units: UnitSystem) -> float:
     """A displacement in that unit."""
     return metres / _METRES_PER[units]
+
+
+def counts(level: float, largest: float) -> bool:
+    """Whether a level is more than rounding beside the largest of its kind; an infinite one is."""
+    return level == float("inf") or level > ROUNDING * largest
 
 
 def severity_blocks(severity: Severity, units: UnitSystem) -> list[Block]:
@@ -61,18 +67,20 @@ def severity_verdict(severity: Severity) -> Sentence:
 def level_table(severity: Severity, units: UnitSystem) -> Table:
     """The level of each place along each axis at the running speed where it is worst."""
     turns = bool(severity.shaft)
+    largest = max((row.velocity_rms_m_s for row in severity.rows), default=0.0)
+    moving = [counts(row.velocity_rms_m_s, largest) for row in severity.rows]
     rows = tuple(
         (
             row.output,
-            significant(60 * row.speed_hz, 4) if turns else MISSING,
-            significant(shown(row.velocity_rms_m_s, "velocity", units), 3),
+            significant(60 * row.speed_hz, 4) if turns and moves else MISSING,
+            significant(shown(row.velocity_rms_m_s, "velocity", units), 3) if moves else "0",
             row.zones.get("velocity_rms", MISSING),
-            significant(fine(row.displacement_rms_m, units), 3),
+            significant(fine(row.displacement_rms_m, units), 3) if moves else "0",
             row.zones.get("displacement_rms", MISSING),
             row.support or MISSING,
             row.zone or MISSING,
         )
-        for row in severity.rows
+        for row, moves in zip(severity.rows, moving, strict=True)
     )
     columns = (
         text_column("place"),
