@@ -30,6 +30,7 @@ TRIED = 250  # samples at which it is tried
 ROUNDS, ADDED = 5, 8  # how often it is widened, and by the modes of how many samples
 GOOD = 0.01  # part of the samples tried that may be left to full solutions
 COUPLED = 1e-6  # damping beside the diagonal, against the diagonal, that leaves shapes as they are
+CHECKS = 6  # samples that are rebuilt and solved in full to compare
 SAFETY = 2.0  # times the largest ratio of true and estimated errors seen
 USUAL = 1.5  # that ratio as far as is known before
 MOST_WRONG = 50.0  # that ratio beyond which the estimate is not believed
@@ -230,9 +231,9 @@ class _Making:
             return evaluator
         worst = 0.0
         exact = replace(evaluator, model=replace(model, safety=1.0), family_error=0.0)
-        for check in family.checks:
-            full = evaluator.in_full(check.values[None])
-            found, _ = exact.reduced(check.values[None])
+        for sample in self.training[-CHECKS:]:
+            full = evaluator.in_full(sample[None])
+            found, _ = exact.reduced(sample[None])
             allowed = full.errors_hz + (family.error + ROUND_OFF) * full.frequencies_hz
             beyond = np.abs(found.frequencies_hz - full.frequencies_hz) - allowed
             tiny = np.finfo(float).tiny
