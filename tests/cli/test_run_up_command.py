@@ -134,7 +134,6 @@ def test_files_carry_units_in_their_names(vib, forced, tmp_path):
         (["--shaft", "fan"], "", "--shaft goes with --run-up"),
         ([], "", "or for a run-up with --run-up"),
         (["--run-up"], 'main = "pump"\n[[excitations]]\nname = "pump"\nspeed = "90 rpm"', "severity.main"),
-        (["--run-up", "--watch", "A"], '[[severity.limits]]\nat = "block"\nvelocity_rms = "1 m/s"', "block"),
     ],
 )
 def test_what_cannot_be_done_is_named(vib, forced, options, more, message):
@@ -144,6 +143,13 @@ def test_what_cannot_be_done_is_named(vib, forced, options, more, message):
     assert done.out == ""
     assert "Traceback" not in done.err
     assert len([line for line in done.err.splitlines() if line.startswith("error:")]) == 1
+
+
+def test_what_is_watched_is_shown_beside_what_is_judged(vib, forced):
+    document = json.loads(vib("respond", forced(), "--run-up", "--watch", "A y", "--json", "--quiet").out)
+    outputs = [row["output"] for row in document["run_up"]["outputs"]]
+    assert outputs == ["A y", "block x", "block y", "block z"]
+    assert [row["output"] for row in document["severity"]["places"]] == outputs[1:]
 
 
 def test_nothing_drives(vib, resonant):

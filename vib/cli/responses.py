@@ -99,7 +99,7 @@ def show_run_up(path: Path, options: RespondOptions, units: Chosen, pictures: st
             if getattr(options, name) is not None:
                 raise ModelError(f"--{name} does not go with --run-up; --watch and --shaft do")
         shown = units or study.output_units
-        found = run_up_of(study, options.shaft, options.watch or None)
+        found = run_up_of(study, options.shaft, options.watch)
         severity = found.severity
 
         @cache

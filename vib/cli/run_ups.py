@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING
 
 import numpy as np
 
@@ -23,7 +23,7 @@ def drives(study: Study) -> bool:
 
 
 def run_up_of(
-    study: Study, shaft: str | None = None, watch: Any = None, modes: Modes | None = None
+    study: Study, shaft: str | None = None, watch: Sequence[str] = (), modes: Modes | None = None
 ) -> RunUps:
     """The run-up of a study, judged where it has a [severity].
 
@@ -36,7 +36,10 @@ def run_up_of(
     from vib.severity import judge
     from vib.show.tables.run_up import RunUps
 
-    found = run_up(study, shaft=shaft, watch=watch, modes=modes)
+    if watch:  # stands in for the entry of the study; what [severity] judges is watched besides
+        response = study.response.model_copy(update={"watch": tuple(watch)})
+        study = study.model_copy(update={"response": response})
+    found = run_up(study, shaft=shaft, modes=modes)
     severity = None if study.severity is None else judge(found, study.severity)
     return RunUps(study, found, severity)
 
