@@ -3,6 +3,7 @@
 import numpy as np
 import pytest
 
+from tests.scatter.conftest import FRAME
 from tests.scatter.conftest import SWAP as SWAP_TEXT
 from tests.scatter.direct import Direct
 from vib.errors import ModelError
@@ -91,47 +92,6 @@ def test_the_same_samples_solved_in_full_have_the_same_modes(studies):
     bounds = {path: (row.low, row.high) for path, row in study.tolerances.items()}
     brute = Direct(Family.from_study(study, bounds, count=3)).evaluate(found.values)
     np.testing.assert_allclose(found.batch.frequencies_hz, brute.frequencies_hz, rtol=2e-4)
-
-
-FRAME = """
-title = "Mast with an oblong foot"
-[units]
-length = "mm"
-[points]
-A = [0, 0, 0]
-B = [0, 0, 1500]
-[sections.mast]
-shape = "rectangle"
-width = 60
-height = 64
-[materials.steel]
-like = "structural steel"
-youngs_modulus = "210 GPa +- 5 %"
-[[members]]
-name = "mast"
-section = "mast"
-material = "steel"
-runs = [["A", "B"]]
-[[bodies]]
-name = "head"
-mass = "80 kg +- 10 %"
-carried_by = "B"
-[[springs]]
-name = "foot"
-between = ["A", "ground"]
-stiffness = { x = "50 kN/mm", y = "50 kN/mm", z = "50 kN/mm", rz = "90 kN m/rad" }
-[[springs]]
-name = "tilting foot"
-between = ["A", "ground"]
-stiffness = { rx = "300 kN m/rad +- 40 %", ry = "260 kN m/rad +- 40 %" }
-[damping]
-ratio = 0.01
-[[excitations]]
-name = "pump"
-speed = "288 rpm"
-at = "head"
-band = "5 %"
-"""
 
 
 def test_the_same_seed_gives_the_same_numbers(studies):

@@ -378,6 +378,9 @@ def sweep(
     spacing: Annotated[
         Literal["linear", "logarithmic"], typer.Option("--spacing", help="How the values are spaced.")
     ] = "linear",
+    levels: Annotated[
+        bool, typer.Option("--levels/--no-levels", help="Predict vibration too, where forces are stated.")
+    ] = True,
     count: Count = None,
     up_to: UpTo = None,
     workers: Workers = None,
@@ -399,7 +402,9 @@ def sweep(
 
     running = Running(count, up_to, workers, cluster, resume)
     wish = Wish(json, out, quiet)
-    return show_sweep(study, (vary or [], ends or []), steps, spacing, running, units, pictures, wish)
+    return show_sweep(
+        study, (vary or [], ends or []), (steps, spacing, levels), running, units, pictures, wish
+    )
 
 
 @app.command(short_help="All of it as one printable page.")

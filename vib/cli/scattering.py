@@ -96,23 +96,25 @@ def scatter_of(study: Study, limits: tuple[int | None, str | None], band: str | 
 def show_sweep(
     path: Path,
     vary: tuple[list[str], list[str]],
-    steps: int | None,
-    spacing: str,
+    grid: tuple[int | None, str, bool],
     running: Running,
     units: Chosen,
     pictures: str,
     wish: Wish,
 ) -> int:
-    """Modes while quantities run from one value to another; ``vary`` holds the entries and all their ends."""
+    """Modes while quantities run from one value to another; ``vary`` holds the entries and all their ends,
+    ``grid`` how many values, their spacing, and whether levels are wanted."""
     with at_work_on(path, wish) as study:
         from vib.scatter.sweep import sweep
         from vib.show.tables.sweep import sweep_blocks, sweep_document
 
+        steps, spacing, levels = grid
         found = sweep(
             study,
             _ends(*vary),
             steps=steps,
             spacing="linear" if spacing == "linear" else "logarithmic",
+            levels=levels,
             **running.arguments(),
         )
         shown = units or study.output_units

@@ -7,7 +7,7 @@ What the support is taken for, rigid or flexible, is judged once, for the nomina
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass, replace
 from functools import cached_property
 from typing import TYPE_CHECKING, Any
@@ -167,56 +167,74 @@ def levels_of(found: RunUp, table: Table | None) -> Array:
     return np.stack([part.max(axis=0) for part in (*inside, *whole)], axis=1)
 
 
-def measuring(study: Study, evaluator: Evaluator) -> tuple[Measuring, RunUp] | None:
-    """The task of predicting levels, and the nominal run-up; None where nothing states a force."""
+@dataclass(frozen=True, eq=False)
+class Predicting:
+    """What is asked of every sample, and the nominal run-up that it is judged as.
+
+    ``outputs`` (q,) names; ``boundaries`` of the zones of each, empty without a standard; ``verdict`` of the
+    nominal structure in words, "" without [severity]; ``nominal`` (q, 4) its levels.
+    """
+
+    task: Measuring
+    outputs: tuple[str, ...]
+    boundaries: tuple[tuple[Boundaries, ...], ...]
+    verdict: str
+    nominal: Array
+
+
+def predicting(study: Study, evaluator: Evaluator) -> Predicting | None:
+    """How levels of samples are predicted; None where nothing states a force."""
     if not any(True for row in study.excitations for _ in row.acting()):
         return None
-    nominal = run_up(study)
+    found = run_up(study)
     table = study.severity
-    straight = [column for column, turning in enumerate(nominal.rotational) if not turning]
-    columns = judged_outputs(nominal, table) if table is not None else straight
+    straight = [column for column, turning in enumerate(found.rotational) if not turning]
+    columns = judged_outputs(found, table) if table is not None else straight
     rates: Sequence[float] = ()
-    if nominal.shaft:
-        last = nominal.speed_hz[-1]
-        rates = [float(line.frequency_hz[-1] / last) for line in nominal.lines if line.order is not None]
-    watched = tuple(nominal.places[column] for column in columns)
-    return Measuring(evaluator, table, watched, nominal.shaft, tuple(sorted(set(rates)))), nominal
-
-
-def levels(found: RunUp, task: Measuring, batch: Batch) -> Levels:
-    """What the samples of a batch with levels say, judged as the nominal run-up is."""
-    values, table = batch.levels, task.table
-    assert values is not None
-    names = [found.outputs[found.places.index(place)] for place in task.watched]
+    if found.shaft:
+        last = found.speed_hz[-1]
+        rates = [float(line.frequency_hz[-1] / last) for line in found.lines if line.order is not None]
+    watched = tuple(found.places[column] for column in columns)
+    task = Measuring(evaluator, table, watched, found.shaft, tuple(sorted(set(rates))))
     verdict = None if table is None else judge(found, table)
-    limits: Mapping[str, tuple[Boundaries, ...]] = (
-        {} if verdict is None else {row.output: row.limits for row in verdict.rows}
+    limits = {} if verdict is None else {row.output: row.limits for row in verdict.rows}
+    outputs = tuple(found.outputs[column] for column in columns)
+    return Predicting(
+        task,
+        outputs,
+        tuple(limits.get(name, ()) for name in outputs),
+        "" if verdict is None else verdict.verdict,
+        levels_of(replace(found, **_in_service(found)), table)[columns],
     )
-    running = replace(found, **_in_service(found))
-    nominal = levels_of(running, table)[[found.outputs.index(name) for name in names]]
+
+
+def levels(asked: Predicting, batch: Batch) -> Levels:
+    """What the samples of a batch with levels say."""
+    values, table = batch.levels, asked.task.table
+    assert values is not None
     zones = np.zeros(values.shape[:2], dtype=np.intp)
-    for column, name in enumerate(names):
+    for column, limits in enumerate(asked.boundaries):
         own = values[:, column]
-        zones[:, column] = zone_numbers(own[:, VELOCITY], own[:, DISPLACEMENT], limits.get(name, ()))
-    judged = bool(limits) and any(limits.values())
+        zones[:, column] = zone_numbers(own[:, VELOCITY], own[:, DISPLACEMENT], limits)
     outputs = tuple(
         Level(
             name,
-            distribution(values[:, column, VELOCITY], float(nominal[column, VELOCITY])),
-            limits.get(name, ()),
-            probability(zones[:, column] >= 2) if limits.get(name) else None,
-            probability(zones[:, column] >= 3) if limits.get(name) else None,
-            tuple(_own(table, name, task.watched[column][0], values[:, column])),
+            distribution(values[:, column, VELOCITY], float(asked.nominal[column, VELOCITY])),
+            limits,
+            probability(zones[:, column] >= 2) if limits else None,
+            probability(zones[:, column] >= 3) if limits else None,
+            tuple(_own(table, name, asked.task.watched[column][0], values[:, column])),
         )
-        for column, name in enumerate(names)
+        for column, (name, limits) in enumerate(zip(asked.outputs, asked.boundaries, strict=True))
     )
     worst = zones.max(axis=1, initial=0)
+    judged = any(asked.boundaries)
     return Levels(
         len(values),
         outputs,
         probability(worst >= 2) if judged else None,
         probability(worst >= 3) if judged else None,
-        "" if verdict is None else verdict.verdict,
+        asked.verdict,
     )
 
 

@@ -14,7 +14,7 @@ from vib.scatter.batch import Array, Batch
 from vib.scatter.chances import Chances, chances
 from vib.scatter.engine import Progress, Where, calmly, limits_of, reanalysis_of
 from vib.scatter.family import Family
-from vib.scatter.levels import Levels, levels, measuring
+from vib.scatter.levels import Levels, levels, predicting
 from vib.scatter.ranking import Effects, effects
 from vib.scatter.reanalysis import Reanalysis
 from vib.scatter.sampling import Design, Factors, Method, is_power_of_two, unit_points
@@ -226,10 +226,8 @@ def scatter(
 
 def _predicted(study: Study, reanalysis: Reanalysis, values: Array, where: Where) -> Levels | None:
     """Predicted vibration of some samples (N, d); None where nothing states a force, or of no samples."""
-    task = measuring(study, reanalysis.evaluator) if len(values) else None
-    if task is None:
-        return None
-    return levels(task[1], task[0], where.run(task[0], values, "levels of samples"))
+    asked = predicting(study, reanalysis.evaluator) if len(values) else None
+    return None if asked is None else levels(asked, where.run(asked.task, values, "levels of samples"))
 
 
 def _rows(samples: int) -> int:

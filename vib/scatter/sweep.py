@@ -13,6 +13,8 @@ from vib.errors import ModelError, UnitError
 from vib.scatter.batch import Array, Batch
 from vib.scatter.engine import Progress, Where, calmly, limits_of, reanalysis_of
 from vib.scatter.family import Family, nominal_value
+from vib.scatter.levels import VELOCITY, predicting
+from vib.severity.standards import Boundaries
 from vib.units import parse
 
 if TYPE_CHECKING:
@@ -47,6 +49,8 @@ class Sweep:
         The one or two quantities, with k or k1 and k2 values.
     batch
         What was found, value by value; of two quantities the second runs faster.
+    outputs, boundaries
+        (q,) where vibration is predicted, and the boundaries of the zones there; () where no force is stated.
     remarks
         What the reader should know, in words.
     """
@@ -55,6 +59,8 @@ class Sweep:
     modes: Modes
     swept: tuple[Swept, ...]
     batch: Batch
+    outputs: tuple[str, ...]
+    boundaries: tuple[tuple[Boundaries, ...], ...]
     remarks: tuple[str, ...]
 
     @property
@@ -73,6 +79,13 @@ class Sweep:
         return self.batch.damping_ratios.reshape(*self.shape, -1)
 
     @property
+    def velocity_rms_m_s(self) -> Array:
+        """R.m.s. velocity in the band of the standard at the worst running speed, (k, q) or (k1, k2, q)."""
+        levels = self.batch.levels
+        found = np.zeros((len(self.batch), 0)) if levels is None else levels[:, :, VELOCITY]
+        return found.reshape(*self.shape, -1)
+
+    @property
     def stable(self) -> bool:
         """Whether nothing grows anywhere."""
         return bool(self.batch.stable.all())
@@ -84,6 +97,7 @@ def sweep(
     *,
     steps: int | None = None,
     spacing: Spacing = "linear",
+    levels: bool = True,
     count: int | None = None,
     up_to: str | float | None = None,
     workers: int | None = None,
@@ -104,6 +118,8 @@ def sweep(
         How many values of each; default: 41 of one quantity, 15 of two.
     spacing
         Of the values; ``"logarithmic"`` for quantities above zero.
+    levels
+        Whether to predict vibration where forces are stated, which takes some hundredths of a second a value.
     count, up_to, workers, cluster, resume_in, progress
         As for `vib.scatter.scatter.scatter`.
 
@@ -131,9 +147,19 @@ def sweep(
     with calmly(study):
         family = Family.from_study(study, bounds, **limits_of(study, count, up_to, None))
         reanalysis = reanalysis_of(family, values)
-        batch = Where(workers, cluster, resume_in, progress).run(reanalysis.evaluator, values, "sweep")
+        asked = predicting(study, reanalysis.evaluator) if levels else None
+        task = reanalysis.evaluator if asked is None else asked.task
+        batch = Where(workers, cluster, resume_in, progress).run(task, values, "sweep")
     notes = (*_remarks(batch), *reanalysis.remarks)
-    return Sweep(study=study, modes=family.modes, swept=swept, batch=batch, remarks=notes)
+    return Sweep(
+        study=study,
+        modes=family.modes,
+        swept=swept,
+        batch=batch,
+        outputs=() if asked is None else asked.outputs,
+        boundaries=() if asked is None else asked.boundaries,
+        remarks=notes,
+    )
 
 
 def _swept(

@@ -5,12 +5,13 @@ from __future__ import annotations
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
+from numpy.typing import NDArray
 
 from vib.show.blocks import Block, Bullets, Column, Heading, Sentence, Table
-from vib.show.numbers import significant
+from vib.show.numbers import aligned, significant
 from vib.show.tables.quantities import entry_words, quantity_texts
 from vib.show.words import CAUTION, caution
-from vib.units import UnitSystem
+from vib.units import UnitSystem, shown, shown_unit
 
 if TYPE_CHECKING:
     from vib.scatter.sweep import Sweep
@@ -28,6 +29,8 @@ def sweep_blocks(found: Sweep, units: UnitSystem) -> list[Block]:
     blocks.append(span_table(found))
     if len(found.swept) == 1:
         blocks.append(curve_table(found, units, "frequency"))
+        if found.outputs:
+            blocks.append(level_table(found, units))
         if np.nanmax(np.ptp(found.damping_ratios, axis=0), initial=0.0) > _STEADY:
             blocks.append(curve_table(found, units, "damping"))
     else:
@@ -63,9 +66,7 @@ def curve_table(found: Sweep, units: UnitSystem, what: str) -> Table:
     """Frequency or damping of the first modes, value by value; of a long sweep some of the values."""
     (one,) = found.swept
     modes = _shown_modes(found)[:_MOST_MODES]
-    picked = np.unique(
-        np.linspace(0, len(one.values) - 1, min(len(one.values), _MOST_ROWS)).round().astype(int)
-    )
+    picked = _picked(len(one.values))
     *texts, unit = quantity_texts(one.kind, one.values[picked].tolist(), units)
     scale, array, word = (
         (1.0, found.frequencies_hz, "Natural frequencies")
@@ -82,6 +83,26 @@ def curve_table(found: Sweep, units: UnitSystem, what: str) -> Table:
         *(Column(f"mode {m + 1}", shown) for m in modes),
     )
     return Table(f"{word}, value by value", columns, rows)
+
+
+def _picked(count: int) -> NDArray[np.intp]:
+    """Evenly some of so many values."""
+    return np.arange(0, count, -(-count // _MOST_ROWS))
+
+
+def level_table(found: Sweep, units: UnitSystem) -> Table:
+    """R.m.s. velocity of the first outputs, value by value; of a long sweep some of the values."""
+    (one,) = found.swept
+    picked = _picked(len(one.values))
+    *texts, unit = quantity_texts(one.kind, one.values[picked].tolist(), units)
+    scale = float(shown(1.0, "velocity", units))
+    every = scale * found.velocity_rms_m_s[:, :_MOST_MODES]
+    largest = float(every[np.isfinite(every)].max(initial=0.0))
+    columns = [aligned(values.tolist(), largest) for values in every[picked].T]
+    rows = tuple(zip(texts, *columns, strict=True))
+    heads = (Column(name, shown_unit("velocity", units)) for name in found.outputs[:_MOST_MODES])
+    title = "R.m.s. velocity at the worst running speed, value by value"
+    return Table(title, (Column(entry_words(found.study, one.path), unit), *heads), rows)
 
 
 def sweep_document(found: Sweep) -> dict[str, Any]:
@@ -108,6 +129,14 @@ def sweep_document(found: Sweep) -> dict[str, Any]:
             }
             for mode in range(found.modes.count)
         ],
+        "levels": [
+            {
+                "output": name,
+                "velocity_rms_m_s": found.velocity_rms_m_s[..., column].tolist(),
+                "boundaries": [one.to_dict() for one in found.boundaries[column]],
+            }
+            for column, name in enumerate(found.outputs)
+        ],
         "stable": found.stable,
         "remarks": list(found.remarks),
         "caution": CAUTION,
@@ -117,6 +146,7 @@ def sweep_document(found: Sweep) -> dict[str, Any]:
 def sweep_rows(found: Sweep) -> list[dict[str, Any]]:
     """Value by value, for a CSV file."""
     grids = np.meshgrid(*(one.values for one in found.swept), indexing="ij")
+    levels = found.velocity_rms_m_s.reshape(len(found.batch), -1)
     named = [(f"{one.path}_si", grid.ravel()) for one, grid in zip(found.swept, grids, strict=True)]
     return [
         {
@@ -128,6 +158,10 @@ def sweep_rows(found: Sweep) -> list[dict[str, Any]]:
                     ("frequency_hz", found.batch.frequencies_hz),
                     ("damping_ratio", found.batch.damping_ratios),
                 )
+            },
+            **{
+                f"{name}_velocity_rms_m_s": float(levels[row, column])
+                for column, name in enumerate(found.outputs)
             },
         }
         for row in range(len(found.batch))
