@@ -77,11 +77,11 @@ def test_every_kind_of_quantity(tmp_path):
         assert np.isclose(found.damping_law.ratio, built.damping_law.ratio, rtol=1e-12)
         assert found.damping_law.bands == built.damping_law.bands
         modes = made.modes
-        law = [
+        ours, theirs = (
             system.damping_law.ratios(system, modes.undamped_frequencies_hz, modes.shapes.real)
             for system in (found, built)
-        ]
-        assert np.allclose(*law, rtol=1e-7)
+        )
+        assert np.allclose(ours, theirs, rtol=1e-7)
 
 
 def test_an_entry_that_touches_no_matrix_has_no_terms(tmp_path):

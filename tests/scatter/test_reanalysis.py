@@ -80,7 +80,7 @@ def test_the_nominal_sample_has_the_nominal_modes(frame):
 
 
 def test_bare_modes_in_closed_form_that_change_places(tmp_path):
-    # 10 kg on springs of 40, 60 and 90 kN/m: f = sqrt(k / m) / (2 pi), zeta = c / (2 sqrt(k m)) (any textbook)
+    # one body on one spring: f = sqrt(k / m) / (2 pi), zeta = c / (2 sqrt(k m)), as in any textbook
     read = study(tmp_path, BODIES)
     bounds = {f"springs[{i}].stiffness.x": (2e4, 1.6e5) for i in range(3)}
     bounds["bodies[1].mass"] = (5.0, 20.0)
@@ -210,8 +210,9 @@ def eigh_elastic(made, points, count):
 
 
 def test_a_spinning_wheel_splits_its_tilting_modes(tmp_path):
-    # a disc on tilting springs: two tilts of equal stiffness couple through the spin; the whirl frequencies are
-    # w = sqrt(w0^2 + g^2) +- g with g = Ip W / (2 It) (G. Genta, Dynamics of Rotating Systems, 2005, chapter 4)
+    # a disc on tilting springs: the spin couples two tilts of equal stiffness, which whirl at
+    # w = sqrt(w0^2 + g^2) -+ g with g = Ip W / (2 It)
+    # (G. Genta, Dynamics of Rotating Systems, 2005, chapter 4)
     text = """
     [points]
     A = ["0 m", "0 m", "0 m"]

@@ -43,7 +43,7 @@ def on_cluster(address: str, task: Task, waiting: Mapping[int, Array]) -> Iterat
             for number, samples in waiting.items()
         }
         deaths: dict[int, int] = {}
-        arriving: Any = cast(Any, as_completed)(futures)
+        arriving: Any = cast(Any, as_completed)(futures, loop=client.loop)
         try:
             for future in arriving:
                 number = futures[future]

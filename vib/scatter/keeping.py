@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import io
 import json
 import os
 from collections.abc import Mapping
@@ -48,7 +49,8 @@ class Kept:
         found: dict[int, Mapping[str, NDArray[Any]]] = {}
         for number in range(self.chunks):
             try:
-                with np.load(self._file(number), allow_pickle=False) as stored:
+                memory = io.BytesIO(self._file(number).read_bytes())
+                with np.load(memory, allow_pickle=False) as stored:
                     found[number] = {name: stored[name] for name in stored.files}
             except (OSError, ValueError, EOFError, BadZipFile, KeyError):
                 continue
@@ -62,8 +64,6 @@ class Kept:
         ModelError
             It can't be written.
         """
-        import io
-
         memory = io.BytesIO()
         np.savez(memory, **arrays)  # type: ignore[arg-type]
         try:
