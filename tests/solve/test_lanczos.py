@@ -20,6 +20,7 @@ from vib.solve.bounds import Found, theta_bounds
 from vib.solve.krylov import Ritz
 from vib.solve.lanczos import lowest_modes
 from vib.solve.undamped import Undamped
+from vib.system import System
 
 HERE = [name for name in BACKENDS if name != "PARDISO" or pardiso.installed()]
 
@@ -71,6 +72,17 @@ def test_a_limit_with_nothing_below():
     found = lowest_modes(problem.mass, problem.stiffness, below=1.0)
     assert len(found.values) == 0
     assert found.certified == 1.0
+
+
+def test_a_large_system_with_no_mode_below_a_limit():
+    """Through the public path, which used to look for what lies above no modes at all, without end."""
+    problem = lattice((12, 9, 8), held=True)
+    system = System(mass=problem.mass, stiffness=problem.stiffness)
+    lowest = system.modes(count=1).frequencies_hz[0]
+    found = system.modes(up_to=0.5 * lowest)
+    assert found.count == 0
+    assert found.complete_below_hz is not None
+    assert found.complete_below_hz >= 0.5 * lowest
 
 
 def test_a_limit_with_more_below_than_wanted():

@@ -93,7 +93,8 @@ class _Search:
         self.about: About | None = None
 
     def run(self, count: int | None, below: float | None) -> Undamped:
-        wanted = self.pencil.size if count is None else min(count, self.pencil.size)
+        # of no modes at all there would be no end to the search for what lies above them
+        wanted = self.pencil.size if count is None else min(max(count, 1), self.pencil.size)
         if below is None:
             return self._by_count(wanted)
         counted = self.clock.time_factor(self.pencil, below**2).negative
