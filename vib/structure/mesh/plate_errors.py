@@ -13,14 +13,13 @@ from collections.abc import Sequence
 import numpy as np
 import scipy.sparse as sparse
 from numpy.typing import NDArray
-from scipy.sparse.csgraph import connected_components
 
+from vib.structure.mesh.facing import smooth_corners
 from vib.structure.sparsity import Group, Pattern
 from vib.system import Array
 
 Numbers = NDArray[np.intp]
 OVERSTATED = 4.0
-_SMOOTH = np.cos(0.6)  # cells that meet at a greater angle (rad) are not smoothed into one another
 # corners of a triangle seen from points that integrate squares of linear fields exactly
 _POINTS = np.array([[2 / 3, 1 / 6, 1 / 6], [1 / 6, 2 / 3, 1 / 6], [1 / 6, 1 / 6, 2 / 3]])
 
@@ -58,11 +57,12 @@ def _of_group(nodes_m: Array, group: Group, pattern: Pattern, shapes: Array) -> 
     compliance = np.tile(stresses.compliance, (len(pieces), 1, 1))[:, :6, :6]
     assert count == len(cells)
     tensors = _to_space(values[:, :6], frames)
-    corner = _smooth_corners(flat, frames[:, 2])
+    cell = np.repeat(np.arange(len(flat)), 3)
+    corner = smooth_corners(flat.ravel(), cell, frames[:, 2]).reshape(flat.shape)
     number = int(corner.max()) + 1
     total = np.bincount(corner.ravel(), np.repeat(weights, 3), number)
     summing = sparse.csr_array(
-        (np.repeat(weights, 3), (corner.ravel(), np.repeat(np.arange(len(flat)), 3))),
+        (np.repeat(weights, 3), (corner.ravel(), cell)),
         shape=(number, len(flat)),
     )
     mean = (summing @ tensors.reshape(len(flat), -1)) / total[:, None]
@@ -105,23 +105,3 @@ def _to_cell(tensors: Array, frames: Array) -> Array:
 def _energy(values: Array, compliance: Array, weights: Array) -> Array:
     found: Array = np.einsum("e,esm,est,etm->m", weights, values, compliance, values, optimize=True)
     return found
-
-
-def _smooth_corners(triangles: Numbers, normals: Array) -> Numbers:
-    """(e, 3) a number for each corner, the same where cells of one node face about the same way."""
-    node, cell = triangles.ravel(), np.repeat(np.arange(len(triangles)), 3)
-    order = np.argsort(node, kind="stable")
-    node, cell = node[order], cell[order]
-    rows, columns = [np.arange(len(node))], [np.arange(len(node))]
-    for step in range(1, int(np.bincount(node).max())):
-        near = node[step:] == node[:-step]
-        alike = np.abs(np.einsum("ei,ei->e", normals[cell[step:]], normals[cell[:-step]])) > _SMOOTH
-        first = np.flatnonzero(near & alike)
-        rows.append(first)
-        columns.append(first + step)
-    listed = np.concatenate(rows), np.concatenate(columns)
-    graph = sparse.coo_array((np.ones(len(listed[0]), dtype=bool), listed), shape=(len(node),) * 2)
-    label = connected_components(graph, directed=False)[1]
-    found = np.empty(len(node), dtype=np.intp)
-    found[order] = label
-    return found.reshape(triangles.shape)
