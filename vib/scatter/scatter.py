@@ -197,7 +197,7 @@ def scatter(
     where = Where(workers, cluster, resume_in, progress)
     with calmly(study):
         family = Family.from_study(study, bounds, **limits_of(study, count, up_to, band))
-        reanalysis = reanalysis_of(family, everything)
+        reanalysis = reanalysis_of(family, values)
         found = where.run(reanalysis.evaluator, everything, "samples")
         predicted = _predicted(study, reanalysis, values[:level_samples], where)
         slopes = sensitivities(family)

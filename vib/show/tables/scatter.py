@@ -168,7 +168,8 @@ def chance_table(found: Scatter) -> Table | None:
         Column("probability", "%"),
         Column("95 % interval", "%"),
     )
-    return Table("Probability of a mode within a band", columns, tuple(rows), tones=tuple(tones))
+    title = "Probability of a mode within a band (any: of those that it can drive)"
+    return Table(title, columns, tuple(rows), tones=tuple(tones))
 
 
 def _chance_row(row: Chance) -> tuple[str, ...]:
