@@ -53,6 +53,7 @@ def show_scatter(
         from vib.scatter.scatter import scatter
         from vib.show.tables.scatter import objects, scatter_blocks, scatter_document
 
+        shown = units or study.output_units
         samples, seed, method, levels = drawn
         found = scatter(
             study,
@@ -71,10 +72,10 @@ def show_scatter(
         def files() -> dict[str, bytes]:
             from vib.show.scatter_files import scatter_files
 
-            return scatter_files(found, document(), pictures)
+            return scatter_files(found, document(), shown, pictures)
 
         answer = Answer(
-            scatter_blocks(found, units or study.output_units),
+            scatter_blocks(found, shown),
             document,
             files=files,
             status=OBJECTION if objects(found) else DONE,

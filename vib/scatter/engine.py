@@ -22,6 +22,7 @@ if TYPE_CHECKING:
 
 Progress = Callable[[float, float], None]
 USUAL_COUNT, LEAST_COUNT = 12, 6
+LARGE = 1000  # freedoms from which a second thread pays
 ENOUGH = 128  # samples that tell where samples lie
 BEYOND = 1.25  # modes are followed so far above the highest band, as they may fall into it
 
@@ -43,7 +44,8 @@ def limits_of(
 
 def calmly(study: Study) -> AbstractContextManager[object]:
     """One BLAS thread for a frame: its matrices are small, and threads beside workers only wait."""
-    if study.mesh is not None or study.matrices is not None:
+    rows = 0 if study.loaded is None else study.loaded.mass.shape[0]
+    if study.mesh is not None or rows > LARGE:
         return nullcontext()
     import scipy.linalg  # noqa: F401  (only a library that is loaded can be told)
 

@@ -80,17 +80,23 @@ class Level:
 
 @dataclass(frozen=True, eq=False)
 class Levels:
-    """Predicted vibration of the first ``samples`` samples.
+    """Predicted vibration of the first samples.
 
-    ``zone_c`` and ``zone_d`` are the probabilities that any output is in zone C or worse, and in zone D;
-    ``nominal`` the judgement of the nominal structure in words, "" without [severity].
+    ``velocity_rms_m_s`` (n, q) of every sample and output, in the band of the standard; ``zone_c`` and
+    ``zone_d`` are the probabilities that any output is in zone C or worse, and in zone D; ``nominal`` the
+    judgement of the nominal structure in words, "" without [severity].
     """
 
-    samples: int
+    velocity_rms_m_s: Array
     outputs: tuple[Level, ...]
     zone_c: Estimate | None
     zone_d: Estimate | None
     nominal: str
+
+    @property
+    def samples(self) -> int:
+        """How many samples there are."""
+        return len(self.velocity_rms_m_s)
 
     def to_dict(self) -> dict[str, Any]:
         """Plain values."""
@@ -230,7 +236,7 @@ def levels(asked: Predicting, batch: Batch) -> Levels:
     worst = zones.max(axis=1, initial=0)
     judged = any(asked.boundaries)
     return Levels(
-        len(values),
+        values[:, :, VELOCITY],
         outputs,
         probability(worst >= 2) if judged else None,
         probability(worst >= 3) if judged else None,

@@ -24,6 +24,6 @@ def scatter_sections(found: Scatter | None, units: UnitSystem) -> list[Section]:
     if found is None:
         return []
     blocks = scatter_parts(found, units)
-    pictures = drawings(scatter_pictures(found), "scatter")
+    pictures = drawings(scatter_pictures(found, units), "scatter")
     more = Sentence("vib scatter draws more samples, and gives every figure as data.", "quiet")
     return [Section("How sure", "scatter", (*blocks, *pictures, more))]

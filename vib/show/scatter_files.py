@@ -16,7 +16,9 @@ if TYPE_CHECKING:
     from vib.scatter.sweep import Sweep
 
 
-def scatter_files(found: Scatter, document: dict[str, Any], pictures: str) -> dict[str, bytes]:
+def scatter_files(
+    found: Scatter, document: dict[str, Any], units: UnitSystem, pictures: str
+) -> dict[str, bytes]:
     """scatter.json, the probabilities as CSV, every sample in scatter.npz, and pictures."""
     contents = {"scatter.json": to_json(document).encode()}
     if document["bands"]:
@@ -24,7 +26,7 @@ def scatter_files(found: Scatter, document: dict[str, Any], pictures: str) -> di
     contents["scatter.npz"] = npz_bytes(
         {"entries": list(found.factors.paths), "values_si": found.values, **found.batch.arrays()}
     )
-    return contents | dict(picture.content(pictures) for picture in scatter_pictures(found))
+    return contents | dict(picture.content(pictures) for picture in scatter_pictures(found, units))
 
 
 def sweep_files(found: Sweep, document: dict[str, Any], units: UnitSystem, pictures: str) -> dict[str, bytes]:

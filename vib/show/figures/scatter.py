@@ -7,29 +7,37 @@ from typing import TYPE_CHECKING, Any, Literal
 
 import numpy as np
 
-from vib.show.figures.canvas import COLOURS, INK, Picture, legend, sheet, short, style
+from vib.show.figures.canvas import BAD, COLOURS, INK, Picture, legend, sheet, short, style
 from vib.show.numbers import significant
 from vib.show.tables.quantities import factor_words
 from vib.show.tables.scatter import elastic, strongest
+from vib.units import UnitSystem, shown, shown_unit
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
 
-    from vib.scatter.scatter import Scatter
+    from vib.scatter.levels import Levels
+    from vib.scatter.scatter import Ranking, Scatter
     from vib.screening import Line
 
-_MOST_MODES, _MOST_RANKED, _MOST_FACTORS = 12, 6, 6
+_MOST_MODES, _MOST_RANKED, _MOST_FACTORS, _MOST_LEVELS = 12, 6, 6, 6
 _FAR = 4.0  # ratio of the ends of an axis from which it is logarithmic
 _BANDS = (COLOURS[4], COLOURS[5], COLOURS[3], COLOURS[2])
 _HATCHES = ("", "//", "\\\\", "..")
 
 
-def scatter_pictures(found: Scatter) -> list[Picture]:
-    """The overview, the histograms and, where the factors are ranked, what the scatter comes from."""
-    if not elastic(found):
+def scatter_pictures(found: Scatter, units: UnitSystem) -> list[Picture]:
+    """The overview and the histograms, levels where there are any, and what the scatter comes from."""
+    modes = elastic(found)
+    if not modes:
         return []
     pictures = [range_picture(found), histogram_picture(found)]
-    return [*pictures, ranking_picture(found)] if found.ranking is not None else pictures
+    if found.levels is not None:
+        pictures.append(level_picture(found.levels, units))
+    ranking = found.ranking
+    if ranking is not None and any(strongest(ranking.frequencies.total[:, mode]) for mode in modes):
+        pictures.append(ranking_picture(found, ranking))
+    return pictures
 
 
 def range_picture(found: Scatter) -> Picture:
@@ -130,11 +138,7 @@ def histogram_picture(found: Scatter) -> Picture:
             own = found.frequencies_hz[mode]
             values = found.batch.frequencies_hz[:, mode]
             draw_bands(axes, _lines(found), vertical=True)
-            bins = (
-                np.linspace(own.least, own.most, 1 + min(30, int(2 * len(values) ** 0.4)))
-                if own.most > own.least
-                else 1
-            )
+            bins = np.linspace(own.least, own.most, 1 + _bins(len(values))) if own.most > own.least else 1
             counts, edges = np.histogram(values, bins)
             axes.stairs(100 * counts / len(values), edges, fill=True, color=COLOURS[0], alpha=0.75, zorder=3)
             axes.axvline(own.nominal, color=INK, lw=1.2, ls=(0, (4, 2)), zorder=4)
@@ -149,10 +153,53 @@ def histogram_picture(found: Scatter) -> Picture:
     return Picture("scatter_histograms", figure, "How often each natural frequency comes")
 
 
-def ranking_picture(found: Scatter) -> Picture:
+def level_picture(levels: Levels, units: UnitSystem) -> Picture:
+    """One panel an output that moves: how often each level comes, with the boundaries of the zones."""
+    scale = float(shown(1.0, "velocity", units))
+    values = np.where(np.isfinite(levels.velocity_rms_m_s), scale * levels.velocity_rms_m_s, np.nan)
+    moving = np.nanmax(np.nan_to_num(values), axis=0)
+    picked = [int(q) for q in np.argsort(-moving)[:_MOST_LEVELS] if moving[q] >= 0.01 * moving.max()]
+    columns = min(2, len(picked)) or 1
+    rows = -(-len(picked) // columns) or 1
+    with style():
+        figure = sheet(7.2, 0.5 + 1.9 * rows)
+        panels: Any = figure.subplots(rows, columns, squeeze=False)
+        for axes in panels.ravel()[len(picked) :]:
+            axes.set_visible(False)
+        for output, axes in zip(picked, panels.ravel(), strict=False):
+            level = levels.outputs[output]
+            own = values[:, output][np.isfinite(values[:, output])]
+            counts, edges = np.histogram(own, _bins(len(own)))
+            axes.stairs(100 * counts / len(own), edges, fill=True, color=COLOURS[0], alpha=0.75, zorder=3)
+            axes.axvline(scale * level.velocity_m_s.nominal, color=INK, lw=1.2, ls=(0, (4, 2)), zorder=4)
+            for boundary in level.boundaries:
+                marks = zip(boundary.values, ("B", "C", "D"), strict=True)
+                for value, zone in marks if boundary.quantity == "velocity_rms" else ():
+                    if scale * value < 1.1 * own.max():
+                        _mark_zone(axes, scale * value, zone)
+            axes.set_xlim(left=0.0)
+            axes.set_title(level.output, fontsize=7.5)
+            axes.set_xlabel(f"velocity, {shown_unit('velocity', units)} r.m.s.")
+        for axes in panels[:, 0]:
+            axes.set_ylabel("samples, %")
+    return Picture("scatter_levels", figure, "How often each level comes at the worst running speed")
+
+
+def _mark_zone(axes: Axes, value: float, zone: str) -> None:
+    axes.axvline(value, color=BAD, lw=1.2, zorder=4)
+    axes.annotate(
+        f"zone {zone}", (value, 1.0), xycoords=("data", "axes fraction"), xytext=(3, -8),
+        textcoords="offset points", fontsize=6.5, color=BAD, zorder=5,
+    )  # fmt: skip
+
+
+def _bins(count: int) -> int:
+    """How many bars show so many samples without showing their chance."""
+    return min(30, max(1, int(2 * count**0.4)))
+
+
+def ranking_picture(found: Scatter, ranking: Ranking) -> Picture:
     """One panel a mode: total effects as bars, their part of the first order darker, errors as whiskers."""
-    ranking = found.ranking
-    assert ranking is not None
     modes = elastic(found)[:_MOST_RANKED]
     columns = min(2, len(modes))
     rows = -(-len(modes) // columns)

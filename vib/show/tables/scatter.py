@@ -21,6 +21,7 @@ if TYPE_CHECKING:
 SELDOM = 0.05  # a probability of resonance above this is an objection: common practice, no source
 _SHOWN = (2.5, 50.0, 97.5)
 _MOST_FACTORS, _MOST_RANKED = 4, 6
+_ROUND_OFF = 1e-9  # of a figure: an interval below this is none
 
 
 def scatter_blocks(found: Scatter, units: UnitSystem) -> list[Block]:
@@ -146,7 +147,8 @@ def _figures(own: Distribution, scale: float) -> tuple[str, ...]:
     for percent in _SHOWN:
         estimate = own.percentiles[percent]
         found += [significant(scale * estimate.value, 4)]
-        found += [significant(scale * (estimate.high - estimate.low) / 2, 2)]
+        half = (estimate.high - estimate.low) / 2
+        found += ["0" if half <= _ROUND_OFF * abs(estimate.value) else significant(scale * half, 2)]
     return tuple(found)
 
 
@@ -266,7 +268,7 @@ def _interval(estimate: Estimate) -> str:
 
 
 def ranking_table(found: Scatter) -> Table | None:
-    """The factors that matter most to each of the first modes."""
+    """The factors that matter most to each of the first modes; None where no frequency scatters."""
     ranking = found.ranking
     if ranking is None:
         return None
@@ -285,6 +287,8 @@ def ranking_table(found: Scatter) -> Table | None:
                     significant(found.shifts_hz[mode, factor], 3),
                 )
             )
+    if not rows:
+        return None
     columns = (
         Column("mode"),
         text_column("quantity"),
