@@ -8,6 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from vib.structure.cells.edges import FACES
+from vib.structure.mesh.assign import Patch
 from vib.structure.sparsity import Group
 from vib.system import Array
 
@@ -33,7 +34,7 @@ def outer_faces(
     return found
 
 
-def faces_seen(count: int, solids: Sequence[Group]) -> list[NDArray[np.bool_]]:
+def faces_seen(count: int, solids: Sequence[Group | Patch]) -> list[NDArray[np.bool_]]:
     """For each group of solids (e, faces): the face belongs to no other cell; of ``count`` nodes in all."""
     keys = [
         # three corners tell a face from all others, also of four
