@@ -2,8 +2,11 @@
 
 from __future__ import annotations
 
+from pathlib import Path
+
 import numpy as np
 import pytest
+import scipy.sparse.linalg as sparse_linalg
 
 import vib
 import vib.drive
@@ -91,3 +94,55 @@ def test_a_shaken_ground_equals_the_transmissibility(tmp_path):
     relative = np.linalg.solve(matrix, (TAU * 13) ** 2 * anatomy.carried[:, 2] * ground)
     momentum = (TAU * 13) ** 2 * (anatomy.carried[:, 2] @ relative + anatomy.rigid_mass[2, 2] * ground)
     assert abs(run.transmitted.force_n[0, 0, lifted].sum() - momentum) < 1e-9 * abs(momentum)
+
+
+@pytest.mark.parametrize(
+    "extra", ["", '[[springs]]\nbetween = ["flank", "ground"]\nstiffness = { x = "9 kN/mm" }\n']
+)
+def test_the_sole_of_a_pedestal_of_cells_carries_its_forces(tmp_path, extra):
+    """Momentum along each axis, with supports of a set of nodes."""
+    text = Path("models/bearing_pedestal.toml").read_text()
+    text = text[: text.index("[[excitations]]")].replace("damping_ratio = 0.008", "")
+    (tmp_path / "bearing_pedestal.vtu").write_bytes(Path("models/bearing_pedestal.vtu").read_bytes())
+    study = study_of(
+        tmp_path,
+        text
+        + extra
+        + """
+[damping]
+rayleigh = [["40 Hz", 0.004], ["4 kHz", 0.4]]
+[[excitations]]
+name = "rotor"
+speed = "2950 rpm"
+at = "bearing"
+axis = "y"
+unbalance = { amount = "9 kg mm" }
+forces = { at = "flank", order = 2, along = [1, 1, 1], amplitude = "300 N" }
+""",
+    )
+    speeds = np.array([30.0, 50.0])
+    run = ran(study, speeds_hz=speeds)
+    planned = vib.drive.drive(run.system, study.excitations)
+    for number, line in enumerate(planned.lines):
+        omega = TAU * run.lines[number].frequency_hz
+        forces = planned.forces(line, speeds)
+        for k in range(len(speeds)):
+            whole = (
+                run.system.stiffness - omega[k] ** 2 * run.system.mass + 1j * omega[k] * run.system.damping
+            )
+            moved = sparse_linalg.spsolve(whole.tocsc(), planned.directions @ forces[k])
+            inertia = -(omega[k] ** 2) * (run.system.anatomy.carried[:, :3].T @ moved)
+            applied = sum(
+                np.real(aim.weights)[:3] * force for aim, force in zip(planned.inputs, forces[k], strict=True)
+            )
+            arrived = np.array(
+                [
+                    sum(
+                        run.transmitted.force_n[k, number, column]
+                        for column, component in enumerate(run.transmitted.components)
+                        if component == axis
+                    )
+                    for axis in "xyz"
+                ]
+            )
+            assert np.abs(arrived - (applied - inertia)).max() < 1e-6 * np.abs(applied).max()

@@ -4,11 +4,13 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass, replace
+from functools import cached_property
 from typing import Any
 
 import numpy as np
 import scipy.sparse as sparse
 
+from vib.response.receptance import symmetric_part
 from vib.system import Matrix, System
 
 
@@ -28,6 +30,11 @@ class AtSpeeds:
     turning: Matrix | None
     following: Matrix | None
     speeds: Mapping[str, tuple[float, float]]
+
+    @cached_property
+    def straight(self) -> System:
+        """The system without circulatory forces, whose undamped modes are those of every speed."""
+        return symmetric_part(self.system)
 
     @property
     def varies(self) -> bool:

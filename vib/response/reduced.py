@@ -78,7 +78,7 @@ def corrections(system: System, modes: Undamped, vectors: Array) -> Array:
     if modes.rigid:
         elastic = modes.values[modes.rigid :]
         stiffness = stiffness + (float(elastic[0]) if elastic.size else 1.0) * system.mass
-    return _solved(stiffness, together)
+    return solved(stiffness, together)
 
 
 def first_motion(system: System, force: Array) -> Array:
@@ -113,7 +113,7 @@ def _by_mass(mass: Matrix, force: Array) -> Array:
     return np.asarray(found)
 
 
-def _solved(matrix: Matrix, right: Array) -> Array:
+def solved(matrix: Matrix, right: Array) -> Array:
     """Solutions by the factorisation that suits the size.
 
     Raises

@@ -11,6 +11,7 @@ import numpy as np
 from vib.modes import Modes, find_modes
 from vib.response.at_speeds import AtSpeeds
 from vib.response.exponential import Array
+from vib.response.tracking import Tracked
 
 EVEN = 201  # points over the range
 _ABOUT = np.array([-8.0, -4.0, -2.0, -1.0, -0.5, 0.0, 0.5, 1.0, 2.0, 4.0, 8.0])  # half widths of a peak
@@ -50,7 +51,7 @@ def meetings(
     """Every meeting of a line with a mode between two speeds, by speed.
 
     Where the matrices change with the speed, curves of the modes by their frequencies are followed between
-    samples, and each meeting is refined by the secant rule on modes computed there.
+    samples (`vib.response.tracking`), and each meeting is found by the rule of false position.
     """
     top = 1.02 * max(rates, default=0.0) * high
     if not top:
@@ -66,7 +67,7 @@ def meetings(
             if frequency > 0 and ratio < _NO_PEAK and low <= frequency / rate <= high
         ]
         return sorted(found, key=lambda row: (row.speed_hz, row.mode))
-    curves = _Curves(family, top)
+    curves = _Curves(Tracked(family, high, top))
     for speed in np.linspace(low, high, _SAMPLES).tolist():
         curves.at(speed)
     found = [row for rate in rates for row in curves.meetings(rate)]
@@ -76,15 +77,14 @@ def meetings(
 class _Curves:
     """Natural frequencies and ratios by their order at every speed asked for."""
 
-    def __init__(self, family: AtSpeeds, top_hz: float) -> None:
-        self._family, self._top = family, top_hz
+    def __init__(self, tracked: Tracked) -> None:
+        self._tracked = tracked
         self._known: dict[float, tuple[Array, Array]] = {}
 
     def at(self, speed_hz: float) -> tuple[Array, Array]:
         """Frequencies, ascending, and ratios at a speed."""
         if speed_hz not in self._known:
-            modes = find_modes(self._family.system_at(speed_hz), up_to=self._top)
-            self._known[speed_hz] = (modes.frequencies_hz, modes.damping_ratios)
+            self._known[speed_hz] = self._tracked.at(speed_hz)
         return self._known[speed_hz]
 
     def meetings(self, rate: float) -> list[Meeting]:

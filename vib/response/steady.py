@@ -20,7 +20,7 @@ from vib.massless import acts_on, dense, root_scale, split_mass
 from vib.response.at_speeds import AtSpeeds, as_sparse
 from vib.response.exponential import Array
 from vib.response.first_order import flexibility
-from vib.response.receptance import ALL_MODES, has_massless, known_modes, symmetric_part
+from vib.response.receptance import ALL_MODES, has_massless, known_modes
 from vib.response.residue_sum import Complex, Dashpots, ModalSum, coupled, remainder
 from vib.solve.damping import ModalDamping
 from vib.solve.localised import Localised, localise
@@ -197,7 +197,7 @@ def _residues(
     linear = as_sparse(family.linear_at(top_hz), system.size)
     if acts_on(linear, light):
         return None
-    undamped, seen = known_modes(symmetric_part(system), np.array([highest]))
+    undamped, seen = known_modes(family.straight, np.array([highest]))
     alone = seen.proportional and system.gyroscopic is None and not system.unsymmetric
     split = None
     if not alone:
@@ -219,7 +219,7 @@ def _set_up(
     seen: ModalDamping,
     split: Localised | None,
 ) -> _Residues:
-    system, modes = family.system, seen.undamped
+    modes = seen.undamped
     outputs, inputs, light = vectors
     basis = None
     if split is None:
@@ -233,9 +233,9 @@ def _set_up(
         rows, columns = np.hstack([outputs, basis]), np.hstack([inputs, basis])
     rest = None
     if not modes.complete:
-        stiffness = symmetric_part(system).stiffness
-        rest = remainder(system.mass, stiffness, modes, rows, columns, highest, seen.law_limit)
-    direct = flexibility(symmetric_part(system), light)
+        straight = family.straight
+        rest = remainder(straight.mass, straight.stiffness, modes, rows, columns, highest, seen.law_limit)
+    direct = flexibility(family.straight, light)
     summed = ModalSum(
         modes.values,
         rates,
