@@ -324,7 +324,7 @@ def scatter(
         typer.Option(
             "--levels", metavar="NUMBER", min=0, help="For how many samples vibration is predicted by forces."
         ),
-    ] = 256,
+    ] = 128,
     count: Count = None,
     up_to: UpTo = None,
     band: Band = None,

@@ -25,7 +25,7 @@ if TYPE_CHECKING:
     from vib.modes import Modes
     from vib.study import Study
 
-USUAL_SAMPLES, USUAL_LEVELS = 1024, 256
+USUAL_SAMPLES, USUAL_LEVELS = 1024, 128
 MOST_CORNERS = 6  # quantities of one table that are tried at all corners
 LEAST_ROWS, MOST_ROWS = 64, 1024  # of the design that ranks the factors
 
