@@ -40,7 +40,11 @@ def test_solids_divided_differently(tmp_path, kind):
     coarse, fine = cube(kind, (1, 1, 1)), cube(kind, (2, 2, 2))
     nodes, blocks = merged(at(coarse, kind, (0, 0, 0)), at(fine, kind, (0, 0, 1)))
     found = said(tmp_path, nodes, blocks)
-    numbers = [int(word) for word in found.split(" lie on ")[0].replace(",", " ").split() if word.isdigit()]
+    numbers = [
+        int(word)
+        for word in found.split(" lie on ")[0].split(" and ")[0].replace(",", " ").split()
+        if word.isdigit()
+    ]
     quarters = 4 * nodes[np.array(numbers) - 1]
     np.testing.assert_allclose(quarters, np.round(quarters), atol=1e-9)
     np.testing.assert_allclose(quarters[:, 2], 4)
