@@ -77,7 +77,8 @@ def test_an_excitation_without_a_force_says_so(modes, run_up, table):
     lines = [excitation(speed="1480 rpm"), excitation(name="pump", speed="1500 rpm")]
     found = screen(modes, lines, run_ups=[given], severity=table(group=1, support="rigid"))
     assert [row.consequence is None for row in found.rows] == [False, True]
-    assert "not known for pump: no force is stated" in found.verdict
+    assert "not known for pump, order 1: no force is stated there" in found.verdict
+    assert "does no harm" not in found.verdict
     document = json.loads(to_json(found.to_dict()))
     assert document["rows"][0]["consequence"]["zone"] == "A"
     assert document["rows"][1]["consequence"] is None

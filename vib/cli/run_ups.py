@@ -10,9 +10,10 @@ import numpy as np
 if TYPE_CHECKING:
     from vib.modes import Modes
     from vib.response.run_up import RunUp
-    from vib.screening import Screening
+    from vib.screening import Line, Screening
     from vib.show.tables.run_up import RunUps
     from vib.study import Study
+    from vib.study.excitations import Excitation
 
 _ABOUT = np.array([-1.0, -0.5, 0.0, 0.5, 1.0])  # damping ratios off a resonance; the peak lies between
 
@@ -47,9 +48,11 @@ def run_up_of(
 def coincidences(study: Study, modes: Modes, screening: Screening) -> Sequence[RunUp]:
     """Run-ups at the speeds where lines meet modes of a screening, one for each machine that turns by itself.
 
-    Empty where no excitation states a force, or no mode lies inside a band.
+    Empty where no mode lies inside a band of a line that a force is stated for.
     """
-    if not drives(study) or not any(row.inside for row in screening.rows):
+    by_name = {excitation.name: excitation for excitation in study.excitations}
+    met = [row for row in screening.rows if row.inside and _states(by_name[row.line.excitation], row.line)]
+    if not met:
         return ()
     from vib.response.over_speeds import run_up
     from vib.study.excitations import leader
@@ -61,15 +64,22 @@ def coincidences(study: Study, modes: Modes, screening: Screening) -> Sequence[R
             if any(True for _ in excitation.acting()):
                 stated = [speed for ends in first.speed_ranges for speed in ends if speed > 0]
                 speeds.setdefault(first.name, []).extend(stated)
-    for row in screening.rows:
-        if row.inside and row.line.order is not None:
-            excitation = next(one for one in study.excitations if one.name == row.line.excitation)
-            first, ratio = leader(excitation, study.excitations)
-            if first.name in speeds:
-                met = row.frequency_hz / (row.line.order * ratio)
-                speeds[first.name] += (met * (1 + max(row.damping_ratio, 0.0) * _ABOUT)).tolist()
+    for row in met:
+        if row.line.order is not None:
+            first, ratio = leader(by_name[row.line.excitation], study.excitations)
+            there = row.frequency_hz / (row.line.order * ratio)
+            speeds[first.name] += (there * (1 + max(row.damping_ratio, 0.0) * _ABOUT)).tolist()
     if not speeds:
         return (run_up(study, modes=modes),)
     return tuple(
         run_up(study, shaft=name, speeds_hz=np.unique(rates), modes=modes) for name, rates in speeds.items()
     )
+
+
+def _states(excitation: Excitation, line: Line) -> bool:
+    """Whether the excitation states a force at this order or fixed frequency."""
+    for _, row in excitation.acting():
+        known, wanted = (row.fixed(), line.from_hz) if line.order is None else (row.multiples(), line.order)
+        if any(abs(one - wanted) <= 1e-9 * wanted for one in known):
+            return True
+    return False

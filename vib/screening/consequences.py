@@ -54,8 +54,9 @@ def consequence_words(counting: Sequence[Row]) -> str:
     """What the coincidences that count come to, in a sentence or two."""
     told = []
     zoned = [row for row in counting if row.consequence is not None and row.consequence.zone is not None]
+    silent = dict.fromkeys(_line(row) for row in counting if row.consequence is None)
     if zoned:
-        worst = max(zoned, key=lambda row: _rank(row)).consequence
+        worst = max(zoned, key=_rank).consequence
         assert worst is not None
         assert worst.zone is not None
         where = "Where they meet" if worst.meets else "As it runs"
@@ -63,13 +64,10 @@ def consequence_words(counting: Sequence[Row]) -> str:
             f"{where}, the predicted level is in zone {worst.zone} at worst: {MEANING[worst.zone]} "
             f"({worst.source})."
         )
-        if worst.harmless:
+        if worst.harmless and not silent:
             told.append("So the coincidence stands, but does no harm by this prediction.")
-    silent = sorted({row.line.excitation for row in counting if row.consequence is None})
     if silent:
-        told.append(
-            f"What the coincidence comes to is not known for {', '.join(silent)}: no force is stated."
-        )
+        told.append(f"What it comes to is not known for {'; '.join(silent)}: no force is stated there.")
     return " ".join(told)
 
 
@@ -81,6 +79,12 @@ def consequence_remarks(rows: Sequence[Row]) -> tuple[str, ...]:
         "Levels of coincidences are those of the one line alone, where it is strongest within 1 % of the "
         "natural frequency (a convention of this program), by the forces stated and the damping assumed.",
     )
+
+
+def _line(row: Row) -> str:
+    if row.line.order is None:
+        return f"{row.line.excitation} at {row.line.from_hz:.4g} Hz"
+    return f"{row.line.excitation}, order {row.line.order:g}"
 
 
 def _rank(row: Row) -> tuple[str, float]:

@@ -211,12 +211,12 @@ def screen(
     needed = max(line.band_to_hz for line in lines)
     reach = modes.complete_below_hz
     covered = reach is not None and reach >= needed
-    clear = covered and modes.stable and not any(row.counts for row in rows)
+    clear = covered and modes.stable and modes.stability_known and not any(row.counts for row in rows)
     return Screening(
         rows=rows,
         lines=lines,
         clear=clear,
-        verdict=_verdict(rows, covered, modes.stable, bool(run_ups)),
+        verdict=_verdict(rows, covered, modes, bool(run_ups)),
         covered_up_to_hz=reach,
         needed_up_to_hz=needed,
         keep_out=tuple(
@@ -294,7 +294,7 @@ def _diagram(excitation: Excitation, lines: Sequence[Line]) -> SpeedDiagram:
     )
 
 
-def _verdict(rows: Sequence[Row], covered: bool, stable: bool, predicted: bool) -> str:
+def _verdict(rows: Sequence[Row], covered: bool, modes: Modes, predicted: bool) -> str:
     counting = [row for row in rows if row.counts]
     numbers = sorted({row.mode for row in counting})
     if len(numbers) == 1:
@@ -312,7 +312,9 @@ def _verdict(rows: Sequence[Row], covered: bool, stable: bool, predicted: bool) 
         )
     if predicted and counting:
         said = f"{said} {consequence_words(counting)}"
-    return said if stable else f"The system is unstable. {said}"
+    if not modes.stable:
+        return f"The system is unstable. {said}"
+    return said if modes.stability_known else f"Not shown to be stable. {said}"
 
 
 def _remarks(
