@@ -16,8 +16,9 @@ from vib.scatter.tracking import first_left_out, follow
 from vib.solve.search import solve_system
 from vib.system import Array, Matrix
 
-BLOCK = 250  # samples whose small matrices are held at once: they stay in the processor's cache
-FULL_CHUNK = 4  # samples that are solved in full at a time
+BLOCK = 100  # samples whose small matrices are held at once: they stay in the processor's cache
+CHUNK = 200  # samples that are handed out at a time
+FULL_CHUNK = 4  # of those that are all solved in full
 # weight of the ratio of frequencies beside the likeness of shapes: little, but for eigenvalues that do not
 # swing, of which a pair may have one shape
 CLOSENESS, CLOSENESS_REAL = 0.02, 0.5
@@ -59,7 +60,7 @@ class Evaluator:
     @property
     def chunk(self) -> int:
         """How many samples are handed out at a time, when many are run."""
-        return BLOCK if self.model is not None else FULL_CHUNK
+        return CHUNK if self.model is not None else FULL_CHUNK
 
     @property
     def fingerprint(self) -> str:

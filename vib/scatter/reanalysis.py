@@ -24,11 +24,14 @@ from vib.scatter.reduced import Projected
 from vib.solve.search import solve_system
 from vib.system import Array
 
-TOLERANCE = 1e-4  # relative error of a frequency by the basis beyond which a sample is solved in full
+TOLERANCE = 2e-4  # relative error of a frequency by the basis beyond which a sample is solved in full
+MARGIN = (
+    2.0  # by which samples that are tried are to be better, since a full solution costs a hundred times more
+)
 SNAPSHOTS = 32  # samples whose modes the basis is made from
 TRIED = 250  # samples at which it is tried
 ROUNDS, ADDED = 5, 8  # how often it is widened, and by the modes of how many samples
-GOOD = 0.01  # part of the samples tried that may be left to full solutions
+GOOD = 0.01  # part of the samples tried that may be worse
 COUPLED = 1e-6  # damping beside the diagonal, against the diagonal, that leaves shapes as they are
 CHECKS = 6  # samples that are rebuilt and solved in full to compare
 SAFETY = 2.0  # times the largest ratio of true and estimated errors seen
@@ -156,7 +159,7 @@ class _Making:
             everything = nominal.complete and self.count >= len(nominal.values)
             return self._evaluator(model, basis, everything)
 
-        energy = self.tolerance
+        energy = self.tolerance / MARGIN
         evaluator = reduced(energy)
         if proportional and evaluator.model and evaluator.model.coupling(tried[:8]) > COUPLED:
             proportional = False
@@ -165,7 +168,7 @@ class _Making:
             shapes += [self._dragged(metric, sample) for sample in self.training[:SNAPSHOTS]]
             evaluator = reduced(energy)
         for _ in range(ROUNDS):
-            found, sound = evaluator.reduced(tried)
+            found, sound = replace(evaluator, tolerance=self.tolerance / MARGIN).reduced(tried)
             if sound.mean() >= 1 - GOOD:
                 break
             relative = found.errors_hz / np.where(found.frequencies_hz > 0, found.frequencies_hz, np.inf)
