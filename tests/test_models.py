@@ -4,6 +4,7 @@ from pathlib import Path
 
 import numpy as np
 import pytest
+import scipy.linalg
 
 import vib
 from vib.screening import Verdict, highest_needed_hz
@@ -139,3 +140,54 @@ def test_the_portal_is_the_same_in_si_units(tmp_path, solved):
     needed = highest_needed_hz(study.excitations, accuracy=study.accuracy)
     again = study.system(up_to=needed).modes(up_to=needed)
     np.testing.assert_allclose(again.frequencies_hz, modes.frequencies_hz, rtol=1e-9)
+
+
+def test_the_fan_skid_at_one_speed_by_hand(solved):
+    """Unbalance of the fan at 2000 rpm of the fan: force, gyroscopic term and solve written out here."""
+    study, modes = solved("fan_skid")
+    speed = 1600 / 60
+    run = vib.run_up(study, speeds_hz=[speed], watch=[("drive bearing", "x"), ("motor", "z")], modes=modes)
+    system = modes.system
+    own = 1.25 * speed
+    omega = 2 * np.pi * own
+    # 130 kg, G 6.3 at 2250 rpm; the shaft points along y, so angles begin at z and go on to x
+    unbalance = 130 * 6.3e-3 / (2 * np.pi * 2250 / 60)
+    turned = np.exp(1j * np.pi / 3) * unbalance * omega**2
+    force = turned * (system.direction("impeller", "z") - 1j * system.direction("impeller", "x"))
+    gyroscopic = np.zeros((system.size, system.size))
+    for body, polar, turns in (("motor", 0.6, speed), ("impeller", 9.0, own)):
+        tilt = {axis: system.direction(body, axis) for axis in ("rx", "rz")}
+        # momentum h along y: a turn v of the body changes it by h v x y = h (-v_z, 0, v_x)
+        h = polar * 2 * np.pi * turns
+        gyroscopic += h * (np.outer(tilt["rz"], tilt["rx"]) - np.outer(tilt["rx"], tilt["rz"]))
+    squares, shapes = scipy.linalg.eigh(system.stiffness.toarray(), system.mass.toarray())
+    moved = system.mass @ shapes
+    law = (moved * (2 * 0.01 * np.sqrt(squares))) @ moved.T  # 1 % of every mode
+    matrix = system.stiffness.toarray() - omega**2 * system.mass.toarray()
+    matrix = matrix + 1j * omega * (system.damping.toarray() + gyroscopic + law)
+    motion = np.linalg.solve(matrix, force)
+    number = [(line.excitation, line.source) for line in run.lines].index(("fan", "unbalance"))
+    for column, (place, axis) in enumerate((("drive bearing", "x"), ("motor", "z"))):
+        wanted = system.direction(place, axis) @ motion
+        assert abs(run.displacement_m[0, number, column] - wanted) < 1e-6 * abs(wanted)
+
+
+def test_the_fan_skid_over_its_range(solved):
+    """Moderate levels over the range, and isolators that pass on little of the pull of the fan."""
+    study, modes = solved("fan_skid")
+    run = vib.run_up(study, modes=modes)
+    assert run.stable
+    assert run.speed_hz[[0, -1]] * 60 == pytest.approx([600, 1800])
+    assert {(line.excitation, line.source) for line in run.lines} == {
+        ("motor", "unbalance"),
+        ("motor", "belt"),
+        ("fan", "unbalance"),
+        ("fan", "blades"),
+    }
+    level = 1e3 * run.velocity_rms_m_s.max(axis=0)
+    assert ((level > 0.5) & (level < 12)).all()
+    pull = 130 * 6.3e-3 / (2 * np.pi * 37.5) * (2 * np.pi * 37.5) ** 2
+    assert run.transmitted is not None
+    vertical = [name.endswith(" z") for name in run.transmitted.names]
+    number = [(line.excitation, line.source) for line in run.lines].index(("fan", "unbalance"))
+    assert abs(run.transmitted.force_n[-1, number, vertical].sum()) < 0.15 * pull
