@@ -152,6 +152,21 @@ def test_what_is_watched_is_shown_beside_what_is_judged(vib, forced):
     assert [row["output"] for row in document["severity"]["places"]] == outputs[1:]
 
 
+def test_where_nothing_turns_the_lines_are_drawn(vib, forced, tmp_path):
+    study = forced()
+    text = (
+        study.read_text("utf-8").replace('speed = "180 rpm"\n', "").replace("order = 1", 'frequency = "8 Hz"')
+    )
+    study.write_text(text, encoding="utf-8")
+    done = vib("respond", study, "--run-up", "--json", "--out", tmp_path / "out")
+    document = json.loads(done.out)
+    assert (tmp_path / "out" / "lines.svg").exists()
+    assert document["severity"]["main_excitation_to_hz"] == 8.0
+    along_z = next(row for row in document["severity"]["places"] if row["output"] == "block z")
+    # 8 Hz lies below the band of the standard, which begins at 2 Hz only below 600 r/min: 8 Hz is 480 r/min
+    assert along_z["velocity_rms_m_s"] == pytest.approx(2 * np.pi * 8 * abs(moved(20.0, 8.0)) / np.sqrt(2))
+
+
 def test_nothing_drives(vib, resonant):
     done = vib("respond", resonant, "--run-up")
     assert done.status == 2

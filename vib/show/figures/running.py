@@ -41,10 +41,28 @@ def run_up_pictures(run_up: RunUp, severity: Severity | None, units: UnitSystem)
     straight = [column for column, turning in enumerate(run_up.rotational) if not turning] or [0]
     highest = np.where(np.isfinite(run_up.velocity_rms_m_s), run_up.velocity_rms_m_s, 0.0).max(axis=0)
     worst = max(straight, key=lambda column: float(highest[column]))
+    if not several:
+        return [line_picture(run_up, worst, units, "lines")]
     pictures.append(spectra_picture(run_up, worst, units, "waterfall"))
-    if several:
-        pictures.append(order_picture(run_up, worst, units, "orders"))
+    pictures.append(order_picture(run_up, worst, units, "orders"))
     return pictures
+
+
+def line_picture(run_up: RunUp, output: int, units: UnitSystem, name: str) -> Picture:
+    """The lines of one output at a single speed, or where nothing turns: velocity over frequency."""
+    kind = KINDS[run_up.rotational[output]][1]
+    values = _shown(_velocity(run_up, output)[:1], kind, units)[0]
+    with style():
+        figure = sheet(7.2, 3.0)
+        axes = figure.add_subplot()
+        axes.set_title(f"Lines: {short(run_up.outputs[output])}")
+        axes.vlines(run_up.frequency_hz[0], 0.0, values, color=COLOURS[0], lw=2.0, zorder=3)
+        axes.plot(run_up.frequency_hz[0], values, ls="none", marker="o", ms=4, color=COLOURS[0], zorder=3)
+        axes.set_xlim(0.0, 1.1 * float(run_up.frequency_hz.max()))
+        axes.set_ylim(0.0, 1.15 * float(values.max()) or 1.0)
+        axes.set_xlabel("frequency, Hz")
+        axes.set_ylabel(f"velocity, {shown_unit(kind, units)} r.m.s.")
+    return Picture(name, figure, f"Lines of {run_up.outputs[output]} over frequency")
 
 
 def curve_picture(
@@ -106,9 +124,7 @@ def spectra_picture(run_up: RunUp, output: int, units: UnitSystem, name: str) ->
         axes.set_xlim(0.0, right)
         axes.set_ylim(float(rpm[0]) - 0.5 * step, float(rpm[-1]) + 1.1 * height)
         axes.set_xlabel("frequency, Hz")
-        axes.set_ylabel("running speed, rpm" if run_up.shaft else "")
-        if not run_up.shaft:
-            axes.set_yticks([])
+        axes.set_ylabel("running speed, rpm")
         axes.grid(visible=False)
         tallest = f"{float(shown(greatest, kind, units)):.3g} {shown_unit(kind, units)} r.m.s."
         (stick,) = axes.plot([], [], color=COLOURS[0], lw=1.5)
@@ -195,7 +211,9 @@ def _draw_boundaries(axes: Axes, severity: Severity, place: str, units: UnitSyst
         )
         axes.set_ylim(top=max(axes.get_ylim()[1], 1.1 * level))
         if not handles:
-            handles.append((line, f"zones by {limits[0].source.split(',')[0]}, from memory"))
+            handles.append(
+                (line, f"zones by {limits[0].source.split(',')[0].split(' annex')[0]}, from memory")
+            )
     return handles
 
 
@@ -259,7 +277,7 @@ def _evenly(speed_hz: Array, most: int) -> list[int]:
 
 
 def _step(rpm: Array) -> float:
-    return float(np.median(np.diff(rpm))) if len(rpm) > 1 else max(1.0, float(rpm[0]) / 10)
+    return float(np.median(np.diff(rpm)))
 
 
 def _group_words(run_up: RunUp, group: tuple[int, ...]) -> str:
