@@ -325,10 +325,9 @@ def _remarks(system: System, found: Converged) -> tuple[str, ...]:
     elif found.solution.counted:
         remarks.append("The number of modes was confirmed by the argument principle.")
     if damped.growing is not None:
-        remarks.append(
-            f"A motion of {abs(damped.growing) / (2 * np.pi):.4g} Hz, beyond the modes asked for, grows: "
-            "ask for more modes to see it."
-        )
+        speed = abs(damped.growing) / (2 * np.pi)
+        which = f"A motion of {speed:.4g} Hz" if np.isfinite(speed) else "A motion of unknown frequency"
+        remarks.append(f"{which}, beyond the modes asked for, grows: ask for more modes to see it.")
     elif found.solution.watch:
         remarks.append(
             "Forces that can feed energy in: whether motions beyond the modes listed grow was not proved."

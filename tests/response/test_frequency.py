@@ -236,3 +236,22 @@ def test_responses_that_are_rounding_are_said_to_be():
     assert any("rounding as much as response" in remark for remark in found.remarks)
     near = frequency_response(chain(40), lines_hz=[1.0, 2.0], inputs=["1"], outputs=["1"])
     assert not any("rounding" in remark for remark in near.remarks)
+
+
+def test_growth_beyond_the_modes_of_a_response_is_told():
+    """Rayleigh damping that turns negative above the lines asked for; and the same in the ring of few modes."""
+    side = 42
+    line = sparse.diags_array(
+        [4.0 * np.ones(side), -np.ones(side - 1), -np.ones(side - 1)], offsets=[0, 1, -1]
+    )
+    beside = sparse.diags_array([-np.ones(side - 1), -np.ones(side - 1)], offsets=[1, -1])
+    one = sparse.eye_array(side)
+    stiffness = sparse.csr_array(sparse.kron(one, line) + sparse.kron(beside, one))
+    mass = sparse.eye_array(side * side).tocsr()
+    for part, stable in ((-4e-3, False), (4e-3, True)):
+        system = System(mass=mass, stiffness=stiffness, damping=1e-2 * mass + part * stiffness)
+        found = system.frequency_response(lines_hz=[0.01, 0.02], inputs=[("3", None)], outputs=[("3", None)])
+        assert found.stable is stable
+        ring = system.ring(impulse=1.0, at="3", times=np.linspace(0, 5, 20), watch=[("3", None)])
+        assert ring.stable is stable
+        assert any("unstable" in remark for remark in ring.remarks) is not stable

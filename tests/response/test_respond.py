@@ -52,7 +52,7 @@ def test_the_end_of_a_long_record_is_the_steady_part():
 def test_a_slow_ground_carries_everything_along():
     """At a fiftieth of the natural frequency all moves with the ground, but for its square: 1 / 2500."""
     ground = harmonic_ground(0.01, 0.1, "z", quantity="displacement")
-    found = respond(mounted(0.1), ground=ground, watch=WATCH, duration_s=60.0, step_s=0.02)
+    found = respond(mounted(0.1).system(), ground=ground, watch=WATCH, duration_s=60.0, step_s=0.02)
     wanted = 0.01 * np.sin(2 * np.pi * 0.1 * found.time_s)
     late = found.time_s > 20
     np.testing.assert_allclose(found.displacement_m[late, 0], wanted[late], atol=0.01 / 2000)
@@ -73,7 +73,7 @@ def test_a_recorded_ground_is_the_same_in_all_three_quantities():
     )
     found = [
         respond(
-            mounted(0.05),
+            mounted(0.05).system(),
             ground=recorded_ground(times, values, "z", quantity=quantity),
             watch=WATCH,
             duration_s=2.0,
@@ -88,7 +88,7 @@ def test_a_recorded_ground_is_the_same_in_all_three_quantities():
 def test_a_ground_at_constant_acceleration_bends_the_spring_statically():
     times = np.array([0.0, 1000.0])
     ground = recorded_ground(times, [1.5, 1.5], "z", quantity="acceleration")
-    found = respond(mounted(0.2), ground=ground, watch=WATCH, duration_s=30.0, step_s=0.02)
+    found = respond(mounted(0.2).system(), ground=ground, watch=WATCH, duration_s=30.0, step_s=0.02)
     assert found.relative_m is not None
     stiffness = (2 * np.pi * 5.0) ** 2
     assert found.relative_m[-1, 0] == pytest.approx(-1.5 / stiffness, rel=1e-9)

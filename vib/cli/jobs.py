@@ -81,7 +81,7 @@ def show_modes(
             lambda: modes_document(modes, study.title, curves),
             modes.remarks,
             files,
-            DONE if modes.stable else OBJECTION,
+            DONE if modes.stable and modes.stability_known else OBJECTION,
         )
         return deliver(answer, wish)
 
@@ -179,7 +179,7 @@ def show_screening(path: Path, band: str | None, pictures: str, wish: Wish) -> i
             document,
             [*screening.remarks, *modes.remarks],
             files,
-            OBJECTION if screening.objections or not screening.stable else DONE,
+            OBJECTION if screening.objections or not (screening.stable and modes.stability_known) else DONE,
         )
         return deliver(answer, wish)
 

@@ -28,12 +28,16 @@ _SAMPLES = 1500
 
 @dataclass(frozen=True, eq=False)
 class Assembled:
-    """The motion, and how it was got; ``truncation`` is relative to the peak, per quantity, 0 if complete."""
+    """The motion, and how it was got; ``truncation`` is relative to the peak, per quantity, 0 if complete.
+
+    ``complete``: every motion of the system is in the model.
+    """
 
     motion: Motion
     model_words: str
     remarks: tuple[str, ...]
     truncation: Mapping[str, float] = field(default_factory=lambda: dict.fromkeys(QUANTITIES, 0.0))
+    complete: bool = True
 
 
 def assemble(system: System, start: Start, outputs: Sequence[Output]) -> Assembled:
@@ -94,7 +98,7 @@ def _reduced(system: System, start: Start, outputs: Sequence[Output]) -> Assembl
         if truncation["displacement"] <= TRUNCATION:
             break
     words = f"reduced first-order model, {len(model.matrix)} states: {count} modes and static corrections"
-    return Assembled(motion, words, (*remarks, *_truncation_remarks(truncation)), truncation)
+    return Assembled(motion, words, (*remarks, *_truncation_remarks(truncation)), truncation, complete=False)
 
 
 def _difference(

@@ -22,6 +22,7 @@ from vib.response.residue_sum import (
     coupled,
     remainder,
 )
+from vib.response.stability import judged
 from vib.solve.damping import ModalDamping, modal_damping
 from vib.solve.localised import Localised, localise
 from vib.solve.undamped import Undamped
@@ -170,29 +171,18 @@ def _by_residues(
         words += f" and {len(rest.moments)} terms of the flexibility of the others"
     if dashpots is not None:
         words += f"; damping that couples them put back exactly in {dashpots.count} directions"
-    stable, remarks = _stability(system, seen, split)
+    stable, remarks = _stability(system, seen)
     return Receptance(values, error, words, stable, modes.complete, remarks=remarks)
 
 
-def _stability(system: System, seen: ModalDamping, split: Localised | None) -> tuple[bool, tuple[str, ...]]:
-    """Whether anything grows: told from the matrices where that is enough, else from all eigenvalues."""
-    if (seen.undamped.values < 0).any():
+def _stability(system: System, seen: ModalDamping) -> tuple[bool, tuple[str, ...]]:
+    """Whether anything grows: told from the modes where those are all and uncoupled."""
+    if (seen.undamped.values < 0).any() and seen.proportional:
         return False, ()
-    if split is None:
+    if seen.undamped.complete and _diagonal(system, seen):
         slack = 1e-12 * np.abs(seen.total).max(initial=0.0)
         return not bool((seen.total < -slack).any()), ()
-    passive = split.symmetric and min(split.mass_part, split.stiffness_part) >= 0 and not system.unsymmetric
-    if passive or not split.constant.any():
-        still = split.linear + split.linear.T
-        lowest = np.linalg.eigvalsh(still).min(initial=0.0)
-        if (
-            lowest >= -1e-12 * np.abs(still).max(initial=0.0)
-            and min(split.mass_part, split.stiffness_part) >= 0
-        ):
-            return True, ()  # the damping takes energy out of every motion, gyroscopic terms take none
-    modes = find_modes(system) if system.size <= ALL_MODES else find_modes(system, count=12)
-    note = () if system.size <= ALL_MODES else ("Stability was judged by the 12 slowest modes only.",)
-    return modes.stable, note
+    return judged(system)
 
 
 def _without_low_rank(

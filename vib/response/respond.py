@@ -17,6 +17,7 @@ from vib.response.loads import GroundMotion, Load, check_loads
 from vib.response.receptance import receptance
 from vib.response.signals import Harmonic, Sweep, ends_of
 from vib.response.simulate import check_memory
+from vib.response.stability import judged
 from vib.system import System
 
 if TYPE_CHECKING:
@@ -180,7 +181,11 @@ def respond(
     check_memory(count, 4 * len(watched.names))
     records = forced.records(step, count)
     time: Array = step * np.arange(count, dtype=np.float64)
-    steady, steady_remarks = _steady(used, loads, ground, watched, forced.stable)
+    stable = forced.stable
+    doubt: tuple[str, ...] = ()
+    if stable and forced.coarser is not None:
+        stable, doubt = judged(used)
+    steady, steady_remarks = _steady(used, loads, ground, watched, stable)
     return Response(
         system=used,
         loads=tuple(f"{load.name}: {load.words}" for load in loads)
@@ -198,11 +203,12 @@ def respond(
         model=forced.words,
         method=forced.method,
         truncations=forced.truncations(step, count, records),
-        stable=forced.stable,
+        stable=stable,
         step_note=step_note,
         duration_note=duration_note,
         remarks=(
-            *_state(forced),
+            *_state(stable),
+            *doubt,
             *(ground.remarks if ground else ()),
             *steady_remarks,
             *notes,
@@ -237,8 +243,8 @@ def _key(along: Along) -> Along:
     return along if along is None or isinstance(along, str) else tuple(along)
 
 
-def _state(forced: Forced) -> tuple[str, ...]:
-    if not forced.stable:
+def _state(stable: bool) -> tuple[str, ...]:
+    if not stable:
         return ("The system is UNSTABLE: the motion grows by itself; the record shows only its beginning.",)
     return ()
 

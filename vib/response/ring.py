@@ -23,6 +23,7 @@ from vib.response.motion import Motion
 from vib.response.outputs import choose_outputs
 from vib.response.sampling import Sampling, sample, significant
 from vib.response.shares import RingMode, ring_modes
+from vib.response.stability import judged
 from vib.response.starts import Along, Quantity, Request, quantity, read_start
 from vib.system import System
 
@@ -232,7 +233,12 @@ def ring(
     found = contributions_of(motion)
     sampling = sample(found, motion, rotational, length)
     record = sampling.times if asked is None else asked
-    state = (*_state_remarks(found), *_rounding_remarks(found, sampling, rotational))
+    grows = bool((found.decay_per_s < 0).any())
+    doubt: tuple[str, ...] = ()
+    if not grows and not assembled.complete:
+        stable, doubt = judged(divided)
+        grows = not stable
+    state = (*_state_remarks(found, grows), *doubt, *_rounding_remarks(found, sampling, rotational))
     return Ring(
         system=divided,
         start=begun.words,
@@ -249,7 +255,7 @@ def ring(
         model=assembled.model_words,
         truncation=assembled.truncation["displacement"],
         truncations=assembled.truncation,
-        stable=not bool((found.decay_per_s < 0).any()),
+        stable=not grows,
         duration_note=sampling.words if asked is None else "the times asked for",
         remarks=(*state, *assembled.remarks, *choice, *sampling.remarks, *notes),
         sampling=sampling,
@@ -314,12 +320,14 @@ def _divided(
     return modes.system, modes, (note,)
 
 
-def _state_remarks(found: Contributions) -> tuple[str, ...]:
+def _state_remarks(found: Contributions, grows: bool) -> tuple[str, ...]:
     if (found.decay_per_s < 0).any():
         rate = -float(found.decay_per_s.min())
         return (
             f"The system is unstable: the motion grows, {math.log(2) / rate:.3g} s to double at the most.",
         )
+    if grows:
+        return ("The system is unstable: a motion grows that the modes of this record do not hold.",)
     remarks = []
     stays = found.decay_per_s <= 0
     if stays.size and stays[~found.clustered].all() and not found.clustered.any():

@@ -26,9 +26,9 @@ def stability(modes: Modes) -> Sentence:
         return Sentence(f"The system is UNSTABLE: motion once started grows by itself{which}.", "bad")
     if not modes.stability_known:
         return Sentence(
-            "No mode of the table grows, but forces can feed energy in: "
-            "whether a faster one grows is not known.",
-            "careful",
+            "NOT SHOWN TO BE STABLE: no mode of the table grows, but forces can feed energy in, "
+            "and whether a faster one grows is not known.",
+            "bad",
         )
     return Sentence("The system is stable: no motion grows by itself.", "good")
 

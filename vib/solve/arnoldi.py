@@ -113,7 +113,7 @@ class LowRank:
     def of(linear: Matrix, mass: Matrix, undamped: Undamped, law: Array) -> LowRank:
         """``linear`` and the damping ratios ``law`` (m,) of undamped modes."""
         rates = 2 * law * undamped.angular
-        return LowRank(linear, mass @ undamped.shapes[:, rates > 0], rates[rates > 0])
+        return LowRank(linear, mass @ undamped.shapes[:, rates != 0], rates[rates != 0])
 
     def diagonal(self) -> Array:
         """Its diagonal (n,)."""
@@ -147,7 +147,7 @@ class _Problem:
     @staticmethod
     def of(mass: Matrix, linear: Matrix, stiffness: Matrix, undamped: Undamped, law: Array) -> _Problem:
         rates = 2 * law * undamped.angular
-        acted = rates > 0
+        acted = rates != 0
         still = undamped.shapes[:, : undamped.rigid]
         straight = abs(stiffness - stiffness.T).max() == 0
         if undamped.rigid and not straight:

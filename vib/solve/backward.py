@@ -42,7 +42,7 @@ def backward_errors(
 
 def _law_force(mass: Matrix, damping: ModalDamping, found: Damped, heavy: Complex) -> Complex | float:
     rates = 2 * damping.law * damping.undamped.angular
-    acted = rates > 0
+    acted = rates != 0
     if not acted.any():
         return 0.0
     held = mass @ damping.undamped.shapes[:, acted]

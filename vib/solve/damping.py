@@ -12,7 +12,7 @@ from numpy.typing import NDArray
 from vib.checks import entries
 from vib.massless import acts_on, root_scale, split_mass
 from vib.solve.undamped import EPS, Array, Matrix, Undamped
-from vib.system import System
+from vib.system import DampingLaw, System
 
 # Off-diagonal modal damping below this part of the diagonal changes an eigenvalue by its square.
 COUPLED = 1e-9
@@ -84,6 +84,13 @@ def _law_limit(system: System) -> float:
     if law.material and system.anatomy is not None:
         limit += max((part.damping_ratio or 0.0 for part in system.anatomy.parts), default=0.0)
     return limit
+
+
+def feeding_reach(law: DampingLaw) -> float:
+    """Angular frequency up to which a damping law feeds energy into modes, infinite where it does in all."""
+    if law.ratio < 0:
+        return float("inf")
+    return 2 * np.pi * max((high for _, high, ratio in law.bands if ratio < 0), default=0.0)
 
 
 def rayleigh_parts(mass: Matrix, damping: Matrix, stiffness: Matrix) -> tuple[float, float] | None:

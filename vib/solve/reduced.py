@@ -290,7 +290,7 @@ def reduced_quadratic(
     if reduction.term.stiffness_part * float(undamped.angular[min(count, len(undamped.values)) - 1]) > 1:
         raise UnsuitedError("Slow overdamped eigenvalues gather at the inverse of the stiffness damping.")
     rates = 2 * law * undamped.angular
-    acted = rates > 0
+    acted = rates != 0
     held = reduction.mass @ undamped.shapes[:, acted]
     still = undamped.shapes[:, : undamped.rigid]
     solved = 0

@@ -14,7 +14,7 @@ from vib.massless import condense, dense, split_mass
 from vib.solve.backends.choice import extra_would_save
 from vib.solve.backward import backward_errors
 from vib.solve.damped import Damped, proportional_modes
-from vib.solve.damping import ModalDamping, modal_damping
+from vib.solve.damping import ModalDamping, feeding_reach, modal_damping
 from vib.solve.dense import condensed_modes
 from vib.solve.factor import negative_count
 from vib.solve.lanczos import lowest_modes
@@ -68,9 +68,11 @@ def solve_system(system: System, count: int | None, limit: float | None, *, cert
         return found
     linear, stiffness = problem.linear, problem.stiffness
     some = count is not None or limit is not None
-    if some and (problem.twisted or not is_passive(linear, found.damping.undamped)):
+    feeding = feeding_reach(system.damping_law)
+    if some and (feeding or problem.twisted or not is_passive(linear, found.damping.undamped)):
         names = tuple(str(freedom) for freedom in system.freedoms)
         damped, known = watched(problem.mass, linear, stiffness, found.damping, found.damped, names)
+        known = known and (damped.growing is not None or _beyond(damped, feeding))
         found = replace(found, damped=damped, watch=not known)
     backward = backward_errors(problem.mass, linear, stiffness, found.damping, found.damped)
     return replace(found, backward=backward)
@@ -88,7 +90,7 @@ def _solve(problem: _Problem, ask: _Ask) -> Solution:
     small = size <= LARGEST_DENSE
     if everything or size <= (DENSE_SIZE if sparse.issparse(system.stiffness) else ARRAY_SIZE):
         return _dense(problem, ask)
-    if size <= UNSUITED_DENSE and _graded(problem):
+    if size <= UNSUITED_DENSE and (_graded(problem) or feeding_reach(system.damping_law)):
         return _dense(problem, ask)
     if _goes_by_blocks(problem) and (count is None or 4 * count < size):
         found = _blocks(problem, ask)
@@ -348,6 +350,11 @@ def _quadratic(
             raise
         return None, False
     return found, ask.limit is None
+
+
+def _beyond(damped: Damped, reach: float) -> bool:
+    """Whether no mode that a damping law feeds energy into can be missing: none below ``reach``, rad/s."""
+    return bool(damped.values.real.max(initial=-1.0) > 0 or (damped.certified or 0.0) >= reach)
 
 
 def _law(system: System) -> bool:

@@ -2,7 +2,7 @@
 
 Where the damping only takes energy out and the stiffness is positive nothing can (Kelvin, Tait and Chetaev;
 P. Lancaster, Lambda-matrices and Vibrating Systems, 1966, chapter 7). Otherwise all eigenvalues are computed
-where that is affordable; beyond, stability is not claimed.
+where that is affordable; beyond, `vib.solve.growth` proves what it can, and stability is not claimed without.
 """
 
 from __future__ import annotations
@@ -24,12 +24,19 @@ MOST_FREEDOMS = 800  # all eigenvalues of a first-order matrix of twice that siz
 SLACK = 1e-12  # of a damping matrix of unit diagonal: an eigenvalue above minus this much is none below zero
 DENSE_ROWS = 300  # rows of damping up to which its eigenvalues are computed
 OWN, LARGEST = 1e-8, 1e-12
+POWER_STEPS = 60  # towards the highest mode
 
 
 def is_passive(linear: Matrix, undamped: Undamped) -> bool:
-    """Whether the damping takes energy out of any motion, or none, and the stiffness stores it in any."""
-    if undamped.values.min(initial=0.0) < 0:
-        return False
+    """Whether the damping takes energy out of any motion, or none, and the stiffness stores it in any.
+
+    ``linear`` is without the damping that is stated mode by mode.
+    """
+    return undamped.values.min(initial=0.0) >= 0 and takes_energy(linear)
+
+
+def takes_energy(linear: Matrix) -> bool:
+    """Whether the symmetric part of a velocity term (n, n) is positive or zero, within round-off."""
     half = (linear + linear.T) / 2
     diagonal = np.asarray(half.diagonal())
     rest = np.asarray(abs(half).sum(axis=1)).ravel() - np.abs(diagonal)
@@ -70,11 +77,18 @@ def watched(
         return replace(found, growing=complex(fastest)), True
     if found.complete and found.certified is None:
         return found, True
-    if mass.shape[0] > MOST_FREEDOMS:
-        return found, False
     rates = 2 * damping.law * damping.undamped.angular
-    held = mass @ damping.undamped.shapes[:, rates > 0]
-    whole = dense(linear) + (held * rates[rates > 0]) @ held.T
+    acted = rates != 0
+    held = mass @ damping.undamped.shapes[:, acted]
+    if mass.shape[0] > MOST_FREEDOMS:
+        from vib.solve.growth import Terms, Verdict, grows
+
+        if found.proportional and damping.rayleigh is not None and not acted.any():
+            verdict = Verdict(*_at_the_ends(mass, stiffness, damping.rayleigh))
+        else:
+            verdict = grows(Terms(mass, linear, stiffness, held, rates[acted]))
+        return replace(found, growing=verdict.growing), verdict.proved
+    whole = dense(linear) + (held * rates[acted]) @ held.T
     values: Complex = scipy.linalg.eigvals(first_order(mass, whole, stiffness, names).rate)
     size = np.abs(values)
     growing = values[values.real > OWN * size + LARGEST * size.max(initial=0.0)]
@@ -82,3 +96,30 @@ def watched(
         return found, True
     fastest_one = growing[int(np.argmax(growing.real))]
     return replace(found, growing=complex(fastest_one.real, abs(fastest_one.imag))), True
+
+
+def _at_the_ends(mass: Matrix, stiffness: Matrix, parts: tuple[float, float]) -> tuple[complex | None, bool]:
+    """The eigenvalue of the highest modes under the damping a M + b K, if it grows; and whether it is known.
+
+    The rate a + b w^2 goes one way with w, so that one of the ends is the first to grow; the lowest modes
+    were looked at. The highest lies between any quotient x K x / x M x and the largest sum of a row of |K|
+    over its mass (S. A. Gershgorin, Izv. Akad. Nauk SSSR 7 (1931) 749-754, for a mass of point masses).
+    """
+    mass_part, stiffness_part = parts
+    if stiffness_part >= 0:
+        return (complex(-mass_part / 2), True) if mass_part < 0 else (None, True)
+    diagonal = np.asarray(mass.diagonal())
+    if not (diagonal > 0).all():
+        return complex(-1 / stiffness_part), True
+    vector = np.random.default_rng(11).standard_normal(mass.shape[0])
+    for _ in range(POWER_STEPS):
+        vector = (stiffness @ vector) / diagonal
+        vector = vector / np.abs(vector).max()
+    least = float(vector @ (stiffness @ vector)) / float(vector @ (mass @ vector))
+    rate = mass_part + stiffness_part * least
+    if rate < 0:
+        return complex(-rate / 2, np.sqrt(least)), True
+    if abs(mass).sum() > diagonal.sum() * (1 + 1e-12):
+        return None, False
+    most = float((np.asarray(abs(stiffness).sum(axis=1)).ravel() / diagonal).max())
+    return None, mass_part + stiffness_part * most >= 0
