@@ -23,10 +23,12 @@ from vib.response.first_order import flexibility
 from vib.response.receptance import ALL_MODES, has_massless, known_modes
 from vib.response.residue_sum import Complex, Dashpots, ModalSum, coupled, remainder
 from vib.solve.damping import ModalDamping
-from vib.solve.localised import Localised, localise
+from vib.solve.localised import MOST_RANK, MOST_TOUCHED, Localised, localise
 
 SOLVED = 60  # freedoms up to which the dynamic stiffness is solved at every point anyway
 DENSE = 400  # beyond, sparse
+# with ratios the alternative is a dense solve at every point, and many directions are worth their while
+_MOST_TOUCHED, _MOST_RANK = 1200, 240
 _BATCH = 4_000_000  # complex numbers at a time
 
 
@@ -191,7 +193,8 @@ def _residues(
     """Set the sum up, or None where damping acts everywhere or on motions without mass."""
     system = family.system_at(top_hz)
     law = system.damping_law
-    if system.unsymmetric and (law.ratio or law.bands or law.material):
+    stated = law.ratio or law.bands or law.material
+    if system.unsymmetric and stated:
         return None
     light = split_mass(system.mass).massless if has_massless(system) else np.zeros((system.size, 0))
     linear = as_sparse(family.linear_at(top_hz), system.size)
@@ -202,7 +205,11 @@ def _residues(
     split = None
     if not alone:
         split = localise(
-            as_sparse(system.mass, system.size), linear, as_sparse(system.stiffness, system.size)
+            as_sparse(system.mass, system.size),
+            linear,
+            as_sparse(system.stiffness, system.size),
+            most_touched=_MOST_TOUCHED if stated else MOST_TOUCHED,
+            most_rank=_MOST_RANK if stated else MOST_RANK,
         )
         if split is None:
             return None

@@ -45,13 +45,22 @@ class Localised:
         return not self.constant.any() and np.array_equal(self.linear, self.linear.T)
 
 
-def localise(mass: Matrix, linear: Matrix, stiffness: Matrix) -> Localised | None:
+def localise(
+    mass: Matrix,
+    linear: Matrix,
+    stiffness: Matrix,
+    *,
+    most_touched: int = MOST_TOUCHED,
+    most_rank: int = MOST_RANK,
+) -> Localised | None:
     """Take the velocity term apart, or None where it touches too many freedoms.
 
     Parameters
     ----------
     mass, linear, stiffness
         (n, n) csr_array; ``linear`` holds damping and gyroscopic terms, ``stiffness`` may be unsymmetric.
+    most_touched, most_rank
+        Beyond so many freedoms or directions: None.
     """
     straight = (stiffness + stiffness.T) / 2
     skew = _cleaned((stiffness - stiffness.T) / 2, abs(stiffness) + abs(stiffness).T)
@@ -64,9 +73,10 @@ def localise(mass: Matrix, linear: Matrix, stiffness: Matrix) -> Localised | Non
             if _rows(beside).size < _rows(rest).size:
                 rest, parts = beside, found
     touched = np.union1d(_rows(rest), _rows(skew))
-    if touched.size > MOST_TOUCHED:
+    if touched.size > most_touched:
         return None
-    return _compressed(rest, skew, straight, touched, parts)
+    term = _compressed(rest, skew, straight, touched, parts)
+    return term if term.rank <= most_rank else None
 
 
 def _cleaned(matrix: Matrix, terms: Matrix) -> Matrix:
@@ -105,7 +115,7 @@ def _spread(mass: Matrix, linear: Matrix, stiffness: Matrix) -> tuple[float, flo
 
 def _compressed(
     rest: Matrix, skew: Matrix, straight: Matrix, touched: NDArray[np.intp], parts: tuple[float, float]
-) -> Localised | None:
+) -> Localised:
     """The term on an orthonormal basis of the directions it acts in, scaled to unit stiffness."""
     small = [matrix[touched][:, touched].toarray() for matrix in (rest, skew)]
     scale = root_scale(np.asarray(straight.diagonal())[touched])
@@ -117,8 +127,6 @@ def _compressed(
     if touched.size:
         left, sizes, _ = scipy.linalg.svd(columns, full_matrices=False)
     kept = left[:, : int((sizes > 64 * EPS * sizes.max(initial=0.0)).sum())]
-    if kept.shape[1] > MOST_RANK:
-        return None
     basis = np.zeros((rest.shape[0], 0)) if not touched.size else kept / scale[:, None]
     spread = sparse.csr_array(
         (
