@@ -108,7 +108,7 @@ def inverted(lower: Array) -> Array:
     """Inverses of lower triangular matrices (N, r, r), by halves: faster than a general inverse of each."""
     rank = lower.shape[1]
     if rank <= 12:
-        return np.linalg.inv(lower)
+        return np.asarray(np.linalg.inv(lower))
     half = rank // 2
     found = np.zeros_like(lower)
     first, last = inverted(lower[:, :half, :half]), inverted(lower[:, half:, half:])
