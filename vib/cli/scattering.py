@@ -15,7 +15,7 @@ if TYPE_CHECKING:
     from vib.study import Study
 
 Chosen = Literal["si", "us"] | None
-PAGE_SAMPLES, PAGE_LEVELS = 256, 64
+PAGE_SAMPLES, PAGE_LEVELS, MESH_SAMPLES = 256, 64, 64
 
 
 @dataclass(frozen=True)

@@ -175,11 +175,8 @@ def chance_table(found: Scatter) -> Table | None:
 
 
 def _chance_row(row: Chance) -> tuple[str, ...]:
-    mode = (
-        "any it can drive"
-        if row.mode is None
-        else str(row.mode) + ("" if row.drivable else ", hardly driven")
-    )
+    number = "any" if row.mode is None else str(row.mode)
+    mode = number if row.drivable else f"{number}, hardly driven"
     line, chance = row.line, row.probability
     return (
         line.excitation,
