@@ -10,6 +10,7 @@ from hypothesis import strategies as st
 from tests.references.common import study
 from vib.errors import MatrixError, ModelError, StudyError
 from vib.speeds import at_speed, speed_curves
+from vib.system import Rotation, System
 
 TURN = 2 * np.pi
 
@@ -193,3 +194,52 @@ def test_a_shaft_follows_its_excitation():
 def test_faults_of_a_spin(spin, said):
     with pytest.raises(StudyError, match=said):
         tilting(0.02, spin=spin)
+
+
+@pytest.mark.parametrize("damping", [0.003, 0.01])
+def test_growth_between_two_speeds_of_the_curve_is_not_missed(damping):
+    """A mode of one plane feeds a forward whirl only where both have nearly the same frequency.
+
+    The border by halving, on eigenvalues of numpy's own at many speeds.
+    """
+    turn = np.zeros((3, 3))
+    turn[1, 2], turn[2, 1] = 0.4, -0.4  # per rad/s of the shaft
+    stiffness = np.diag([100.0, 64.0, 64.0])
+    stiffness[0, 1], stiffness[1, 0] = 1.5, -1.5
+
+    def top(speed_hz: float) -> float:
+        state = np.zeros((6, 6))
+        state[:3, 3:] = np.eye(3)
+        state[3:, :3], state[3:, 3:] = -stiffness, -damping * np.eye(3) - TURN * speed_hz * turn
+        return float(np.linalg.eigvals(state).real.max())
+
+    speeds = np.linspace(0.0, 20.0, 8001)
+    first = speeds[int(np.argmax([top(speed) > 1e-7 for speed in speeds]))]
+    assert top(0.0) < 1e-7
+    assert top(20.0) < 1e-7
+    given = System(
+        mass=np.eye(3),
+        damping=damping * np.eye(3),
+        stiffness=stiffness,
+        gyroscopic=TURN * 20.0 * turn,
+        unsymmetric=True,
+        rotations=(Rotation("shaft", 20.0, 0.0, turn, None),),
+    )
+    assert given.modes().stable
+    onset = speed_curves(given, "shaft", count=3, top_hz=20.0).onset
+    assert onset is not None
+    assert onset.speed_hz == pytest.approx(first, abs=4e-3)
+
+
+def test_what_turning_alone_holds_up_grows_from_rest():
+    turn = np.array([[0.0, 1.0], [-1.0, 0.0]])
+    given = System(
+        mass=np.eye(2),
+        stiffness=-np.eye(2),
+        gyroscopic=TURN * 5.0 * turn,
+        rotations=(Rotation("shaft", 5.0, 0.0, turn, None),),
+    )
+    assert given.modes().stable
+    onset = speed_curves(given, "shaft", count=2, top_hz=5.0).onset
+    assert onset is not None
+    assert onset.speed_hz < 0.01

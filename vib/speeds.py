@@ -20,6 +20,7 @@ from numpy.typing import NDArray
 from vib.errors import AccuracyError, ModelError, in_own_words
 from vib.solve.damped import Damped
 from vib.solve.search import solve_system
+from vib.solve.stability import takes_energy
 from vib.system import Array, Rotation, System
 from vib.whirl import Whirl, whirl_of
 
@@ -27,6 +28,7 @@ STEPS = 12  # of speed at first
 CLEAR = 0.7  # modal assurance of every pair for a step to be taken as it is
 HALVINGS = 6
 SPARE = 4  # modes followed beyond those asked for, so that none leaves the set by crossing
+NEARLY = 0.05  # damping ratio below which a curve may cross zero between two speeds
 STILL = 1e-4  # of the top speed: shapes at rest are told apart from here
 PRECISION = 1e-12
 
@@ -63,7 +65,7 @@ class SpeedCurves:
 
     ``speeds_hz`` (p,) rev/s, ascending; ``eigenvalues`` (p, m) 1/s, ``frequencies_hz`` (p, m) their
     magnitude / 2 pi, one curve a column, by frequency at the lowest speed; ``whirls`` (p, m). ``critical``
-    by speed; ``onset`` None where nothing starts to grow up to the top speed.
+    by speed; ``onset`` None where nothing grows from rest up to the top speed, as far as the curves show.
     """
 
     shaft: str
@@ -211,6 +213,12 @@ class _Point:
     speed_hz: float
     values: NDArray[np.complex128]
     shapes: NDArray[np.complex128]
+    movement: Array  # how far rounding may have moved each value
+
+    def grows(self, mode: int) -> bool:
+        """Whether a curve grows here beyond doubt."""
+        value = self.values[mode]
+        return bool(value.real > max(1e-9 * abs(value), self.movement[mode]))
 
 
 class _Track:
@@ -243,19 +251,23 @@ class _Track:
         if len(order) < len(near.values):
             raise AccuracyError(f"Too few modes were found at {60 * speed_hz:.6g} rpm to follow the curves.")
         least = float(alike[np.arange(len(order)), order][: max(1, len(order) - SPARE)].min())
-        return _Point(speed_hz, found.values[order], found.shapes[:, order]), least
+        return _Point(speed_hz, found.values[order], found.shapes[:, order], found.movement[order]), least
 
     def _first(self, speed_hz: float) -> _Point:
         found = self._solve(speed_hz)
         number = min(self.count, len(found.values))
-        return _Point(speed_hz, found.values[:number], found.shapes[:, :number])
+        return _Point(speed_hz, found.values[:number], found.shapes[:, :number], found.movement[:number])
 
     def _solve(self, speed_hz: float) -> Damped:
         system = at_speed(self.system, self.shaft, speed_hz)
         found = solve_system(system, self.count + SPARE, None, certify=False).damped
         kept = np.arange(len(found.values)) >= found.rigid
         return replace(
-            found, values=found.values[kept], shapes=found.shapes[:, kept].astype(complex), rigid=0
+            found,
+            values=found.values[kept],
+            shapes=found.shapes[:, kept].astype(complex),
+            movement=found.movement[kept],
+            rigid=0,
         )
 
     def _reach(self, start: _Point, speed: float, halvings: int) -> list[_Point]:
@@ -287,6 +299,9 @@ class _Curves:
     ) -> None:
         self._track, self._points, self._speeds, self._values = track, points, speeds, values
         self._bodies = turning.bodies if turning else ()
+        system = track.system
+        terms = [part for part in (system.damping, system.gyroscopic) if part is not None]
+        self._feeding = system.unsymmetric or not all(takes_energy(part) for part in terms)
 
     def whirl(self, point: int, mode: int) -> Whirl:
         """The sense of whirl of a curve at a point."""
@@ -301,7 +316,8 @@ class _Curves:
             for p in np.flatnonzero((off[:-1] > 0) != (off[1:] > 0)).tolist():
                 if not (swings[p] and swings[p + 1]):
                     continue
-                at = self._root(p, mode, lambda value, speed: value.imag / (2 * np.pi) - order * speed)
+                near = self._points[p : p + 2]
+                at = self._root(*near, mode, lambda value, speed: value.imag / (2 * np.pi) - order * speed)
                 value = at.values[mode]
                 rows.append(
                     Critical(
@@ -316,33 +332,59 @@ class _Curves:
         return rows
 
     def onset(self) -> Onset | None:
-        """The lowest speed from which the real part of a curve is positive."""
+        """The lowest speed from which the real part of a curve is positive; the first if it is so there."""
         best: Onset | None = None
-        slack = 1e-9 * np.abs(self._values)
-        grows = self._values.real > slack
         for mode in range(self._values.shape[1]):
-            for p in np.flatnonzero(~grows[:-1, mode] & grows[1:, mode]).tolist():
-                at = self._root(p, mode, lambda value, _: value.real)
-                if best is None or at.speed_hz < best.speed_hz:
-                    value, shape = at.values[mode], at.shapes[:, mode]
-                    best = Onset(
-                        at.speed_hz,
-                        float(abs(value)) / (2 * np.pi),
-                        mode + 1,
-                        self._whirl(value, shape),
-                        shape,
-                    )
-                break
+            at = self._first_growth(mode)
+            if at is not None and (best is None or at.speed_hz < best.speed_hz):
+                value, shape = at.values[mode], at.shapes[:, mode]
+                size = float(abs(value)) / (2 * np.pi)
+                best = Onset(at.speed_hz, size, mode + 1, self._whirl(value, shape), shape)
         return best
+
+    def _first_growth(self, mode: int) -> _Point | None:
+        if self._points[0].grows(mode):
+            return self._points[0]
+        for p in range(len(self._points) - 1):
+            start = self._points[p]
+            between = self._between(p, mode)
+            if between is not None:
+                return self._root(start, between, mode, lambda value, _: value.real)
+            if self._points[p + 1].grows(mode):
+                return self._root(start, self._points[p + 1], mode, lambda value, _: value.real)
+        return None
+
+    def _between(self, p: int, mode: int) -> _Point | None:
+        """A point after number ``p`` where a curve grows, looked for where that may be missed from both ends.
+
+        Motions that feed each other do so where their curves meet; and the real part may have its largest
+        value between two speeds.
+        """
+        if not self._feeding:
+            return None
+        start, stop = self._points[p], self._points[p + 1]
+        apart = self._values[p : p + 2].imag - self._values[p : p + 2, mode, None].imag
+        meeting = np.flatnonzero((apart[0] > 0) != (apart[1] > 0))
+        shares = [apart[0, other] / (apart[0, other] - apart[1, other]) for other in meeting.tolist()]
+        real = self._values[max(0, p - 1) : p + 3, mode].real
+        near_zero = real.max() > -NEARLY * abs(start.values[mode])
+        if len(real) > 2 and near_zero and real.max() > max(real[0], real[-1]):
+            shares += [0.2, 0.5, 0.8]
+        for share in sorted({float(share) for share in shares if np.isfinite(share)}):
+            speed = start.speed_hz + share * (stop.speed_hz - start.speed_hz)
+            if start.speed_hz < speed < stop.speed_hz:
+                point = self._track.paired(start if share < 0.5 else stop, speed)[0]
+                if point.grows(mode):
+                    return point
+        return None
 
     def _whirl(self, value: complex, shape: NDArray[np.complex128]) -> Whirl:
         return whirl_of(self._track.system, self._bodies, value, shape)
 
-    def _root(self, p: int, mode: int, off: Callable[[complex, float], float]) -> _Point:
+    def _root(self, start: _Point, stop: _Point, mode: int, off: Callable[[complex, float], float]) -> _Point:
         """The point on a curve between two points where ``off`` changes sign."""
         from scipy.optimize import brentq
 
-        start, stop = self._points[p], self._points[p + 1]
         met: dict[float, _Point] = {start.speed_hz: start, stop.speed_hz: stop}
 
         def at(speed: float) -> float:

@@ -239,7 +239,7 @@ def test_responses_that_are_rounding_are_said_to_be():
 
 
 def test_growth_beyond_the_modes_of_a_response_is_told():
-    """Rayleigh damping that turns negative above the lines asked for; and the same in the ring of few modes."""
+    """Rayleigh damping that turns negative above the lines asked for; and the ring of few modes."""
     side = 42
     line = sparse.diags_array(
         [4.0 * np.ones(side), -np.ones(side - 1), -np.ones(side - 1)], offsets=[0, 1, -1]

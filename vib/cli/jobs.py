@@ -81,9 +81,14 @@ def show_modes(
             lambda: modes_document(modes, study.title, curves),
             modes.remarks,
             files,
-            DONE if modes.stable and modes.stability_known else OBJECTION,
+            DONE if modes.stable and modes.stability_known and not _grows_below(curves) else OBJECTION,
         )
         return deliver(answer, wish)
+
+
+def _grows_below(curves: tuple[SpeedCurves, ...]) -> bool:
+    """Whether something grows on the way to the fastest speed that a shaft runs at."""
+    return any(row.onset is not None and row.onset.speed_hz <= row.stated_hz for row in curves)
 
 
 def _curves(study: Study, modes: Modes) -> tuple[SpeedCurves, ...]:
@@ -179,7 +184,11 @@ def show_screening(path: Path, band: str | None, pictures: str, wish: Wish) -> i
             document,
             [*screening.remarks, *modes.remarks],
             files,
-            OBJECTION if screening.objections or not (screening.stable and modes.stability_known) else DONE,
+            OBJECTION
+            if screening.objections
+            or not (screening.stable and modes.stability_known)
+            or _grows_below(curves)
+            else DONE,
         )
         return deliver(answer, wish)
 
