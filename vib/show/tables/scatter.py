@@ -6,7 +6,18 @@ from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
-from vib.show.blocks import Block, Bullets, Column, Facts, Heading, Sentence, Table, Tone, text_column
+from vib.show.blocks import (
+    Block,
+    Bullets,
+    Column,
+    Facts,
+    Heading,
+    Sentence,
+    Table,
+    Tone,
+    text_column,
+    unit_label,
+)
 from vib.show.numbers import MISSING, aligned, joined, significant
 from vib.show.tables.quantities import entry_words, factor_words, quantity_texts
 from vib.show.words import CAUTION, caution
@@ -100,19 +111,18 @@ def quantity_table(found: Scatter, units: UnitSystem) -> Table:
     """What scatters, and how."""
     rows = []
     for row in found.factors.tolerances:
-        value, low, high, unit = quantity_texts(row.kind, (row.nominal, row.low, row.high), units)
-        drawn = "" if row.group is None else row.group
+        *figures, unit = quantity_texts(row.kind, (row.nominal, row.low, row.high), units)
+        name = f"{entry_words(found.study, row.path)}, {unit_label(unit)}"
+        drawn = row.distribution if row.group is None else f"{row.distribution}, group {row.group}"
         if row.group is not None and row.correlation < 1:
             drawn += f" ({row.correlation:g})"
-        rows.append((entry_words(found.study, row.path), value, low, high, unit, row.distribution, drawn))
+        rows.append((name, *figures, drawn))
     columns = (
         text_column("quantity"),
         Column("value"),
         Column("from"),
         Column("to"),
-        text_column("unit"),
-        text_column("distribution"),
-        text_column("drawn with"),
+        text_column("drawn"),
     )
     return Table("What scatters", columns, tuple(rows))
 
@@ -168,7 +178,7 @@ def chance_table(found: Scatter) -> Table | None:
         Column("band", "Hz"),
         text_column("mode"),
         Column("probability", "%"),
-        Column("95 % interval", "%"),
+        text_column("95 % interval, %"),
     )
     title = "Probability of a mode within a band (any: of those that it can drive)"
     return Table(title, columns, tuple(rows), tones=tuple(tones))
@@ -212,8 +222,8 @@ def level_blocks(found: Scatter, units: UnitSystem) -> list[Block]:
         text_column("output"),
         Column("nominal", unit),
         *(Column("median" if p == 50 else f"{p:g} %", unit) for p in _SHOWN),
-        Column("zone C or worse", "%"),
-        Column("zone D", "%"),
+        text_column("zone C or worse, %"),
+        text_column("zone D, %"),
     )
     title = f"R.m.s. velocity at the worst running speed, {found.levels.samples} samples"
     blocks: list[Block] = [Table(title, columns, tuple(rows), tones=tuple(tones))]
@@ -236,7 +246,7 @@ def level_blocks(found: Scatter, units: UnitSystem) -> list[Block]:
             text_column("quantity"),
             Column("limit"),
             text_column("by"),
-            Column("above it", "%"),
+            text_column("above it, %"),
         )
         blocks.append(Table("Probability of passing limits of your own", own_columns, tuple(own_rows)))
     return blocks
