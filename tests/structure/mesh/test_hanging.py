@@ -135,3 +135,21 @@ def test_a_small_gap_is_a_gap(tmp_path):
     # moved sideways, so that no two corners are at one place
     nodes[nodes[:, 0] > 1.0001] -= [0.0005, 0.1, 0.1]
     assert "lie on an edge or a face" in said(tmp_path, nodes, blocks)
+
+
+@pytest.mark.parametrize(("kind", "make"), [("tetra10", cube), ("hexahedron", cube), ("quad", plate)])
+def test_a_cell_that_is_there_twice(tmp_path, kind, make):
+    """Numbered from another corner the second time."""
+    nodes, cells = make(kind, (3, 2, 2)) if make is cube else make(kind, 3)
+    again = cells[4:5]
+    if kind != "tetra10":
+        again = again[:, [1, 2, 3, 0, 5, 6, 7, 4][: cells.shape[1]]]
+    found = said(tmp_path, nodes, [(kind, np.vstack([cells, again]))], SHELL if kind == "quad" else STEEL)
+    assert f"mesh: cells 5, {len(cells) + 1} have the same corners" in found
+
+
+def test_solids_in_each_other(tmp_path):
+    """A third tetrahedron on a face that two share already."""
+    nodes = np.array([[0, 0, 0], [1, 0, 0], [0, 1, 0], [0.3, 0.3, 1], [0.3, 0.3, -1], [0.4, 0.3, 0.8]])
+    cells = np.array([[0, 1, 2, 3], [0, 2, 1, 4], [0, 1, 2, 5]])
+    assert "cells 1, 2, 3 lie in each other" in said(tmp_path, nodes, [("tetra", cells)])

@@ -24,7 +24,8 @@ def faulty(study):
     [
         ("m.vtu", "no mesh at all", "cannot be read as a mesh"),
         ("m.msh", "$MeshFormat\n9.9 0 8\n", "cannot be read as a mesh"),
-        ("m.vtk", "", "cannot be read as a mesh"),
+        ("m.vtk", "", "m.vtk is empty"),
+        ("m.node", "", "m.node is empty"),
         ("m.inp", "*NODE\n1, x, 0, 0\n", "cannot be read as a mesh"),
         ("m.xyz9", "1 2 3", "is of no known kind of mesh file"),
     ],
@@ -33,6 +34,22 @@ def test_unreadable_files(tmp_path, capfd, name, content, said):
     """meshio prints and leaves the program on these; we say one sentence and print nothing."""
     (tmp_path / name).write_text(content)
     assert said in faulty(study_of(tmp_path, "", name=name))
+    assert capfd.readouterr() == ("", "")
+
+
+@pytest.mark.parametrize("name", ["m.vtu", "m.vtk", "m.msh", "m.inp", "m.mesh", "m.dat", "m.mdpa", "m.su2"])
+@pytest.mark.parametrize("part", [0.3, 0.6, 0.9])
+def test_files_cut_short(tmp_path, capfd, name, part):
+    """Some readers of meshio would wait for more for ever."""
+    nodes, cells = block("tetra", (3, 1, 1))
+    write(tmp_path, nodes, [("tetra", cells)], name)
+    whole = (tmp_path / name).read_bytes()
+    capfd.readouterr()
+    (tmp_path / name).write_bytes(whole[: int(part * len(whole))])
+    try:
+        study_of(tmp_path, "", name=name).system()
+    except ModelError as error:
+        assert str(error).startswith("mesh")  # noqa: PT017 - cut after the cells, a file may still do
     assert capfd.readouterr() == ("", "")
 
 

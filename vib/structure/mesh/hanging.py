@@ -1,4 +1,7 @@
-"""Nodes that lie on an edge or a face of a cell that does not have them: the mesh is not joined there."""
+"""Cells that do not fit together: hanging nodes, cells of different order, cells that are there twice.
+
+A hanging node lies on an edge or a face of a cell that does not have it: the mesh is not joined there.
+"""
 
 from __future__ import annotations
 
@@ -18,8 +21,8 @@ Numbers = NDArray[np.intp]
 _NEAR = 1e-4  # of the size of an edge or face: nodes nearer than this lie on it
 
 
-def check_hanging(nodes_m: Array, patches: tuple[Patch, ...]) -> None:
-    """Stop where neighbours do not share all the nodes on their common edges and faces.
+def check_fit(nodes_m: Array, patches: tuple[Patch, ...]) -> None:
+    """Stop where neighbours do not share all the nodes on their common edges and faces, or lie in each other.
 
     Cells of first and of second order are told apart by their edges; other nodes by where they lie. Inner
     faces of solids and inner edges of shells are shared by their corners, so that only the surface, the rims
@@ -30,6 +33,7 @@ def check_hanging(nodes_m: Array, patches: tuple[Patch, ...]) -> None:
     ModelError
         Names nodes and cells.
     """
+    _check_twice(patches)
     edges = [_edges_of(patch) for patch in patches]
     nodes, cells = _mixed_orders(patches, edges)
     if len(nodes):
@@ -46,6 +50,40 @@ def check_hanging(nodes_m: Array, patches: tuple[Patch, ...]) -> None:
             f"({listed('cell', cells)}), so that the mesh is not joined there; divide both sides alike (what "
             "only touches and is not to be joined needs a gap)"
         )
+
+
+def _check_twice(patches: tuple[Patch, ...]) -> None:
+    """Shells and solids with the same corners, and faces that more than two solids have."""
+    for dimension in (2, 3):
+        own = [patch for patch in patches if _dimension(patch) == dimension]
+        for corners in sorted({patch.family.corners for patch in own}):
+            alike = [patch for patch in own if patch.family.corners == corners]
+            cells = np.sort(np.concatenate([patch.connectivity[:, :corners] for patch in alike]), axis=1)
+            _stop_where_more(
+                cells, np.concatenate([patch.numbers for patch in alike]), 1, "have the same corners"
+            )
+    solids = [patch for patch in patches if _dimension(patch) == 3]
+    for size in (3, 4):
+        faces = [
+            (patch.connectivity[:, face], patch.numbers)
+            for patch in solids
+            for face in FACES[patch.family.corners]
+            if len(face) == size
+        ]
+        if faces:
+            nodes, numbers = (np.concatenate(column) for column in zip(*faces, strict=True))
+            _stop_where_more(np.sort(nodes, axis=1), numbers, 2, "lie in each other: they share a face")
+
+
+def _stop_where_more(rows: Numbers, cells: Numbers, most: int, what: str) -> None:
+    """Stop where more than ``most`` cells have the same row of nodes."""
+    order = np.lexsort(rows.T[::-1])
+    ordered = rows[order]
+    same = (ordered[most:] == ordered[:-most]).all(axis=1)
+    if same.any():
+        first = np.flatnonzero(same)
+        found = np.unique(cells[order[np.unique(first[:, None] + np.arange(most + 1))]])
+        raise ModelError(f"mesh: {listed('cell', found)} {what}; leave out those that are there twice")
 
 
 def _edges_of(patch: Patch) -> tuple[Numbers, Numbers]:

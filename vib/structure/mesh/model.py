@@ -14,7 +14,7 @@ from vib.errors import ModelError
 from vib.structure.mesh import assign, cleaning
 from vib.structure.mesh.assign import Patch, RegionFound
 from vib.structure.mesh.finding import Found, find_points
-from vib.structure.mesh.hanging import check_hanging
+from vib.structure.mesh.hanging import check_fit
 from vib.structure.mesh.reading import RawMesh, listed, read_mesh
 from vib.structure.sparsity import Group
 from vib.study import Study
@@ -100,7 +100,7 @@ def read_mesh_study(study: Study) -> tuple[Study, MeshModel]:
     used, told = cleaning.clean_cells(nodes_m, used, offsets)
     remarks += told
     remarks += cleaning.check_nodes(nodes_m, used, file_nodes)
-    check_hanging(nodes_m, used)
+    check_fit(nodes_m, used)
     found = find_points(study, raw, nodes_m, used)
     plain, model = _Resolving(study, nodes_m, used, found).resolved()
     return plain, replace(model, remarks=(*remarks, *found.remarks, *model.remarks))

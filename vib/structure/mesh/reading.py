@@ -15,6 +15,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from vib.errors import ModelError
+from vib.structure.mesh.ending import files_end
 from vib.structure.mesh.regions import cell_sets, region_names
 from vib.system import Array
 
@@ -74,6 +75,8 @@ def read_mesh(path: Path, tag: str | None = None, wanted: frozenset[str] = froze
         told = path.stat()
     except OSError as error:
         raise ModelError(f"mesh.file: {path.name} cannot be read: {error.strerror or error}") from None
+    if not told.st_size:
+        raise ModelError(f"mesh.file: {path.name} is empty")
     if told.st_size > _LARGEST:
         raise ModelError(f"mesh.file: {path.name} is larger than 20 GiB")
     return _read_once(path, tag, wanted, told.st_mtime_ns, told.st_size)
@@ -85,8 +88,10 @@ def _read_once(path: Path, tag: str | None, wanted: frozenset[str], _changed: in
     found = _through_meshio(path)
     nodes = _coordinates(found, path.name)
     kinds = [(str(block.type), block.data) for block in found.cells]
-    if not sum(len(data) for _, data in kinds):
-        raise ModelError(f"mesh.file: {path.name} holds no cells, or none of a kind that can be read")
+    if not sum(len(data) for kind, data in kinds if kind != "vertex"):
+        raise ModelError(
+            f"mesh.file: {path.name} holds no cells but points, or none of a kind that can be read"
+        )
     _check_kinds(kinds, path.name)
     sizes = [len(data) for _, data in kinds]
     names, regions = region_names(found, sizes, tag, wanted, path.name)
@@ -114,6 +119,7 @@ def _through_meshio(path: Path) -> Any:
             contextlib.redirect_stdout(said),
             contextlib.redirect_stderr(said),
             warnings.catch_warnings(),
+            files_end(),
         ):
             warnings.simplefilter("ignore")
             return meshio.read(path)
@@ -127,9 +133,10 @@ def _through_meshio(path: Path) -> Any:
                 f"(known endings: {', '.join(known)})"
             ) from None
         reason = "" if isinstance(error, SystemExit) else str(error) or type(error).__name__
-        reason = " ".join((reason or said.getvalue()).split())[:200]
+        reason = " ".join((reason or said.getvalue()).replace(str(path), path.name).split())[:200]
         raise ModelError(
-            f'mesh.file: "{path.name}" cannot be read as a mesh of the kind {path.suffix}: {reason}'
+            f'mesh.file: "{path.name}" cannot be read as a mesh of the kind {path.suffix}; it may be cut '
+            f"short, hold no cells or be of another kind ({reason})"
         ) from None
 
 
