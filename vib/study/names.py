@@ -200,10 +200,14 @@ def _check_sets(raw: Mapping[str, Any]) -> Iterator[Finding]:
         for pair in between if isinstance(between, list) else []:
             ends = between if isinstance(pair, str) else pair
             if isinstance(ends, list) and "ground" not in ends and any(name in sets for name in ends):
+                name = next(name for name in ends if name in sets)
+                other = next((end for end in ends if end not in sets), "...")
                 yield (
                     ("springs", i, "between"),
-                    "a set of points takes springs to the ground only; let a body be carried by the set and "
-                    "name one of its points",
+                    f'"{name}" is a set of points, which takes springs to the ground only; name one point amid '
+                    f"it (foot = {{ nearest = [...] }} in [points]), let a light body be carried by both "
+                    f'([[bodies]] with mass, centre and carried_by = ["{name}", "foot"]) and write '
+                    f'between = ["foot", "{other}"]',
                 )
                 break
     for i, body in _rows(raw, "bodies"):

@@ -107,7 +107,7 @@ def test_points_that_are_not_there(solid, point, said):
         (
             '[points]\nA = {set = "x"}\nB = [0, 0, 5]\n[[springs]]\nbetween = ["A", "B"]\n'
             'stiffness = {x = "1 N/m"}\n',
-            "a set of points takes springs to the ground only",
+            r'"A" is a set of points, .* to the ground only; .*carried_by = \["A", "foot"\].* \["foot", "B"\]',
         ),
         ('[mesh.regions.b]\nmaterial = "steal"\n', 'no material is named "steal"'),
         ('[mesh.regions.b]\nuse = "ignore"\nmaterial = "aluminium"\n', "leaves nothing to say"),
@@ -217,6 +217,29 @@ stiffness = {x = "1 kN/m", y = "1 kN/m", z = "2 kN/m"}
     assert found.sag is not None
     assert sum(r.force_n[2] for r in found.sag.reactions) == pytest.approx(mass * 9.80665)
     assert found.sag.displacement_m["sole"][2] == pytest.approx(-mass * 9.80665 / 2e3, rel=1e-3)
+
+
+def test_a_spring_between_a_set_and_a_point(solid):
+    """As the message about it says: by a light body that the set carries. The block bobs on its foot."""
+    text = """[points]
+sole = {box = [[0, 0, 0], [1, 1, 0]]}
+foot = {nearest = [0.3, 0.05, 0]}
+low = [0.3, 0.05, -0.2]
+[[bodies]]
+mass = "1 g"
+centre = [0.3, 0.05, 0]
+carried_by = ["sole", "foot"]
+[[springs]]
+between = ["foot", "low"]
+stiffness = {x = "9 kN/m", y = "9 kN/m", z = "2 kN/m", rx = "1 kN m/rad", ry = "1 kN m/rad", rz = "1 kN m/rad"}
+[[supports]]
+at = "low"
+hold = "all"
+"""
+    modes = study_of(solid[0], text).system().modes(count=6)
+    mass = 7850 * 0.6 * 0.1 * 0.08 + 1e-3
+    bob = np.sqrt(2e3 / mass) / (2 * np.pi)
+    assert np.abs(modes.frequencies_hz / bob - 1).min() < 1e-3
 
 
 POST = """[sections.post]
