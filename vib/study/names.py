@@ -205,7 +205,7 @@ def _check_sets(raw: Mapping[str, Any]) -> Iterator[Finding]:
                 yield (
                     ("springs", i, "between"),
                     f'"{name}" is a set of points, which takes springs to the ground only; name one point '
-                    f"amid it (foot = {{ nearest = [...] }} in [points]), let a light body be carried by both "
+                    "amid it (foot = { nearest = [...] } in [points]), let a light body be carried by both "
                     f'([[bodies]] with mass, centre and carried_by = ["{name}", "foot"]) and write '
                     f'between = ["foot", "{other}"]',
                 )
