@@ -97,6 +97,32 @@ def test_bare_modes_in_closed_form_that_change_places(tmp_path):
     assert np.isinf(batch.complete_hz).all()  # there are no other modes
 
 
+def test_nominal_modes_of_equal_frequency_are_told_apart_as_samples_do(tmp_path):
+    # one body on a spring along x and one along y that are equal nominally: any direction is a nominal mode
+    text = """
+    [points]
+    A = ["0 m", "0 m", "0 m"]
+    [[bodies]]
+    mass = "10 kg"
+    carried_by = "A"
+    [[supports]]
+    at = "A"
+    hold = ["z", "rx", "ry", "rz"]
+    [[springs]]
+    between = ["A", "ground"]
+    x_axis = [0.8, 0.6, 0.0]
+    y_axis = [-0.6, 0.8, 0.0]
+    stiffness = { x = "50 kN/m", y = "50 kN/m" }
+    """
+    made = family(tmp_path, text, ("springs[0].stiffness.x", "springs[0].stiffness.y"), count=2)
+    points = samples(made, 100)
+    batch = Reanalysis.build(made).evaluate(points)
+    wanted = np.sqrt(points / 10) / (2 * np.pi)
+    first = int(np.abs(batch.frequencies_hz[0, 0] - wanted[0]).argmin())
+    assert np.allclose(batch.frequencies_hz, wanted[:, [first, 1 - first]], rtol=1e-8)
+    assert (batch.likeness > 0.999).all()
+
+
 def test_a_body_that_becomes_overdamped(tmp_path):
     text = BODIES.replace("400 N s/m", "1500 N s/m")
     made = family(tmp_path, text, ("springs[2].dashpot.x",), spread=0.6, count=3)

@@ -32,6 +32,7 @@ SNAPSHOTS = 32  # samples whose modes the basis is made from
 TRIED = 250  # samples at which it is tried
 ROUNDS, ADDED = 5, 8  # how often it is widened, and by the modes of how many samples
 GOOD = 0.01  # part of the samples tried that may be worse
+EQUAL = 1e-6  # relative difference of nominal frequencies that are the same
 COUPLED = 1e-6  # damping beside the diagonal, against the diagonal, that leaves shapes as they are
 CHECKS = 6  # samples that are rebuilt and solved in full to compare
 SAFETY = 2.0  # times the largest ratio of true and estimated errors seen
@@ -97,7 +98,9 @@ class _Making:
     def __init__(self, family: Family, training: Array | None, tolerance: float) -> None:
         self.family, self.tolerance = family, tolerance
         self.system = family.modes.system
-        self.count = min(family.modes.count + max(3, family.modes.count // 4), self.system.size)
+        creeping = bool(((family.modes.eigenvalues.imag == 0) & (family.modes.frequencies_hz > 0)).any())
+        self.most = (1 + creeping) * self.system.size  # an overdamped motion has two eigenvalues
+        self.count = min(family.modes.count + max(3, family.modes.count // 4), self.most)
         if training is None or len(training) < SNAPSHOTS:
             drawn = qmc.Sobol(len(family.nominal), seed=7).random(512)
             training = qmc.scale(drawn, family.bounds[:, 0], family.bounds[:, 1])
@@ -113,7 +116,7 @@ class _Making:
 
     def _without_basis(self, remark: str) -> Reanalysis:
         modes = self.family.modes
-        everything = self.count >= self.system.size
+        everything = self.count >= self.most
         evaluator = self._evaluator(None, np.zeros((self.system.size, 0)), everything)
         remarks = self.family.remarks + ((remark,) if remark else ())
         return Reanalysis(modes, evaluator, 0, remarks)
@@ -177,7 +180,7 @@ class _Making:
             shapes += [find(metric, sample) for sample in tried[worst]]
             energy /= 2  # what is missing may be less than was thought to matter
             evaluator = reduced(energy)
-        evaluator = self._calibrated(evaluator)
+        evaluator = self._calibrated(self._settled(evaluator))
         size = evaluator.model.rank if evaluator.model else 0
         return Reanalysis(family.modes, evaluator, size, family.remarks)
 
@@ -226,6 +229,25 @@ class _Making:
             spinning=spinning,
             safety=SAFETY * USUAL,
         )
+
+    def _settled(self, evaluator: Evaluator) -> Evaluator:
+        """Shapes of equal nominal frequency, which may be mixed in any way, turned as a sample has them."""
+        if evaluator.model is None:
+            return evaluator
+        found = evaluator.model.candidates(self.training[:1], self.count).shapes[0]
+        found = found / np.linalg.norm(found, axis=0)
+        shapes, pushed = evaluator.shapes.copy(), evaluator.pushed.astype(np.complex128)
+        values = self.family.modes.eigenvalues
+        same = np.abs(np.diff(values)) <= EQUAL * np.abs(values[1:])
+        for group in np.split(np.arange(len(values)), np.flatnonzero(~same) + 1):
+            if len(group) < 2 or group[0] < evaluator.rigid:
+                continue
+            inner = shapes[:, group].conj().T @ found
+            alike = np.sort(np.argsort(np.abs(inner**2).sum(axis=0))[-len(group) :])
+            left, _, right = np.linalg.svd(inner[:, alike])
+            shapes[:, group] = shapes[:, group] @ (left @ right)
+            pushed[:, group] = pushed[:, group] @ (left @ right)
+        return replace(evaluator, shapes=shapes, pushed=pushed)
 
     def _calibrated(self, evaluator: Evaluator) -> Evaluator:
         """The evaluator with errors that cover those at rebuilt samples."""
