@@ -169,3 +169,34 @@ def test_a_study_without_tolerances_does_not_scatter(studies):
     study = studies(SWAP_TEXT, ('"400 N/mm +- 30 %"', '"400 N/mm"'), ('"440 N/mm +- 30 %"', '"440 N/mm"'))
     with pytest.raises(ModelError, match="the study states none"):
         scatter(study)
+
+
+OVERDAMPED = """
+title = "A block in oil"
+[points]
+A = ["0 m", "0 m", "0 m"]
+[[bodies]]
+name = "block"
+mass = "10 kg"
+carried_by = "A"
+[[supports]]
+at = "A"
+hold = ["y", "z", "rx", "ry", "rz"]
+[[springs]]
+between = ["A", "ground"]
+stiffness = { x = "1000 N/m" }
+dashpot = { x = "250 N s/m +- 60 %" }
+"""
+
+
+def test_motions_that_cease_to_swing_lack_a_mode(studies):
+    """s = (-c -+ sqrt(c^2 - 4 k m)) / (2 m): two real values above c = 200 N s/m, one pair below."""
+    found = scatter(studies(OVERDAMPED), samples=64, seed=0, ranking=False)
+    dashpot = found.values[:, 0]
+    swings = dashpot < 200
+    assert 0.2 < swings.mean() < 0.5
+    assert (np.isnan(found.batch.frequencies_hz).any(axis=1) == swings).all()
+    roots = np.sqrt(np.maximum(dashpot**2 - 4 * 1000 * 10, 0)) / 20
+    slow = np.where(swings, 10.0, dashpot / 20 - roots) / (2 * np.pi)
+    np.testing.assert_allclose(np.nanmin(found.batch.frequencies_hz, axis=1), slow, rtol=1e-6)
+    assert any("a mode is lacking" in remark for remark in found.remarks)

@@ -20,7 +20,8 @@ class Batch:
     Attributes
     ----------
     frequencies_hz, damping_ratios
-        (N, m) natural frequency and damping ratio as in `vib.modes.Modes`.
+        (N, m) natural frequency and damping ratio as in `vib.modes.Modes`; NaN where a sample has no such
+        mode, because an overdamped motion has two where one that swings has one.
     errors_hz
         (N, m) error bar of each frequency against a full solution of the same division into pieces.
     likeness

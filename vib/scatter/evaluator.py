@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from importlib.metadata import version
 
 import numpy as np
@@ -119,14 +119,20 @@ class Evaluator:
     def _one_in_full(self, sample: Array) -> Batch:
         system = self.builder.system(sample)
         damped = solve_system(system, self.candidates, None).damped
-        if len(damped.values) < len(self.nominal):
-            raise AccuracyError("A sample has fewer modes than the nominal structure.")
         weight = np.sqrt(np.einsum("ij,ij->j", damped.shapes.conj(), self.mass @ damped.shapes).real)
         likeness = _likeness(damped.shapes[None], weight[None], self.pushed)
-        stable = damped.growing is None and not (damped.values.real > damped.movement).any()
-        return self._columns(
-            damped.values[None], damped.errors[None], likeness, np.array([stable]), full=True
-        )
+        stable = np.array([damped.growing is None and not (damped.values.real > damped.movement).any()])
+        # an overdamped motion has two eigenvalues where one that swings has one pair: some may be lacking
+        lacking = max(len(self.nominal) - len(damped.values), 0)
+        values, errors = np.pad(damped.values, (0, lacking)), np.pad(damped.errors, (0, lacking))
+        errors[len(damped.values) :] = np.inf
+        likeness = np.pad(likeness, ((0, 0), (0, lacking), (0, 0)))
+        batch = self._columns(values[None], errors[None], likeness, stable, full=True)
+        if not lacking:
+            return batch
+        there = np.isfinite(batch.errors_hz)
+        rows = {name: batch.arrays()[name] for name in ("frequencies_hz", "damping_ratios", "errors_hz")}
+        return replace(batch, **{name: np.where(there, row, np.nan) for name, row in rows.items()})
 
     def _columns(
         self,

@@ -146,7 +146,9 @@ class Model:
         moving = np.abs(pairs.values) > 0
         errors = self.safety * residual / np.where(moving & (slope > 0), slope, np.inf)
         errors = clustered(np.abs(pairs.values), errors)
-        return Candidates(pairs.values, errors, shapes, pairs.growth, solved.regular & held)
+        # where fewer than count are there, partners of pairs stand in their places
+        whole = ~(pairs.values.imag < 0).any(axis=1)
+        return Candidates(pairs.values, errors, shapes, pairs.growth, solved.regular & held & whole)
 
 
 def _modal(solved: Solved, linear: Array) -> Array:

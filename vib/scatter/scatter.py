@@ -308,6 +308,12 @@ def _remarks(samples: int, method: Method, batch: Batch, met: Chances | None) ->
             f"In {swapped} of {samples} samples modes stand in another order of frequency than nominally; "
             "each is followed by its shape."
         )
+    lacking = int(np.count_nonzero(np.isnan(batch.frequencies_hz).any(axis=1)))
+    if lacking:
+        said.append(
+            f"In {lacking} of {samples} samples a motion is overdamped and nominally not, or the other way "
+            "round, and a mode is lacking: its figures are those of the others."
+        )
     grown = int(np.count_nonzero(~batch.stable))
     if grown:
         said.append(f"In {grown} of {samples} samples a motion grows by itself.")

@@ -191,6 +191,12 @@ def _remarks(batch: Batch) -> tuple[str, ...]:
             f"At {unclear} of {len(batch)} values a mode has little of the nominal shape that it is followed "
             f"by (modal assurance below {CLEAR:g}): near there curves may trade places."
         )
+    lacking = int(np.count_nonzero(np.isnan(batch.frequencies_hz).any(axis=1)))
+    if lacking:
+        said.append(
+            f"At {lacking} of {len(batch)} values a motion is overdamped and nominally not, or the other way "
+            "round, and a mode is lacking: its figures are those of the others."
+        )
     grown = int(np.count_nonzero(~batch.stable))
     if grown:
         said.append(f"At {grown} of {len(batch)} values a motion grows by itself.")
