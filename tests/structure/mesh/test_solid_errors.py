@@ -233,3 +233,16 @@ def test_too_many_corners(monkeypatch):
     monkeypatch.setattr(richer, "_MOST_CORNERS", 10)
     with pytest.raises(AccuracyError, match="more than 10 corners"):
         richer.richer([Group(FAMILIES["tetra"], cells, SHEAR_ONE)], np.zeros((len(nodes), 3), dtype=bool))
+
+
+def test_cells_that_are_folded():
+    """A cell turned inside out: its stiffness is negative, which is said rather than counted."""
+    nodes, cells = cube("tetra10", (2, 2, 2))
+    groups = [Group(FAMILIES["tetra10"], cells, SHEAR_ONE)]
+    held = np.repeat(nodes[:, :1] < 1e-9, 3, axis=1)
+    angular, shapes, pattern = modes(nodes, groups, held, 2)
+    folded = cells.copy()
+    folded[:6] = folded[:6][:, FAMILIES["tetra10"].mirrored]
+    groups = [Group(FAMILIES["tetra10"], folded, SHEAR_ONE)]
+    with pytest.raises(AccuracyError, match="so distorted"):
+        solid_errors.solid_errors(nodes, groups, pattern, held, shapes, angular)

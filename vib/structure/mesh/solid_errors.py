@@ -20,6 +20,7 @@ from dataclasses import dataclass
 import numpy as np
 from scipy.sparse import csr_array
 
+from vib.errors import AccuracyError
 from vib.structure.cells.solid import determinant_and_inverse, jacobians
 from vib.structure.mesh.richer import Flags, Numbers, Richer, RicherGroup, richer
 from vib.structure.sparsity import Group, Pattern
@@ -34,6 +35,7 @@ REACHED = 1 / 2
 ENOUGH = 0.15  # of the energy may be left to extrapolation
 MOST_STEPS = 10
 LEAST = np.finfo(float).tiny
+DISTORTED = "Some cells are so distorted that richer ones would have no stiffness."
 _CHUNK_VALUES = 1_000_000
 _KEPT_BYTES = 500_000_000
 _VECTOR_BYTES = 1_500_000_000
@@ -77,7 +79,7 @@ def solid_errors(
     Raises
     ------
     AccuracyError
-        More corners of cells than can be numbered.
+        More corners of cells than can be numbered, or cells that are all but folded.
     """
     level = _Level(nodes_m, richer(groups, held), pattern)
     count = shapes.shape[1]
@@ -106,7 +108,10 @@ class _Level:
     def gains(self, shapes: Array, angular: Array) -> Array:
         """How far the squared frequencies fall with richer cells, (m, m) between the modes, (rad/s)^2."""
         forces, diagonal = self._forces(shapes, angular)
-        inverse = np.linalg.inv(diagonal)
+        try:
+            inverse = np.linalg.inv(diagonal)
+        except np.linalg.LinAlgError:
+            raise AccuracyError(DISTORTED) from None
 
         def preconditioned(vectors: Array) -> Array:
             return (inverse @ vectors.reshape(len(inverse), 3, -1)).reshape(vectors.shape)
@@ -116,7 +121,10 @@ class _Level:
         product, last = _dots(left, ahead), np.full(shapes.shape[1], np.inf)
         for _ in range(MOST_STEPS):
             pulled = self._pulled(direction)
-            length = product / np.maximum(_dots(direction, pulled), LEAST)
+            stretched = _dots(direction, pulled)
+            if not ((product >= 0) & (stretched >= 0)).all():
+                raise AccuracyError(DISTORTED)
+            length = product / np.maximum(stretched, LEAST)
             moved += length * direction
             left -= length * pulled
             last, before = length * product, last
