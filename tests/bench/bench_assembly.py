@@ -17,9 +17,15 @@ ACROSS = {"s": 5, "m": 9, "l": 15}
 
 
 def block(across: int) -> tuple[np.ndarray, np.ndarray]:
-    """Corner nodes and four-node cells of a block of 3 x 1 x 1 m, each brick cut into six tetrahedra."""
-    counts = (3 * across, across, across)
-    steps = [np.linspace(0, length, count + 1) for length, count in zip((3, 1, 1), counts, strict=True)]
+    """Corner nodes and four-node cells of a block of 3 x 1 x 1 m."""
+    return bricks((3 * across, across, across), (3.0, 1.0, 1.0))
+
+
+def bricks(
+    counts: tuple[int, int, int], lengths: tuple[float, float, float]
+) -> tuple[np.ndarray, np.ndarray]:
+    """Corner nodes and four-node cells of a block, each of its bricks cut into six tetrahedra."""
+    steps = [np.linspace(0, length, count + 1) for length, count in zip(lengths, counts, strict=True)]
     nodes = np.stack(np.meshgrid(*steps, indexing="ij"), axis=-1).reshape(-1, 3)
     number = np.arange(len(nodes)).reshape([count + 1 for count in counts])
     low, high = slice(None, -1), slice(1, None)

@@ -14,7 +14,7 @@ import numpy as np
 import scipy.sparse as sparse
 import scipy.sparse.linalg as sparse_linalg
 
-from tests.bench.bench_assembly import ACROSS, STEEL, block, second_order
+from tests.bench.bench_assembly import ACROSS, STEEL, block, bricks, second_order
 from tests.bench.case import Case
 from vib.solve.backends import pardiso
 from vib.solve.backends.choice import factor
@@ -159,5 +159,14 @@ CASES = [
         packages=("skfem",),
         sizes=("s", "m"),
         theirs_sizes=("s", "m"),
+    ),
+    Case(
+        name="million",
+        work=f"{COUNT} modes of 959,040 freedoms, from the mesh",
+        alternative="none",
+        prepare=lambda _: bricks((96, 18, 22), (4.8, 0.9, 1.1)),
+        ours=whole,
+        theirs=None,
+        sizes=("l",),
     ),
 ]
