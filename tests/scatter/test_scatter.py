@@ -200,3 +200,37 @@ def test_motions_that_cease_to_swing_lack_a_mode(studies):
     slow = np.where(swings, 10.0, dashpot / 20 - roots) / (2 * np.pi)
     np.testing.assert_allclose(np.nanmin(found.batch.frequencies_hz, axis=1), slow, rtol=1e-6)
     assert any("a mode is lacking" in remark for remark in found.remarks)
+
+
+def test_the_name_of_the_package_is_the_function(studies):
+    """Whether or not a part of the package was imported before, which binds its name in ``vib``."""
+    import sys
+
+    import vib
+
+    for _ in range(2):
+        found = vib.scatter(studies(), samples=8, ranking=False)
+        assert isinstance(found, vib.Scatter)
+    assert "vib.scatter.sampling" in sys.modules
+
+
+def test_growing_samples_are_counted(studies):
+    """A dashpot that feeds energy in takes 2.5 % of critical away: c / (2 sqrt(k m)) = -0.5 / 20."""
+    text = """
+title = "Fed from outside"
+[units]
+mass = "kg"
+stiffness = "N/m"
+damping = "N s/m"
+[matrices]
+mass = [[1]]
+stiffness = [[100]]
+damping = [[-0.5]]
+[damping]
+ratio = "0.025 +- 0.01"
+"""
+    found = scatter(studies(text), samples=64, ranking=False)
+    np.testing.assert_allclose(found.batch.damping_ratios[:, 0], found.values[:, 0] - 0.025, atol=1e-9)
+    np.testing.assert_array_equal(found.batch.stable, found.values[:, 0] > 0.025)
+    assert not found.stable
+    assert any("a motion grows by itself" in remark for remark in found.remarks)
