@@ -34,7 +34,7 @@ _FIRST: dict[int, Solid] = {4: Tetra(), 5: Pyramid(), 6: Wedge(), 8: Hexahedron(
 _SECOND: dict[int, Solid] = {4: Tetra10(), 5: Pyramid13(), 6: Wedge15(), 8: Hexahedron20()}
 # exact for the stiffness of these functions on affine cells; first-order cells, then second-order ones
 _RULES: dict[int, tuple[Rule, Rule]] = {
-    4: (tetrahedron(5), tetrahedron(5)),
+    4: (tetrahedron(2), tetrahedron(5)),
     5: (pyramid(3, 4), pyramid(4, 5)),
     6: (wedge(4, 3), wedge(6, 4)),
     8: (cube(3), cube(4)),
