@@ -6,6 +6,7 @@ import numpy as np
 import pytest
 import scipy.linalg
 
+import vib
 from tests.scatter.studies import BODIES, DASHPOT, FRAME, QUANTITIES, dense, family, samples, study
 from vib.scatter.batch import Batch
 from vib.scatter.family import Family
@@ -263,3 +264,23 @@ def test_a_spinning_wheel_splits_its_tilting_modes(tmp_path):
     assert np.allclose(2 * np.pi * batch.frequencies_hz[:, 0], middle - turn, rtol=1e-6)
     assert np.allclose(2 * np.pi * batch.frequencies_hz[:, 1], middle + turn, rtol=1e-6)
     assert batch.stable.all()
+
+
+def test_a_mesh_whose_materials_damp(tmp_path):
+    # the shared model of a plate on rubber strips: cells of a file, two machines, material damping
+    read = vib.read("models/base_plate.toml")
+    modulus = read.materials["plate"].data.youngs_modulus
+    bounds = {
+        "bodies[0].mass": (140.0, 180.0),
+        "materials.plate.youngs_modulus": (0.9 * modulus, 1.1 * modulus),
+    }
+    made = Family.from_study(read, bounds, count=4)
+    assert made.interpolation is not None
+    points = samples(made, 3)
+    batch = Reanalysis.build(made).evaluate(points)
+    assert not batch.full.any()
+    for row, point in enumerate(points):
+        modes = made.builder.system(point).modes(count=4)
+        order = np.argsort(batch.frequencies_hz[row])
+        assert np.allclose(batch.frequencies_hz[row, order], modes.frequencies_hz, rtol=2e-4)
+        assert np.allclose(batch.damping_ratios[row, order], modes.damping_ratios, rtol=1e-3)

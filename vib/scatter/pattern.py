@@ -36,13 +36,7 @@ class Pattern:
 
     @classmethod
     def of(cls, systems: list[System]) -> Pattern:
-        """All entries that any of these systems has.
-
-        Raises
-        ------
-        AccuracyError
-            The damping law weighs several parts whose stiffness is no matrix.
-        """
+        """All entries that any of these systems has."""
         kinds = tuple(_matrices(systems[0]))
         keys = np.unique(np.concatenate([_entries(system)[0] for system in systems]))
         return cls(systems[0].size, kinds, keys)
@@ -101,17 +95,10 @@ class Pattern:
 def _matrices(system: System) -> dict[str, Any]:
     found = {kind: getattr(system, kind) for kind in MATRICES}
     if system.damping_law.material and system.anatomy is not None:
-        parts = system.anatomy.parts
-        # the cells of a mesh only multiply, but where they are one part they are what the others leave
-        cells = [number for number, part in enumerate(parts) if not sparse.issparse(part.stiffness)]
-        cells = [number for number in cells if parts[number].stiffness is not None]
-        if len(cells) > 1:
-            raise AccuracyError("Material damping of several regions of a mesh is not interpolated.")
-        for number, part in enumerate(parts):
+        for number, part in enumerate(system.anatomy.parts):
             if part.damping_ratio is not None:
-                others = [row.stiffness for row in parts if row is not part and row.stiffness is not None]
-                left = number in cells
-                found[f"part {number}"] = system.stiffness - sum(others) if left else part.stiffness
+                own = part.stiffness
+                found[f"part {number}"] = own.matrix() if hasattr(own, "matrix") else own  # cells of a mesh
     return found
 
 
