@@ -26,7 +26,7 @@ if TYPE_CHECKING:
     from vib.study import Study
 
 USUAL_SAMPLES, USUAL_LEVELS = 1024, 128
-MOST_CORNERS = 6  # quantities of one table that are tried at all corners
+MOST_CORNERS = 8  # quantities of one table that are tried at all corners
 LEAST_ROWS, MOST_ROWS = 64, 1024  # of the design that ranks the factors
 
 
@@ -262,7 +262,7 @@ def check_values(study: Study, paths: tuple[str, ...], values: Array) -> None:
     """
     tables: dict[str, list[int]] = {}
     for column, path in enumerate(paths):
-        tables.setdefault(path.split(".")[0], []).append(column)
+        tables.setdefault(_table(path), []).append(column)
     for columns in tables.values():
         picked = values[:, columns]
         corners = np.stack(np.meshgrid(*np.stack([picked.min(axis=0), picked.max(axis=0)], axis=1)), axis=-1)
@@ -280,6 +280,13 @@ def check_values(study: Study, paths: tuple[str, ...], values: Array) -> None:
                     f"sample {number + 1} of {len(values)} can't be: {fault}. Narrow the tolerance, or "
                     'choose distribution = "lognormal", which stays above zero'
                 )
+
+
+def _table(path: str) -> str:
+    """The table that an entry stands in: "springs[0]", "points.A"."""
+    first, _, rest = path.partition(".")
+    named = first in ("points", "materials", "sections")
+    return f"{first}.{rest.partition('.')[0].partition('[')[0]}" if named else first
 
 
 def _allowed(study: Study, given: Mapping[str, float]) -> StudyError | None:

@@ -32,6 +32,7 @@ if TYPE_CHECKING:
 SELDOM = 0.05  # a probability of resonance above this is an objection: common practice, no source
 _SHOWN = (2.5, 50.0, 97.5)
 _MOST_FACTORS, _MOST_RANKED = 4, 6
+_SHIFT = "Shift: by the derivative, while the quantity goes from its value to its upper limit."
 _ROUND_OFF = 1e-9  # of a figure: an interval below this is none
 
 
@@ -44,7 +45,9 @@ def scatter_parts(found: Scatter, units: UnitSystem) -> list[Block]:
     """The same without its title and the caution."""
     blocks: list[Block | None] = [*verdict(found), Facts(_facts(found)), quantity_table(found, units)]
     blocks += [frequency_table(found), damping_table(found), chance_table(found)]
-    blocks += [*level_blocks(found, units), ranking_table(found)]
+    blocks += level_blocks(found, units)
+    if (ranked := ranking_table(found)) is not None:
+        blocks += [ranked, Sentence(_SHIFT, "quiet")]
     blocks.append(Bullets(found.remarks) if found.remarks else None)
     return [block for block in blocks if block is not None]
 
