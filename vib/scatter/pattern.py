@@ -97,7 +97,7 @@ def _matrices(system: System) -> dict[str, Any]:
     if system.damping_law.material and system.anatomy is not None:
         for number, part in enumerate(system.anatomy.parts):
             if part.damping_ratio is not None:
-                own = part.stiffness
+                own: Any = part.stiffness
                 found[f"part {number}"] = own.matrix() if hasattr(own, "matrix") else own  # cells of a mesh
     return found
 
