@@ -153,3 +153,24 @@ def test_solids_in_each_other(tmp_path):
     nodes = np.array([[0, 0, 0], [1, 0, 0], [0, 1, 0], [0.3, 0.3, 1], [0.3, 0.3, -1], [0.4, 0.3, 0.8]])
     cells = np.array([[0, 1, 2, 3], [0, 2, 1, 4], [0, 1, 2, 5]])
     assert "cells 1, 2, 3 lie in each other" in said(tmp_path, nodes, [("tetra", cells)])
+
+
+def test_bricks_beside_tetrahedra(tmp_path):
+    """All nodes are shared, but a square meets two triangles: said, not stopped."""
+    one, two = cube("hexahedron", (2, 2, 2)), cube("tetra", (2, 2, 2))
+    nodes, blocks = merged(at(one, "hexahedron", (0, 0, 0)), at(two, "tetra", (1, 0, 0)))
+    write(tmp_path, nodes, blocks)
+    model = read_mesh_study(study_of(tmp_path, ""))[1]
+    assert any("faces of cells 5, 6, 7, 8 with four corners meet two triangles" in r for r in model.remarks)
+    write(tmp_path, *merged(at(one, "hexahedron", (0, 0, 0)), at(two, "tetra", (1.5, 0, 0))))
+    model = read_mesh_study(study_of(tmp_path, ""))[1]
+    assert not any("two triangles" in remark for remark in model.remarks)
+
+
+def test_braces_may_cross(tmp_path):
+    """A line through the end of another one, not joined to it."""
+    nodes = np.array([[0, 0, 0], [2, 0, 0], [1, 0, 0], [1, 1, 0]], dtype=float)
+    write(tmp_path, nodes, [("line", np.array([[0, 1], [2, 3]]))])
+    bar = '[sections.bar]\nshape = "rectangle"\nwidth = "10 mm"\nheight = "20 mm"\n'
+    region = '[mesh.regions.all]\nmaterial = "structural steel"\nsection = "bar"\nup = [0, 0, 1]\n'
+    read_mesh_study(study_of(tmp_path, "", bar + region))

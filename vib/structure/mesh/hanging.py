@@ -21,8 +21,11 @@ Numbers = NDArray[np.intp]
 _NEAR = 1e-4  # of the size of an edge or face: nodes nearer than this lie on it
 
 
-def check_fit(nodes_m: Array, patches: tuple[Patch, ...]) -> None:
+def check_fit(nodes_m: Array, patches: tuple[Patch, ...]) -> tuple[str, ...]:
     """Stop where neighbours do not share all the nodes on their common edges and faces, or lie in each other.
+
+    The remarks say where a quadrangle meets two triangles: all nodes are shared, but what is between them is
+    not quite the same on both sides.
 
     Cells of first and of second order are told apart by their edges; other nodes by where they lie. Inner
     faces of solids and inner edges of shells are shared by their corners, so that only the surface, the rims
@@ -50,6 +53,7 @@ def check_fit(nodes_m: Array, patches: tuple[Patch, ...]) -> None:
             f"({listed('cell', cells)}), so that the mesh is not joined there; divide both sides alike (what "
             "only touches and is not to be joined needs a gap)"
         )
+    return tuple(_split_faces(len(nodes_m), patches))
 
 
 def _check_twice(patches: tuple[Patch, ...]) -> None:
@@ -84,6 +88,27 @@ def _stop_where_more(rows: Numbers, cells: Numbers, most: int, what: str) -> Non
         first = np.flatnonzero(same)
         found = np.unique(cells[order[np.unique(first[:, None] + np.arange(most + 1))]])
         raise ModelError(f"mesh: {listed('cell', found)} {what}; leave out those that are there twice")
+
+
+def _split_faces(count: int, patches: tuple[Patch, ...]) -> Iterator[str]:
+    solids = [patch for patch in patches if _dimension(patch) == 3]
+    faces: dict[int, list[Numbers]] = {3: [], 4: []}
+    for patch, seen in zip(solids, faces_seen(count, solids), strict=True):
+        for face, alone in zip(FACES[patch.family.corners], seen.T, strict=True):
+            found = patch.connectivity[alone][:, face]
+            faces[len(face)].append(np.column_stack([np.sort(found, axis=1), patch.numbers[alone]]))
+    if not (faces[3] and faces[4]):
+        return
+    triangles, quads = (np.concatenate(faces[size]) for size in (3, 4))
+    halves = np.concatenate([np.delete(quads[:, :4], corner, axis=1) for corner in range(4)])
+    known = {tuple(nodes) for nodes in triangles[:, :3].tolist()}
+    split = np.array([tuple(nodes) in known for nodes in halves.tolist()], dtype=bool)
+    cells = np.unique(np.tile(quads[:, 4], 4)[split])
+    if len(cells):
+        yield (
+            f"mesh: faces of {listed('cell', cells, 4)} with four corners meet two triangles each: the mesh "
+            "is joined at its nodes only there; pyramids between them would join it all over"
+        )
 
 
 def _edges_of(patch: Patch) -> tuple[Numbers, Numbers]:
@@ -121,13 +146,13 @@ def _lying(
     nodes_m: Array, patches: tuple[Patch, ...], edges: list[tuple[Numbers, Numbers]]
 ) -> Iterator[tuple[Numbers, Numbers]]:
     """Nodes and the numbers of the cells that they lie on without belonging to them."""
-    loose, used = _candidates(len(nodes_m), patches, edges)
+    loose, meshed = _candidates(len(nodes_m), patches, edges)
     solids = [patch for patch in patches if _dimension(patch) == 3]
     seen = dict(zip(map(id, solids), faces_seen(len(nodes_m), solids), strict=True))
     for patch in patches:
         corners = patch.connectivity
         if _dimension(patch) == 1:
-            yield from _near(nodes_m, used, patch, np.arange(len(corners)), corners[:, [0, 1, 1]])
+            yield from _near(nodes_m, meshed, patch, np.arange(len(corners)), corners[:, [0, 1, 1]])
         elif _dimension(patch) == 2:
             for half in ((0, 1, 2), (0, 2, 3))[: patch.family.corners - 2]:
                 yield from _near(nodes_m, loose, patch, np.arange(len(corners)), corners[:, half])
@@ -146,15 +171,16 @@ def _dimension(patch: Patch) -> int:
 def _candidates(
     count: int, patches: tuple[Patch, ...], edges: list[tuple[Numbers, Numbers]]
 ) -> tuple[Numbers, Numbers]:
-    """Nodes on the surface of solids, on rims of shells and on lines; and all nodes that cells have."""
-    loose, used = np.zeros((2, count), dtype=bool)
+    """Nodes on the surface of solids, on rims of shells and on lines; and all nodes of shells and solids.
+
+    Lines may cross each other without being joined, as braces do.
+    """
+    loose, meshed = np.zeros((2, count), dtype=bool)
     rims = []
     solids = [(patch, own) for patch, own in zip(patches, edges, strict=True) if _dimension(patch) == 3]
     for patch, (ends, middles) in zip(patches, edges, strict=True):
-        used[patch.connectivity] = True
-        if _dimension(patch) == 1:
-            loose[patch.connectivity] = True
-        elif _dimension(patch) == 2:
+        (loose if _dimension(patch) == 1 else meshed)[patch.connectivity] = True
+        if _dimension(patch) == 2:
             rims.append(np.column_stack([np.sort(ends.reshape(-1, 2), axis=1), middles.ravel()]))
     for (patch, (_, middles)), seen in zip(
         solids, faces_seen(count, [patch for patch, _ in solids]), strict=True
@@ -169,7 +195,7 @@ def _candidates(
         lines, times = np.unique(np.concatenate(rims), axis=0, return_counts=True)
         on_rim = lines[times == 1].ravel()
         loose[on_rim[on_rim >= 0]] = True
-    return np.flatnonzero(loose), np.flatnonzero(used)
+    return np.flatnonzero(loose), np.flatnonzero(meshed)
 
 
 def _near(

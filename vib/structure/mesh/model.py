@@ -100,7 +100,7 @@ def read_mesh_study(study: Study) -> tuple[Study, MeshModel]:
     used, told = cleaning.clean_cells(nodes_m, used, offsets)
     remarks += told
     remarks += cleaning.check_nodes(nodes_m, used, file_nodes)
-    check_fit(nodes_m, used)
+    remarks += check_fit(nodes_m, used)
     found = find_points(study, raw, nodes_m, used)
     plain, model = _Resolving(study, nodes_m, used, found).resolved()
     return plain, replace(model, remarks=(*remarks, *found.remarks, *model.remarks))
