@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from types import ModuleType
 
-from tests.references import bands, beams, driven, forced, frames, lumped, severities, times
+from tests.references import bands, beams, driven, forced, frames, lumped, scattered, severities, times
 from tests.references.common import BUILDERS
 
 FAMILIES: dict[ModuleType, str] = {
@@ -16,6 +16,7 @@ FAMILIES: dict[ModuleType, str] = {
     driven: "Excitations",
     bands: "Screening",
     severities: "Severity",
+    scattered: "Tolerances",
 }
 
 
