@@ -235,6 +235,16 @@ def test_too_many_corners(monkeypatch):
         richer.richer([Group(FAMILIES["tetra"], cells, SHEAR_ONE)], np.zeros((len(nodes), 3), dtype=bool))
 
 
+def test_modes_that_change_places_and_modes_far_apart():
+    """The second mode falls by a third to below the first: the first listed is off by what separates them."""
+    squares = np.array([1.0, 1.2])
+    found = solid_errors._by_number(np.diag([0.01, 0.6]), squares)
+    left = squares**2 / (squares + found)
+    np.testing.assert_allclose(left, [1.2 / 1.5, 1 / 1.01])
+    wide = np.geomspace(1e-6, 1e12, 7)
+    np.testing.assert_allclose(solid_errors._by_number(np.diag(1e-6 * wide), wide), 1e-6 * wide, rtol=1e-8)
+
+
 def test_cells_that_are_folded():
     """A cell turned inside out: its stiffness is negative, which is said rather than counted."""
     nodes, cells = cube("tetra10", (2, 2, 2))

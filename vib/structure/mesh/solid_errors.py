@@ -34,10 +34,11 @@ from vib.system import Array
 REACHED = 1 / 2
 ENOUGH = 0.15  # of the energy may be left to extrapolation
 MOST_STEPS = 10
+APART = 100.0  # ratio of squared frequencies
 LEAST = np.finfo(float).tiny
 DISTORTED = "Some cells are so distorted that richer ones would have no stiffness."
 _CHUNK_VALUES = 1_000_000
-_KEPT_BYTES = 500_000_000
+_KEPT_BYTES = 1_000_000_000
 _VECTOR_BYTES = 1_500_000_000
 
 
@@ -92,10 +93,17 @@ def solid_errors(
 
 
 def _by_number(gains: Array, squares: Array) -> Array:
-    """What each mode (m,) gains once the modes are in order again, from gains between modes (m, m)."""
-    softer = np.diag(1 / squares) + gains / np.outer(squares, squares)
-    left = 1 / np.linalg.eigvalsh(softer)[::-1]
-    return np.asarray(squares * np.maximum(squares / left - 1, 0.0))
+    """What each mode (m,) gains once the modes are in order again, from gains between modes (m, m).
+
+    In groups, because far apart no modes change places, and the lowest would drown the highest in round-off.
+    """
+    found = np.zeros(len(squares))
+    for some in np.split(np.arange(len(squares)), np.flatnonzero(squares[1:] > APART * squares[:-1]) + 1):
+        own = squares[some]
+        softer = np.diag(1 / own) + gains[np.ix_(some, some)] / np.outer(own, own)
+        left = 1 / np.linalg.eigvalsh(softer)[::-1]
+        found[some] = own * np.maximum(own / left - 1, 0.0)
+    return found
 
 
 class _Level:
