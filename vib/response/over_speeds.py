@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import time
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
@@ -10,7 +11,8 @@ import numpy as np
 from numpy.typing import ArrayLike
 
 from vib.drive import Drive, drive
-from vib.errors import ModelError
+from vib.errors import ModelError, in_own_words
+from vib.progress import tell
 from vib.response.at_speeds import AtSpeeds, at_speeds
 from vib.response.exponential import Array
 from vib.response.frequency import Channel, Channels, channels, ground_axis, ground_motion
@@ -39,8 +41,10 @@ if TYPE_CHECKING:
 
 _MOST_POINTS = 4000
 _CHUNK = 4_000_000  # complex numbers at a time
+_TOLD = 128  # points after which the progress is told
 
 
+@in_own_words
 def run_up(
     given: Study | System,
     *,
@@ -155,9 +159,11 @@ class _Task:
         error = np.zeros((k, len(lines), p))
         rows = p + 4 * q
         columns = len(self.drive.inputs) + (0 if self.ride is None else 6)
-        step = max(1, _CHUNK // max(1, rows * columns))
-        for group in self.drive.groups():
+        step = max(1, min(_TOLD, _CHUNK // max(1, rows * columns)))
+        groups, began = self.drive.groups(), time.perf_counter()
+        for count, group in enumerate(groups):
             for first in range(0, k, step):
+                _tell(count + first / k, len(groups), k, began)
                 piece = slice(first, first + step)
                 omega = 2 * np.pi * self.drive.frequency_hz(lines[group[0]], speeds[piece])
                 values, bound = self._answer(speeds[piece], omega)
@@ -212,6 +218,12 @@ class _Task:
         )
         whole = np.sqrt(((rates[:, :, None] * both) ** 2).sum(axis=1))
         return np.concatenate([both.reshape(len(both), -1), whole], axis=1)
+
+
+def _tell(done: float, groups: int, points: int, began: float) -> None:
+    share = done / groups
+    left = (time.perf_counter() - began) * (1 / share - 1) if share else None
+    tell(f"run-up at {points} speeds", share, left)
 
 
 def _task(
