@@ -142,11 +142,9 @@ class Solid(Family):
         found: Array = (density[:, None] * determinant) @ products
         return found
 
-    def stresses(
-        self, coordinates: Array, properties: Properties, displacements: Array, rule: Rule | None = None
-    ) -> Stresses:
-        """See `Family.stresses`; at the points of ``rule`` if one is given."""
-        rule, count = rule or self.stress_rule, len(coordinates)
+    def stresses(self, coordinates: Array, properties: Properties, displacements: Array) -> Stresses:
+        """See `Family.stresses`."""
+        rule, count = self.stress_rule, len(coordinates)
         lame, shear = properties.lame(count)
         nodal, extra = self.gradients(rule.points), self.extra_gradients(rule.points)
         determinant, gradients = self.mapped(nodal, extra, coordinates)
