@@ -1,4 +1,4 @@
-"""The quadratic eigenproblem of large sparse systems: eigenvalues nearest zero by shift-invert Arnoldi.
+"""The quadratic eigenproblem of large sparse systems: eigenvalues nearest zero by shift and invert.
 
 With states (q, v = q'), (A - s B)^-1 B needs only S = s^2 M + s (C + G) + K factored once, in real arithmetic
 (F. Tisseur, K. Meerbergen, SIAM Review 43 (2001) 235-286, section 5.2): for B (f, g) the solution is
@@ -12,7 +12,6 @@ from dataclasses import dataclass
 
 import numpy as np
 import scipy.linalg
-import scipy.sparse.linalg as sparse_linalg
 
 from vib.errors import AccuracyError
 from vib.massless import root_scale
@@ -21,11 +20,13 @@ from vib.solve.factor import Factor, SingularFactorError, factorise
 from vib.solve.pairs import Pairs, Quadratic, damped_from_pairs, improve
 from vib.solve.shift_invert import Shifted, shifted
 from vib.solve.stability import is_passive
+from vib.solve.two_level import BLOCK, largest, noise
 from vib.solve.undamped import CANCELLATION, EPS, Array, Matrix, Undamped
 from vib.solve.winding import Determinant, MissingError, affordable, missing_within, widest_gap
 
 # Pivots of a stiffness scaled to a unit diagonal below this leave no digit of the slowest eigenvalues.
 SINGULAR = 1e-14
+SPURIOUS = 1e-4  # residual over its terms beyond which a pair is noise of eigenvalues at infinity
 _NEXT_TO_NOTHING = 1e-11  # of the diagonal: eigenvalues of a damping matrix below this are round-off
 
 
@@ -61,11 +62,11 @@ def sparse_quadratic(
         The factorisation or the iteration failed, or the stiffness is unsymmetric and singular.
     """
     problem = _Problem.of(mass, linear, stiffness, undamped, law)
-    values, shapes = _search(problem, count, transposed=False)
+    values, shapes = _search(problem, stiffness, count, transposed=False)
     if problem.symmetric:
         duals = shapes.conj()
     else:
-        others, found = _search(problem, count, transposed=True)
+        others, found = _search(problem, stiffness, count, transposed=True)
         # A left vector of l is the conjugate of a right vector of the transposed problem.
         duals = found[:, _partners(values, others)].conj()
     base = shifted(mass, (stiffness + stiffness.T) / 2)
@@ -196,7 +197,7 @@ class _Problem:
     def velocity_force(self, motion: Array, *, transposed: bool) -> Array:
         """(C + G + law) @ motion."""
         matrix = self.linear.T if transposed else self.linear
-        return np.asarray(matrix @ motion + self.held @ (self.rates * (self.held.T @ motion)))
+        return np.asarray(matrix @ motion + self.held @ (self.rates[:, None] * (self.held.T @ motion)))
 
     def projected(self, motion: Array, speed: Array, *, transposed: bool) -> tuple[Array, Array]:
         """The state without its part at eigenvalue zero: coasting motions, and the rest of dragged ones."""
@@ -221,7 +222,7 @@ def _split(linear: Matrix, still: Array) -> tuple[Array, Array]:
     return still @ turned[free].T, still @ turned[~free].T
 
 
-def _search(problem: _Problem, count: int, *, transposed: bool) -> tuple[Complex, Complex]:
+def _search(problem: _Problem, stiffness: Matrix, count: int, *, transposed: bool) -> tuple[Complex, Complex]:
     """Eigenvalues nearest the shift and displacement shapes, one of each pair, ``count`` or more."""
     size = problem.mass.shape[0]
     solved = problem.factor.solve(problem.held, transposed=transposed) if problem.rates.size else problem.held
@@ -233,27 +234,34 @@ def _search(problem: _Problem, count: int, *, transposed: bool) -> tuple[Complex
             return found
         return np.asarray(found - problem.shift * (solved @ np.linalg.solve(small, problem.held.T @ found)))
 
-    def step(state: Array) -> Array:
-        motion, speed = state[:size] / problem.weight, state[size:] * (problem.speed / problem.weight)
+    def step(motion: Array, speed: Array) -> tuple[Array, Array]:
+        motion, speed = motion / weight, speed * (problem.speed / weight)
         motion, speed = problem.projected(motion, speed, transposed=transposed)
         force = problem.velocity_force(motion, transposed=transposed)
         force = force + problem.mass @ (speed + problem.shift * motion)
         found = -solve(force)
         motion, speed = problem.projected(found, motion + problem.shift * found, transposed=transposed)
-        return np.concatenate([motion * problem.weight, speed * (problem.weight / problem.speed)])
+        return motion * weight, speed * (weight / problem.speed)
 
-    operator = sparse_linalg.LinearOperator((2 * size, 2 * size), matvec=step, dtype=np.float64)
-    start = step(np.random.default_rng(2).standard_normal(2 * size))
-    wanted = min(2 * count + 4, 2 * size - 2)
-    try:
-        inverse, vectors = sparse_linalg.eigs(
-            operator, k=wanted, which="LM", v0=start, tol=0, ncv=min(2 * size, 2 * wanted + 20)
-        )
-    except sparse_linalg.ArpackError as fault:
-        raise AccuracyError(f"The Arnoldi process stopped: {fault}.") from fault
-    kept = np.abs(inverse) > 1e3 * EPS * np.abs(inverse).max()  # the rest belongs to projected-out motions
-    values, shapes = problem.shift + 1 / inverse[kept], vectors[:size, kept] / problem.weight[:, None]
-    return _upright(values, shapes)
+    weight = problem.weight[:, None]
+    start = np.random.default_rng(2).standard_normal((size, BLOCK))
+    found = largest(step, step(start, start)[0], problem.still * weight, min(2 * count + 4, 2 * size))
+    kept = ~noise(found.values)  # the rest belongs to projected-out motions and to those without mass
+    values, shapes = problem.shift + 1 / found.values[kept], found.motions[:, kept] / weight
+    true = _solves(problem, stiffness.T if transposed else stiffness, values, shapes, transposed=transposed)
+    return _upright(values[true], shapes[:, true])
+
+
+def _solves(
+    problem: _Problem, stiffness: Matrix, values: Complex, shapes: Complex, *, transposed: bool
+) -> np.ndarray[tuple[int], np.dtype[np.bool_]]:
+    """Which pairs (m,) are near solutions at all."""
+    heavy, stiff = problem.mass @ shapes, stiffness @ shapes
+    force = problem.velocity_force(shapes, transposed=transposed)
+    off = np.abs(values**2 * heavy + values * force + stiff) / problem.weight[:, None]
+    terms = np.abs(values**2 * heavy) + np.abs(values * force) + np.abs(stiff)
+    terms = terms / problem.weight[:, None]
+    return np.asarray(np.linalg.norm(off, axis=0) <= SPURIOUS * np.linalg.norm(terms, axis=0))
 
 
 def _upright(values: Complex, shapes: Complex) -> tuple[Complex, Complex]:

@@ -87,7 +87,8 @@ class Reduction:
         while True:
             if self.space.done >= count:
                 found = self.space.coordinates()
-                good = int(np.argmin(np.append(found.residuals <= SHAPE * found.theta, False)))
+                sure = (found.residuals <= SHAPE * found.theta) & (found.theta > NO_MASS * found.theta[0])
+                good = int(np.argmin(np.append(sure, False)))
                 if good >= count:
                     return self._modes(found, good)
             self.grow()

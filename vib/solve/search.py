@@ -347,7 +347,10 @@ def _quadratic(
         )
     except MissingError as fault:
         if fault.number < 0:
-            raise
+            raise AccuracyError(
+                "More eigenvalues were found than there can be: with these matrices they hang on round-off, "
+                "and none of them can be trusted."
+            ) from fault
         return None, False
     return found, ask.limit is None
 
