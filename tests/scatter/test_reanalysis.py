@@ -291,7 +291,7 @@ def test_equal_modes_in_every_sample_are_no_missing_ones():
     read = vib.read("models/bolted_frame.toml")
     bounds = {path: (tolerance.low, tolerance.high) for path, tolerance in read.tolerances.items()}
     made = Family.from_study(read, bounds, count=8)
-    assert np.isclose(*made.modes.frequencies_hz[6:8], rtol=1e-9)
+    assert np.ptp(made.modes.frequencies_hz[6:8]) < 1e-6
     reanalysis = Reanalysis.build(made)
     assert reanalysis.basis_size > 0
     assert not reanalysis.evaluate(samples(made, 50)).full.any()
