@@ -30,11 +30,11 @@ MARGIN = (
 )
 SNAPSHOTS = 32  # samples whose modes the basis is made from
 TRIED = 250  # samples at which it is tried
-ROUNDS, ADDED = 5, 8  # how often it is widened, and by the modes of how many samples
+ROUNDS, ADDED = 8, 6  # how often it is widened, every other time by the modes of how many samples
 GOOD = 0.01  # part of the samples tried that may be worse
 EQUAL = 1e-6  # relative difference of nominal frequencies that are the same
 COUPLED = 1e-6  # damping beside the diagonal, against the diagonal, that leaves shapes as they are
-CHECKS = 6  # samples that are rebuilt and solved in full to compare
+CHECKS = 4  # samples that are rebuilt and solved in full to compare
 SAFETY = 2.0  # times the largest ratio of true and estimated errors seen
 USUAL = 1.5  # that ratio as far as is known before
 MOST_WRONG = 50.0  # that ratio beyond which the estimate is not believed
@@ -170,15 +170,16 @@ class _Making:
             shapes.append(self._complex(metric, self.family.nominal))
             shapes += [self._dragged(metric, sample) for sample in self.training[:SNAPSHOTS]]
             evaluator = reduced(energy)
-        for _ in range(ROUNDS):
+        for number in range(ROUNDS):
             found, sound = replace(evaluator, tolerance=self.tolerance / MARGIN).reduced(tried)
             if sound.mean() >= 1 - GOOD:
                 break
             relative = found.errors_hz / np.where(found.frequencies_hz > 0, found.frequencies_hz, np.inf)
-            worst = np.argsort(np.where(sound, 0.0, relative.max(axis=1)))[::-1][:ADDED]
-            find = self._undamped if proportional else self._complex
-            shapes += [find(metric, sample) for sample in tried[worst]]
-            energy /= 2  # what is missing may be less than was thought to matter
+            energy /= 3  # what is missing may be there already, less than was thought to matter
+            if number % 2:
+                worst = np.argsort(np.where(sound, 0.0, relative.max(axis=1)))[::-1][:ADDED]
+                find = self._undamped if proportional else self._complex
+                shapes += [find(metric, sample) for sample in tried[worst]]
             evaluator = reduced(energy)
         evaluator = self._calibrated(self._settled(evaluator))
         size = evaluator.model.rank if evaluator.model else 0
