@@ -85,7 +85,7 @@ class Evaluator:
         return Batch.joined([self._block(block) for block in blocks or [samples]])
 
     def _block(self, samples: Array) -> Batch:
-        if self.model is None:
+        if self.model is None or self.model.rank < len(self.nominal):  # of overdamped motions there are two
             return self.in_full(samples)
         slack = 1e-9 * np.ptp(self.bounds, axis=1)
         inside = (samples >= self.bounds[:, 0] - slack) & (samples <= self.bounds[:, 1] + slack)

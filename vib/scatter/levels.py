@@ -17,6 +17,7 @@ import numpy as np
 from vib.response.over_speeds import run_up
 from vib.scatter.batch import Array, Batch
 from vib.scatter.evaluator import Evaluator
+from vib.scatter.sampling import Factors
 from vib.scatter.statistics import Distribution, Estimate, distribution, probability
 from vib.severity import judge
 from vib.severity.judging import judged_outputs, main_frequency
@@ -28,6 +29,7 @@ if TYPE_CHECKING:
     from vib.study import Study
     from vib.study.severity import Severity as Table
 
+LOW = 0.025  # share of the values below the low end of a factor, and above its high one
 CHUNK = 16  # samples that are handed out at a time: one takes some hundredths of a second
 # what stands in the last axis of `Batch.levels`
 VELOCITY, DISPLACEMENT, WHOLE_VELOCITY, WHOLE_DISPLACEMENT = range(4)
@@ -84,10 +86,13 @@ class Levels:
 
     ``velocity_rms_m_s`` (n, q) of every sample and output, in the band of the standard; ``zone_c`` and
     ``zone_d`` are the probabilities that any output is in zone C or worse, and in zone D; ``nominal`` the
-    judgement of the nominal structure in words, "" without [severity].
+    judgement of the nominal structure in words, "" without [severity]. ``ends_m_s`` (f, 2, q) are the levels
+    while one of the ``factors`` is where 2.5 % of its values lie below, and above, the others in the middle.
     """
 
     velocity_rms_m_s: Array
+    factors: tuple[str, ...]
+    ends_m_s: Array
     outputs: tuple[Level, ...]
     zone_c: Estimate | None
     zone_d: Estimate | None
@@ -104,6 +109,14 @@ class Levels:
         return {
             "samples": self.samples,
             "outputs": [level.to_dict() for level in self.outputs],
+            "one_at_a_time": [
+                {
+                    "factor": factor,
+                    "velocity_rms_at_low_m_s": low.tolist(),
+                    "velocity_rms_at_high_m_s": high.tolist(),
+                }
+                for factor, (low, high) in zip(self.factors, self.ends_m_s, strict=True)
+            ],
             **{name: None if one is None else one.to_dict("probability") for name, one in zones.items()},
             "nominal": self.nominal,
         }
@@ -214,10 +227,21 @@ def predicting(study: Study, evaluator: Evaluator) -> Predicting | None:
     )
 
 
-def levels(asked: Predicting, batch: Batch) -> Levels:
-    """What the samples of a batch with levels say."""
-    values, table = batch.levels, asked.task.table
-    assert values is not None
+def ends(factors: Factors) -> Array:
+    """Values (2 f, d) with one factor after the other at its low and its high end, others in the middle."""
+    count = len(factors.names)
+    points = np.full((count, 2, count), 0.5)
+    for factor in range(count):
+        points[factor, :, factor] = LOW, 1 - LOW
+    return factors.values(points.reshape(2 * count, count))
+
+
+def levels(asked: Predicting, factors: Factors, batch: Batch) -> Levels:
+    """What a batch says that holds the samples, and behind them the `ends`."""
+    every, table = batch.levels, asked.task.table
+    assert every is not None
+    count = len(factors.names)
+    values, last = every[: -2 * count], every[-2 * count :, :, VELOCITY]
     zones = np.zeros(values.shape[:2], dtype=np.intp)
     for column, limits in enumerate(asked.boundaries):
         own = values[:, column]
@@ -237,6 +261,8 @@ def levels(asked: Predicting, batch: Batch) -> Levels:
     judged = any(asked.boundaries)
     return Levels(
         values[:, :, VELOCITY],
+        factors.names,
+        last.reshape(count, 2, -1),
         outputs,
         probability(worst >= 2) if judged else None,
         probability(worst >= 3) if judged else None,

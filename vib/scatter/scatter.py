@@ -14,7 +14,7 @@ from vib.scatter.batch import Array, Batch
 from vib.scatter.chances import Chances, chances
 from vib.scatter.engine import Progress, Where, calmly, limits_of, reanalysis_of
 from vib.scatter.family import Family
-from vib.scatter.levels import Levels, levels, predicting
+from vib.scatter.levels import Levels, ends, levels, predicting
 from vib.scatter.ranking import Effects, effects
 from vib.scatter.reanalysis import Reanalysis
 from vib.scatter.sampling import Design, Factors, Method, is_power_of_two, unit_points
@@ -26,6 +26,7 @@ if TYPE_CHECKING:
     from vib.study import Study
 
 USUAL_SAMPLES, USUAL_LEVELS = 1024, 128
+HALF = 0.5  # modal assurance below which a mode is another one
 MOST_CORNERS = 8  # quantities of one table that are tried at all corners
 LEAST_ROWS, MOST_ROWS = 64, 1024  # of the design that ranks the factors
 
@@ -199,7 +200,7 @@ def scatter(
         family = Family.from_study(study, bounds, **limits_of(study, count, up_to, band))
         reanalysis = reanalysis_of(family, values)
         found = where.run(reanalysis.evaluator, everything, "samples")
-        predicted = _predicted(study, reanalysis, values[:level_samples], where)
+        predicted = _predicted(reanalysis, factors, values[:level_samples], where)
         slopes = sensitivities(family)
     modes, batch = family.modes, _part(found, slice(0, samples))
     met = chances(study, modes, factors.paths, values, batch, band=band) if study.excitations else None
@@ -224,10 +225,13 @@ def scatter(
     )
 
 
-def _predicted(study: Study, reanalysis: Reanalysis, values: Array, where: Where) -> Levels | None:
+def _predicted(reanalysis: Reanalysis, factors: Factors, values: Array, where: Where) -> Levels | None:
     """Predicted vibration of some samples (N, d); None where nothing states a force, or of no samples."""
-    asked = predicting(study, reanalysis.evaluator) if len(values) else None
-    return None if asked is None else levels(asked, where.run(asked.task, values, "levels of samples"))
+    asked = predicting(reanalysis.evaluator.builder.study, reanalysis.evaluator) if len(values) else None
+    if asked is None:
+        return None
+    batch = where.run(asked.task, np.vstack([values, ends(factors)]), "levels of samples")
+    return levels(asked, factors, batch)
 
 
 def _rows(samples: int) -> int:
@@ -314,6 +318,12 @@ def _remarks(samples: int, method: Method, batch: Batch, met: Chances | None) ->
         said.append(
             f"In {swapped} of {samples} samples modes stand in another order of frequency than nominally; "
             "each is followed by its shape."
+        )
+    mixed = int(np.count_nonzero(np.nanmin(batch.likeness, axis=1) < HALF))
+    if mixed:
+        said.append(
+            f"In {mixed} of {samples} samples a mode has less than half of the nominal shape that it is "
+            "followed by: what is said of it alone depends on the naming, what is said of any mode does not."
         )
     lacking = int(np.count_nonzero(np.isnan(batch.frequencies_hz).any(axis=1)))
     if lacking:

@@ -18,19 +18,17 @@ from vib.show.blocks import (
     text_column,
     unit_label,
 )
-from vib.show.numbers import MISSING, aligned, joined, significant
+from vib.show.numbers import MISSING, significant
+from vib.show.tables.levels import SELDOM, SHOWN, level_blocks
 from vib.show.tables.quantities import entry_words, factor_words, quantity_texts
 from vib.show.words import CAUTION, caution
-from vib.units import UnitSystem, shown, shown_unit
+from vib.units import UnitSystem
 
 if TYPE_CHECKING:
     from vib.scatter.chances import Chance
-    from vib.scatter.levels import Passing
     from vib.scatter.scatter import Scatter
     from vib.scatter.statistics import Distribution, Estimate
 
-SELDOM = 0.05  # a probability of resonance above this is an objection: common practice, no source
-_SHOWN = (2.5, 50.0, 97.5)
 _MOST_FACTORS, _MOST_RANKED = 4, 6
 _SHIFT = "Shift: by the derivative, while the quantity goes from its value to its upper limit."
 _ROUND_OFF = 1e-9  # of a figure: an interval below this is none
@@ -151,13 +149,13 @@ def damping_table(found: Scatter) -> Table | None:
 
 
 def _columns(unit: str) -> tuple[Column, ...]:
-    pairs = [(Column("median" if p == 50 else f"{p:g} %", unit), Column("±", unit)) for p in _SHOWN]
+    pairs = [(Column("median" if p == 50 else f"{p:g} %", unit), Column("±", unit)) for p in SHOWN]
     return Column("mode"), Column("nominal", unit), *(column for pair in pairs for column in pair)
 
 
 def _figures(own: Distribution, scale: float) -> tuple[str, ...]:
     found = [significant(scale * own.nominal, 4)]
-    for percent in _SHOWN:
+    for percent in SHOWN:
         estimate = own.percentiles[percent]
         found += [significant(scale * estimate.value, 4)]
         half = (estimate.high - estimate.low) / 2
@@ -205,76 +203,6 @@ def _tone(row: Chance) -> Tone:
     if not row.drivable:
         return "quiet"
     return "bad" if row.probability.value > SELDOM else "plain"
-
-
-def level_blocks(found: Scatter, units: UnitSystem) -> list[Block]:
-    """Predicted vibration at the worst running speed, with the source of its limits."""
-    if found.levels is None:
-        return []
-    unit = shown_unit("velocity", units)
-    rows = []
-    tones: list[Tone] = []
-    for level in found.levels.outputs:
-        own = level.velocity_m_s
-        at = (own.nominal, *(own.percentiles[percent].value for percent in _SHOWN))
-        figures = aligned([float(shown(value, "velocity", units)) for value in at], _largest(found, units), 3)
-        chances = [MISSING if one is None else _interval(one) for one in (level.zone_c, level.zone_d)]
-        rows.append((level.output, *figures, *chances))
-        tones.append("plain" if level.zone_c is None or level.zone_c.value <= SELDOM else "bad")
-    columns = (
-        text_column("output"),
-        Column("nominal", unit),
-        *(Column("median" if p == 50 else f"{p:g} %", unit) for p in _SHOWN),
-        text_column("zone C or worse, %"),
-        text_column("zone D, %"),
-    )
-    title = f"R.m.s. velocity at the worst running speed, {found.levels.samples} samples"
-    blocks: list[Block] = [Table(title, columns, tuple(rows), tones=tuple(tones))]
-    sources = dict.fromkeys(one.source for level in found.levels.outputs for one in level.boundaries)
-    if sources:
-        blocks.append(Sentence(f"Zones by {joined(list(sources))}; the support as of the nominal structure."))
-    if own_rows := [
-        (
-            level.output,
-            _OWN[limit.quantity][0],
-            _limit(limit, units),
-            limit.source,
-            _interval(limit.probability),
-        )
-        for level in found.levels.outputs
-        for limit in level.own
-    ]:
-        own_columns = (
-            text_column("output"),
-            text_column("quantity"),
-            Column("limit"),
-            text_column("by"),
-            text_column("above it, %"),
-        )
-        blocks.append(Table("Probability of passing limits of your own", own_columns, tuple(own_rows)))
-    return blocks
-
-
-_OWN = {
-    "velocity_rms": ("r.m.s. velocity", "velocity"),
-    "displacement_rms": ("r.m.s. displacement", "length"),
-}
-
-
-def _limit(limit: Passing, units: UnitSystem) -> str:
-    kind = _OWN[limit.quantity][1]
-    return f"{significant(float(shown(limit.limit, kind, units)), 3)} {shown_unit(kind, units)}"
-
-
-def _largest(found: Scatter, units: UnitSystem) -> float:
-    assert found.levels is not None
-    every = [level.velocity_m_s.percentiles[97.5].value for level in found.levels.outputs]
-    return float(shown(max([value for value in every if np.isfinite(value)], default=0.0), "velocity", units))
-
-
-def _interval(estimate: Estimate) -> str:
-    low, high = significant(100 * estimate.low, 3), significant(100 * estimate.high, 3)
-    return f"{significant(100 * estimate.value, 3)} ({low} to {high})"
 
 
 def ranking_table(found: Scatter) -> Table | None:
