@@ -103,6 +103,22 @@ def test_levels_over_a_range_of_speeds_find_the_resonance(studies):
     assert level.velocity_m_s.most >= (1 - 1e-3) * single["head y"][0]
 
 
+def test_one_quantity_at_its_ends(studies):
+    """2.5 % of the values of an even quantity lie below low + 0.025 (high - low)."""
+    study = studies(DRIVEN)
+    found = scatter(study, samples=4, level_samples=2, ranking=False).levels
+    assert found is not None
+    assert found.samples == 2
+    middle = {path: (row.low + row.high) / 2 for path, row in study.tolerances.items()}
+    for factor, path in enumerate(found.factors):
+        row = study.tolerances[path]
+        for end, share in enumerate((0.025, 0.975)):
+            single = judged(study.varied({**middle, path: row.low + share * (row.high - row.low)}))
+            for column, level in enumerate(found.outputs):
+                ours = found.ends_m_s[factor, end, column]
+                assert ours == pytest.approx(single[level.output][0], rel=2e-3, abs=1e-9)
+
+
 def test_own_limits_have_a_probability(studies):
     study = studies(DRIVEN)
     found = scatter(study, samples=32, seed=2, level_samples=32, ranking=False)
