@@ -31,6 +31,7 @@ SPARE = 4  # modes followed beyond those asked for, so that none leaves the set 
 NEARLY = 0.05  # damping ratio below which a curve may cross zero between two speeds
 STILL = 1e-4  # of the top speed: shapes at rest are told apart from here
 PRECISION = 1e-12
+TURN = 2 * np.pi
 
 
 @dataclass(frozen=True, eq=False)
@@ -316,8 +317,8 @@ class _Curves:
             for p in np.flatnonzero((off[:-1] > 0) != (off[1:] > 0)).tolist():
                 if not (swings[p] and swings[p + 1]):
                     continue
-                near = self._points[p : p + 2]
-                at = self._root(*near, mode, lambda value, speed: value.imag / (2 * np.pi) - order * speed)
+                start, stop = self._points[p], self._points[p + 1]
+                at = self._root(start, stop, mode, lambda value, speed: value.imag / TURN - order * speed)
                 value = at.values[mode]
                 rows.append(
                     Critical(

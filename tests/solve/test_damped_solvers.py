@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import mpmath
 import numpy as np
 import pytest
 import scipy.sparse as sparse
@@ -166,3 +167,72 @@ def test_a_dashpot_between_two_places_of_a_free_structure():
     assert modes.rigid_body_count == 1
     assert modes.complete_below_hz is not None
     assert (modes.backward_errors <= 1e-10).all()
+
+
+@pytest.mark.parametrize("mass_unit", [1e-12, 1.0, 1e9])
+@pytest.mark.parametrize("time_unit", [1e-6, 1.0, 1e3])
+def test_the_scaling_of_states_leaves_no_unit(mass_unit, time_unit):
+    """Against one factor for all states (Fan, Lin & Van Dooren 2004), which loses digits of soft modes here.
+
+    A chain of springs of 1 N/m and of 1e12 N/m; the exact eigenvalues from 50 digits (mpmath).
+    """
+    size = 6
+    springs = np.array([1.0, 2.0, 1.0, 1e12, 3e12, 1e12, 2e12])
+    stiffness = np.diag(springs[:-1] + springs[1:]) - np.diag(springs[1:-1], 1) - np.diag(springs[1:-1], -1)
+    mass, damping = np.eye(size), np.diag([0.2] + [0.0] * (size - 1))
+    mixed = np.ix_([3, 0, 5, 1, 4, 2], [3, 0, 5, 1, 4, 2])  # numbered as they come, not from soft to stiff
+    stiffness, damping = stiffness[mixed], damping[mixed]
+    modes = System(
+        mass=mass_unit * mass,
+        damping=mass_unit / time_unit * damping,
+        stiffness=mass_unit / time_unit**2 * stiffness,
+    ).modes()
+    exact = _in_fifty_digits(damping, stiffness)
+    distance = np.abs(modes.eigenvalues[:, None] * time_unit - exact).min(axis=1)
+    assert (distance <= 1e-13 * np.abs(modes.eigenvalues) * time_unit).all()
+    assert (modes.backward_errors <= 1e-12).all()
+    gamma = np.sqrt(np.linalg.norm(stiffness, 2))
+    delta = 2 / (np.linalg.norm(stiffness, 2) + np.linalg.norm(damping, 2) * gamma)
+    scaled = [gamma**2 * delta * mass, gamma * delta * damping, delta * stiffness]
+    zero, one = np.zeros((size, size)), np.eye(size)
+    first = np.block([[one, zero], [zero, scaled[0]]])
+    second = np.block([[zero, one], [-scaled[2], -scaled[1]]])
+    plain = gamma * np.linalg.eigvals(np.linalg.solve(first, second))
+    assert max(np.abs(plain - value).min() / abs(value) for value in exact) > 1e-11
+
+
+def _in_fifty_digits(damping, stiffness):
+    mpmath.mp.dps = 50
+    size = len(stiffness)
+    state = mpmath.zeros(2 * size)
+    for row in range(size):
+        state[row, size + row] = 1
+        for column in range(size):
+            state[size + row, column] = -float(stiffness[row, column])  # of unit masses
+            state[size + row, size + column] = -float(damping[row, column])
+    values = mpmath.eig(state, left=False, right=False)
+    return np.array([complex(value) for value in values])
+
+
+def test_shapes_of_soft_and_stiff_parts_have_digits_of_their_own():
+    """Stiffness spread 1e12, dense: backward error on freedoms of unit stiffness, so that soft rows count."""
+    size = 8
+    springs = np.where(np.arange(size + 1) < 4, 1.0, 1e12)
+    stiffness = np.diag(springs[:-1] + springs[1:]) - np.diag(springs[1:-1], 1) - np.diag(springs[1:-1], -1)
+    for damping in (np.zeros((size, size)), np.diag([0.3] + [0.0] * (size - 1))):
+        modes = System(mass=np.eye(size), damping=damping, stiffness=stiffness).modes()
+        assert (modes.backward_errors <= 1e-12).all()
+        scale = 1 / np.sqrt(np.diag(stiffness))
+        soft = np.abs(modes.eigenvalues) < 10
+        for value, shape in zip(modes.eigenvalues[soft], modes.shapes[:, soft].T, strict=True):
+            residual = value**2 * shape + value * (damping @ shape) + stiffness @ shape
+            size_of = 2 * np.linalg.norm(shape / scale)
+            assert np.linalg.norm(scale * residual) <= 1e-12 * size_of
+
+
+def test_a_pair_that_is_just_defective():
+    """Circulatory forces at the border of flutter: one shape for both eigenvalues, to full accuracy."""
+    modes = System(mass=np.eye(2), stiffness=[[2.0, 0.1], [-0.1, 2.2]], unsymmetric=True).modes()
+    assert (modes.backward_errors <= 1e-12).all()
+    distance = np.abs(np.abs(modes.eigenvalues) - np.sqrt(2.1)) / (2 * np.pi)
+    assert (distance <= modes.errors_hz).all()

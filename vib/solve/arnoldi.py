@@ -9,6 +9,7 @@ structure, whose rigid-body motions are projected out exactly.
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 import scipy.linalg
@@ -194,7 +195,7 @@ class _Problem:
             factor=factor,
         )
 
-    def velocity_force(self, motion: Array, *, transposed: bool) -> Array:
+    def velocity_force(self, motion: Any, *, transposed: bool) -> Any:
         """(C + G + law) @ motion."""
         matrix = self.linear.T if transposed else self.linear
         return np.asarray(matrix @ motion + self.held @ (self.rates[:, None] * (self.held.T @ motion)))
@@ -246,7 +247,8 @@ def _search(problem: _Problem, stiffness: Matrix, count: int, *, transposed: boo
     weight = problem.weight[:, None]
     start = np.random.default_rng(2).standard_normal((size, BLOCK))
     found = largest(step, step(start, start)[0], problem.still * weight, min(2 * count + 4, 2 * size))
-    kept = ~noise(found.values)  # the rest belongs to projected-out motions and to those without mass
+    # noise belongs to motions that were projected out and to those without mass
+    kept = np.logical_not(noise(found.values))
     values, shapes = problem.shift + 1 / found.values[kept], found.motions[:, kept] / weight
     true = _solves(problem, stiffness.T if transposed else stiffness, values, shapes, transposed=transposed)
     return _upright(values[true], shapes[:, true])

@@ -1,22 +1,29 @@
 """Backward error of eigenpairs: how little the matrices must change for a pair to be exact.
 
 |T(s) x| / ((|s|^2 |M| + |s| |C + G| + |K|) |x|) (F. Tisseur, Linear Algebra Appl. 309 (2000) 339-361,
-theorem 1), on freedoms scaled to unit stiffness, so that it does not change with units. Dense pairs whose
-terms cancel to less than their residual are refined by inverse iteration.
+theorem 1), on freedoms scaled to unit stiffness, so that it does not change with units.
 """
 
 from __future__ import annotations
 
+from dataclasses import replace
+from typing import Any
+
 import numpy as np
 import scipy.linalg
+from numpy.typing import NDArray
 
-from vib.massless import root_scale
+from vib.massless import dense, root_scale
 from vib.solve.damped import Complex, Damped
 from vib.solve.damping import ModalDamping
+from vib.solve.pairs import normalised
 from vib.solve.undamped import Array, Matrix
 
-ENOUGH = 1e-12  # residual over the largest term of a dense pair
+ENOUGH = 1e-13  # backward error from which on a pair is improved
+CLOSE = 1e-6  # relative distance of eigenvalues whose shapes mix freely
+DEFECTIVE = 1e6  # condition number of an eigenvalue that shares its shape with another
 MOST_ROWS = 400  # beyond, a factorisation for each pair takes too long
+MOST_PAIRS = 60
 
 
 def backward_errors(
@@ -57,29 +64,74 @@ def _norm(matrix: Matrix, scale: Array) -> float:
     return float(np.sqrt(columns * rows))
 
 
-def refined(mass: Array, linear: Array, constant: Array, values: Complex, shapes: Complex) -> Complex:
-    """Shapes (n, m) of dense pairs, those whose terms cancel improved by inverse iteration."""
-    if len(mass) > MOST_ROWS:
+def refined(
+    mass: Matrix, linear: Matrix, stiffness: Matrix, damping: ModalDamping, found: Damped
+) -> tuple[Damped, Array]:
+    """Pairs of a small system, the worst of them improved by inverse iteration, and their backward errors.
+
+    On freedoms scaled to unit stiffness, so that soft parts of a shape beside stiff ones get digits of their
+    own. Pairs close to another one are left alone: they would become the same.
+    """
+    errors = backward_errors(mass, linear, stiffness, damping, found)
+    # of a defective eigenvalue both pairs have one shape
+    alone = _apart(found.values) | (found.condition > DEFECTIVE)
+    poor = np.flatnonzero((errors > ENOUGH) & (np.arange(len(errors)) >= found.rigid) & alone)
+    if not len(poor) or mass.shape[0] > MOST_ROWS:
+        return found, errors
+    poor = poor[np.argsort(-errors[poor])][:MOST_PAIRS]
+    m, c, k = dense(mass), dense(linear), dense(stiffness)
+    rates = 2 * damping.law * damping.undamped.angular
+    if not found.proportional:
+        held = m @ damping.undamped.shapes
+        c = c + (held * rates) @ held.T
+    scale = root_scale(np.where(np.diag(k) != 0, np.diag(k), np.diag(m)))[:, None]
+    shapes = found.shapes.copy()
+    for number in poor.tolist():
+        shape, value = shapes[:, number], complex(found.values[number])
+        if not found.proportional:
+            matrix, force = value * value * m + value * c + k, 2 * value * (m @ shape) + c @ shape
+        elif value.imag > 0:
+            matrix, force = k - found.undamped[number] ** 2 * m, m @ shape
+        else:
+            continue
+        rest = shape[:, None] / scale**2
+        right = np.hstack([force[:, None] * scale, rest * scale])
+        solved = _solved(scale * matrix * scale.T, right)
+        if solved is not None:
+            shapes[:, number] = _best(matrix, scale, [shape, *(scale * solved).T])
+    shapes[:, poor] = _like(normalised(shapes[:, poor], m), found.shapes[:, poor])
+    better = replace(found, shapes=shapes)
+    after = backward_errors(mass, linear, stiffness, damping, better)
+    kept = np.where(after < errors, shapes, found.shapes)
+    return replace(found, shapes=kept), np.minimum(after, errors)
+
+
+def _apart(values: Complex) -> NDArray[np.bool_]:
+    distance = np.abs(values[:, None] - values)
+    np.fill_diagonal(distance, np.inf)
+    return np.asarray(distance.min(axis=1, initial=np.inf) > CLOSE * np.abs(values))
+
+
+def _solved(matrix: Any, right: Any) -> Any:
+    factor, pivots, fault = scipy.linalg.get_lapack_funcs(("getrf",), (matrix,))[0](matrix)
+    if fault:
+        return None
+    with np.errstate(all="ignore"):
+        return scipy.linalg.lu_solve((factor, pivots), right, check_finite=False)
+
+
+def _best(matrix: Any, scale: Array, candidates: list[Any]) -> Any:
+    """The shape of least residual for its size, on scaled freedoms."""
+
+    def off(shape: Any) -> float:
+        length = float(np.linalg.norm(shape / scale[:, 0]))
+        return float(np.linalg.norm((matrix @ shape) * scale[:, 0])) / length if length > 0 else np.inf
+
+    return min((shape for shape in candidates if np.isfinite(shape).all()), key=off)
+
+
+def _like(shapes: Any, before: Any) -> Any:
+    """Real shapes with the sign that they had."""
+    if np.iscomplexobj(before):
         return shapes
-    better = shapes.copy()
-    for number, value in enumerate(values.tolist()):
-        shape = shapes[:, number]
-        off = _cancelled(mass, linear, constant, value, shape)
-        if off <= ENOUGH:
-            continue
-        matrix = value * value * mass + value * linear + constant
-        factor, pivots, fault = scipy.linalg.lapack.zgetrf(matrix.astype(complex))
-        if fault:
-            continue
-        right = (2 * value * mass + linear) @ shape
-        solved = scipy.linalg.lu_solve((factor, pivots), right.astype(complex), check_finite=False)
-        solved = solved / solved[int(np.argmax(np.abs(solved)))]
-        if _cancelled(mass, linear, constant, value, solved) < off:
-            better[:, number] = solved
-    return better
-
-
-def _cancelled(mass: Array, linear: Array, constant: Array, value: complex, shape: Complex) -> float:
-    terms = (value * value * (mass @ shape), value * (linear @ shape), constant @ shape)
-    largest = max(float(np.abs(term).max(initial=0.0)) for term in terms)
-    return float(np.abs(sum(terms)).max(initial=0.0)) / (largest or 1.0)
+    return shapes.real * np.where(np.einsum("ij,ij->j", shapes.real, before) < 0, -1.0, 1.0)

@@ -2,8 +2,11 @@
 
 In the coordinates of the undamped modes, with states w q and q', the first-order matrix is
 [[0, W], [-W, -D]]: balanced, and normal where there is no damping (choice of scaling: F. Tisseur,
-K. Meerbergen, SIAM Review 43 (2001) 235-286, section 3.5). Motions without mass but with damping, and
-unsymmetric stiffness beside motions without mass, go through the first-order form of `vib.massless`.
+K. Meerbergen, SIAM Review 43 (2001) 235-286, section 3.5). The one factor for all states by H.-Y. Fan,
+W.-W. Lin and P. Van Dooren (SIAM J. Matrix Anal. Appl. 26 (2004) 252-256), root(|K| / |M|), is here one for
+each mode, its own frequency: no unit is left, and soft modes keep their digits beside stiff ones. Motions
+without mass but with damping, and unsymmetric stiffness beside motions without mass, go through the
+first-order form of `vib.massless`.
 """
 
 from __future__ import annotations
@@ -15,7 +18,6 @@ import scipy.linalg
 
 from vib.errors import AccuracyError
 from vib.massless import Matrix, acts_on, dense, first_order, root_scale, split_mass
-from vib.solve.backward import refined
 from vib.solve.damped import Damped
 from vib.solve.pairs import Pairs, Quadratic, damped_from_pairs, improve
 from vib.solve.undamped import CANCELLATION, EPS, Array, Undamped
@@ -83,8 +85,6 @@ def _judged(
         and float(scipy.linalg.eigvalsh(symmetric)[0]) >= floor
     )
     improved = improve(quadratic, pairs, passive=passive)
-    shapes = refined(quadratic.mass, quadratic.linear, quadratic.constant, improved.values, improved.shapes)
-    improved = replace(improved, shapes=shapes)
     lifted = replace(improved, shapes=lift @ improved.shapes, duals=lift @ improved.duals)
     return damped_from_pairs(lifted, lift @ still, mass, complete=True)
 

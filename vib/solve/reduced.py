@@ -87,7 +87,8 @@ class Reduction:
         while True:
             if self.space.done >= count:
                 found = self.space.coordinates()
-                sure = (found.residuals <= SHAPE * found.theta) & (found.theta > NO_MASS * found.theta[0])
+                heavy = found.theta > NO_MASS * found.theta.max(initial=0.0)
+                sure = (found.residuals <= SHAPE * found.theta) & heavy
                 good = int(np.argmin(np.append(sure, False)))
                 if good >= count:
                     return self._modes(found, good)

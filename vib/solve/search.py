@@ -12,7 +12,7 @@ import scipy.sparse as sparse
 from vib.errors import AccuracyError, MatrixError, in_own_words
 from vib.massless import condense, dense, split_mass
 from vib.solve.backends.choice import extra_would_save
-from vib.solve.backward import backward_errors
+from vib.solve.backward import refined
 from vib.solve.damped import Damped, proportional_modes
 from vib.solve.damping import ModalDamping, feeding_reach, modal_damping
 from vib.solve.dense import condensed_modes
@@ -74,8 +74,8 @@ def solve_system(system: System, count: int | None, limit: float | None, *, cert
         damped, known = watched(problem.mass, linear, stiffness, found.damping, found.damped, names)
         known = known and (damped.growing is not None or _beyond(damped, feeding))
         found = replace(found, damped=damped, watch=not known)
-    backward = backward_errors(problem.mass, linear, stiffness, found.damping, found.damped)
-    return replace(found, backward=backward)
+    damped, backward = refined(problem.mass, linear, stiffness, found.damping, found.damped)
+    return replace(found, damped=damped, backward=backward)
 
 
 def _solve(problem: _Problem, ask: _Ask) -> Solution:

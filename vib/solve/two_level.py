@@ -13,6 +13,7 @@ from typing import NamedTuple
 
 import numpy as np
 import scipy.linalg
+from numpy.typing import NDArray
 
 from vib.errors import AccuracyError
 from vib.solve.damped import Complex
@@ -117,7 +118,7 @@ class _Space:
         self._link[:, self.done :] = fresh.T @ flat
         self.done = total
         self._waiting = fresh.reshape(2, self._basis.shape[1], fresh.shape[1])
-        return fresh.shape[1] == 0
+        return not fresh.size
 
     def ritz(self, wanted: int) -> tuple[Complex, Complex, Array]:
         """Values (m,) by magnitude, weights (k, m) and residuals (m,)."""
@@ -165,7 +166,7 @@ def _beyond(vectors: Array, basis: Array) -> Array:
     return fresh
 
 
-def noise(values: Complex) -> Array:
+def noise(values: Complex) -> NDArray[np.bool_]:
     """Which eigenvalues (m,) of an operator are round-off of none."""
     size = np.abs(values)
     return np.asarray(size <= 1e3 * EPS * size.max(initial=0.0))
