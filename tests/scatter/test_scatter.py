@@ -234,3 +234,14 @@ ratio = "0.025 +- 0.01"
     np.testing.assert_array_equal(found.batch.stable, found.values[:, 0] > 0.025)
     assert not found.stable
     assert any("a motion grows by itself" in remark for remark in found.remarks)
+
+
+def test_edges_that_are_not_linear_are_found_sample_by_sample(studies):
+    """Speed and band both scatter: an edge is speed (1 + band), which is no sum of both."""
+    changes = (('speed = "288 rpm"', 'speed = "288 rpm +- 5 %"'), ('band = "5 %"', 'band = "0.05 +- 0.02"'))
+    found = scatter(studies(FRAME, *changes), samples=32, seed=0, ranking=False, count=3)
+    speed, band = (
+        found.values[:, found.factors.paths.index(f"excitations[0].{key}")] for key in ("speed", "band")
+    )
+    assert found.chances is not None
+    np.testing.assert_allclose(found.chances.needed_hz, speed * (1 + band), rtol=1e-12)

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
 
@@ -50,6 +50,7 @@ class Chance:
         }
 
 
+TRIED = 8  # samples at which linearity is tested
 _SPEEDS = ("speed_from_rpm", "speed_to_rpm")
 
 
@@ -127,16 +128,34 @@ def _edges(
 ) -> tuple[Array, Array]:
     """Edges of the band of each line in each sample, each (N, lines)."""
     moving = [column for column, path in enumerate(paths) if path.startswith("excitations[")]
-    if not moving:
-        edges = np.array([(line.band_from_hz, line.band_to_hz) for line in lines])
-        return (np.broadcast_to(edges[:, side], (len(values), len(lines))) for side in (0, 1))  # type: ignore[return-value]
-    found = np.empty((2, len(values), len(lines)))
-    for number, sample in enumerate(values):
-        varied = study.varied({paths[column]: float(sample[column]) for column in moving})
+    names = [paths[column] for column in moving]
+
+    def at(sample: Array) -> Array:
+        """Both edges of every line (2 lines,) for values of what moves them."""
+        varied = study.varied(dict(zip(names, sample.tolist(), strict=True))) if names else study
         drawn = excitation_lines(varied.excitations, band=band)
         if len(drawn) != len(lines):
             raise ModelError(
-                "excitations: a sample has other lines than the study; vary speeds and bands only"
+                "excitations: samples have other lines than the study; vary speeds and bands only"
             )
-        found[:, number] = np.array([(line.band_from_hz, line.band_to_hz) for line in drawn]).T
-    return found[0], found[1]
+        return np.array([edge for line in drawn for edge in (line.band_from_hz, line.band_to_hz)])
+
+    found = _by_samples(at, values[:, moving])
+    return found[:, 0::2], found[:, 1::2]
+
+
+def _by_samples(function: Callable[[Array], Array], samples: Array) -> Array:
+    """A function of each sample (N, d); by its slopes where it is linear, as edges are in a speed."""
+    size, count = samples.shape
+    if not count:
+        return np.tile(function(samples[0]), (size, 1))
+    middle, reach = samples.mean(axis=0), np.ptp(samples, axis=0) / 2
+    steps = np.eye(count) * reach
+    slopes = np.array([function(middle + step) - function(middle - step) for step in steps])
+    slopes /= 2 * np.where(reach > 0, reach, 1.0)[:, None]
+    found = function(middle) + (samples - middle) @ slopes
+    tried = np.linspace(0, size - 1, min(size, TRIED)).astype(int)
+    exact = np.array([function(samples[row]) for row in tried])
+    if np.allclose(found[tried], exact, rtol=1e-12, atol=0.0):
+        return np.asarray(found)
+    return np.array([function(sample) for sample in samples])
