@@ -295,3 +295,18 @@ def test_equal_modes_in_every_sample_are_no_missing_ones():
     reanalysis = Reanalysis.build(made)
     assert reanalysis.basis_size > 0
     assert not reanalysis.evaluate(samples(made, 50)).full.any()
+
+
+def test_buckled_samples_are_not_reported_as_stable(tmp_path):
+    # posts in compression: a sample is stable where the stiffness has no negative eigenvalue
+    text = FRAME.replace('name = "posts"', 'name = "posts"\ntension = "-10 kN"')
+    read = study(tmp_path, text)
+    made = Family.from_study(read, {"members[0].tension": (-1.5e5, -2e3)}, count=4)
+    points = np.linspace(-1.5e5, -2e3, 9)[:, None]
+    least = [np.linalg.eigvalsh(dense(made.builder.system(point).stiffness))[0] for point in points]
+    stable = np.array(least) > 0
+    assert stable.any()
+    assert not stable.all()
+    batch = Reanalysis.build(made).evaluate(points)
+    assert (batch.stable == stable).all()
+    assert (batch.damping_ratios[~stable] < 0).any(axis=1).all()

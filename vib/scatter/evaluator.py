@@ -10,11 +10,12 @@ from numpy.typing import NDArray
 
 from vib.errors import AccuracyError
 from vib.scatter.batch import Batch
-from vib.scatter.family import Builder
-from vib.scatter.model import Model
+from vib.scatter.family import LARGEST_DENSE, Builder
+from vib.scatter.model import STEADY, Model
 from vib.scatter.tracking import first_left_out, follow
-from vib.solve.search import solve_system
-from vib.system import Array, Matrix
+from vib.solve.damped import Damped
+from vib.solve.search import cut, solve_system
+from vib.system import Array, Matrix, System
 
 BLOCK = 100  # samples whose small matrices are held at once: they stay in the processor's cache
 CHUNK = 200  # samples that are handed out at a time
@@ -106,10 +107,10 @@ class Evaluator:
         likeness = _likeness(found.shapes, np.linalg.norm(found.shapes, axis=1), self.shapes)
         size = np.abs(found.values)
         errors = found.errors + self.family_error * size
-        grows = found.growth > 1e-9 * size.max(axis=1)
+        grows = found.growth > STEADY * size.max(axis=1)
         batch = self._columns(found.values, errors, likeness, ~grows)
         accurate = batch.errors_hz <= (self.tolerance + self.family_error) * batch.frequencies_hz
-        sound = found.sound & accurate.all(axis=1) & ~grows
+        sound = found.sound & accurate.all(axis=1)
         return batch, np.asarray(sound & np.isfinite(batch.frequencies_hz).all(axis=1))
 
     def in_full(self, samples: Array) -> Batch:
@@ -118,7 +119,7 @@ class Evaluator:
 
     def _one_in_full(self, sample: Array) -> Batch:
         system = self.builder.system(sample)
-        damped = solve_system(system, self.candidates, None).damped
+        damped = solved_in_full(system, self.candidates)
         weight = np.sqrt(np.einsum("ij,ij->j", damped.shapes.conj(), self.mass @ damped.shapes).real)
         likeness = _likeness(damped.shapes[None], weight[None], self.pushed)
         stable = np.array([damped.growing is None and not (damped.values.real > damped.movement).any()])
@@ -174,6 +175,22 @@ class Evaluator:
             stable=stable,
             complete_hz=np.maximum(complete, 0.0) / (2 * np.pi),
         )
+
+
+def solved_in_full(system: System, count: int) -> Damped:
+    """The lowest modes of a system, counted.
+
+    Raises
+    ------
+    AccuracyError
+        A solver did not finish, and there are too many modes to compute them all.
+    """
+    try:
+        return solve_system(system, count, None).damped
+    except AccuracyError:  # as of a buckled structure
+        if system.size > LARGEST_DENSE:
+            raise
+        return cut(solve_system(system, None, None).damped, count, None)
 
 
 def _likeness(shapes: NDArray[np.complex128] | Array, size: Array, nominal: NDArray[np.complex128]) -> Array:

@@ -32,6 +32,7 @@ EXACT = 1e-8  # change of an entry, against the largest of its row and column, t
 CHECKS = 6  # random points at which rebuilt matrices are compared
 TRUSTED = 1e-5  # error of an entry, or of a frequency, beyond which the interpolation is not used
 DENSE = 100  # freedoms up to which all modes are computed at once
+LARGEST_DENSE = 2500  # and up to which they are where the search for some fails
 
 
 @dataclass(frozen=True, eq=False)
@@ -268,9 +269,13 @@ def _figure(table: object, name: str) -> object:
 
 def lowest_undamped(system: System, count: int, *, certify: bool = False) -> Undamped:
     """The lowest undamped modes of a system."""
-    if system.size <= DENSE or 4 * count > system.size:
-        return dense_undamped(dense(system.mass), dense(system.stiffness)).first(count)
-    return sparse_undamped(system.mass, system.stiffness, count, certify=certify)
+    if system.size > DENSE and 4 * count <= system.size:
+        try:
+            return sparse_undamped(system.mass, system.stiffness, count, certify=certify)
+        except AccuracyError:  # as of a buckled structure
+            if system.size > LARGEST_DENSE:
+                raise
+    return dense_undamped(dense(system.mass), dense(system.stiffness)).first(count)
 
 
 def _counts(system: System) -> NDArray[np.intp] | None:

@@ -13,6 +13,8 @@ from vib.scatter.interpolation import Interpolation
 from vib.scatter.reduced import Projected, Solved, clustered, solve
 from vib.system import Array
 
+STEADY = 1e-9  # part of the highest magnitude below which growth is round-off
+
 
 class Candidates(NamedTuple):
     """The lowest k eigenvalues of N samples, those of rigid bodies first.
@@ -148,7 +150,10 @@ class Model:
         errors = clustered(np.abs(pairs.values), errors)
         # where fewer than count are there, partners of pairs stand in their places
         whole = ~(pairs.values.imag < 0).any(axis=1)
-        return Candidates(pairs.values, errors, shapes, pairs.growth, solved.regular & held & whole)
+        # growth of the reduced system is no proof of that of the whole, as a negative square is
+        steady = pairs.growth <= STEADY * np.abs(pairs.values).max(axis=1)
+        sound = np.asarray(solved.regular & held & steady & whole)
+        return Candidates(pairs.values, errors, shapes, pairs.growth, sound)
 
 
 def _modal(solved: Solved, linear: Array) -> Array:

@@ -16,7 +16,7 @@ from vib.errors import AccuracyError, ModelError
 from vib.modes import Modes
 from vib.scatter.basis import RANDOM_VECTORS, Metric, principal
 from vib.scatter.batch import Batch
-from vib.scatter.evaluator import Evaluator
+from vib.scatter.evaluator import Evaluator, solved_in_full
 from vib.scatter.family import Family, lowest_undamped
 from vib.scatter.model import Law, Model
 from vib.scatter.pattern import MATRICES
@@ -258,7 +258,7 @@ class _Making:
         worst, number = 0.0, family.modes.count
         bare = replace(model, safety=1.0)
         for sample in self.training[-CHECKS:]:
-            full = solve_system(family.builder.system(sample), self.count, None).damped
+            full = solved_in_full(family.builder.system(sample), self.count)
             found = bare.candidates(sample[None], self.count)
             if not found.sound[0]:
                 continue
