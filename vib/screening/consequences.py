@@ -77,9 +77,9 @@ def consequence_remarks(rows: Sequence[Row]) -> tuple[str, ...]:
         return ()
     return (
         "Levels of coincidences are those of the one line alone, where it is strongest within 1 % of the "
-        "natural frequency (a convention of this program), by the forces stated and the damping assumed. They "
-        "count whatever their frequency; the band from 10 Hz or 2 Hz on, in which ISO 20816-3 forms its levels "
-        "(from memory), would hide slow lines, so that a zone here can be worse than that of the whole machine.",
+        "natural frequency (a convention of this program), by the forces stated and the damping assumed.",
+        "They count whatever their frequency: the band in which a standard forms its levels would hide slow "
+        "lines. So the zone of a coincidence can be worse than that of the whole machine.",
     )
 
 
