@@ -19,8 +19,8 @@ from numpy.typing import NDArray
 
 from vib.errors import AccuracyError, ModelError, in_own_words
 from vib.solve.damped import Damped
-from vib.solve.search import solve_system
 from vib.solve.stability import takes_energy
+from vib.speed_basis import SpeedBasis
 from vib.system import Array, Rotation, System
 from vib.whirl import Whirl, whirl_of
 
@@ -229,6 +229,7 @@ class _Track:
         self.system, self.shaft, self.count = system, shaft, count
         self.mass = system.mass
         self.clear = True
+        self._basis = SpeedBasis(count + SPARE)
 
     def follow(self, speeds: Array) -> list[_Point]:
         """Points at these speeds, and at more where the pairing needs them."""
@@ -261,7 +262,7 @@ class _Track:
 
     def _solve(self, speed_hz: float) -> Damped:
         system = at_speed(self.system, self.shaft, speed_hz)
-        found = solve_system(system, self.count + SPARE, None, certify=False).damped
+        found = self._basis.solve(system)
         kept = np.arange(len(found.values)) >= found.rigid
         return replace(
             found,

@@ -236,3 +236,26 @@ def test_a_pair_that_is_just_defective():
     assert (modes.backward_errors <= 1e-12).all()
     distance = np.abs(np.abs(modes.eigenvalues) - np.sqrt(2.1)) / (2 * np.pi)
     assert (distance <= modes.errors_hz).all()
+
+
+def test_damped_modes_own_up_to_what_round_off_hides():
+    """Random springs over twelve decades and one dashpot: the entries no longer hold the softest motion.
+
+    The undamped frequency of reference comes from the flexibility, a sum of positive terms without
+    cancellation: K^-1 = A' A with A the inverse of a bidiagonal factor (elementary).
+    """
+    size = 300
+    springs = 1e3 * 1e12 ** np.random.default_rng(7).random(size)
+    diagonal = springs + np.append(springs[1:], 0.0)
+    stiffness = np.diag(diagonal) - np.diag(springs[1:], 1) - np.diag(springs[1:], -1)
+    factor = np.sqrt(springs)[:, None] * (np.eye(size) - np.eye(size, k=-1)) / np.sqrt(2.0)
+    inverse = np.linalg.inv(factor)
+    exact = 1 / np.sqrt(np.linalg.eigvalsh(inverse @ inverse.T)[-1])
+    damping = np.zeros((size, size))
+    damping[100, 100] = 1e-3  # so weak that it moves no frequency
+    system = System(mass=2.0 * np.eye(size), damping=damping, stiffness=stiffness)
+    found = system.modes(count=8)
+    slow = 2 * np.pi * (found.frequencies_hz - found.errors_hz)
+    assert slow.min() <= exact
+    lost = found.frequencies_hz == 0
+    assert (2 * np.pi * found.errors_hz[lost] > exact).all()

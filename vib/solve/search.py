@@ -34,6 +34,7 @@ FIRST_GUESS = 24  # modes looked for first where those below a frequency could n
 MOST_SEARCHES = 6
 GRADED = 1e10  # ratio of squared frequencies of single freedoms
 UNSUITED_DENSE = 800  # up to here all modes are computed where the fast search for few is not suited
+LOST = 0.1  # hidden part of the lowest frequency from which on large systems are refused
 MOST_COUNTS = 3  # times that a count may find modes missing before the search is given up
 LARGE = 2000  # sparse systems from here on are searched by blocks, with the fastest factorisation at hand
 LARGEST_DENSE = 5000  # (n, n) arrays beyond this fill the memory of an ordinary machine
@@ -75,7 +76,38 @@ def solve_system(system: System, count: int | None, limit: float | None, *, cert
         known = known and (damped.growing is not None or _beyond(damped, feeding))
         found = replace(found, damped=damped, watch=not known)
     damped, backward = refined(problem.mass, linear, stiffness, found.damping, found.damped)
+    damped = _with_hidden(problem, damped, found.damping.undamped)
     return replace(found, damped=damped, backward=backward)
+
+
+def _with_hidden(problem: _Problem, damped: Damped, undamped: Undamped) -> Damped:
+    """Damped eigenvalues with what round-off may hide in the stiffness of motions set aside as rigid.
+
+    A hidden stiffness h^2 turns s (s + c) = 0 into s^2 + c s + h^2 = 0: a root of size c moves by h^2 / c as
+    long as that is small, else by no more than its own size or h.
+
+    Raises
+    ------
+    AccuracyError
+        It hides as much as the slowest motions of a large system: those found need not be the slowest then.
+    """
+    hidden = float(undamped.errors[: undamped.rigid].max(initial=0.0))
+    if damped.proportional or not hidden:
+        return damped
+    elastic = undamped.angular[undamped.rigid :]
+    if (
+        sparse.issparse(problem.mass)
+        and problem.system.size > UNSUITED_DENSE
+        and hidden > LOST * elastic.min(initial=np.inf)
+    ):
+        raise AccuracyError(
+            "Soft and stiff parts lie so many decades apart that round-off in the entries of the stiffness "
+            f"hides motions of up to {hidden / (2 * np.pi):.3g} Hz; make the stiffest parts rigid or softer."
+        )
+    size = np.abs(damped.values)
+    with np.errstate(divide="ignore"):
+        moved = np.where(size > 2 * hidden, hidden**2 / size, np.maximum(size, hidden))
+    return replace(damped, errors=damped.errors + moved)
 
 
 def _solve(problem: _Problem, ask: _Ask) -> Solution:

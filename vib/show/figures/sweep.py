@@ -169,9 +169,7 @@ def level_map_picture(found: Sweep, units: UnitSystem) -> Picture:
             marks,
             f"velocity, {unit} r.m.s.",
         )
-    return Picture(
-        "sweep_level_map", figure, "R.m.s. velocity over two quantities"
-    )
+    return Picture("sweep_level_map", figure, "R.m.s. velocity over two quantities")
 
 
 def _maps(
