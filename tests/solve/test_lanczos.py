@@ -374,3 +374,16 @@ def test_bounds_cover_the_errors_of_projections(size, seed, part, blur):
     errors = np.abs(theta - values[-part:])
     assert (errors <= bounds + 1e-13).all()
     assert bounds[-1] < residuals[-1] / 10  # the square counts where the gap is known
+
+
+def test_a_fast_growing_motion_far_from_the_slowest_is_named():
+    """A chain with one spring of the wrong sign: one eigenvalue near -1.6 among slow ones of 1e-6."""
+    size = 3000
+    stiffness = sparse.diags_array(
+        [-np.ones(size - 1), 2.0 * np.ones(size), -np.ones(size - 1)], offsets=[-1, 0, 1]
+    ).tolil()
+    stiffness[500, 500] -= 3.0
+    with pytest.raises(
+        AccuracyError, match=r"negative in 1 directions, so the system is UNSTABLE.* wrong sign"
+    ):
+        lowest_modes(sparse.eye_array(size, format="csr"), sparse.csr_array(stiffness), count=5)

@@ -166,7 +166,14 @@ class _Search:
                 if found.everything or (found.values < place + slack).sum() >= counted:
                     break
         missing = counted - int((found.values < place).sum())
-        raise AccuracyError(f"{missing} of {counted} modes could not be found.", partial=self.partial())
+        said = f"{missing} of {counted} modes could not be found."
+        if about.shift == 0 and about.below_shift:
+            said += (
+                f" The stiffness is negative in {about.below_shift} directions, so the system is UNSTABLE: it is "
+                "buckled, or a spring has the wrong sign. That motion grows too fast to be among the slowest; "
+                "mend the stiffness first."
+            )
+        raise AccuracyError(said, partial=self.partial())
 
     def _converge(self, about: About, wanted: int) -> Found:
         """Go on until the lowest ``wanted`` approximations have converged, or there are no more."""
