@@ -169,9 +169,9 @@ class _Search:
         said = f"{missing} of {counted} modes could not be found."
         if about.shift == 0 and about.below_shift:
             said += (
-                f" The stiffness is negative in {about.below_shift} directions, so the system is UNSTABLE: it is "
-                "buckled, or a spring has the wrong sign. That motion grows too fast to be among the slowest; "
-                "mend the stiffness first."
+                f" The stiffness is negative in {about.below_shift} directions, so the system is UNSTABLE: "
+                "it is buckled, or a spring has the wrong sign. That motion grows too fast to be among the "
+                "slowest; mend the stiffness first."
             )
         raise AccuracyError(said, partial=self.partial())
 
