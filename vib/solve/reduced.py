@@ -10,6 +10,7 @@ the same space, so eigenvalues are off by the square of what the vectors are.
 from __future__ import annotations
 
 from collections.abc import Callable
+from contextlib import ExitStack
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -18,6 +19,7 @@ from numpy.typing import NDArray
 
 from vib.errors import AccuracyError
 from vib.solve.backends.choice import factor as factorise
+from vib.solve.backends.choice import one_pool
 from vib.solve.backends.interface import Factor, FactorError
 from vib.solve.damped import Complex, Damped
 from vib.solve.energy import Coordinates, EnergySpace
@@ -25,7 +27,15 @@ from vib.solve.localised import Localised
 from vib.solve.pairs import Pairs, Quadratic, damped_from_pairs, improve
 from vib.solve.proof import prove
 from vib.solve.quadratic import modal_pairs
-from vib.solve.undamped import Array, Matrix, Undamped, elastic_ratio, round_off, stores_nothing
+from vib.solve.undamped import (
+    Array,
+    Matrix,
+    Undamped,
+    elastic_ratio,
+    round_off,
+    stores_nothing,
+    with_hidden,
+)
 
 RANDOM = 4  # directions beside those of the dashpots, for modes that no dashpot sees
 SPARE = 4  # modes beyond those asked for
@@ -53,16 +63,20 @@ class Reduction:
             The stiffness is not positive.
         """
         self.mass, self.stiffness, self.term = mass, stiffness, term
-        self.shift, self.regular, self.factor = _regular(mass, stiffness)
-        random = np.random.default_rng(7).standard_normal((mass.shape[0], RANDOM))
-        force = np.hstack([term.basis.toarray(), mass @ random])
-        self.space = EnergySpace(mass, self.regular, self.factor, self.factor.solve(force))
+        with ExitStack() as threads:
+            threads.enter_context(one_pool(mass.shape[0]))
+            self.shift, self.regular, self.factor = _regular(mass, stiffness)
+            random = np.random.default_rng(7).standard_normal((mass.shape[0], RANDOM))
+            force = np.hstack([term.basis.toarray(), mass @ random])
+            self.space = EnergySpace(mass, self.regular, self.factor, self.factor.solve(force))
+            self._threads = threads.pop_all()
 
     def __enter__(self) -> Reduction:
         return self
 
     def __exit__(self, *_: object) -> None:
         self.factor.release()
+        self._threads.close()
 
     def grow(self) -> None:
         """One more step; fresh directions where the space has closed."""
@@ -106,6 +120,7 @@ class Reduction:
         off = np.minimum(found.residuals[:count], found.residuals[:count] ** 2 / (1e-6 * theta))
         far = np.where(rigid, 1.0, 2 * angular)
         errors = np.where(rigid, 0.0, off / theta**2 / far + round_off(terms, mass_terms, angular))
+        errors = with_hidden(errors, rigid, energy, terms, angular)
         order = np.lexsort((values, ~rigid))
         return Undamped(
             values[order],
