@@ -66,6 +66,8 @@ def assemble(
     zz, yy, yz = found.about_centroid()
     turn = _principal_angle(zz, yy, yz)
     cos, sin = math.cos(turn), math.sin(turn)
+    first = zz * cos**2 + yy * sin**2 - 2 * yz * sin * cos
+    second = zz * sin**2 + yy * cos**2 + 2 * yz * sin * cos
     if isinstance(shear, list):
         shear = (shear_area(shear, turn), shear_area(shear, turn + math.pi / 2))
         # Walls that are hardly walls any more: no more than a solid rectangle has.
@@ -73,14 +75,19 @@ def assemble(
         if max(shear) > most:
             shear = (min(shear[0], most), min(shear[1], most))
             remarks = tuple(dict.fromkeys((*remarks, THICK_WALLS)))
+        # No section is stiffer than with the warping k y z of the best k (minimum of potential energy).
+        most = 4 * first * second / (first + second)
+        if torsion > most:
+            torsion = most
+            remarks = tuple(dict.fromkeys((*remarks, THICK_WALLS)))
     outline = tuple(polyline(loop, (y, z)) for loop in loops)
     low_y, low_z = (min(point[k] for point in outline[0]) for k in (0, 1))
     offset = (0.0, 0.0) if shear_centre is None else (shear_centre[0] - y, shear_centre[1] - z)
     return Profile(
         name=name,
         area=found.area,
-        second_moment_y=zz * cos**2 + yy * sin**2 - 2 * yz * sin * cos,
-        second_moment_z=zz * sin**2 + yy * cos**2 + 2 * yz * sin * cos,
+        second_moment_y=first,
+        second_moment_z=second,
         torsion_constant=torsion,
         shear_area_y=shear[0],
         shear_area_z=shear[1],
