@@ -7,6 +7,7 @@ forces are at a speed is worked out in `vib.drive`.
 from __future__ import annotations
 
 import math
+from abc import abstractmethod
 from typing import Annotated, Any, Literal
 
 from pydantic import Field, ValidationInfo, WithJsonSchema, field_validator, model_validator
@@ -146,9 +147,9 @@ class _Meshing(Push):
         (1,), description="multiples of the passing frequency"
     )
 
+    @abstractmethod
     def passes(self) -> float:
         """How often it passes in a turn of the shaft."""
-        raise NotImplementedError
 
     def multiples(self) -> tuple[float, ...]:
         """The harmonics, as multiples of the running speed."""
