@@ -181,6 +181,8 @@ def _maps(
     bar_label: str,
 ) -> Any:
     """One filled map a grid (k1, k2), with marked levels as lines; call it inside `style`."""
+    from matplotlib.patheffects import withStroke
+
     (across, label_x, nominal_x), (up, label_y, nominal_y) = (_axis(found, one, units) for one in found.swept)
     columns = min(2, len(grids)) or 1
     rows = -(-len(grids) // columns) or 1
@@ -200,7 +202,10 @@ def _maps(
         inside = {value: words for value, words in sorted(marked) if least < value < most}
         if inside:
             drawn = axes.contour(across, up, grid, levels=list(inside), **_EDGE)
-            axes.clabel(drawn, fmt=inside, fontsize=6.5)
+            labels = axes.clabel(drawn, fmt=inside, fontsize=6.5, colors=[INK])
+            halo = withStroke(linewidth=2.0, foreground="white")
+            for label in labels:
+                label.set_path_effects([halo])
         axes.plot([nominal_x], [nominal_y], ls="none", marker="o", ms=4, mfc="white", mec=INK, clip_on=True)
         axes.set_xlim(across.min(), across.max())
         axes.set_ylim(up.min(), up.max())
