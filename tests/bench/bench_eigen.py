@@ -24,7 +24,7 @@ from vib.structure.cells import FAMILIES
 from vib.structure.sparsity import Group, assemble
 
 COUNT = 20
-SOLVES = 14  # blocks of BLOCK columns that the search takes for COUNT modes of this block, the start included
+SOLVES = 14  # blocks of BLOCK columns that COUNT modes of this block need at the least; the search takes 18
 
 
 @dataclass(frozen=True, eq=False)
